@@ -121,8 +121,8 @@ type Quantities struct {
 	Shear                        []Spread  // per fabric: |shear| over the mean specified stress
 	Cables                       []CableReport
 	Lines                        []LineReport
-	KindLength [KindStrut + 1]float64 // total length by Kind, m
-	FabricUtilisation            []float64        // per fabric, 0 = not computed
+	KindLength                   [KindStrut + 1]float64 // total length by Kind, m
+	FabricUtilisation            []float64              // per fabric, 0 = not computed
 }
 
 // CableReport is what a cable carries.
