@@ -212,7 +212,11 @@ type Structure struct {
 	Lines []Line
 
 	// SelfWeight asks for the weights of members, fabrics and rings to act
-	// during form finding.
+	// during form finding, downwards: half of Weight·Unstressed of a member
+	// (Weight·current length where no unstressed length is given) on each of
+	// its ends, a third of Weight·current area of a triangle on each of its
+	// corners, the weight of a rigid ring on its centre and of a cable ring
+	// in equal parts on its nodes.
 	SelfWeight bool
 }
 
