@@ -1,0 +1,495 @@
+package sparse
+
+import (
+	"context"
+	"fmt"
+	"math"
+	"slices"
+)
+
+// Analysis is everything about a system that follows from its pattern: the
+// order of elimination, the tree of fronts, the rows of each front, and where
+// each value goes. It is not changed after [Analyze] and may be shared by any
+// number of factors and goroutines.
+type Analysis struct {
+	n       int // unknowns
+	entries int // len(pairs)
+	opts    Options
+	cost    Cost
+
+	order []int32 // unknown eliminated at each place
+	place []int32 // its inverse
+
+	// Front s eliminates the columns first[s] to first[s+1]-1. Its rows are
+	// these columns, then the update rows rows[rowPtr[s]:rowPtr[s+1]], ascending.
+	first  []int32
+	parent []int32 // front that takes the update matrix, none for a root; parent[s] > s
+	rowPtr []int64
+	rows   []int32
+	rel    []int32 // position of each update row among the rows of the parent's front
+
+	// The children of front s in the order in which they are eliminated.
+	childPtr []int32
+	children []int32
+
+	// The panel of front s holds its eliminated columns, column by column, at
+	// panel[s]. Entry k of the assembly list adds values[n+source[k]] to place
+	// target[k] of the panel.
+	panel     []int64
+	sourcePtr []int64
+	source    []int32
+	target    []int32
+
+	plan plan
+}
+
+// Analyze orders and plans the elimination of a symmetric matrix with n
+// unknowns whose off-diagonal entries are at pairs. A pair stands for both
+// (i, j) and (j, i); it may be given from either triangle and repeatedly, the
+// values of repeated pairs are added up. A pair (i, i) adds to the diagonal,
+// which is always part of the pattern.
+//
+// The cost is nearly linear in n + len(pairs). Errors: [PatternError] for a
+// pair that is out of range, [ErrTooLarge], [BudgetError], or that of ctx.
+func Analyze(ctx context.Context, n int, pairs [][2]int32, o Options) (*Analysis, error) {
+	if n < 0 {
+		return nil, fmt.Errorf("sparse: %d unknowns", n)
+	}
+	if n >= math.MaxInt32-8 || len(pairs) > 1<<30-1 {
+		return nil, ErrTooLarge
+	}
+	for k, p := range pairs {
+		if uint32(p[0]) >= uint32(n) || uint32(p[1]) >= uint32(n) {
+			return nil, &PatternError{Entry: k, Pair: p, Unknowns: n}
+		}
+	}
+	// The pattern itself takes about this much before anything else is known.
+	if need := int64(n)*60 + int64(len(pairs))*24; o.MemoryBudget > 0 && need > o.MemoryBudget {
+		return nil, &BudgetError{Need: need, Budget: o.MemoryBudget}
+	}
+	if err := ctx.Err(); err != nil {
+		return nil, err
+	}
+	g := newGraph(n, pairs)
+	order, chosen, err := orderGraph(ctx, g, o.Ordering)
+	if err != nil {
+		return nil, err
+	}
+	a := &Analysis{n: n, entries: len(pairs), opts: o, order: order, place: make([]int32, n)}
+	a.cost.Ordering = chosen
+	if err := a.symbolic(ctx, g); err != nil {
+		return nil, err
+	}
+	a.plan = a.newPlan()
+	a.measure()
+	if o.MemoryBudget > 0 && a.cost.Bytes > o.MemoryBudget {
+		return nil, &BudgetError{Need: a.cost.Bytes, Budget: o.MemoryBudget}
+	}
+	if err := a.assembly(pairs); err != nil {
+		return nil, err
+	}
+	return a, nil
+}
+
+// Unknowns is the number n of unknowns.
+func (a *Analysis) Unknowns() int { return a.n }
+
+// Cost of one factorisation.
+func (a *Analysis) Cost() Cost { return a.cost }
+
+// Order returns a copy of the order of elimination: Order()[k] is the unknown
+// eliminated k-th.
+func (a *Analysis) Order() []int32 { return slices.Clone(a.order) }
+
+func (a *Analysis) fronts() int { return len(a.parent) }
+
+// shape of front s: columns eliminated and rows altogether.
+func (a *Analysis) shape(s int32) (cols, rows int) {
+	cols = int(a.first[s+1] - a.first[s])
+	return cols, cols + int(a.rowPtr[s+1]-a.rowPtr[s])
+}
+
+func invert(place, order []int32) {
+	for k, i := range order {
+		place[i] = int32(k)
+	}
+}
+
+// symbolic finds the fronts and their rows.
+func (a *Analysis) symbolic(ctx context.Context, g graph) error {
+	invert(a.place, a.order)
+	parent := eliminationTree(g, a.order, a.place)
+	post := postorder(parent)
+	renumber(parent, post)
+	for k, j := range post {
+		post[k] = a.order[j]
+	}
+	a.order = post
+	invert(a.place, a.order)
+	count := columnCounts(g, a.order, a.place, parent)
+	if err := ctx.Err(); err != nil {
+		return err
+	}
+	a.joinColumns(parent, count)
+	a.frontRows(g)
+	return ctx.Err()
+}
+
+// renumber rewrites parent for nodes numbered by post.
+func renumber(parent, post []int32) {
+	place := make([]int32, len(post))
+	invert(place, post)
+	old := slices.Clone(parent)
+	for k, j := range post {
+		if p := old[j]; p != none {
+			parent[k] = place[p]
+		} else {
+			parent[k] = none
+		}
+	}
+}
+
+// maxZeros is the share of explicit zeros allowed in a front of the given
+// number of columns when it is joined with its parent: large fronts run near
+// the speed of the machine and must not be diluted, small ones are all overhead.
+func maxZeros(cols int32) float64 {
+	switch {
+	case cols <= 4:
+		return 0.8
+	case cols <= 16:
+		return 0.3
+	case cols <= 48:
+		return 0.1
+	}
+	return 0.05
+}
+
+// joinColumns finds the supernodes: runs of columns with one structure, and
+// relaxed ones that accept a few zeros. It renumbers the columns so that each
+// supernode is a run and the supernodes are in postorder.
+func (a *Analysis) joinColumns(parent, count []int32) {
+	n := int32(a.n)
+	var first []int32 // first column of each run
+	super := make([]int32, n)
+	for j := range n {
+		if j == 0 || parent[j-1] != j || count[j-1] != count[j]+1 {
+			first = append(first, j)
+		}
+		super[j] = int32(len(first)) - 1
+	}
+	ns := int32(len(first))
+	first = append(first, n)
+	up := make([]int32, ns)
+	cols := make([]int32, ns)
+	below := make([]int32, ns)
+	zeros := make([]int64, ns)
+	into := make([]int32, ns)    // itself, or the supernode it was joined into
+	child := make([]int32, ns)   // children, as chains
+	tail := make([]int32, ns)    // last child
+	sibling := make([]int32, ns) // next child of the same parent
+	for s := range ns {
+		last := first[s+1] - 1
+		up[s] = none
+		if p := parent[last]; p != none {
+			up[s] = super[p]
+		}
+		cols[s] = first[s+1] - first[s]
+		below[s] = count[last] - 1
+		into[s], child[s], tail[s], sibling[s] = s, none, none, none
+	}
+	area := func(c, b int32) int64 { return int64(c)*int64(c+1)/2 + int64(c)*int64(b) }
+	for s := range ns {
+		// The children of s are complete: they come before it.
+		var keepHead, keepTail = none, none
+		keep := func(c int32) {
+			if keepTail == none {
+				keepHead = c
+			} else {
+				sibling[keepTail] = c
+			}
+			keepTail = c
+			sibling[c] = none
+		}
+		for c := child[s]; c != none; {
+			nextChild := sibling[c]
+			nc := cols[c] + cols[s]
+			all := area(nc, below[s])
+			z := zeros[c] + zeros[s] + all - area(cols[c], below[c]) - area(cols[s], below[s])
+			if z == 0 || float64(z) < maxZeros(nc)*float64(all) {
+				into[c] = s
+				cols[s], zeros[s] = nc, z
+				for gc := child[c]; gc != none; {
+					ng := sibling[gc]
+					keep(gc)
+					gc = ng
+				}
+			} else {
+				keep(c)
+			}
+			c = nextChild
+		}
+		child[s], tail[s] = keepHead, keepTail
+		if p := up[s]; p != none {
+			if child[p] == none {
+				child[p] = s
+			} else {
+				sibling[tail[p]] = s
+			}
+			tail[p] = s
+		}
+	}
+	// Resolve chains of joins from the top down, then number what is left.
+	for s := ns - 1; s >= 0; s-- {
+		if into[s] != s {
+			into[s] = into[into[s]]
+		}
+	}
+	tree := make([]int32, ns)
+	for s := range ns {
+		tree[s] = none
+		if into[s] == s && up[s] != none {
+			tree[s] = into[up[s]]
+		}
+	}
+	number := make([]int32, 0, ns) // kept supernodes in a new postorder
+	for _, s := range a.orderFronts(tree, into, cols, below) {
+		number = append(number, s)
+	}
+	newNum := make([]int32, ns)
+	for k, s := range number {
+		newNum[s] = int32(k)
+	}
+	m := len(number)
+	a.first = make([]int32, m+1)
+	a.parent = make([]int32, m)
+	a.rowPtr = make([]int64, m+1)
+	for k, s := range number {
+		a.first[k+1] = a.first[k] + cols[s]
+		a.rowPtr[k+1] = a.rowPtr[k] + int64(below[s])
+		a.parent[k] = none
+		if p := tree[s]; p != none {
+			a.parent[k] = newNum[p]
+		}
+	}
+	at := slices.Clone(a.first[:m])
+	order := make([]int32, n)
+	for s := range ns {
+		k := newNum[into[s]]
+		for j := first[s]; j < first[s+1]; j++ {
+			order[at[k]] = a.order[j]
+			at[k]++
+		}
+	}
+	a.order = order
+	invert(a.place, a.order)
+	a.childPtr, a.children = childLists(a.parent)
+}
+
+func childLists(parent []int32) (ptr, list []int32) {
+	ptr = make([]int32, len(parent)+1)
+	for _, p := range parent {
+		if p != none {
+			ptr[p+1]++
+		}
+	}
+	for i := range parent {
+		ptr[i+1] += ptr[i]
+	}
+	list = make([]int32, ptr[len(parent)])
+	at := slices.Clone(ptr)
+	for s, p := range parent {
+		if p != none {
+			list[at[p]] = int32(s)
+			at[p]++
+		}
+	}
+	return ptr, list
+}
+
+// orderFronts returns the kept supernodes (into[s] == s) in a postorder of
+// tree in which the subtree that needs most stack comes first among siblings
+// (Liu 1986, "On the storage requirement in the out-of-core multifrontal
+// method").
+func (a *Analysis) orderFronts(tree, into, cols, below []int32) []int32 {
+	ns := len(tree)
+	peak := make([]int64, ns) // largest stack of the subtree
+	held := make([]int64, ns) // sum of the updates of the children handled so far
+	ptr, list := childLists(tree)
+	gain := func(s int32) int64 { return peak[s] - int64(below[s])*int64(below[s]) }
+	for s := range ns {
+		if into[s] != int32(s) {
+			continue
+		}
+		kids := list[ptr[s]:ptr[s+1]]
+		if len(kids) > 1 {
+			slices.SortStableFunc(kids, func(x, y int32) int {
+				gx, gy := gain(x), gain(y)
+				switch {
+				case gx > gy:
+					return -1
+				case gx < gy:
+					return 1
+				}
+				return 0
+			})
+		}
+		for _, c := range kids {
+			peak[s] = max(peak[s], held[s]+peak[c])
+			held[s] += int64(below[c]) * int64(below[c])
+		}
+		peak[s] = max(peak[s], held[s]+int64(below[s])*int64(below[s]))
+	}
+	out := make([]int32, 0, ns)
+	var stack []int32
+	for r := range ns {
+		if into[r] != int32(r) || tree[r] != none {
+			continue
+		}
+		stack = append(stack, int32(r))
+		for len(stack) > 0 {
+			s := stack[len(stack)-1]
+			if s < 0 {
+				stack = stack[:len(stack)-1]
+				out = append(out, ^s)
+				continue
+			}
+			stack[len(stack)-1] = ^s
+			kids := list[ptr[s]:ptr[s+1]]
+			for i := len(kids) - 1; i >= 0; i-- {
+				stack = append(stack, kids[i])
+			}
+		}
+	}
+	return out
+}
+
+// frontRows fills rows, rel and panel.
+func (a *Analysis) frontRows(g graph) {
+	m := int32(a.fronts())
+	a.rows = make([]int32, a.rowPtr[m])
+	a.rel = make([]int32, a.rowPtr[m])
+	a.panel = make([]int64, m+1)
+	stamp := make([]int32, a.n)
+	for i := range stamp {
+		stamp[i] = none
+	}
+	for s := range m {
+		last := a.first[s+1] - 1
+		out := a.rows[a.rowPtr[s]:a.rowPtr[s]:a.rowPtr[s+1]]
+		for _, c := range a.children[a.childPtr[s]:a.childPtr[s+1]] {
+			for _, i := range a.rows[a.rowPtr[c]:a.rowPtr[c+1]] {
+				if i > last && stamp[i] != s {
+					stamp[i] = s
+					out = append(out, i)
+				}
+			}
+		}
+		for j := a.first[s]; j <= last; j++ {
+			for _, node := range g.row(a.order[j]) {
+				if i := a.place[node]; i > last && stamp[i] != s {
+					stamp[i] = s
+					out = append(out, i)
+				}
+			}
+		}
+		slices.Sort(out)
+		cols, rows := a.shape(s)
+		a.panel[s+1] = a.panel[s] + int64(cols)*int64(rows)
+	}
+	// Relative positions: local[i] is the position of row i in front p.
+	local := stamp
+	for p := range m {
+		kids := a.children[a.childPtr[p]:a.childPtr[p+1]]
+		if len(kids) == 0 {
+			continue
+		}
+		cols := a.first[p+1] - a.first[p]
+		for k, i := range a.rows[a.rowPtr[p]:a.rowPtr[p+1]] {
+			local[i] = cols + int32(k)
+		}
+		for _, c := range kids {
+			for k := a.rowPtr[c]; k < a.rowPtr[c+1]; k++ {
+				if i := a.rows[k]; i < a.first[p+1] {
+					a.rel[k] = i - a.first[p]
+				} else {
+					a.rel[k] = local[i]
+				}
+			}
+		}
+	}
+}
+
+// assembly lists for each front where its values go.
+func (a *Analysis) assembly(pairs [][2]int32) error {
+	m := a.fronts()
+	for s := range int32(m) {
+		if a.panel[s+1]-a.panel[s] > math.MaxInt32 {
+			return ErrTooLarge
+		}
+	}
+	super := make([]int32, a.n)
+	for s := range int32(m) {
+		for j := a.first[s]; j < a.first[s+1]; j++ {
+			super[j] = s
+		}
+	}
+	a.sourcePtr = make([]int64, m+1)
+	for _, p := range pairs {
+		a.sourcePtr[super[min(a.place[p[0]], a.place[p[1]])]+1]++
+	}
+	for s := range m {
+		a.sourcePtr[s+1] += a.sourcePtr[s]
+	}
+	a.source = make([]int32, len(pairs))
+	a.target = make([]int32, len(pairs))
+	at := slices.Clone(a.sourcePtr[:m])
+	for k, p := range pairs {
+		s := super[min(a.place[p[0]], a.place[p[1]])]
+		a.source[at[s]] = int32(k)
+		at[s]++
+	}
+	local := super // reused: super of later columns is not needed again
+	for s := range int32(m) {
+		c0, c1 := a.first[s], a.first[s+1]
+		cols, ld := a.shape(s)
+		for k, i := range a.rows[a.rowPtr[s]:a.rowPtr[s+1]] {
+			local[i] = int32(cols + k)
+		}
+		for k := a.sourcePtr[s]; k < a.sourcePtr[s+1]; k++ {
+			p := pairs[a.source[k]]
+			col, row := a.place[p[0]], a.place[p[1]]
+			if col > row {
+				col, row = row, col
+			}
+			r := row - c0
+			if row >= c1 {
+				r = local[row]
+			}
+			a.target[k] = (col-c0)*int32(ld) + r
+		}
+	}
+	return nil
+}
+
+// measure fills in the cost.
+func (a *Analysis) measure() {
+	c := &a.cost
+	c.Fronts = a.fronts()
+	for s := range int32(c.Fronts) {
+		cols, rows := a.shape(s)
+		nc, nu := float64(cols), float64(rows-cols)
+		c.Nonzeros += int64(cols)*int64(cols+1)/2 + int64(cols)*int64(rows-cols)
+		c.Flops += frontFlops(nc, nu)
+		c.LargestFront = max(c.LargestFront, rows)
+	}
+	c.Bytes = 8*(a.panel[c.Fronts]+a.plan.stackFloats()) +
+		4*(2*int64(a.n)+2*int64(len(a.rows))+4*int64(c.Fronts)+2*int64(a.entries)) + 24*int64(c.Fronts) +
+		8*4*int64(a.n)
+}
+
+// frontFlops counts the multiplications and additions of eliminating nc columns
+// with nu update rows, lower triangle only: Σ (r² + r) for r rows below each pivot.
+func frontFlops(nc, nu float64) float64 {
+	sum := func(m float64) float64 { return m*(m+1)*(2*m+1)/6 + m*(m+1)/2 }
+	return sum(nc+nu-1) - sum(nu-1)
+}

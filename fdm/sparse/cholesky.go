@@ -1,0 +1,57 @@
+package sparse
+
+import "math"
+
+// blockColumns is the width of the column blocks of a front.
+const blockColumns = 64
+
+// choleskyPanel factors the first n columns of a front of m rows in place:
+// lower triangle of the n×n top, and the rows below. It returns the column of
+// the first pivot that is not positive and its value, or -1.
+func choleskyPanel(f []float64, ld, m, n int) (int, float64) {
+	for k := 0; k < n; k += blockColumns {
+		w := min(blockColumns, n-k)
+		for j := k; j < k+w; j += 4 {
+			v := min(4, k+w-j)
+			if j > k {
+				mulSub(f[j*ld+j:], ld, f[k*ld+j:], ld, f[k*ld+j:], ld, m-j, v, j-k, false)
+			}
+			if bad, pivot := choleskyStrip(f[j*ld+j:], ld, m-j, v); bad >= 0 {
+				return j + bad, pivot
+			}
+		}
+		if r := k + w; r < n {
+			// Columns of the panel right of the block.
+			for j := r; j < n; j += blockColumns {
+				v := min(blockColumns, n-j)
+				mulSub(f[j*ld+j:], ld, f[k*ld+j:], ld, f[k*ld+j:], ld, m-j, v, w, false)
+			}
+		}
+	}
+	return -1, 0
+}
+
+// choleskyStrip factors n ≤ 4 columns of m rows.
+func choleskyStrip(f []float64, ld, m, n int) (int, float64) {
+	for j := range n {
+		d := f[j*ld+j]
+		if !(d > 0) || d > math.MaxFloat64 {
+			return j, d
+		}
+		root := math.Sqrt(d)
+		inv := 1 / root
+		cj := f[j*ld:][:m]
+		cj[j] = root
+		for i := j + 1; i < m; i++ {
+			cj[i] *= inv
+		}
+		for k := j + 1; k < n; k++ {
+			ck := f[k*ld:][:m]
+			l := cj[k]
+			for i := k; i < m; i++ {
+				ck[i] -= cj[i] * l
+			}
+		}
+	}
+	return -1, 0
+}
