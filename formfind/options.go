@@ -1,0 +1,70 @@
+package formfind
+
+import (
+	"errors"
+	"fmt"
+
+	"anticlast/formfind/canopy"
+	"anticlast/formfind/engine"
+)
+
+// Method chooses how a shape is found.
+type Method uint8
+
+// Methods.
+const (
+	// MethodAuto chains force density, natural force density and Newton as
+	// the structure asks, and falls back on relaxation.
+	MethodAuto Method = iota
+	// MethodRelax finds the shape by dynamic relaxation from the
+	// force-density start.
+	MethodRelax
+)
+
+// ParseMethod reads the name of a method: "auto" or "relax".
+func ParseMethod(s string) (Method, error) {
+	switch s {
+	case "", "auto":
+		return MethodAuto, nil
+	case "relax":
+		return MethodRelax, nil
+	}
+	return 0, fmt.Errorf("unknown method %q: use auto or relax", s)
+}
+
+// Options of [Find] and [Solve]. The zero value is ready to use.
+type Options struct {
+	Method Method
+	// CrossCheck has a second engine find the shape independently and the
+	// two compared; they must agree to 1e-6 of the model's size, else the
+	// result is not trusted.
+	CrossCheck bool
+	// Warm is a Form of the same structure, perhaps with other positions or
+	// prestress, from which to start instead of from force densities.
+	Warm *canopy.Form
+	// Progress, if set, is called now and then.
+	Progress func(engine.Step)
+	// Recorder, if set, records every iteration of every engine.
+	Recorder *engine.Recorder
+}
+
+// ErrEmpty is returned for a structure with nothing to find.
+var ErrEmpty = errors.New("formfind: there is nothing to find: no member and no triangle carries force")
+
+// NoEquilibriumError says that what was asked for cannot be in equilibrium,
+// or that no engine could find equilibrium, with the number that would work
+// where it is known.
+type NoEquilibriumError struct {
+	// Shown is true when a known limit was passed or a collapse was seen,
+	// false when the engines merely did not get there.
+	Shown bool
+	Text  string
+	// Quantity names what was Given beyond its Limit, in SI; empty when not
+	// known.
+	Quantity     string
+	Given, Limit float64
+	// Tried says what was done, in order.
+	Tried []string
+}
+
+func (e *NoEquilibriumError) Error() string { return e.Text }
