@@ -34,8 +34,8 @@ func (a *Analysis) NewFactor(k Kind) (*Factor, error) {
 		return nil, fmt.Errorf("sparse: unknown kind of factorisation %d", int(k))
 	}
 	f := &Factor{a: a, kind: k}
-	f.panels = make([]float64, a.panel[a.fronts()])
-	f.stack = make([]float64, a.plan.stack)
+	f.panels = make([]float64, a.panel[a.fronts()]+slack)
+	f.stack = make([]float64, a.plan.stack+slack)
 	f.work = make([]float64, 4*max(a.n, 1))
 	if k == LDL {
 		f.diag = make([]float64, a.n)

@@ -1,7 +1,12 @@
 package sparse
 
 // The dense work on fronts. All matrices are stored column by column; ld is
-// the distance between columns.
+// the distance between columns. slack floats behind every store of fronts may
+// be read, never written, by the strip kernel.
+const slack = 8
+
+// stripWork bounds m·k of one call of the strip kernel to some 50 µs.
+const stripWork = 1 << 17
 
 // mulSub does C −= A·Bᵀ, or C = −A·Bᵀ if fresh, for C m×n, A m×k, B n×k.
 // Each entry of C is summed over k in ascending order, whatever m and n are.
@@ -9,9 +14,45 @@ func mulSub(c []float64, ldc int, a []float64, lda int, b []float64, ldb int, m,
 	if m <= 0 || n <= 0 {
 		return
 	}
-	mulSubPortable(c, ldc, a, lda, b, ldb, m, n, k, fresh)
+	if k <= 0 {
+		if fresh {
+			for j := range n {
+				clear(c[j*ldc:][:m])
+			}
+		}
+		return
+	}
+	if !haveStrips {
+		mulSubPortable(c, ldc, a, lda, b, ldb, m, n, k, fresh)
+		return
+	}
+	// The accesses of the strips, checked once.
+	_ = c[(n-1)*ldc+m-1]
+	_ = a[(k-1)*lda+m-1]
+	_ = b[(k-1)*ldb+n-1]
+	flag := 0
+	if fresh {
+		flag = 1
+	}
+	if m*k <= stripWork {
+		for j := 0; j < n; j += 4 {
+			mulSubStrip(&c[j*ldc], &a[0], &b[j], ldc, lda, ldb, m, min(4, n-j), k, 8, flag)
+		}
+		return
+	}
+	for l := 0; l < k; l += 256 {
+		kl := min(256, k-l)
+		for i := 0; i < m; i += 512 {
+			mi := min(512, m-i)
+			for j := 0; j < n; j += 4 {
+				mulSubStrip(&c[j*ldc+i], &a[l*lda+i], &b[l*ldb+j], ldc, lda, ldb, mi, min(4, n-j), kl, 8, flag)
+			}
+		}
+		flag = 0
+	}
 }
 
+// mulSubPortable is the same in plain Go.
 func mulSubPortable(c []float64, ldc int, a []float64, lda int, b []float64, ldb int, m, n, k int, fresh bool) {
 	for j := range n {
 		cj := c[j*ldc:][:m]
@@ -42,7 +83,10 @@ func mulSubPortable(c []float64, ldc int, a []float64, lda int, b []float64, ldb
 // mulSubLower does the same for a square C of which only the lower triangle is
 // wanted; parts of the upper one may be overwritten.
 func mulSubLower(c []float64, ldc int, a []float64, lda int, b []float64, ldb int, n, k int, fresh bool) {
-	const step = 32
+	step := 32
+	if haveStrips && n*k <= stripWork {
+		step = 4
+	}
 	for j := 0; j < n; j += step {
 		w := min(step, n-j)
 		mulSub(c[j*ldc+j:], ldc, a[j:], lda, b[j:], ldb, n-j, w, k, fresh)

@@ -1,0 +1,22 @@
+package sparse
+
+import "golang.org/x/sys/cpu"
+
+// haveStrips says that mulSubStrip and scaleStrip may be called: the processor
+// has AVX2 and fused multiply-add. A variable so that tests can compare both
+// paths.
+var haveStrips = cpu.X86.HasAVX2 && cpu.X86.HasFMA
+
+// mulSubStrip does C −= A·Bᵀ (C = −A·Bᵀ if fresh is not 0) for C of m ≥ 1 rows
+// and 1 ≤ n ≤ 4 columns. step is the distance between blocks of eight rows of
+// A: 8, or more if A is packed. The caller keeps m·k below stripWork, since
+// assembly is not preempted.
+//
+//go:noescape
+func mulSubStrip(c, a, b *float64, ldc, lda, ldb, m, n, k, step, fresh int)
+
+// scaleStrip solves X·Tᵀ = C in place for four columns of m rows, m a positive
+// multiple of four.
+//
+//go:noescape
+func scaleStrip(c *float64, ldc, m int, t *[10]float64)

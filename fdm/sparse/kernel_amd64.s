@@ -1,0 +1,291 @@
+#include "textflag.h"
+
+// The one loop that everything large goes through: a strip of C of at most
+// four columns, eight rows at a time, C −= A·Bᵀ. Eight accumulators of four
+// rows each (Y0 to Y7: column j in Y2j, Y2j+1) take two loads of A and four
+// broadcasts of B per step of k.
+
+// func mulSubStrip(c, a, b *float64, ldc, lda, ldb, m, n, k, step, fresh int)
+// Reads up to seven entries beyond column ends of A and three beyond those of B.
+TEXT ·mulSubStrip(SB), NOSPLIT, $0-88
+	MOVQ c+0(FP), DI
+	MOVQ a+8(FP), SI
+	MOVQ b+16(FP), DX
+	MOVQ ldc+24(FP), R8
+	SHLQ $3, R8
+	MOVQ lda+32(FP), R9
+	SHLQ $3, R9
+	MOVQ ldb+40(FP), R10
+	SHLQ $3, R10
+	MOVQ m+48(FP), R11
+	MOVQ n+56(FP), R13
+	MOVQ step+72(FP), R12
+	SHLQ $3, R12
+
+block:
+	VXORPD Y0, Y0, Y0
+	VXORPD Y1, Y1, Y1
+	VXORPD Y2, Y2, Y2
+	VXORPD Y3, Y3, Y3
+	VXORPD Y4, Y4, Y4
+	VXORPD Y5, Y5, Y5
+	VXORPD Y6, Y6, Y6
+	VXORPD Y7, Y7, Y7
+	MOVQ SI, AX
+	MOVQ DX, BX
+	MOVQ k+64(FP), CX
+	SHRQ $1, CX
+	JZ   odd
+
+pair:
+	VMOVUPD      (AX), Y8
+	VMOVUPD      32(AX), Y9
+	VBROADCASTSD (BX), Y10
+	VBROADCASTSD 8(BX), Y11
+	VFNMADD231PD Y8, Y10, Y0
+	VFNMADD231PD Y9, Y10, Y1
+	VFNMADD231PD Y8, Y11, Y2
+	VFNMADD231PD Y9, Y11, Y3
+	VBROADCASTSD 16(BX), Y10
+	VBROADCASTSD 24(BX), Y11
+	ADDQ         R9, AX
+	ADDQ         R10, BX
+	VFNMADD231PD Y8, Y10, Y4
+	VFNMADD231PD Y9, Y10, Y5
+	VFNMADD231PD Y8, Y11, Y6
+	VFNMADD231PD Y9, Y11, Y7
+	VMOVUPD      (AX), Y12
+	VMOVUPD      32(AX), Y13
+	VBROADCASTSD (BX), Y14
+	VBROADCASTSD 8(BX), Y15
+	VFNMADD231PD Y12, Y14, Y0
+	VFNMADD231PD Y13, Y14, Y1
+	VFNMADD231PD Y12, Y15, Y2
+	VFNMADD231PD Y13, Y15, Y3
+	VBROADCASTSD 16(BX), Y14
+	VBROADCASTSD 24(BX), Y15
+	ADDQ         R9, AX
+	ADDQ         R10, BX
+	VFNMADD231PD Y12, Y14, Y4
+	VFNMADD231PD Y13, Y14, Y5
+	VFNMADD231PD Y12, Y15, Y6
+	VFNMADD231PD Y13, Y15, Y7
+	DECQ         CX
+	JNZ          pair
+
+odd:
+	TESTQ $1, k+64(FP)
+	JZ    finish
+	VMOVUPD      (AX), Y8
+	VMOVUPD      32(AX), Y9
+	VBROADCASTSD (BX), Y10
+	VBROADCASTSD 8(BX), Y11
+	VFNMADD231PD Y8, Y10, Y0
+	VFNMADD231PD Y9, Y10, Y1
+	VFNMADD231PD Y8, Y11, Y2
+	VFNMADD231PD Y9, Y11, Y3
+	VBROADCASTSD 16(BX), Y10
+	VBROADCASTSD 24(BX), Y11
+	VFNMADD231PD Y8, Y10, Y4
+	VFNMADD231PD Y9, Y10, Y5
+	VFNMADD231PD Y8, Y11, Y6
+	VFNMADD231PD Y9, Y11, Y7
+
+finish:
+	// The sums are −A·Bᵀ. CX and BX: columns 2 and 3.
+	LEAQ (DI)(R8*2), CX
+	LEAQ (CX)(R8*1), BX
+	CMPQ R11, $8
+	JLT  tail
+	CMPQ fresh+80(FP), $0
+	JNE  put
+	VADDPD (DI), Y0, Y0
+	VADDPD 32(DI), Y1, Y1
+	CMPQ   R13, $2
+	JLT    put
+	VADDPD (DI)(R8*1), Y2, Y2
+	VADDPD 32(DI)(R8*1), Y3, Y3
+	JEQ    put
+	VADDPD (CX), Y4, Y4
+	VADDPD 32(CX), Y5, Y5
+	CMPQ   R13, $4
+	JLT    put
+	VADDPD (BX), Y6, Y6
+	VADDPD 32(BX), Y7, Y7
+
+put:
+	VMOVUPD Y0, (DI)
+	VMOVUPD Y1, 32(DI)
+	CMPQ    R13, $2
+	JLT     next
+	VMOVUPD Y2, (DI)(R8*1)
+	VMOVUPD Y3, 32(DI)(R8*1)
+	JEQ     next
+	VMOVUPD Y4, (CX)
+	VMOVUPD Y5, 32(CX)
+	CMPQ    R13, $4
+	JLT     next
+	VMOVUPD Y6, (BX)
+	VMOVUPD Y7, 32(BX)
+
+next:
+	ADDQ R12, SI
+	ADDQ $64, DI
+	SUBQ $8, R11
+	JNZ  block
+	VZEROUPPER
+	RET
+
+	// Fewer than eight rows: four, two and one.
+tail:
+	TESTQ $4, R11
+	JZ    two
+	CMPQ  fresh+80(FP), $0
+	JNE   put4
+	VADDPD (DI), Y0, Y0
+	CMPQ   R13, $2
+	JLT    put4
+	VADDPD (DI)(R8*1), Y2, Y2
+	JEQ    put4
+	VADDPD (CX), Y4, Y4
+	CMPQ   R13, $4
+	JLT    put4
+	VADDPD (BX), Y6, Y6
+
+put4:
+	VMOVUPD Y0, (DI)
+	CMPQ    R13, $2
+	JLT     shift4
+	VMOVUPD Y2, (DI)(R8*1)
+	JEQ     shift4
+	VMOVUPD Y4, (CX)
+	CMPQ    R13, $4
+	JLT     shift4
+	VMOVUPD Y6, (BX)
+
+shift4:
+	VMOVAPD Y1, Y0
+	VMOVAPD Y3, Y2
+	VMOVAPD Y5, Y4
+	VMOVAPD Y7, Y6
+	ADDQ    $32, DI
+	ADDQ    $32, CX
+	ADDQ    $32, BX
+
+two:
+	TESTQ $2, R11
+	JZ    one
+	CMPQ  fresh+80(FP), $0
+	JNE   put2
+	VADDPD (DI), X0, X8
+	CMPQ   R13, $2
+	JLT    part2
+	VADDPD (DI)(R8*1), X2, X9
+	JEQ    part2
+	VADDPD (CX), X4, X10
+	CMPQ   R13, $4
+	JLT    part2
+	VADDPD (BX), X6, X11
+	JMP    part2
+
+put2:
+	VMOVAPD X0, X8
+	VMOVAPD X2, X9
+	VMOVAPD X4, X10
+	VMOVAPD X6, X11
+
+part2:
+	VMOVUPD X8, (DI)
+	CMPQ    R13, $2
+	JLT     shift2
+	VMOVUPD X9, (DI)(R8*1)
+	JEQ     shift2
+	VMOVUPD X10, (CX)
+	CMPQ    R13, $4
+	JLT     shift2
+	VMOVUPD X11, (BX)
+
+shift2:
+	VEXTRACTF128 $1, Y0, X0
+	VEXTRACTF128 $1, Y2, X2
+	VEXTRACTF128 $1, Y4, X4
+	VEXTRACTF128 $1, Y6, X6
+	ADDQ         $16, DI
+	ADDQ         $16, CX
+	ADDQ         $16, BX
+
+one:
+	TESTQ $1, R11
+	JZ    done
+	CMPQ  fresh+80(FP), $0
+	JNE   put1
+	VADDSD (DI), X0, X0
+	CMPQ   R13, $2
+	JLT    put1
+	VADDSD (DI)(R8*1), X2, X2
+	JEQ    put1
+	VADDSD (CX), X4, X4
+	CMPQ   R13, $4
+	JLT    put1
+	VADDSD (BX), X6, X6
+
+put1:
+	VMOVSD X0, (DI)
+	CMPQ   R13, $2
+	JLT    done
+	VMOVSD X2, (DI)(R8*1)
+	JEQ    done
+	VMOVSD X4, (CX)
+	CMPQ   R13, $4
+	JLT    done
+	VMOVSD X6, (BX)
+
+done:
+	VZEROUPPER
+	RET
+
+// func scaleStrip(c *float64, ldc, m int, t *[10]float64)
+// Solves X·Tᵀ = C for m rows (a multiple of four) of four columns in place. T
+// is lower triangular, by rows, with its diagonal inverted.
+TEXT ·scaleStrip(SB), NOSPLIT, $0-32
+	MOVQ c+0(FP), DI
+	MOVQ ldc+8(FP), R8
+	SHLQ $3, R8
+	MOVQ m+16(FP), CX
+	MOVQ t+24(FP), DX
+	LEAQ (DI)(R8*2), SI
+	VBROADCASTSD (DX), Y4
+	VBROADCASTSD 8(DX), Y5
+	VBROADCASTSD 16(DX), Y6
+	VBROADCASTSD 24(DX), Y7
+	VBROADCASTSD 32(DX), Y8
+	VBROADCASTSD 40(DX), Y9
+	VBROADCASTSD 48(DX), Y10
+	VBROADCASTSD 56(DX), Y11
+	VBROADCASTSD 64(DX), Y12
+	VBROADCASTSD 72(DX), Y13
+
+rows:
+	VMULPD       (DI), Y4, Y0
+	VMOVUPD      (DI)(R8*1), Y1
+	VMOVUPD      (SI), Y2
+	VMOVUPD      (SI)(R8*1), Y3
+	VFNMADD231PD Y0, Y5, Y1
+	VFNMADD231PD Y0, Y7, Y2
+	VFNMADD231PD Y0, Y10, Y3
+	VMULPD       Y1, Y6, Y1
+	VFNMADD231PD Y1, Y8, Y2
+	VFNMADD231PD Y1, Y11, Y3
+	VMULPD       Y2, Y9, Y2
+	VFNMADD231PD Y2, Y12, Y3
+	VMULPD       Y3, Y13, Y3
+	VMOVUPD      Y0, (DI)
+	VMOVUPD      Y1, (DI)(R8*1)
+	VMOVUPD      Y2, (SI)
+	VMOVUPD      Y3, (SI)(R8*1)
+	ADDQ         $32, DI
+	ADDQ         $32, SI
+	SUBQ         $4, CX
+	JNZ          rows
+	VZEROUPPER
+	RET

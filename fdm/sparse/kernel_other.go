@@ -1,0 +1,13 @@
+//go:build !amd64
+
+package sparse
+
+const haveStrips = false
+
+func mulSubStrip(c, a, b *float64, ldc, lda, ldb, m, n, k, step, fresh int) {
+	panic("sparse: no strip kernel on this machine")
+}
+
+func scaleStrip(c *float64, ldc, m int, t *[10]float64) {
+	panic("sparse: no strip kernel on this machine")
+}
