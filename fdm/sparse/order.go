@@ -11,8 +11,15 @@ func orderGraph(ctx context.Context, g graph, o Ordering) ([]int32, Ordering, er
 		for i := range int32(g.n) {
 			order = append(order, i)
 		}
-		return order, OrderNatural, nil
+	case OrderMinimumDegree:
+		order = minimumDegree(g, order)
+	case OrderDissection:
+		order = dissect(ctx, g, nil, order)
 	default:
+		if g.n >= dissectFrom {
+			return dissect(ctx, g, nil, order), OrderDissection, ctx.Err()
+		}
 		return minimumDegree(g, order), OrderMinimumDegree, ctx.Err()
 	}
+	return order, o, ctx.Err()
 }
