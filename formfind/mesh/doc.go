@@ -1,0 +1,33 @@
+// Package mesh turns what the designer drew into what engines solve: a
+// canopy.Model of points, edges, fabrics, nets, rings, masts and guys becomes a
+// canopy.Structure of nodes, members and triangles.
+//
+// # How a model is divided
+//
+// Every edge is divided once and its nodes are shared by all that meets along
+// it, so that parts fit by construction and never by a tolerance. How many mesh
+// sides an edge gets follows from the wanted length of a side (the fabric's, the
+// model's, or one chosen so that the whole canopy has about 1,600 triangles),
+// from the spacing of net lines, or from the edge itself (Edge.Segments), which
+// wins. Patches relate the edges around them:
+//
+//   - four sides (or a boundary whose corners group it into four sides with as
+//     many edges on opposite ones): a grid by transfinite interpolation
+//     (Coons 1967); opposite sides are divided alike;
+//   - three sides: a triangular grid; all sides alike;
+//   - two sides, each broken in its middle: two triangular grids back to back;
+//   - five sides or more: each side is halved and joined to the middle, one
+//     grid at each corner (midpoint subdivision); all sides alike and even;
+//   - around a ring, any number of sides, divided as they like: radial lines
+//     with layers whose depth grows with the distance from the ring.
+//
+// Numbers of sides chosen here are even, and diagonals mirror about the middle
+// of a patch, so that a symmetric model has a symmetric mesh.
+//
+// # Names
+//
+// A node at a point carries the point's name, nodes along edge AB are AB:1,
+// AB:2, … from its first point, members along it AB:1, AB:2, …; nodes inside
+// fabric sail are sail:1, …, of ring top top:1, …; line 3 of the first family
+// of net roof is roof/1:3 and its links roof/1:3:1, ….
+package mesh
