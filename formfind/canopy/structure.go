@@ -126,6 +126,11 @@ type Fabric struct {
 	WarpStrength, WeftStrength float64
 	Weight                     float64 // self weight, N/m²; 0 = none
 	Pressure                   float64 // internal pressure (follower) towards the positive side of its triangles, Pa
+	// WarpRule is how the warp was laid, so that a finer mesh can lay it
+	// anew; WarpAxis (unit) and WarpCentre are the axis of the ring for
+	// WarpRadial and WarpAround.
+	WarpRule             WarpRule
+	WarpAxis, WarpCentre r3.Vec
 }
 
 // Ring is the ring of a high or low point.
