@@ -192,9 +192,9 @@ func (b *builder) stays() {
 		case st.Length != 0:
 			m.law = canopy.LawCable
 			c.Law, c.Value = canopy.CableLength, st.Length
-		case st.Stiffness != 0:
-			if !(st.Unstressed > 0) {
-				b.fail(stayPart(st), st.Name, st.Line, Missing, "give it too", "it has a stiffness but no unstressed length")
+		case st.Unstressed != 0:
+			if !(st.Stiffness > 0) {
+				b.fail(stayPart(st), st.Name, st.Line, Missing, "give it too", "it has an unstressed length but no stiffness")
 				continue
 			}
 			m.law, m.unstressed = canopy.LawElastic, st.Unstressed

@@ -366,6 +366,9 @@ func (b *builder) fill() {
 		f := b.m.Fabrics[l.index]
 		prop := f.Properties
 		prop.Name = f.Name
+		if prop.WarpRule = f.WarpRule; f.WarpRule != canopy.WarpAlong {
+			prop.WarpAxis, prop.WarpCentre = b.ringAxis(l.ring), b.ringAt(l)
+		}
 		s.Fabrics = append(s.Fabrics, prop)
 		from := len(s.Corners)
 		l.patch.fill(&plot{b: b, l: l})
@@ -390,42 +393,47 @@ func (b *builder) warp(l *loop, from int) {
 	for t := from; t < len(s.Corners); t++ {
 		c := s.Corners[t]
 		p, q, r := s.Position[c[0]], s.Position[c[1]], s.Position[c[2]]
-		normal := r3.Cross(r3.Sub(q, p), r3.Sub(r, p))
-		if !(r3.Norm(normal) > 1e-9*max(r3.Norm2(r3.Sub(q, p)), r3.Norm2(r3.Sub(r, p)), r3.Norm2(r3.Sub(r, q)))) {
-			v := mid(p, mid(q, r))
+		v := r3.Scale(1.0/3, r3.Add(p, r3.Add(q, r)))
+		if !hasArea(p, q, r) {
 			b.fail("fabric", l.name, l.line, Degenerate, "give the edges another number of segments, divide the fabric, or move the points so that its boundary is not folded",
 				"the start mesh has a triangle without area at [%.3f, %.3f, %.3f]", v.X, v.Y, v.Z)
 			return
 		}
-		normal = r3.Unit(normal)
+		normal := r3.Unit(r3.Cross(r3.Sub(q, p), r3.Sub(r, p)))
 		w := along
 		if f.WarpRule != canopy.WarpAlong {
-			centre, axis := b.ringAt(l), b.ringAxis(l.ring)
-			d := r3.Sub(r3.Scale(1.0/3, r3.Add(p, r3.Add(q, r))), centre)
-			around := r3.Cross(axis, d)
-			// Around the axis, and in the surface at right angles to that.
-			if r3.Norm(around) > 0 {
-				around = r3.Unit(around)
-			}
-			if w = around; f.WarpRule == canopy.WarpRadial {
-				w = r3.Cross(around, normal)
-				if r3.Dot(w, d) < 0 {
-					w = r3.Scale(-1, w)
-				}
-				if n := r3.Norm(w); n > 0 {
-					w = r3.Scale(1/n, w)
-				}
-			}
+			w = warpAbout(f.WarpRule, b.ringAxis(l.ring), r3.Sub(v, b.ringAt(l)), normal)
 		}
 		flat := r3.Norm(r3.Sub(w, r3.Scale(r3.Dot(w, normal), normal)))
 		if !(flat > minWarp) {
-			v := mid(p, mid(q, r))
 			b.fail("fabric", l.name, l.line, NoWarp, "give another direction for the warp, or divide the fabric",
 				"the warp direction (%s) is at right angles to the surface near [%.3f, %.3f, %.3f] and so undefined there", warpWord(f.WarpRule), v.X, v.Y, v.Z)
 			return
 		}
 		s.Warp = append(s.Warp, w)
 	}
+}
+
+// warpAbout returns the unit warp direction at offset d from a centre on the
+// axis: around the axis, or radial, which is in the surface and at right angles
+// to that. Zero where it is undefined.
+func warpAbout(rule canopy.WarpRule, axis, d, normal r3.Vec) r3.Vec {
+	around := r3.Cross(axis, d)
+	if r3.Norm(around) == 0 {
+		return r3.Vec{}
+	}
+	around = r3.Unit(around)
+	if rule == canopy.WarpAround {
+		return around
+	}
+	w := r3.Cross(around, normal)
+	if r3.Norm(w) == 0 {
+		return r3.Vec{}
+	}
+	if r3.Dot(w, d) < 0 {
+		w = r3.Scale(-1, w)
+	}
+	return r3.Unit(w)
 }
 
 // minWarp is the least length of a unit warp direction projected into the

@@ -56,9 +56,8 @@ func (b *builder) ringNodes() {
 			b.s.Fixed[nodes[j]] = fixed
 		}
 		b.ringNode[ri] = nodes
-		ring := canopy.Ring{Name: r.Name, Centre: b.node[p], Nodes: nodes, Rigid: r.Rigid, Free: r.Free, Cable: -1}
+		ring := canopy.Ring{Name: r.Name, Centre: b.node[p], Nodes: nodes, Rigid: r.Rigid, Free: r.Free, Weight: r.Weight, Cable: -1}
 		if r.Rigid {
-			ring.Weight = r.Weight
 			if r.Free == 0 {
 				ring.Free = canopy.DirAll &^ (b.fixed[p] | b.held[p])
 			}
@@ -74,7 +73,7 @@ func (b *builder) ringCable(r canopy.ModelRing, nodes []int32) int32 {
 	closed := append(append(make([]int32, 0, len(nodes)+1), nodes...), nodes[0])
 	k := b.chainMembers(r.Name, canopy.KindRingCable, closed, member{
 		group: r.Name, kind: canopy.KindRingCable, law: canopy.LawForce, given: r.Force,
-		strength: r.Strength, weight: r.Weight / (2 * math.Pi * r.Radius),
+		strength: r.Strength,
 	})
 	if r.Hangers > len(nodes) {
 		b.fail("ring", r.Name, r.Line, Conflict, "use fewer hangers or a finer mesh", "it has %d hangers but only %d nodes", r.Hangers, len(nodes))

@@ -117,7 +117,7 @@ func (b *builder) supports() {
 // toFind reports whether the force of a mast or guy is found from the balance
 // of the points at its ends.
 func toFind(s canopy.Stay) bool {
-	return !s.HasForce && s.Force == 0 && s.Length == 0 && s.Stiffness == 0
+	return !s.HasForce && s.Force == 0 && s.Length == 0 && s.Unstressed == 0
 }
 
 // pointNodes makes a node of every point that something refers to.
