@@ -1,0 +1,347 @@
+package newton
+
+import (
+	"math"
+
+	"gonum.org/v1/gonum/spatial/r3"
+
+	"anticlast/formfind/canopy"
+	"anticlast/formfind/element"
+)
+
+// tension is the state of member m at the given length.
+func (v *Solver) tension(m int, length float64, common []float64) element.Tension {
+	s := v.s
+	switch s.Law[m] {
+	case canopy.LawForceDensity:
+		return element.GivenDensity(s.Given[m], length)
+	case canopy.LawElastic:
+		return element.Elastic(s.Stiffness[m], s.Unstressed[m], length, s.Kind[m].Pushes())
+	case canopy.LawCable:
+		return element.GivenForce(common[v.comOf[m]], length)
+	}
+	return element.GivenForce(s.Given[m], length)
+}
+
+// potential reports whether the residual is the gradient of the energy that
+// evaluate computes: no pressure, no weight that changes with the shape.
+func (v *Solver) potential() bool {
+	s := v.s
+	for f := range s.Fabrics {
+		if s.Fabrics[f].Pressure != 0 || (s.SelfWeight && s.Fabrics[f].Weight != 0) {
+			return false
+		}
+	}
+	if s.SelfWeight && s.Weight != nil {
+		for m, w := range s.Weight {
+			if w != 0 && (s.Unstressed == nil || s.Unstressed[m] == 0) {
+				return false
+			}
+		}
+	}
+	return true
+}
+
+// evaluate computes everything of st that follows from its positions and
+// common forces.
+func (v *Solver) evaluate(st *state) {
+	s := v.s
+	at := st.at
+	v.refreshBasis(at, st.basis)
+	st.collapse = none
+	for i := range at {
+		l := s.LoadAt(i)
+		st.pull[i] = l
+		st.size[i] = r3.Norm(l)
+	}
+	energy := 0.0
+	for i := range at {
+		if s.Load != nil {
+			energy -= r3.Dot(s.Load[i], r3.Sub(at[i], s.Position[i]))
+		}
+	}
+	for m, e := range s.Ends {
+		if !v.active[m] {
+			continue
+		}
+		t, l, ok := element.Line(at[e[0]], at[e[1]])
+		if !ok {
+			st.collapse = int32(-1 - m)
+			continue
+		}
+		f := v.tension(m, l, st.force)
+		energy += f.Energy
+		p := r3.Scale(f.Force, t)
+		st.pull[e[0]] = r3.Add(st.pull[e[0]], p)
+		st.pull[e[1]] = r3.Sub(st.pull[e[1]], p)
+		size := math.Abs(f.Force)
+		st.size[e[0]] += size
+		st.size[e[1]] += size
+		if s.SelfWeight && s.Weight != nil && s.Weight[m] != 0 {
+			w := s.Weight[m] * l
+			if s.Unstressed != nil && s.Unstressed[m] > 0 {
+				w = s.Weight[m] * s.Unstressed[m]
+			}
+			for _, i := range e {
+				energy += 0.5 * w * at[i].Z
+				st.pull[i].Z -= 0.5 * w
+				st.size[i] += 0.5 * w
+			}
+		}
+	}
+	for k, c := range s.Corners {
+		tri, ok := element.NewTriangle(at[c[0]], at[c[1]], at[c[2]])
+		if !ok {
+			st.collapse = int32(k)
+			continue
+		}
+		fabric := &s.Fabrics[s.FabricOf[k]]
+		stress := s.Stress[k][0]
+		f := tri.FilmPull(stress)
+		energy += stress * tri.Area
+		for j, i := range c {
+			st.pull[i] = r3.Add(st.pull[i], f[j])
+			st.size[i] += 0.5 * stress * r3.Norm(tri.Edge[j])
+		}
+		if fabric.Pressure != 0 {
+			p := tri.PressurePush(fabric.Pressure)
+			size := math.Abs(fabric.Pressure) * tri.Area / 3
+			for _, i := range c {
+				st.pull[i] = r3.Add(st.pull[i], p)
+				st.size[i] += size
+			}
+		}
+		if s.SelfWeight && fabric.Weight != 0 {
+			w := fabric.Weight * tri.Area / 3
+			for _, i := range c {
+				st.pull[i].Z -= w
+				st.size[i] += w
+			}
+		}
+	}
+	if s.SelfWeight {
+		for r := range s.Rings {
+			rg := &s.Rings[r]
+			if rg.Weight == 0 {
+				continue
+			}
+			if rg.Rigid && rg.Centre >= 0 {
+				st.pull[rg.Centre].Z -= rg.Weight
+				st.size[rg.Centre] += rg.Weight
+				energy += rg.Weight * at[rg.Centre].Z
+				continue
+			}
+			w := rg.Weight / float64(len(rg.Nodes))
+			for _, i := range rg.Nodes {
+				st.pull[i].Z -= w
+				st.size[i] += w
+				energy += w * at[i].Z
+			}
+		}
+	}
+	if s.Master != nil {
+		for i, m := range s.Master {
+			if m >= 0 {
+				st.size[m] += st.size[i]
+			}
+		}
+	}
+	st.energy = energy
+	for i := range st.reduced {
+		st.reduced[i] = 0
+	}
+	for i := range at {
+		if v.first[i] < 0 {
+			continue
+		}
+		for a, b := range st.basis[v.start[i]:v.start[i+1]] {
+			st.reduced[int(v.first[i])+a] += r3.Dot(b, st.pull[i])
+		}
+	}
+	v.conditions(st)
+	var r2, s2, most float64
+	st.worst, st.worstAt = 0, 0
+	for i := range at {
+		if v.first[i] < 0 || v.cls[i] == tied {
+			continue
+		}
+		n2 := 0.0
+		for a := range v.directions(int32(i)) {
+			r := st.reduced[int(v.first[i])+a]
+			n2 += r * r
+		}
+		r2 += n2
+		s2 += st.size[i] * st.size[i]
+		most = max(most, st.size[i])
+		if n2 > st.worst {
+			st.worst, st.worstAt = n2, int32(i)
+		}
+	}
+	st.eta = ratio(math.Sqrt(r2), math.Sqrt(s2))
+	st.worst = ratio(math.Sqrt(st.worst), most)
+	m2 := st.eta * st.eta
+	for c := range v.commons {
+		g := st.gap[c] / v.commons[c].scale
+		m2 += g * g
+	}
+	st.merit = math.Sqrt(m2)
+	if !(st.merit < math.Inf(1)) {
+		st.merit = math.Inf(1)
+	}
+}
+
+func ratio(a, b float64) float64 {
+	if a == 0 {
+		return 0
+	}
+	return a / b
+}
+
+// assemble computes Bᵀ·H·B at st into v.values.
+func (v *Solver) assemble(st *state) {
+	s := v.s
+	p := v.pattern
+	at := st.at
+	for i := range v.values {
+		v.values[i] = 0
+	}
+	for m, e := range s.Ends {
+		if !v.active[m] {
+			continue
+		}
+		i, j := e[0], e[1]
+		if v.first[i] < 0 && v.first[j] < 0 {
+			continue
+		}
+		t, l, ok := element.Line(at[i], at[j])
+		if !ok {
+			continue
+		}
+		k := element.MemberTangent(t, l, v.tension(m, l, st.force))
+		v.addOwn(st, i, &k)
+		v.addOwn(st, j, &k)
+		k.Scale(-1)
+		v.addPair(st, i, j, &k, p.member[m])
+	}
+	for t, c := range s.Corners {
+		if v.first[c[0]] < 0 && v.first[c[1]] < 0 && v.first[c[2]] < 0 {
+			continue
+		}
+		tri, ok := element.NewTriangle(at[c[0]], at[c[1]], at[c[2]])
+		if !ok {
+			continue
+		}
+		v.addFilm(st, c, &tri, s.Stress[t][0], s.Fabrics[s.FabricOf[t]].Pressure, p.triangle[t])
+	}
+	// Directions that do not exist at this shape, and those that nothing
+	// resists or drives, stay where they are.
+	mean := v.meanDiagonal()
+	for i := range v.unknown {
+		if v.values[i] == 0 && st.reduced[i] == 0 {
+			v.values[i] = mean
+		}
+	}
+}
+
+func (v *Solver) meanDiagonal() float64 {
+	sum := 0.0
+	for _, d := range v.values[:v.unknown] {
+		sum += math.Abs(d)
+	}
+	if sum == 0 {
+		return 1
+	}
+	return sum / float64(v.unknown)
+}
+
+// addOwn adds the block h of node i with itself.
+func (v *Solver) addOwn(st *state, i int32, h *element.Block) {
+	f := v.first[i]
+	if f < 0 {
+		return
+	}
+	b := st.basis[v.start[i]:v.start[i+1]]
+	own := v.pattern.own[i]
+	for a := range b {
+		ha := h.Mul(b[a])
+		v.values[int(f)+a] += r3.Dot(b[a], ha)
+		for c := a + 1; c < len(b); c++ {
+			v.values[int(own)+a+c-1] += r3.Dot(b[c], ha)
+		}
+	}
+}
+
+// addPair adds the block h of node i with node j (rows i, columns j), which
+// stands for its transpose as well.
+func (v *Solver) addPair(st *state, i, j int32, h *element.Block, slot int32) {
+	if slot == -1 {
+		return
+	}
+	bi := st.basis[v.start[i]:v.start[i+1]]
+	bj := st.basis[v.start[j]:v.start[j+1]]
+	for b := range bj {
+		hb := h.Mul(bj[b])
+		for a := range bi {
+			v.put(i, j, a, b, len(bi), len(bj), slot, r3.Dot(bi[a], hb))
+		}
+	}
+}
+
+// put adds x to the value of directions a of node i and b of node j.
+func (v *Solver) put(i, j int32, a, b, ni, nj int, slot int32, x float64) {
+	switch {
+	case slot == sameNode:
+		if a == b {
+			v.values[int(v.first[i])+a] += 2 * x
+		} else {
+			v.values[int(v.pattern.own[i])+a+b-1] += x
+		}
+	case v.first[i] < v.first[j]:
+		v.values[int(slot)+a*nj+b] += x
+	default:
+		v.values[int(slot)+b*ni+a] += x
+	}
+}
+
+// addFilm adds a triangle of uniform stress and pressure. The block of corners
+// i and its successor j is σ(eᵢ·eⱼ)/(4A)·n·nᵀ − ½σ[n]ₓ plus the symmetric part
+// of the pressure's, (p/12)[eᵢ − eⱼ]ₓ.
+func (v *Solver) addFilm(st *state, c [3]int32, tri *element.Triangle, stress, pressure float64, slots [3]int32) {
+	n := tri.Normal
+	f := stress / (4 * tri.Area)
+	for k, i := range c {
+		fi := v.first[i]
+		if fi < 0 {
+			continue
+		}
+		bi := st.basis[v.start[i]:v.start[i+1]]
+		w := f * r3.Norm2(tri.Edge[k])
+		own := int(v.pattern.own[i])
+		for a := range bi {
+			pa := w * r3.Dot(n, bi[a])
+			v.values[int(fi)+a] += pa * r3.Dot(n, bi[a])
+			for b := a + 1; b < len(bi); b++ {
+				v.values[own+a+b-1] += pa * r3.Dot(n, bi[b])
+			}
+		}
+		slot := slots[k]
+		if slot == -1 {
+			continue
+		}
+		l := (k + 1) % 3
+		j := c[l]
+		bj := st.basis[v.start[j]:v.start[j+1]]
+		w = f * r3.Dot(tri.Edge[k], tri.Edge[l])
+		skew := r3.Scale(-0.5*stress, n)
+		if pressure != 0 {
+			skew = r3.Add(skew, r3.Scale(pressure/12, r3.Sub(tri.Edge[k], tri.Edge[l])))
+		}
+		for b := range bj {
+			wb := w * r3.Dot(n, bj[b])
+			q := r3.Cross(skew, bj[b])
+			for a := range bi {
+				v.put(i, j, a, b, len(bi), len(bj), slot, wb*r3.Dot(n, bi[a])+r3.Dot(bi[a], q))
+			}
+		}
+	}
+}

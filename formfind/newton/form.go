@@ -1,0 +1,67 @@
+package newton
+
+import (
+	"fmt"
+
+	"gonum.org/v1/gonum/spatial/r3"
+
+	"anticlast/formfind/canopy"
+	"anticlast/formfind/element"
+)
+
+// form makes the result of a state.
+func (v *Solver) form(st *state) (*canopy.Form, error) {
+	s := v.s
+	f := canopy.NewForm(s)
+	copy(f.Position, st.at)
+	for m, e := range s.Ends {
+		if !v.active[m] {
+			continue
+		}
+		_, l, ok := element.Line(st.at[e[0]], st.at[e[1]])
+		if ok {
+			f.Force[m] = v.tension(m, l, st.force).Force
+		}
+	}
+	for t, c := range s.Corners {
+		f.Stress[t] = canopy.Stress{Warp: s.Stress[t][0], Weft: s.Stress[t][1]}
+		tri, ok := element.NewTriangle(st.at[c[0]], st.at[c[1]], st.at[c[2]])
+		if !ok {
+			f.Warp[t] = s.Warp[t]
+			continue
+		}
+		w, _, err := tri.ProjectWarp(s.Warp[t])
+		if err != nil {
+			return nil, fmt.Errorf("newton: triangle %d of fabric %s at (%.3f, %.3f, %.3f) m: %w", t, s.Fabrics[s.FabricOf[t]].Name, st.at[c[0]].X, st.at[c[0]].Y, st.at[c[0]].Z, err)
+		}
+		f.Warp[t] = w
+	}
+	// What a support must add to the pulls in the directions it holds. A
+	// tied node hands the rest to its centre.
+	carried := make([]r3.Vec, len(st.at))
+	copy(carried, st.pull)
+	for i, m := range s.Master {
+		if m >= 0 {
+			p := mask(s.Fixed[i], st.pull[i])
+			carried[m] = r3.Add(carried[m], p)
+			carried[i] = r3.Sub(carried[i], p)
+		}
+	}
+	for i := range f.Reaction {
+		f.Reaction[i] = r3.Scale(-1, mask(canopy.DirAll&^s.Fixed[i], carried[i]))
+	}
+	for r := range s.Rings {
+		rg := &s.Rings[r]
+		if !rg.Rigid || rg.Centre < 0 {
+			continue
+		}
+		for _, i := range rg.Nodes {
+			if s.MasterOf(int(i)) != rg.Centre {
+				continue
+			}
+			p := mask(s.Fixed[i], st.pull[i])
+			f.Couple[r] = r3.Sub(f.Couple[r], r3.Cross(r3.Sub(st.at[i], st.at[rg.Centre]), p))
+		}
+	}
+	return f, nil
+}

@@ -1,0 +1,510 @@
+package newton
+
+import (
+	"context"
+	"errors"
+	"fmt"
+	"math"
+
+	"gonum.org/v1/gonum/spatial/r3"
+
+	"anticlast/fdm/sparse"
+	"anticlast/formfind/canopy"
+	"anticlast/formfind/element"
+	"anticlast/formfind/engine"
+)
+
+const (
+	// A triangle that has lost this share of its area, or a member of its
+	// length, has collapsed.
+	collapsed = 1e-3
+	// One step may not take a triangle's area, seen along its normal, or a
+	// member's length below this share.
+	keep = 0.15
+	// A step is not shortened below this share.
+	shortest = 1.0 / 4096
+	// Steps that reduce neither residual nor energy taken before giving up.
+	patience = 6
+)
+
+// step is a Newton step: moves by unknown, and changes of the common forces.
+type step struct {
+	u       []float64
+	force   []float64
+	slope   float64 // derivative of the energy along u at the new common forces
+	shifted bool
+}
+
+// measure keeps the sizes of the elements at the start.
+func (v *Solver) measure(at []r3.Vec) error {
+	for t, c := range v.s.Corners {
+		tri, ok := element.NewTriangle(at[c[0]], at[c[1]], at[c[2]])
+		if !ok {
+			return &DegenerateError{Element: "triangle", Index: int32(t), Name: fmt.Sprint(t)}
+		}
+		v.areaStart[t] = tri.Area
+	}
+	for m, e := range v.s.Ends {
+		if !v.active[m] {
+			continue
+		}
+		_, l, ok := element.Line(at[e[0]], at[e[1]])
+		if !ok {
+			return &DegenerateError{Element: "member", Index: int32(m), Name: v.s.MemberName.At(m)}
+		}
+		v.lengthStart[m] = l
+	}
+	return nil
+}
+
+func (v *Solver) iterate(ctx context.Context, set engine.Settings) (engine.Outcome, error) {
+	out := engine.Outcome{NegativePivots: -1}
+	size := v.modelSize(v.now.at)
+	hasEnergy := v.potential()
+	v.evaluate(&v.now)
+	refused := 0
+	st := step{u: make([]float64, v.unknown), force: make([]float64, len(v.commons))}
+	for it := 0; ; it++ {
+		if err := ctx.Err(); err != nil {
+			return out, err
+		}
+		out.Iterations, out.Residual, out.Worst = it, v.now.eta, v.now.worst
+		set.Recorder.Record(engine.Row{Engine: Name, Iteration: it, Residual: v.now.merit, Energy: v.now.energy})
+		if set.Progress != nil {
+			set.Progress(engine.Step{Engine: Name, Stage: "balancing", Iteration: it, Residual: v.now.merit, Target: set.Residual})
+		}
+		if why := v.lost(&v.now); why != "" {
+			out.Status, out.Why = engine.Diverged, why
+			return out, nil
+		}
+		if v.unknown == 0 {
+			out.Status, out.NegativePivots = engine.Converged, 0
+			return out, nil
+		}
+		v.assemble(&v.now)
+		v.columnsOf(&v.now)
+		err := v.newtonStep(ctx, &v.now, &st)
+		if err != nil {
+			return out, err
+		}
+		move := v.largestMove(&v.now, st.u)
+		out.Move = move / size
+		if v.now.eta <= set.Residual && v.now.worst <= set.Worst && v.gapsMet(set.Residual) && out.Move <= set.Move {
+			out.Status = engine.Converged
+			out.NegativePivots, err = v.negative(ctx)
+			return out, err
+		}
+		if it == set.MaxIterations {
+			out.Status = engine.Stalled
+			out.Why = fmt.Sprintf("not in balance after %d steps: residual %.2g of the forces that meet (wanted %.2g), largest at node %s", it, v.now.eta, set.Residual, v.s.NodeName.At(int(v.now.worstAt)))
+			out.NegativePivots, err = v.negative(ctx)
+			return out, err
+		}
+		// Take the step, or as much of it as helps.
+		alpha := 1.0
+		if most := 0.25 * size; move > most {
+			alpha = most / move
+		}
+		for alpha > shortest && !v.keepsShape(alpha, st.u) {
+			alpha /= 2
+		}
+		if alpha <= shortest {
+			out.Status = engine.Diverged
+			out.Why = fmt.Sprintf("triangles or members near node %s fold over at the smallest step: there is no equilibrium nearby", v.s.NodeName.At(int(v.now.worstAt)))
+			out.NegativePivots, err = v.negative(ctx)
+			return out, err
+		}
+		copy(v.trial.force, st.force)
+		longest := alpha
+		taken := false
+		// Energy at the present shape with the new common forces.
+		energy := v.now.energy
+		if hasEnergy {
+			for k := range v.commons {
+				energy += (st.force[k] - v.now.force[k]) * v.lengthOf(k, v.now.at)
+			}
+		}
+		for ; alpha > longest/2048; alpha /= 2 {
+			v.moveTrial(alpha, st.u)
+			copy(v.trial.force, st.force)
+			v.evaluate(&v.trial)
+			if v.trial.collapse != none || math.IsInf(v.trial.merit, 1) {
+				continue
+			}
+			if v.trial.merit <= (1-1e-4*alpha)*v.now.merit {
+				taken = true
+				break
+			}
+			if hasEnergy && st.slope < 0 && v.trial.energy <= energy+1e-4*alpha*st.slope && -alpha*st.slope > 1e-12*math.Abs(energy) {
+				taken = true
+				break
+			}
+		}
+		if !taken {
+			refused++
+			if refused > patience {
+				out.Status = engine.Stalled
+				out.Why = fmt.Sprintf("no step reduces the residual below %.2g of the forces that meet, largest at node %s", v.now.merit, v.s.NodeName.At(int(v.now.worstAt)))
+				out.NegativePivots, err = v.negative(ctx)
+				return out, err
+			}
+			v.moveTrial(longest, st.u)
+			copy(v.trial.force, st.force)
+			v.evaluate(&v.trial)
+			if v.trial.collapse != none || math.IsInf(v.trial.merit, 1) {
+				out.Status = engine.Diverged
+				out.Why = v.collapseText(v.trial.collapse)
+				return out, nil
+			}
+		}
+		v.now, v.trial = v.trial, v.now
+	}
+}
+
+func (v *Solver) gapsMet(tol float64) bool {
+	for k := range v.commons {
+		if math.Abs(v.now.gap[k]) > tol*v.commons[k].scale {
+			return false
+		}
+	}
+	return true
+}
+
+// modelSize is the diagonal of the box around all nodes.
+func (v *Solver) modelSize(at []r3.Vec) float64 {
+	lo, hi := canopy.Bounds(at)
+	return max(r3.Norm(r3.Sub(hi, lo)), math.SmallestNonzeroFloat64)
+}
+
+// lost says in plain words which element has collapsed, "" when none has.
+func (v *Solver) lost(st *state) string {
+	if st.collapse != none {
+		return v.collapseText(st.collapse)
+	}
+	for t, c := range v.s.Corners {
+		tri, ok := element.NewTriangle(st.at[c[0]], st.at[c[1]], st.at[c[2]])
+		if !ok || tri.Area < collapsed*v.areaStart[t] {
+			return v.collapseText(int32(t))
+		}
+	}
+	for m, e := range v.s.Ends {
+		if !v.active[m] {
+			continue
+		}
+		if _, l, ok := element.Line(st.at[e[0]], st.at[e[1]]); !ok || l < collapsed*v.lengthStart[m] {
+			return v.collapseText(int32(-1 - m))
+		}
+	}
+	return ""
+}
+
+func (v *Solver) collapseText(k int32) string {
+	switch {
+	case k == none:
+		return "the shape has left the range of numbers"
+	case k < 0:
+		return fmt.Sprintf("member %s has shrunk to nothing: no equilibrium with these forces was found", v.s.MemberName.At(int(-1-k)))
+	}
+	c := v.s.Corners[k]
+	p := r3.Scale(1.0/3, r3.Add(r3.Add(v.now.at[c[0]], v.now.at[c[1]]), v.now.at[c[2]]))
+	return fmt.Sprintf("the surface necks: triangles collapse near node %s (x %.3f, y %.3f, z %.3f m), so no equilibrium with these stresses was found", v.s.NodeName.At(int(c[0])), p.X, p.Y, p.Z)
+}
+
+// moveTrial puts the trial's nodes alpha·u away from those of now.
+func (v *Solver) moveTrial(alpha float64, u []float64) {
+	now, to := &v.now, &v.trial
+	for i := range now.at {
+		p := now.at[i]
+		if v.first[i] >= 0 && v.cls[i] != tied {
+			for a, b := range now.basis[v.start[i]:v.start[i+1]] {
+				p = r3.Add(p, r3.Scale(alpha*u[int(v.first[i])+a], b))
+			}
+		}
+		to.at[i] = p
+	}
+	v.follow(to.at)
+}
+
+// keepsShape reports whether no triangle is turned over or crushed and no
+// member crushed by alpha·u.
+func (v *Solver) keepsShape(alpha float64, u []float64) bool {
+	v.moveTrial(alpha, u)
+	at, to := v.now.at, v.trial.at
+	for _, c := range v.s.Corners {
+		a := r3.Cross(r3.Sub(at[c[1]], at[c[0]]), r3.Sub(at[c[2]], at[c[0]]))
+		b := r3.Cross(r3.Sub(to[c[1]], to[c[0]]), r3.Sub(to[c[2]], to[c[0]]))
+		if !(r3.Dot(a, b) >= keep*r3.Norm2(a)) {
+			return false
+		}
+	}
+	for m, e := range v.s.Ends {
+		if !v.active[m] {
+			continue
+		}
+		if !(r3.Norm2(r3.Sub(to[e[1]], to[e[0]])) >= keep*keep*r3.Norm2(r3.Sub(at[e[1]], at[e[0]]))) {
+			return false
+		}
+	}
+	return true
+}
+
+func (v *Solver) largestMove(st *state, u []float64) float64 {
+	most := 0.0
+	for i := range st.at {
+		if v.first[i] < 0 || v.cls[i] == tied {
+			continue
+		}
+		n2 := 0.0
+		for a, b := range st.basis[v.start[i]:v.start[i+1]] {
+			x := u[int(v.first[i])+a]
+			n2 += x * x * r3.Norm2(b)
+		}
+		most = max(most, n2)
+	}
+	return math.Sqrt(most)
+}
+
+// newtonStep solves for a step at st from the assembled tangent, adding to its
+// diagonal what makes it positive definite on the shapes that the conditions
+// allow.
+func (v *Solver) newtonStep(ctx context.Context, st *state, out *step) error {
+	mean := v.meanDiagonal()
+	shift := 0.0
+	for try := 0; ; try++ {
+		ok, err := v.tryStep(ctx, st, shift, out)
+		if err != nil {
+			return err
+		}
+		if ok {
+			out.shifted = shift > 0
+			if shift > 0 {
+				v.lastShift = shift / mean
+			} else {
+				v.lastShift = 0
+			}
+			return nil
+		}
+		if shift == 0 {
+			shift = max(1e-3, v.lastShift/8) * mean
+		} else {
+			shift *= 4
+		}
+		if try > 40 {
+			return errors.New("newton: the tangent cannot be made positive definite")
+		}
+	}
+}
+
+// tryStep factors the tangent plus shift and solves for the step; ok is false
+// when it is not positive definite.
+func (v *Solver) tryStep(ctx context.Context, st *state, shift float64, out *step) (ok bool, err error) {
+	values := v.values
+	if shift > 0 {
+		copy(v.shifted, v.values)
+		for i := range v.unknown {
+			v.shifted[i] += shift
+		}
+		values = v.shifted
+	}
+	if v.chol == nil {
+		if v.chol, err = v.analysis.NewFactor(sparse.Cholesky); err != nil {
+			return false, fmt.Errorf("newton: %w", err)
+		}
+	}
+	factor := v.chol
+	err = factor.Refactor(ctx, values)
+	positive := err == nil
+	if err != nil {
+		var pe *sparse.PivotError
+		if !errors.As(err, &pe) {
+			return false, fmt.Errorf("newton: %w", err)
+		}
+		// A mast of given length pushes: the tangent at constant force is
+		// indefinite though the mast itself holds the shape.
+		held := false
+		for k := range v.commons {
+			held = held || v.symmetric(k)
+		}
+		if !held {
+			return false, nil
+		}
+		if v.ldl == nil {
+			if v.ldl, err = v.analysis.NewFactor(sparse.LDL); err != nil {
+				return false, fmt.Errorf("newton: %w", err)
+			}
+		}
+		factor = v.ldl
+		if err = factor.Refactor(ctx, values); err != nil {
+			if ctx.Err() != nil {
+				return false, ctx.Err()
+			}
+			return false, nil
+		}
+	}
+	m := len(v.commons)
+	w := 1 + m
+	x := v.rhs
+	for i := range v.unknown {
+		x[i*w] = st.reduced[i]
+		for k := range m {
+			x[i*w+1+k] = v.columns[i*m+k]
+		}
+	}
+	if err := factor.Solve(x, w); err != nil {
+		return false, fmt.Errorf("newton: %w", err)
+	}
+	copy(out.force, st.force)
+	if m > 0 {
+		schur, right := v.schur(st, x)
+		if !positive {
+			neg, _, _, known := factor.Inertia()
+			if !known || neg+v.negativeOf(schur)-v.countSymmetric() > 0 {
+				return false, nil
+			}
+		}
+		solveDense(schur, right, m)
+		v.limitForces(st, right)
+		for k := range m {
+			out.force[k] = st.force[k] + right[k]
+		}
+		for i := range v.unknown {
+			u := x[i*w]
+			for k := range m {
+				u += x[i*w+1+k] * right[k]
+			}
+			out.u[i] = u
+		}
+	} else {
+		for i := range v.unknown {
+			out.u[i] = x[i*w]
+		}
+	}
+	out.slope = 0
+	for i, u := range out.u {
+		r := st.reduced[i]
+		for k := range m {
+			r += v.columns[i*m+k] * (out.force[k] - st.force[k])
+		}
+		out.slope -= u * r
+	}
+	return true, nil
+}
+
+// schur returns the matrix S = E + D·H⁻¹·C of the common forces and the right
+// side −(gap + D·H⁻¹·r), from x = H⁻¹[r | C].
+func (v *Solver) schur(st *state, x []float64) (s, right []float64) {
+	m := len(v.commons)
+	w := 1 + m
+	s = make([]float64, m*m)
+	right = make([]float64, m)
+	for k := range m {
+		right[k] = -st.gap[k]
+		v.conditionRow(st, k, func(i int, d float64) {
+			right[k] -= d * x[i*w]
+			for l := range m {
+				s[k*m+l] += d * x[i*w+1+l]
+			}
+		})
+		s[k*m+k] += v.conditionSlope(k)
+	}
+	return s, right
+}
+
+func (v *Solver) countSymmetric() int {
+	n := 0
+	for k := range v.commons {
+		if v.symmetric(k) {
+			n++
+		}
+	}
+	return n
+}
+
+// negativeOf counts the negative eigenvalues of the part of the Schur
+// complement that belongs to symmetric conditions.
+func (v *Solver) negativeOf(schur []float64) int {
+	m := len(v.commons)
+	var keep []int
+	for k := range m {
+		if v.symmetric(k) {
+			keep = append(keep, k)
+		}
+	}
+	n := len(keep)
+	a := make([]float64, n*n)
+	for i, k := range keep {
+		for j, l := range keep {
+			a[i*n+j] = 0.5 * (schur[k*m+l] + schur[l*m+k])
+		}
+	}
+	return negativeEigenvalues(a, n)
+}
+
+// limitForces keeps the change of tensions within a factor of three and stops
+// them at zero, where an elastic cable goes slack.
+func (v *Solver) limitForces(st *state, change []float64) {
+	for k := range change {
+		if v.pushes(k) {
+			continue
+		}
+		t := st.force[k]
+		to := t + change[k]
+		switch {
+		case v.cableOf(k).Law == canopy.CableElastic:
+			if t > 0 {
+				to = min(to, 3*t)
+			}
+			to = max(to, 0)
+		case t > 0:
+			to = min(max(to, t/3), 3*t)
+		}
+		change[k] = to - t
+	}
+}
+
+// negative counts the negative pivots of the unshifted tangent in v.values on
+// the shapes that symmetric conditions allow; −1 when rounding hides it.
+func (v *Solver) negative(ctx context.Context) (int, error) {
+	if v.unknown == 0 {
+		return 0, nil
+	}
+	err := v.chol.Refactor(ctx, v.values)
+	if err == nil {
+		return 0, nil
+	}
+	var pe *sparse.PivotError
+	if !errors.As(err, &pe) {
+		return -1, fmt.Errorf("newton: %w", err)
+	}
+	if v.ldl == nil {
+		if v.ldl, err = v.analysis.NewFactor(sparse.LDL); err != nil {
+			return -1, fmt.Errorf("newton: %w", err)
+		}
+	}
+	if err := v.ldl.Refactor(ctx, v.values); err != nil {
+		if ctx.Err() != nil {
+			return -1, ctx.Err()
+		}
+		return -1, nil
+	}
+	neg, _, _, known := v.ldl.Inertia()
+	if !known {
+		return -1, nil
+	}
+	if sym := v.countSymmetric(); sym > 0 {
+		m := len(v.commons)
+		w := 1 + m
+		for i := range v.unknown {
+			v.rhs[i*w] = 0
+			for k := range m {
+				v.rhs[i*w+1+k] = v.columns[i*m+k]
+			}
+		}
+		if err := v.ldl.Solve(v.rhs, w); err != nil {
+			return -1, fmt.Errorf("newton: %w", err)
+		}
+		s, _ := v.schur(&v.now, v.rhs)
+		neg += v.negativeOf(s) - sym
+	}
+	return neg, nil
+}
