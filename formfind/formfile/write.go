@@ -623,7 +623,7 @@ func triangleItem(r *canopy.Result) func(*text, int) error {
 			t.k("warp_wanted").vec(s.Warp[i])
 		}
 		t.close('}')
-		return t.done("triangle", i, func() string { return "of fabric "+fabric.Name })
+		return t.done("triangle", i, func() string { return "of fabric " + fabric.Name })
 	}
 }
 
