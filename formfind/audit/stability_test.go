@@ -47,7 +47,7 @@ func TestCatenoidBranches(t *testing.T) {
 
 // The smallest eigenvalue of −Δ + 2K on the catenoid of ring radius 1 and
 // separation 1 with fixed rings is 6.88334 (recomputed: with z = a·v it is the
-// smallest λ of −w'' − 2w/cosh²v = λ·a²·cosh²v·w, w(±0.5/a) = 0).
+// smallest λ of −w” − 2w/cosh²v = λ·a²·cosh²v·w, w(±0.5/a) = 0).
 func TestCatenoidSmallestEigenvalueConvergesSecondOrder(t *testing.T) {
 	const exact = 6.88334
 	var last float64
