@@ -37,7 +37,7 @@ const (
 	// Weak: what holds the nodes is lost in rounding beside the forces
 	// around them.
 	Weak
-	// NotFinite: a force density is infinite or not a number.
+	// NotFinite: a force density is infinite, not a number, or beyond 1e70.
 	NotFinite
 )
 
@@ -78,7 +78,7 @@ func (e *SingularError) Error() string {
 	case Weak:
 		return fmt.Sprintf("fdm: what holds %s along %s is too weak beside the forces around to be told from nothing; bring the force densities closer together in size", list("node", e.Nodes), e.Directions)
 	case NotFinite:
-		return fmt.Sprintf("fdm: the force density of %s is not a finite number", list("member", e.Members))
+		return fmt.Sprintf("fdm: the force density of %s is not a finite number (or beyond 1e70)", list("member", e.Members))
 	}
 	return "fdm: singular system"
 }

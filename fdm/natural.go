@@ -95,7 +95,7 @@ func (s *Solver) Natural(ctx context.Context, ref []r3.Vec, given Given, updates
 				return none, err
 			}
 		}
-		if err := s.factorise(ctx, kind); err != nil {
+		if err := s.factorise(ctx, kind, false); err != nil {
 			return none, fmt.Errorf("natural force density update %d of %d: %w", update+1, updates, err)
 		}
 		copy(r.Position, s.start)
@@ -150,7 +150,7 @@ func (s *Solver) checkNatural(ref []r3.Vec, given Given, updates int) error {
 	if len(ref) != len(s.position) {
 		return &InputError{What: "reference shape", Index: -1, Why: fmt.Sprintf("it has %d positions for %d nodes", len(ref), len(s.position))}
 	}
-	if err := finitePositions(ref); err != nil {
+	if err := usablePositions(ref); err != nil {
 		return err
 	}
 	if updates < 1 {
@@ -166,7 +166,7 @@ func (s *Solver) checkNatural(ref []r3.Vec, given Given, updates int) error {
 	}
 	var bad []int32
 	for k := range s.ends {
-		if given.Force != nil && !finite(given.Force[k]) || given.Density != nil && !finite(given.Density[k]) {
+		if given.Force != nil && !usable(given.Force[k]) || given.Density != nil && !usable(given.Density[k]) {
 			bad = append(bad, int32(k))
 		}
 	}
@@ -187,7 +187,7 @@ func (s *Solver) naturalWeights(x []r3.Vec, given Given, laid []flat) (signs, *R
 		if given.Force != nil && given.Force[k] != 0 {
 			l := r3.Norm(r3.Sub(x[e[1]], x[e[0]]))
 			d := given.Force[k] / l
-			if !finite(d) {
+			if !usable(d) {
 				return idle, &ReferenceError{Panel: -1, Member: k, Why: fmt.Sprintf("it has no length (%.3g m) to spread its force over", l)}
 			}
 			w += d

@@ -76,10 +76,10 @@ func (n *Network) validate(panels []Panel) error {
 	if n.Master != nil && len(n.Master) != count {
 		return &InputError{What: "network", Index: -1, Why: fmt.Sprintf("Master has length %d, Position %d; give one for each node, or nil", len(n.Master), count)}
 	}
-	if err := finitePositions(n.Position); err != nil {
+	if err := usablePositions(n.Position); err != nil {
 		return err
 	}
-	if err := finiteLoads(n.Load); err != nil {
+	if err := usableLoads(n.Load); err != nil {
 		return err
 	}
 	for k, e := range n.Ends {
@@ -106,36 +106,36 @@ func validatePanels(panels []Panel, nodes int) error {
 		if c := p.Corners; c[0] == c[1] || c[1] == c[2] || c[2] == c[0] {
 			return &InputError{What: "panel", Index: k, Why: fmt.Sprintf("two of its corners are the same node (%d, %d, %d)", c[0], c[1], c[2])}
 		}
-		if !finite(p.WarpStress) || !finite(p.WeftStress) {
-			return &InputError{What: "panel", Index: k, Why: fmt.Sprintf("its stress (%g, %g N/m) is not finite", p.WarpStress, p.WeftStress)}
+		if !usable(p.WarpStress) || !usable(p.WeftStress) {
+			return &InputError{What: "panel", Index: k, Why: fmt.Sprintf("its stress (%g, %g N/m) is not a finite number (or beyond 1e70)", p.WarpStress, p.WeftStress)}
 		}
-		if !finiteVec(p.Warp) {
-			return &InputError{What: "panel", Index: k, Why: "its warp direction is not finite"}
+		if !usableVec(p.Warp) {
+			return &InputError{What: "panel", Index: k, Why: "its warp direction is not a finite number (or beyond 1e70)"}
 		}
 	}
 	return nil
 }
 
-func finitePositions(x []r3.Vec) error {
+func usablePositions(x []r3.Vec) error {
 	for i, p := range x {
-		if !finiteVec(p) {
-			return &InputError{What: "node", Index: i, Why: fmt.Sprintf("its position (%g, %g, %g) is not finite", p.X, p.Y, p.Z)}
+		if !usableVec(p) {
+			return &InputError{What: "node", Index: i, Why: fmt.Sprintf("its position (%g, %g, %g) is not a finite number (or beyond 1e70)", p.X, p.Y, p.Z)}
 		}
 	}
 	return nil
 }
 
-func finiteLoads(load []r3.Vec) error {
+func usableLoads(load []r3.Vec) error {
 	for i, p := range load {
-		if !finiteVec(p) {
-			return &InputError{What: "node", Index: i, Why: fmt.Sprintf("its load (%g, %g, %g) is not finite", p.X, p.Y, p.Z)}
+		if !usableVec(p) {
+			return &InputError{What: "node", Index: i, Why: fmt.Sprintf("its load (%g, %g, %g) is not a finite number (or beyond 1e70)", p.X, p.Y, p.Z)}
 		}
 	}
 	return nil
 }
 
-// resolveMasters returns for each node whether its chain of masters ends, as
-// an error naming a node on a circle when one does not.
+// checkMasters looks for masters that do not exist and for nodes tied to
+// themselves in a circle.
 func (n *Network) checkMasters() error {
 	const (
 		unseen = iota
@@ -166,6 +166,13 @@ func (n *Network) checkMasters() error {
 	return nil
 }
 
-func finite(v float64) bool { return v-v == 0 }
+// largest is the greatest size of a number in the input: products of two and
+// their squares stay far from overflow.
+const largest = 1e70
 
-func finiteVec(v r3.Vec) bool { return finite(v.X) && finite(v.Y) && finite(v.Z) }
+// usable reports whether a number of the input is finite and within reason.
+func usable(v float64) bool { return math.Abs(v) <= largest }
+
+func usableVec(v r3.Vec) bool { return usable(v.X) && usable(v.Y) && usable(v.Z) }
+
+func finite(v float64) bool { return v-v == 0 }

@@ -64,7 +64,7 @@ func (s *Solver) prepare(ctx context.Context, q []float64) error {
 			return err
 		}
 	}
-	return s.factorise(ctx, kind)
+	return s.factorise(ctx, kind, isWide(s.weight))
 }
 
 // checkDensities looks for what is not a finite number.
@@ -74,7 +74,7 @@ func (s *Solver) checkDensities(q []float64) error {
 	}
 	var bad []int32
 	for k, v := range q {
-		if !finite(v) {
+		if !usable(v) {
 			bad = append(bad, int32(k))
 		}
 	}
@@ -103,6 +103,18 @@ func signsOf(w []float64) signs {
 		return pulling
 	}
 	return idle
+}
+
+// isWide reports whether sizes other than zero differ by more than ten orders
+// of magnitude.
+func isWide(w []float64) bool {
+	most, least := 0.0, math.Inf(1)
+	for _, v := range w {
+		if v = math.Abs(v); v > 0 {
+			most, least = max(most, v), min(least, v)
+		}
+	}
+	return most > 1e10*least
 }
 
 func hasZero(w []float64) bool {
@@ -168,16 +180,12 @@ const stillBalanced = 1e-6
 // It belongs to the sizes that the last imbalance left in s.size.
 func (s *Solver) rounding(x []r3.Vec) float64 {
 	const unit = 1.0 / (1 << 53)
-	var reach r3.Vec
-	for _, p := range x {
-		reach = r3.Vec{X: max(reach.X, math.Abs(p.X)), Y: max(reach.Y, math.Abs(p.Y)), Z: max(reach.Z, math.Abs(p.Z))}
-	}
 	var have, size float64
 	for _, sys := range s.systems {
-		for _, axis := range sys.axes {
-			far := *at(&reach, axis)
-			for _, d := range sys.values[:sys.n] {
-				have += d * far * d * far
+		for u, d := range sys.values[:sys.n] {
+			for _, axis := range sys.axes {
+				p := d * *at(&x[sys.node[u]], axis)
+				have += p * p
 			}
 		}
 	}

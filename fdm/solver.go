@@ -113,7 +113,7 @@ func (s *Solver) SetPosition(position []r3.Vec) error {
 	if len(position) != len(s.position) {
 		return &InputError{What: "positions", Index: -1, Why: fmt.Sprintf("there are %d of them for %d nodes", len(position), len(s.position))}
 	}
-	if err := finitePositions(position); err != nil {
+	if err := usablePositions(position); err != nil {
 		return err
 	}
 	copy(s.position, position)
@@ -127,7 +127,7 @@ func (s *Solver) SetLoad(load []r3.Vec) error {
 	if load != nil && len(load) != len(s.position) {
 		return &InputError{What: "loads", Index: -1, Why: fmt.Sprintf("there are %d of them for %d nodes", len(load), len(s.position))}
 	}
-	if err := finiteLoads(load); err != nil {
+	if err := usableLoads(load); err != nil {
 		return err
 	}
 	s.load = append(s.load[:0], load...)
@@ -190,10 +190,10 @@ func (s *Solver) place() {
 }
 
 // factorise prepares all systems for the weights in s.weight.
-func (s *Solver) factorise(ctx context.Context, kind signs) error {
+func (s *Solver) factorise(ctx context.Context, kind signs, wide bool) error {
 	s.kind = kind
 	for _, sys := range s.systems {
-		if err := sys.factorise(ctx, s.links, s.weight, kind); err != nil {
+		if err := sys.factorise(ctx, s.links, s.weight, kind, wide); err != nil {
 			return err
 		}
 	}

@@ -165,8 +165,9 @@ func (s signs) and(t signs) signs {
 }
 
 // factorise assembles and factorises D. Unless the weights are of mixed sign
-// only rounding can make a supported system fail.
-func (sys *system) factorise(ctx context.Context, links [][2]int32, weight []float64, kind signs) error {
+// only rounding can make a supported system fail; wide says that the weights
+// differ so much in size that it may.
+func (sys *system) factorise(ctx context.Context, links [][2]int32, weight []float64, kind signs, wide bool) error {
 	var err error
 	sys.sign = 1
 	if kind == pushing {
@@ -193,7 +194,10 @@ func (sys *system) factorise(ctx context.Context, links [][2]int32, weight []flo
 		return sys.refused(ctx, err, kind)
 	}
 	if kind == mixed {
-		return sys.checkRegular(links, weight)
+		return sys.checkRegular(links, weight, 1e-13, Cancel)
+	}
+	if wide {
+		return sys.checkRegular(links, weight, 1e-15, Weak)
 	}
 	return nil
 }
@@ -214,17 +218,14 @@ func (sys *system) refused(ctx context.Context, err error, kind signs) error {
 	return &SingularError{Nodes: []int32{sys.node[pivot.Unknown]}, Directions: sys.directions(), Cause: cause}
 }
 
-// checkRegular looks for a direction in which the matrix of a system of mixed
-// signs does nothing. Three steps of inverse iteration on S·D·S, S the inverse
-// roots of the sums of |w| around each node, find the vector v nearest to
-// that; the system counts as singular when ‖S·D·S·v‖ ≤ 1e-13‖v‖ (the norm of
-// S·D·S is at most 2). D·v is formed from the links, not from the factor,
-// since a factorisation may have replaced tiny pivots.
-func (sys *system) checkRegular(links [][2]int32, weight []float64) error {
-	const (
-		steps    = 3
-		singular = 1e-13
-	)
+// checkRegular looks for a displacement that D does not resist. Three steps of
+// inverse iteration on S·D·S, S the inverse roots of the sums of |w| around each
+// node, find the vector v nearest to that; the system counts as singular when
+// ‖S·D·S·v‖ ≤ limit·‖v‖ (the norm of S·D·S is at most 2). D·v is formed from the
+// links, not from the factor, since a factorisation may have replaced tiny
+// pivots.
+func (sys *system) checkRegular(links [][2]int32, weight []float64, limit float64, cause Cause) error {
+	const steps = 3
 	n := sys.n
 	scale := make([]float64, n)
 	for i, l := range links {
@@ -271,10 +272,42 @@ func (sys *system) checkRegular(links [][2]int32, weight []float64) error {
 		}
 		v, z = z, v
 	}
-	norm := norm2(v)
 	for i := range v {
-		v[i] *= scale[i] / norm
+		v[i] *= scale[i]
 	}
+	resist := func() float64 { // ‖S·D·v‖/‖S⁻¹·v‖, and D·v in z
+		sys.apply(z, v, links, weight)
+		var have, size float64
+		for i := range z {
+			have = math.Hypot(have, z[i]*scale[i])
+			size = math.Hypot(size, v[i]/scale[i])
+		}
+		return have / size
+	}
+	left := resist()
+	// Where pivots were replaced v is the softest displacement of a nearby
+	// matrix; v − M⁻¹·D·v has what D does not resist in it unchanged, and less
+	// of all the rest.
+	for round := 0; round < 2 && left > limit && sys.factor.Perturbed() > 0; round++ {
+		if sys.factor.Solve(z, 1) != nil {
+			break
+		}
+		for i := range v {
+			v[i] -= sys.sign * z[i]
+		}
+		if norm := norm2(v); norm == 0 || !finite(norm) {
+			return nil
+		}
+		left = resist()
+	}
+	if !(left <= limit) {
+		return nil
+	}
+	return &SingularError{Nodes: sys.movers(v), Directions: sys.directions(), Cause: cause}
+}
+
+// apply does z = D·v for one direction.
+func (sys *system) apply(z, v []float64, links [][2]int32, weight []float64) {
 	clear(z)
 	for i, l := range links {
 		a, b := sys.unknown[l[0]], sys.unknown[l[1]]
@@ -296,13 +329,6 @@ func (sys *system) checkRegular(links [][2]int32, weight []float64) error {
 			z[b] -= f
 		}
 	}
-	for i := range z {
-		z[i] *= scale[i]
-	}
-	if norm2(z) > singular {
-		return nil
-	}
-	return &SingularError{Nodes: sys.movers(v), Directions: sys.directions(), Cause: Cancel}
 }
 
 // movers are the nodes that move most in the displacement v, worst first.
