@@ -28,29 +28,53 @@ func Write(ctx context.Context, w io.Writer, r *canopy.Result) error {
 	return nil
 }
 
+// head are the parts before the long lists, in their order.
+var head = []struct {
+	key   string
+	write func(t *text, r *canopy.Result)
+}{
+	{"format", func(t *text, r *canopy.Result) { t.string(Format) }},
+	{"caution", func(t *text, r *canopy.Result) { t.string(canopy.Caution) }},
+	{"program", writeProgram},
+	{"model", writeModel},
+	{"units", writeUnits},
+	{"counts", writeCounts},
+	{"form", writeForm},
+	{"quantities", writeQuantities},
+	{"audit", writeAudit},
+	{"findings", writeFindings},
+	{"fabrics", writeFabrics},
+}
+
+// AppendHead appends what stands before the long lists of form.json (program,
+// model, units, counts, form, quantities, audit, findings, fabrics) to b as the
+// members of a JSON object without its braces, for those who want the result
+// without the shape.
+func AppendHead(b []byte, r *canopy.Result) ([]byte, error) {
+	if err := consistent(r); err != nil {
+		return b, err
+	}
+	t := &text{b: b}
+	for i, p := range head {
+		if i > 0 {
+			t.b = append(t.b, ",\n"...)
+		}
+		t.k(p.key)
+		p.write(t, r)
+		if t.bad != "" {
+			return b, fmt.Errorf("%s: %s", p.key, t.bad)
+		}
+	}
+	return t.b, nil
+}
+
 func write(ctx context.Context, w io.Writer, r *canopy.Result) error {
 	if err := consistent(r); err != nil {
 		return err
 	}
 	t := &text{}
 	t.b = append(t.b, "{\n"...)
-	parts := []struct {
-		key   string
-		write func(t *text, r *canopy.Result)
-	}{
-		{"format", func(t *text, r *canopy.Result) { t.string(Format) }},
-		{"caution", func(t *text, r *canopy.Result) { t.string(canopy.Caution) }},
-		{"program", writeProgram},
-		{"model", writeModel},
-		{"units", writeUnits},
-		{"counts", writeCounts},
-		{"form", writeForm},
-		{"quantities", writeQuantities},
-		{"audit", writeAudit},
-		{"findings", writeFindings},
-		{"fabrics", writeFabrics},
-	}
-	for _, p := range parts {
+	for _, p := range head {
 		t.k(p.key)
 		p.write(t, r)
 		t.b = append(t.b, ",\n"...)
