@@ -131,9 +131,9 @@ func (b *builder) divide() {
 		}
 	}
 	if total > MaxTriangles {
-		fine := b.size * math.Sqrt(total/MaxTriangles) * 1.05
+		fine := 1.1 * math.Sqrt(2*b.area()/MaxTriangles)
 		b.fail("", "", 0, TooFine, formatWay("give a mesh size of %s or more, or fewer segments", fine),
-			"the model would have about %.2g million triangles, more than the %d million that are possible", total/1e6, MaxTriangles/1_000_000)
+			"the model would have more triangles than the %d million that are possible", MaxTriangles/1_000_000)
 	}
 }
 
@@ -167,6 +167,15 @@ func (b *builder) chooseSize() {
 	if b.size = b.m.MeshSize; b.size > 0 {
 		return
 	}
+	b.size = math.Sqrt(2 * b.area() / wantedTriangles)
+	if !(b.size > 0) {
+		b.size = 1 // only nets and cables: not used
+	}
+}
+
+// area estimates the area of all fabrics, those around rings weighted for the
+// triangles that grading costs: n around the ring and n/2π·ln(R/r) layers.
+func (b *builder) area() float64 {
 	area := 0.0
 	for _, l := range b.loop {
 		if l.net {
@@ -174,16 +183,12 @@ func (b *builder) chooseSize() {
 		}
 		a := fanArea(b.sample(l))
 		if l.ring >= 0 {
-			// Grading towards the ring: n around it and n/2π·ln(R/r) layers.
 			r := b.m.Rings[l.ring].Radius
 			a *= max(1, 2*math.Log(math.Sqrt(a/math.Pi)/r))
 		}
 		area += a
 	}
-	b.size = math.Sqrt(2 * area / wantedTriangles)
-	if !(b.size > 0) {
-		b.size = 1 // only nets and cables: not used
-	}
+	return area
 }
 
 // meshSize is the wanted length of a mesh side in a fabric.

@@ -121,9 +121,19 @@ func lens() *canopy.Model {
 	return m
 }
 
+// laws is a four-point sail whose cables each follow another law.
+func laws() *canopy.Model {
+	m := polygon(4)
+	m.Cables[1] = canopy.ModelCable{Name: "e1", Edges: []string{"e1"}, Sag: 0.1, Weight: 12, Strength: 2e5}
+	m.Cables[2] = canopy.ModelCable{Name: "e2", Edges: []string{"e2"}, Stiffness: 1e7, Unstressed: 11.5}
+	m.Cables[3] = canopy.ModelCable{Name: "e3", Edges: []string{"e3"}, ForceDensity: 3e3}
+	return m
+}
+
 var all = map[string]func() *canopy.Model{
 	"triangle":    func() *canopy.Model { return polygon(3) },
 	"four-point":  func() *canopy.Model { return polygon(4) },
+	"laws":        laws,
 	"five-point":  func() *canopy.Model { return polygon(5) },
 	"seven-point": func() *canopy.Model { return polygon(7) },
 	"cone":        cone,
