@@ -37,13 +37,16 @@ type step struct {
 
 // measure keeps the sizes of the elements at the start.
 func (v *Solver) measure(at []r3.Vec) error {
+	area := 0.0
 	for t, c := range v.s.Corners {
 		tri, ok := element.NewTriangle(at[c[0]], at[c[1]], at[c[2]])
 		if !ok {
 			return &DegenerateError{Element: "triangle", Index: int32(t), Name: fmt.Sprint(t)}
 		}
 		v.areaStart[t] = tri.Area
+		area += tri.Area
 	}
+	v.meshSize = math.Sqrt(2 * area / float64(max(len(v.s.Corners), 1)))
 	for m, e := range v.s.Ends {
 		if !v.active[m] {
 			continue
@@ -101,6 +104,9 @@ func (v *Solver) iterate(ctx context.Context, set engine.Settings) (engine.Outco
 			return out, err
 		}
 		// Take the step, or as much of it as helps.
+		if v.along, err = v.slide(ctx, &v.now, st.u); err != nil {
+			return out, err
+		}
 		alpha := 1.0
 		if most := 0.25 * size; move > most {
 			alpha = most / move
@@ -218,6 +224,9 @@ func (v *Solver) moveTrial(alpha float64, u []float64) {
 		if v.first[i] >= 0 && v.cls[i] != tied {
 			for a, b := range now.basis[v.start[i]:v.start[i+1]] {
 				p = r3.Add(p, r3.Scale(alpha*u[int(v.first[i])+a], b))
+			}
+			if v.along != nil {
+				p = r3.Add(p, r3.Scale(alpha, v.along[i]))
 			}
 		}
 		to.at[i] = p

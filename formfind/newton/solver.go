@@ -50,16 +50,21 @@ type Solver struct {
 	ldl      *sparse.Factor
 
 	// Work.
-	values        []float64
-	shifted       []float64
-	now, trial    state
-	normalSum     []r3.Vec
-	rhs           []float64
-	columns       []float64
-	areaStart     []float64
-	lengthStart   []float64
-	lastShift     float64
-	allDirections bool
+	values       []float64
+	shifted      []float64
+	now, trial   state
+	normalSum    []r3.Vec
+	rhs          []float64
+	columns      []float64
+	areaStart    []float64
+	lengthStart  []float64
+	lastShift    float64
+	meshSize     float64 // side of a typical triangle, m
+	inside       *spread // nodes inside the fabric follow its edges
+	everywhere   *spread // all follow moved supports
+	carryWeights []float64
+	slideWork    []r3.Vec
+	along        []r3.Vec // how nodes slide in the step at hand, nil
 }
 
 // state is a shape with what follows from it.
@@ -257,7 +262,8 @@ func (v *Solver) prepare(ctx context.Context, at []r3.Vec, all bool) error {
 	if err != nil {
 		return fmt.Errorf("newton: %w", err)
 	}
-	v.chol, v.ldl = nil, nil
+	v.chol, v.ldl, v.inside = nil, nil, nil
+	v.slideWork = make([]r3.Vec, n)
 	nv := v.unknown + len(v.pattern.pairs)
 	v.values = make([]float64, nv)
 	v.shifted = make([]float64, nv)
@@ -326,7 +332,7 @@ func (v *Solver) follow(at []r3.Vec) {
 // Find starts at start, or at the positions of the structure when it is nil,
 // and iterates to equilibrium in the shape-changing directions. Supported,
 // held and tied directions take their place from the structure, so that a
-// support may be moved between calls. Forces of a form with as many members
+// support may be moved between calls; the nodes of the start then follow it. Forces of a form with as many members
 // start the unknown common forces.
 //
 // The form returned has the positions, the member forces by their laws, the
@@ -344,6 +350,11 @@ func (v *Solver) Find(ctx context.Context, start *canopy.Form, set engine.Settin
 	at := make([]r3.Vec, len(v.s.Position))
 	if err := v.place(start, at); err != nil {
 		return nil, out, err
+	}
+	if start != nil {
+		if err := v.carry(ctx, start, at); err != nil {
+			return nil, out, err
+		}
 	}
 	if err := v.prepare(ctx, at, set.AllDirections); err != nil {
 		return nil, out, err
