@@ -115,12 +115,12 @@ func (c *check) slack() {
 	}
 	if at, w := cables.worst(); at >= 0 {
 		c.add(canopy.Finding{ID: "slack-cable", Severity: canopy.Warning, Source: SourcePractice, Value: -w, Limit: surface.SlackShare, Count: len(cables.at),
-			Text:   fmt.Sprintf("%s slack under prestress (less than a thousandth of the force specified, or of the mean force).", is(len(cables.at), "cable member is", "cable members are")),
+			Text:   fmt.Sprintf("%s slack under prestress (less than a thousandth of the force specified, or of the mean force).", plural(len(cables.at), "cable member is", "cable members are")),
 			Places: cables.places(c.member)})
 	}
 	if at, w := masts.worst(); at >= 0 {
 		c.add(canopy.Finding{ID: "mast-pulls", Severity: canopy.Warning, Source: SourcePractice, Value: w, Limit: 0, Count: len(masts.at),
-			Text:   fmt.Sprintf("%s in tension, %s at most: a guy would do, or its head is pulled up.", is(len(masts.at), "mast is", "masts are"), kN(w)),
+			Text:   fmt.Sprintf("%s in tension, %s at most: a guy would do, or its head is pulled up.", plural(len(masts.at), "mast is", "masts are"), kN(w)),
 			Places: masts.places(c.member)})
 	}
 	var fabric list
@@ -141,5 +141,3 @@ func (c *check) slack() {
 			Places: fabric.places(c.triangle)})
 	}
 }
-
-func is(n int, one, many string) string { return plural(n, one, many) }

@@ -66,7 +66,7 @@ func (c *check) headroom() {
 			name = "the plan"
 		}
 		if tri.Part < 0 && mem.Part < 0 {
-			c.add(canopy.Finding{ID: "headroom-none", Severity: canopy.Note, Source: SourceModel, Value: math.Inf(1), Limit: h.Height,
+			c.add(canopy.Finding{ID: "headroom-none", Severity: canopy.Note, Source: SourceModel, Limit: h.Height,
 				Text: fmt.Sprintf("Nothing of the canopy lies over %s, for which the model asks a headroom of %.2f m.", name, h.Height)})
 			continue
 		}

@@ -29,24 +29,7 @@ type Basin struct {
 func Basins(position []r3.Vec, corners [][3]int32, least float64) []Basin {
 	n := len(position)
 	edges := Edges(corners)
-	start := make([]int32, n+1)
-	for _, e := range edges {
-		start[e.Nodes[0]]++
-		start[e.Nodes[1]]++
-	}
-	var sum int32
-	for i, d := range start {
-		start[i] = sum
-		sum += d
-	}
-	adj := make([]int32, sum)
-	fill := append([]int32(nil), start...)
-	for _, e := range edges {
-		i, j := e.Nodes[0], e.Nodes[1]
-		adj[fill[i]], adj[fill[j]] = j, i
-		fill[i]++
-		fill[j]++
-	}
+	start, adj := neighbours(n, edges)
 
 	level := make([]float64, n)
 	seen := make([]bool, n)
