@@ -482,9 +482,9 @@ func (a *Analysis) measure() {
 		c.Flops += frontFlops(nc, nu)
 		c.LargestFront = max(c.LargestFront, rows)
 	}
-	c.Bytes = 8*(a.panel[c.Fronts]+a.plan.stackFloats()) +
-		4*(2*int64(a.n)+2*int64(len(a.rows))+4*int64(c.Fronts)+2*int64(a.entries)) + 24*int64(c.Fronts) +
-		8*4*int64(a.n)
+	c.Bytes = 8*a.panel[c.Fronts] + 8*a.plan.bytesFloats(a.workers()) +
+		4*(3*int64(a.n)+2*int64(len(a.rows))+4*int64(c.Fronts)+2*int64(a.entries)) + 32*int64(c.Fronts) +
+		8*3*int64(a.n)
 }
 
 // frontFlops counts the multiplications and additions of eliminating nc columns

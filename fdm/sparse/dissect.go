@@ -30,6 +30,9 @@ type point struct{ u, v int32 }
 // keys are the four coordinates of a point that it may be cut across.
 func (p point) keys() [4]int32 { return [4]int32{p.u, p.v, p.u + p.v, p.u - p.v} }
 
+// direction has the factors of u and v of each key.
+var direction = [4][2]int32{{1, 0}, {0, 1}, {1, 1}, {1, -1}}
+
 // across is the direction along which a separator of each cut is sorted.
 var across = [4]int{1, 0, 3, 2}
 
@@ -40,15 +43,22 @@ type dissector struct {
 	region []int32 // part a node is in, by the place where the part starts; negative once numbered
 	nodes  []int32 // the order being made
 	queue  []int32
-	// Histograms of the sweep, one per direction and side.
-	open [4][2][]int32
+	pts    []point // of nodes, in the same order
+	store  []point
+	sep    []int32
+	// How far a key changes along an edge: at most, and at most per node on
+	// average.
+	reach [4]int32
+	step  [4]float64
+	// Histograms of the keys, and of the sizes of separators on either side.
 	mass [4][]int32
+	open [2][]int32
 	leaf leafOrder
 }
 
 func newDissector(g graph, weight []int32) *dissector {
 	n := g.n
-	d := &dissector{g: g, weight: weight, at: make([]point, n), region: make([]int32, n), queue: make([]int32, n)}
+	d := &dissector{g: g, weight: weight, at: make([]point, n), region: make([]int32, n), queue: make([]int32, n), store: make([]point, n)}
 	d.leaf.local = make([]int32, n)
 	return d
 }
@@ -85,13 +95,30 @@ func (d *dissector) layout() {
 	n := d.g.n
 	slab := make([]int32, 3*n)
 	dp, dq, dr := slab[:n], slab[n:2*n], slab[2*n:]
-	farthest := func(root int32, dist []int32) int32 {
+	// A node of least degree among the farthest is likely a corner (George &
+	// Liu 1979, "An implementation of a pseudoperipheral node finder").
+	farthest := func(root int32, dist []int32) (int32, int32) {
 		q := d.bfs(root, dist)
-		return q[len(q)-1]
+		far := q[len(q)-1]
+		away := dist[far]
+		for k := len(q) - 1; k >= 0 && dist[q[k]] == away; k-- {
+			if i := q[k]; d.g.ptr[i+1]-d.g.ptr[i] < d.g.ptr[far+1]-d.g.ptr[far] {
+				far = i
+			}
+		}
+		return far, away
 	}
-	p := farthest(d.nodes[0], dp)
-	q := farthest(p, dp)
-	d.bfs(q, dq)
+	p, away := farthest(d.nodes[0], dp)
+	q, _ := farthest(p, dp)
+	for round := 0; ; round++ {
+		next, further := farthest(q, dq)
+		if further <= away || round == 4 {
+			break
+		}
+		away = further
+		p, q = q, next
+		dp, dq = dq, dp
+	}
 	var lo, hi int32
 	for _, i := range d.nodes {
 		u := dp[i] - dq[i]
@@ -142,6 +169,26 @@ func (d *dissector) layout() {
 			d.at[i].v *= fv
 		}
 	}
+	d.reach = [4]int32{1, 1, 1, 1}
+	var sum [4]int64
+	for x, i := range d.nodes {
+		p := d.at[i]
+		d.pts[x] = p
+		var far [4]int32
+		for _, j := range d.g.row(i) {
+			q := d.at[j]
+			du, dv := q.u-p.u, q.v-p.v
+			far[0], far[1] = max(far[0], du), max(far[1], dv)
+			far[2], far[3] = max(far[2], du+dv), max(far[3], du-dv)
+		}
+		for k, f := range far {
+			sum[k] += int64(f)
+			d.reach[k] = max(d.reach[k], f)
+		}
+	}
+	for k := range 4 {
+		d.step[k] = float64(sum[k]) / float64(len(d.nodes))
+	}
 }
 
 func (d *dissector) weightOf(i int32) int32 {
@@ -156,88 +203,169 @@ func (d *dissector) weightOf(i int32) int32 {
 type cut struct {
 	dir, side int
 	at        int32
-	cost      float64
 	size      int32
+	cost      float64
 }
 
-// bestCut sweeps all cuts of the part nodes in all directions.
-func (d *dissector) bestCut(nodes []int32, label int32) (cut, bool) {
-	first := d.at[nodes[0]].keys()
-	lo, hi := first, first
-	for _, i := range nodes {
-		for k, key := range d.at[i].keys() {
-			lo[k], hi[k] = min(lo[k], key), max(hi[k], key)
-		}
+// window is the range of cuts of one direction that leave both sides large
+// enough, with the cheapest by the estimate.
+type window struct {
+	lo, hi int32
+	cost   float64
+}
+
+// bestCut finds a cheap cut of the part nodes at pts. How large the separator
+// across a direction is follows, nearly, from how many nodes lie within the
+// reach of one edge along it; the directions that look best are then swept
+// exactly, all places in one pass.
+func (d *dissector) bestCut(nodes []int32, pts []point, label int32) (cut, bool) {
+	lo := pts[0].keys()
+	hi := lo
+	for _, p := range pts {
+		u, v := p.u, p.v
+		a, b := u+v, u-v
+		lo[0], hi[0] = min(lo[0], u), max(hi[0], u)
+		lo[1], hi[1] = min(lo[1], v), max(hi[1], v)
+		lo[2], hi[2] = min(lo[2], a), max(hi[2], a)
+		lo[3], hi[3] = min(lo[3], b), max(hi[3], b)
 	}
 	for k := range 4 {
-		w := int(hi[k]-lo[k]) + 2
-		for side := range 2 {
-			d.open[k][side] = resize(d.open[k][side], w)
-		}
-		d.mass[k] = resize(d.mass[k], w)
+		d.mass[k] = resize(d.mass[k], int(hi[k]-lo[k])+1)
 	}
-	var total int32
-	for _, i := range nodes {
-		w := d.weightOf(i)
-		total += w
-		own := d.at[i].keys()
-		least, most := own, own
-		for _, j := range d.g.row(i) {
-			if d.region[j] != label {
-				continue
-			}
-			p := d.at[j]
-			u, v := p.u, p.v
-			least[0], most[0] = min(least[0], u), max(most[0], u)
-			least[1], most[1] = min(least[1], v), max(most[1], v)
-			a, b := u+v, u-v
-			least[2], most[2] = min(least[2], a), max(most[2], a)
-			least[3], most[3] = min(least[3], b), max(most[3], b)
+	m0, m1, m2, m3 := d.mass[0], d.mass[1], d.mass[2], d.mass[3]
+	total := int32(len(nodes))
+	if d.weight == nil {
+		for _, p := range pts {
+			m0[p.u-lo[0]]++
+			m1[p.v-lo[1]]++
+			m2[p.u+p.v-lo[2]]++
+			m3[p.u-p.v-lo[3]]++
 		}
-		for k := range 4 {
-			d.mass[k][own[k]-lo[k]] += w
-			// Low side: a separator node of the cuts own ≤ at < most.
-			if most[k] > own[k] {
-				d.open[k][0][own[k]-lo[k]] += w
-				d.open[k][0][most[k]-lo[k]] -= w
-			}
-			// High side: of the cuts least ≤ at < own.
-			if least[k] < own[k] {
-				d.open[k][1][least[k]-lo[k]] += w
-				d.open[k][1][own[k]-lo[k]] -= w
-			}
+	} else {
+		total = 0
+		for x, p := range pts {
+			w := d.weight[nodes[x]]
+			total += w
+			m0[p.u-lo[0]] += w
+			m1[p.v-lo[1]] += w
+			m2[p.u+p.v-lo[2]] += w
+			m3[p.u-p.v-lo[3]] += w
+		}
+	}
+	share := 0.38
+	if len(nodes) < 2000 {
+		share = 0.32
+	}
+	var win [4]window
+	least := -1.0
+	for k := range 4 {
+		win[k] = estimate(d.mass[k], lo[k], d.reach[k], d.step[k], float64(total), share)
+		if c := win[k].cost; c >= 0 && (least < 0 || c < least) {
+			least = c
 		}
 	}
 	best := cut{cost: -1}
-	t := float64(total)
+	if least < 0 {
+		return best, false
+	}
 	for k := range 4 {
-		var below, sepLow, sepHigh int32
-		for x := range d.mass[k] {
-			below += d.mass[k][x]
-			sepLow += d.open[k][0][x]
-			sepHigh += d.open[k][1][x]
-			if d.mass[k][x] == 0 || below == total {
-				continue
-			}
-			for side, sep := range [2]int32{sepLow, sepHigh} {
-				a, b := below, total-below
-				if side == 0 {
-					a -= sep
-				} else {
-					b -= sep
-				}
-				if min(a, b) <= total/5 {
-					continue
-				}
-				skew := float64(a-b) / t
-				cost := (float64(sep) + 0.25) * (1 + 2*skew*skew)
-				if best.cost < 0 || cost < best.cost {
-					best = cut{dir: k, side: side, at: lo[k] + int32(x), cost: cost, size: sep}
-				}
-			}
+		if win[k].cost >= 0 && win[k].cost <= 1.5*least {
+			d.sweep(&best, k, win[k], nodes, pts, label, d.mass[k], lo[k], total)
 		}
 	}
 	return best, best.cost >= 0
+}
+
+// skewCost weighs the size of a separator by how uneven the sides are.
+func skewCost(size, below, total float64) float64 {
+	skew := (2*below - total) / total
+	return (size + 0.25) * (1 + 2*skew*skew)
+}
+
+// estimate looks at the cuts of one direction whose smaller side has at least
+// the share of the total.
+func estimate(mass []int32, lo, reach int32, step, total, share float64) window {
+	w := window{cost: -1}
+	var below, near int32
+	for x, m := range mass {
+		below += m
+		near += m
+		if x >= int(reach) {
+			near -= mass[x-int(reach)]
+		}
+		b := float64(below)
+		if b < share*total || m == 0 {
+			continue
+		}
+		if b > (1-share)*total {
+			if w.cost < 0 && below < int32(total) && b <= 0.8*total {
+				// One place holds more than the window: cut there if at all.
+				w = window{lo: lo + int32(x), hi: lo + int32(x), cost: skewCost(float64(near)*step/float64(reach), b, total)}
+			}
+			break
+		}
+		c := skewCost(float64(near)*step/float64(reach), b, total)
+		if w.cost < 0 {
+			w = window{lo: lo + int32(x), cost: c}
+		}
+		w.hi = lo + int32(x)
+		w.cost = min(w.cost, c)
+	}
+	return w
+}
+
+// sweep measures all cuts of direction k within the window and keeps the best.
+func (d *dissector) sweep(best *cut, k int, win window, nodes []int32, pts []point, label int32, mass []int32, lo, total int32) {
+	w := win.hi - win.lo + 2
+	d.open[0] = resize(d.open[0], int(w))
+	d.open[1] = resize(d.open[1], int(w))
+	low, high := d.open[0], d.open[1]
+	reach := d.reach[k]
+	cu, cv := direction[k][0], direction[k][1]
+	for x, p := range pts {
+		own := cu*p.u + cv*p.v
+		if own <= win.lo-reach || own > win.hi+reach {
+			continue
+		}
+		i := nodes[x]
+		least, most := own, own
+		for _, j := range d.g.row(i) {
+			if d.region[j] == label {
+				q := d.at[j]
+				key := cu*q.u + cv*q.v
+				least, most = min(least, key), max(most, key)
+			}
+		}
+		wi := d.weightOf(i)
+		// A node of the low separator for cuts own ≤ at < most.
+		if a, b := max(own, win.lo)-win.lo, min(most, win.hi+1)-win.lo; a < b {
+			low[a] += wi
+			low[b] -= wi
+		}
+		// A node of the high separator for cuts least ≤ at < own.
+		if a, b := max(least, win.lo)-win.lo, min(own, win.hi+1)-win.lo; a < b {
+			high[a] += wi
+			high[b] -= wi
+		}
+	}
+	var below, sepLow, sepHigh int32
+	for x := range win.lo - lo {
+		below += mass[x]
+	}
+	for x := range w - 1 {
+		m := mass[win.lo+x-lo]
+		below += m
+		sepLow += low[x]
+		sepHigh += high[x]
+		if m == 0 || below == total {
+			continue
+		}
+		for side, sep := range [2]int32{sepLow, sepHigh} {
+			if cost := skewCost(float64(sep), float64(below), float64(total)); best.cost < 0 || cost < best.cost {
+				*best = cut{dir: k, side: side, at: win.lo + x, cost: cost, size: sep}
+			}
+		}
+	}
 }
 
 func resize(s []int32, n int) []int32 {
@@ -252,7 +380,7 @@ func resize(s []int32, n int) []int32 {
 // split orders d.nodes[from:to], which all have region from.
 func (d *dissector) split(ctx context.Context, from, to int) {
 	for {
-		nodes := d.nodes[from:to]
+		nodes, pts := d.nodes[from:to], d.pts[from:to]
 		if len(nodes) <= leafSize {
 			d.leaf.order(d, nodes)
 			return
@@ -260,60 +388,13 @@ func (d *dissector) split(ctx context.Context, from, to int) {
 		if ctx.Err() != nil {
 			return
 		}
-		c, ok := d.bestCut(nodes, int32(from))
+		c, ok := d.bestCut(nodes, pts, int32(from))
 		if !ok || int(c.size) > len(nodes)/3 && d.weight == nil {
 			d.orderRest(nodes)
 			return
 		}
-		// Divide into low side, high side, separator.
-		label := int32(from)
-		low, high := d.queue[:0], len(nodes)
-		store := d.queue[:len(nodes)]
-		sep := d.nodes[to:to] // filled from behind below
-		_ = sep
-		const isSep = -2
-		for _, i := range nodes {
-			own := d.at[i].keys()[c.dir]
-			if (own <= c.at) != (c.side == 0) {
-				continue
-			}
-			for _, j := range d.g.row(i) {
-				if r := d.region[j]; r != label && r != isSep {
-					continue
-				}
-				if (d.at[j].keys()[c.dir] <= c.at) != (own <= c.at) {
-					d.region[i] = isSep
-					break
-				}
-			}
-		}
-		for _, i := range nodes {
-			switch {
-			case d.region[i] == isSep:
-				high--
-				store[high] = i
-			case d.at[i].keys()[c.dir] <= c.at:
-				low = append(low, i)
-			}
-		}
-		a := len(low)
-		b := a
-		for _, i := range nodes {
-			if d.region[i] != isSep && d.at[i].keys()[c.dir] > c.at {
-				store[b] = i
-				b++
-			}
-		}
-		copy(nodes, store)
-		s := nodes[b:]
-		along := across[c.dir]
-		slices.SortFunc(s, func(x, y int32) int {
-			if kx, ky := d.at[x].keys()[along], d.at[y].keys()[along]; kx != ky {
-				return int(kx - ky)
-			}
-			return int(x - y)
-		})
-		for _, i := range s {
+		a, b := d.divide(c, nodes, pts, int32(from))
+		for _, i := range nodes[b:] {
 			d.region[i] = none
 		}
 		for _, i := range nodes[a:b] {
@@ -322,6 +403,56 @@ func (d *dissector) split(ctx context.Context, from, to int) {
 		d.split(ctx, from, from+a)
 		from, to = from+a, from+b
 	}
+}
+
+// divide moves the low side of a cut to nodes[:a], the high side to nodes[a:b]
+// and the separator, sorted along its length, to nodes[b:].
+func (d *dissector) divide(c cut, nodes []int32, pts []point, label int32) (a, b int) {
+	reach := d.reach[c.dir]
+	cu, cv := direction[c.dir][0], direction[c.dir][1]
+	high, highPts := d.queue[:0], d.store[:0]
+	sep := d.sep[:0]
+	for x, p := range pts {
+		i := nodes[x]
+		key := cu*p.u + cv*p.v
+		isLow := key <= c.at
+		if (isLow && c.side == 0 && key > c.at-reach) || (!isLow && c.side == 1 && key <= c.at+reach) {
+			separates := false
+			for _, j := range d.g.row(i) {
+				if d.region[j] == label {
+					q := d.at[j]
+					if (cu*q.u+cv*q.v <= c.at) != isLow {
+						separates = true
+						break
+					}
+				}
+			}
+			if separates {
+				sep = append(sep, i)
+				continue
+			}
+		}
+		if isLow {
+			nodes[a], pts[a] = i, p
+			a++
+		} else {
+			high, highPts = append(high, i), append(highPts, p)
+		}
+	}
+	copy(nodes[a:], high)
+	copy(pts[a:], highPts)
+	b = a + len(high)
+	au, av := direction[across[c.dir]][0], direction[across[c.dir]][1]
+	slices.SortFunc(sep, func(x, y int32) int {
+		p, q := d.at[x], d.at[y]
+		if k := au*(p.u-q.u) + av*(p.v-q.v); k != 0 {
+			return int(k)
+		}
+		return int(x - y)
+	})
+	copy(nodes[b:], sep)
+	d.sep = sep
+	return a, b
 }
 
 // orderRest orders a part that no direction cuts well by minimum degree.
@@ -471,6 +602,7 @@ func dissect(ctx context.Context, g graph, weight []int32, order []int32) []int3
 	d.nodes = make([]int32, g.n)
 	done := 0
 	all := d.nodes
+	pts := make([]point, g.n)
 	for root := range int32(g.n) {
 		if d.region[root] != -4 {
 			continue
@@ -487,10 +619,10 @@ func dissect(ctx context.Context, g graph, weight []int32, order []int32) []int3
 			}
 		}
 		if len(part) > leafSize {
-			d.nodes = part
+			d.nodes, d.pts = part, pts[done:]
 			d.layout()
 		}
-		d.nodes = all
+		d.nodes, d.pts = all, pts
 		d.split(ctx, done, done+len(part))
 		done += len(part)
 	}

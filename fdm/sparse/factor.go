@@ -14,17 +14,20 @@ type Factor struct {
 	kind Kind
 
 	panels []float64
-	stack  []float64
-	work   []float64
+	store  []float64 // updates between subtrees, several workers only
+	crew   crew
+	x      []float64 // right-hand sides in the order of elimination
 	ok     bool
 
 	// LDL only.
-	diag      []float64 // D: per place, the diagonal
-	sub       []float64 // D: per place, the entry below the diagonal of a 2×2 pivot, else 0
-	pivots    []int32   // per place, the place of the unknown eliminated there
+	diag      []float64 // D: the diagonal, by pivot
+	sub       []float64 // D: the entry below the diagonal of a 2×2 pivot, else 0
+	pivots    []int32   // place of the unknown that each pivot eliminates
+	position  []int32   // its inverse: the pivot that eliminates each place
+	size      []float64 // by place: the largest entry of the row of the matrix
+	delayed   []delayedFront
 	negative  int
 	perturbed int
-	scale     float64 // largest |value|
 }
 
 // NewFactor prepares a factorisation of the given kind. Its memory, see
@@ -35,12 +38,13 @@ func (a *Analysis) NewFactor(k Kind) (*Factor, error) {
 	}
 	f := &Factor{a: a, kind: k}
 	f.panels = make([]float64, a.panel[a.fronts()]+slack)
-	f.stack = make([]float64, a.plan.stack+slack)
-	f.work = make([]float64, 4*max(a.n, 1))
+	f.crew.init(f, a.workers())
 	if k == LDL {
 		f.diag = make([]float64, a.n)
 		f.sub = make([]float64, a.n)
-		f.pivots = make([]int32, a.n)
+		f.size = make([]float64, a.n)
+		ints := make([]int32, 2*a.n)
+		f.pivots, f.position = ints[:a.n], ints[a.n:]
 	}
 	return f, nil
 }
@@ -52,7 +56,9 @@ func (f *Factor) Kind() Kind { return f.kind }
 func (f *Factor) Analysis() *Analysis { return f.a }
 
 // Refactor computes the factorisation for new values: values[:n] is the
-// diagonal, values[n+k] the entry of pairs[k].
+// diagonal, values[n+k] the entry of pairs[k]. It allocates nothing after the
+// first time, but for the goroutines of a parallel run and for LDL where
+// pivots have to wait for a later front.
 //
 // Errors: [SizeError], [ValueError], [PivotError] (Cholesky only), that of
 // ctx, which is looked at once per front. After an error there is no
@@ -60,91 +66,142 @@ func (f *Factor) Analysis() *Analysis { return f.a }
 func (f *Factor) Refactor(ctx context.Context, values []float64) error {
 	a := f.a
 	f.ok = false
-	if len(values) != a.n+a.entries {
-		return &SizeError{What: "values", Got: len(values), Want: a.n + a.entries}
-	}
-	f.scale = 0
-	for i, v := range values {
-		if v = math.Abs(v); !(v <= math.MaxFloat64) {
-			return &ValueError{Entry: i, Value: values[i]}
-		}
-		f.scale = max(f.scale, v)
+	if err := checkValues(values, a.n+a.entries, "values"); err != nil {
+		return err
 	}
 	f.negative, f.perturbed = 0, 0
-	for s := range int32(a.fronts()) {
-		if err := ctx.Err(); err != nil {
-			return err
+	f.delayed = f.delayed[:0]
+	if f.kind == LDL {
+		f.rowSizes(values)
+	}
+	err := f.crew.factor(ctx, values)
+	if f.kind == LDL {
+		if err == errDelay {
+			err = f.factorDelayed(ctx, values)
 		}
-		if err := f.front(s, values); err != nil {
-			return err
+		if err == nil {
+			f.countPivots()
 		}
 	}
-	f.ok = true
+	f.ok = err == nil
+	return err
+}
+
+// checkValues refuses a wrong length and anything not finite.
+func checkValues(v []float64, n int, what string) error {
+	if len(v) != n {
+		return &SizeError{What: what, Got: len(v), Want: n}
+	}
+	// x−x is 0 for finite x and not a number otherwise.
+	sum := 0.0
+	for _, x := range v {
+		sum += x - x
+	}
+	if sum == 0 {
+		return nil
+	}
+	for i, x := range v {
+		if math.IsNaN(x) || math.IsInf(x, 0) {
+			return &ValueError{Entry: i, Value: x}
+		}
+	}
 	return nil
 }
 
-// front assembles and eliminates front s.
-func (f *Factor) front(s int32, values []float64) error {
+// front assembles and eliminates front s. It returns false if a pivot was not
+// positive (Cholesky) or must be delayed (LDL); w then holds the details.
+func (f *Factor) front(s int32, values []float64, w *worker) bool {
 	a := f.a
 	cols, rows := a.shape(s)
 	nu := rows - cols
 	p := f.panels[a.panel[s]:a.panel[s+1]]
+	f.assemble(p, s, values, cols, rows)
+	kids := a.children[a.childPtr[s]:a.childPtr[s+1]]
+	for _, c := range kids {
+		u, rel := f.updateOf(c, w)
+		extendAdd(p, rows, 0, u, rel, 0, cols)
+	}
+	u, _ := f.updateOf(s, w)
+	if f.kind == LDL {
+		first := int(a.first[s])
+		d, e, piv := f.diag[first:first+cols], f.sub[first:first+cols], f.pivots[first:first+cols]
+		for j := range piv {
+			piv[j] = int32(first + j)
+		}
+		n := ldlPanel(p, rows, rows, cols, d, e, piv, f.size, w.scratch)
+		if n < cols {
+			if a.parent[s] != none || !f.perturb(p, rows, cols, n, d, e, piv) {
+				return false
+			}
+		}
+		for j, i := range piv {
+			f.position[i] = int32(first + j)
+		}
+		ldlUpdate(u, p, rows, cols, nu, cols, d, e, w.scratch)
+	} else {
+		if bad, pivot := choleskyPanel(p, rows, rows, cols, w.helpers()); bad >= 0 {
+			w.badPlace, w.badPivot = a.first[s]+int32(bad), pivot
+			return false
+		}
+		choleskyUpdate(u, p, rows, cols, nu, w.helpers())
+	}
+	if nu > 0 {
+		for _, c := range kids {
+			cu, rel := f.updateOf(c, w)
+			extendAdd(u, nu, cols, cu, rel, cols, rows)
+		}
+	}
+	return true
+}
+
+// assemble puts the entries of the matrix into the panel p of front s.
+func (f *Factor) assemble(p []float64, s int32, values []float64, cols, ld int) {
+	a := f.a
 	clear(p)
-	for j := range cols {
-		p[j*(rows+1)] = values[a.order[int(a.first[s])+j]]
+	at := 0
+	for _, i := range a.order[a.first[s]:a.first[s+1]] {
+		p[at] = values[i]
+		at += ld + 1
 	}
 	entries := values[a.n:]
-	source := a.source[a.sourcePtr[s]:a.sourcePtr[s+1]]
 	target := a.target[a.sourcePtr[s]:a.sourcePtr[s+1]]
+	source := a.source[a.sourcePtr[s]:a.sourcePtr[s+1]][:len(target)]
 	for k, t := range target {
 		p[t] += entries[source[k]]
 	}
-	kids := a.children[a.childPtr[s]:a.childPtr[s+1]]
-	for _, c := range kids {
-		u, n, rel := f.updateOf(c)
-		for j := range n {
-			if int(rel[j]) >= cols {
-				break
-			}
-			dst := p[int(rel[j])*rows:]
-			src := u[j*n:]
-			for i := j; i < n; i++ {
-				dst[rel[i]] += src[i]
-			}
-		}
-	}
-	u := f.stack[a.plan.update[s]:][:nu*nu]
-	if f.kind == LDL {
-		f.eliminateLDL(s, p, rows, cols, u)
-	} else {
-		if bad, pivot := choleskyPanel(p, rows, rows, cols); bad >= 0 {
-			return &PivotError{Unknown: int(a.order[int(a.first[s])+bad]), Pivot: pivot}
-		}
-		if nu > 0 {
-			mulSubLower(u, nu, p[cols:], rows, p[cols:], rows, nu, cols, true)
-		}
-	}
-	for _, c := range kids {
-		cu, n, rel := f.updateOf(c)
-		for j := range n {
-			if int(rel[j]) < cols {
-				continue
-			}
-			dst := u[(int(rel[j])-cols)*nu:]
-			src := cu[j*n:]
-			for i := j; i < n; i++ {
-				dst[int(rel[i])-cols] += src[i]
-			}
-		}
-	}
-	return nil
 }
 
-// updateOf is the update matrix that front c left for its parent, its order,
-// and where its rows are in the parent's front.
-func (f *Factor) updateOf(c int32) (u []float64, n int, rel []int32) {
+// updateOf is the update matrix that front c leaves for its parent, and where
+// its rows are in the parent's front.
+func (f *Factor) updateOf(c int32, w *worker) (u []float64, rel []int32) {
 	a := f.a
 	rel = a.rel[a.rowPtr[c]:a.rowPtr[c+1]]
-	n = len(rel)
-	return f.stack[a.plan.update[c]:][:n*n], n, rel
+	n := len(rel)
+	switch {
+	case !w.shares:
+		return w.stack[a.plan.update[c]:][:n*n], rel
+	case a.plan.shared[c]:
+		return f.store[a.plan.local[c]:][:n*n], rel
+	}
+	return w.stack[a.plan.local[c]:][:n*n], rel
+}
+
+// extendAdd adds those columns of a child's update u whose position in the
+// parent is in [from, to) to dst, whose first row and column are position
+// shift. rel ascends, so that lower triangles go to lower triangles.
+func extendAdd(dst []float64, ld, shift int, u []float64, rel []int32, from, to int) {
+	n := len(rel)
+	for j, c := range rel {
+		if int(c) < from {
+			continue
+		}
+		if int(c) >= to {
+			break
+		}
+		d := dst[(int(c)-shift)*ld:][:ld]
+		src := u[j*n+j : j*n+n]
+		for i, r := range rel[j:] {
+			d[int(r)-shift] += src[i]
+		}
+	}
 }

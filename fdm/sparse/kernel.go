@@ -8,9 +8,11 @@ const slack = 8
 // stripWork bounds m·k of one call of the strip kernel to some 50 µs.
 const stripWork = 1 << 17
 
-// mulSub does C −= A·Bᵀ, or C = −A·Bᵀ if fresh, for C m×n, A m×k, B n×k.
-// Each entry of C is summed over k in ascending order, whatever m and n are.
-func mulSub(c []float64, ldc int, a []float64, lda int, b []float64, ldb int, m, n, k int, fresh bool) {
+// mulSub does C −= A·Bᵀ, or C = −A·Bᵀ if fresh, for C m×n, A m×k, B n×k. Each
+// entry of C is summed over k in ascending order, whatever m and n are. With
+// lower, only C's lower trapezoid (rows ≥ column) is wanted; some of the
+// entries above may be overwritten.
+func mulSub(c []float64, ldc int, a []float64, lda int, b []float64, ldb int, m, n, k int, fresh, lower bool) {
 	if m <= 0 || n <= 0 {
 		return
 	}
@@ -23,29 +25,34 @@ func mulSub(c []float64, ldc int, a []float64, lda int, b []float64, ldb int, m,
 		return
 	}
 	if !haveStrips {
-		mulSubPortable(c, ldc, a, lda, b, ldb, m, n, k, fresh)
+		mulSubPortable(c, ldc, a, lda, b, ldb, m, n, k, fresh, lower)
 		return
 	}
 	// The accesses of the strips, checked once.
 	_ = c[(n-1)*ldc+m-1]
 	_ = a[(k-1)*lda+m-1]
 	_ = b[(k-1)*ldb+n-1]
-	flag := 0
+	flag, down := 0, 0
 	if fresh {
 		flag = 1
 	}
+	if lower {
+		down = 1
+	}
 	if m*k <= stripWork {
 		for j := 0; j < n; j += 4 {
-			mulSubStrip(&c[j*ldc], &a[0], &b[j], ldc, lda, ldb, m, min(4, n-j), k, 8, flag)
+			i := j * down
+			mulSubStrip(&c[j*ldc+i], &a[i], &b[j], ldc, lda, ldb, m-i, min(4, n-j), k, 8, flag)
 		}
 		return
 	}
 	for l := 0; l < k; l += 256 {
 		kl := min(256, k-l)
 		for i := 0; i < m; i += 512 {
-			mi := min(512, m-i)
 			for j := 0; j < n; j += 4 {
-				mulSubStrip(&c[j*ldc+i], &a[l*lda+i], &b[l*ldb+j], ldc, lda, ldb, mi, min(4, n-j), kl, 8, flag)
+				if top := max(i, j*down); top < min(i+512, m) {
+					mulSubStrip(&c[j*ldc+top], &a[l*lda+top], &b[l*ldb+j], ldc, lda, ldb, min(i+512, m)-top, min(4, n-j), kl, 8, flag)
+				}
 			}
 		}
 		flag = 0
@@ -53,25 +60,29 @@ func mulSub(c []float64, ldc int, a []float64, lda int, b []float64, ldb int, m,
 }
 
 // mulSubPortable is the same in plain Go.
-func mulSubPortable(c []float64, ldc int, a []float64, lda int, b []float64, ldb int, m, n, k int, fresh bool) {
+func mulSubPortable(c []float64, ldc int, a []float64, lda int, b []float64, ldb int, m, n, k int, fresh, lower bool) {
 	for j := range n {
-		cj := c[j*ldc:][:m]
+		i := 0
+		if lower {
+			i = j
+		}
+		cj := c[j*ldc+i:][:m-i]
 		if fresh {
 			clear(cj)
 		}
 		l := 0
 		for ; l+4 <= k; l += 4 {
-			a0 := a[l*lda:][:len(cj)]
-			a1 := a[(l+1)*lda:][:len(cj)]
-			a2 := a[(l+2)*lda:][:len(cj)]
-			a3 := a[(l+3)*lda:][:len(cj)]
+			a0 := a[l*lda+i:][:len(cj)]
+			a1 := a[(l+1)*lda+i:][:len(cj)]
+			a2 := a[(l+2)*lda+i:][:len(cj)]
+			a3 := a[(l+3)*lda+i:][:len(cj)]
 			b0, b1, b2, b3 := b[l*ldb+j], b[(l+1)*ldb+j], b[(l+2)*ldb+j], b[(l+3)*ldb+j]
 			for i := range cj {
 				cj[i] -= a0[i]*b0 + a1[i]*b1 + a2[i]*b2 + a3[i]*b3
 			}
 		}
 		for ; l < k; l++ {
-			a0 := a[l*lda:][:len(cj)]
+			a0 := a[l*lda+i:][:len(cj)]
 			b0 := b[l*ldb+j]
 			for i := range cj {
 				cj[i] -= a0[i] * b0
@@ -80,15 +91,50 @@ func mulSubPortable(c []float64, ldc int, a []float64, lda int, b []float64, ldb
 	}
 }
 
-// mulSubLower does the same for a square C of which only the lower triangle is
-// wanted; parts of the upper one may be overwritten.
-func mulSubLower(c []float64, ldc int, a []float64, lda int, b []float64, ldb int, n, k int, fresh bool) {
-	step := 32
-	if haveStrips && n*k <= stripWork {
-		step = 4
+// lowerStep is the width of the pieces in which workers share a lower triangle.
+const lowerStep = 32
+
+// lastRows are the masks for 0 to 3 rows of a group of four.
+var lastRows = [4][4]int64{{}, {-1}, {-1, -1}, {-1, -1, -1}}
+
+// mulTrans does out = Aᵀ·B for n ≤ 4 columns of A and nb ≤ 3 of B with m rows:
+// the product of columns c and r stands at out[4*r+c].
+func mulTrans(out *[12]float64, a []float64, lda int, b []float64, ldb int, m, n, nb int) {
+	if haveStrips && n == 4 && nb == 3 && m > 0 {
+		_ = a[3*lda+m-1]
+		_ = b[2*ldb+m-1]
+		// No call longer than some 50 µs, and the sums in fixed groups.
+		if m <= stripWork/8 {
+			dotStrip(&a[0], &b[0], &out[0], lda, ldb, m, &lastRows[m&3])
+			return
+		}
+		var part [12]float64
+		*out = part
+		for i := 0; i < m; i += stripWork / 8 {
+			mi := min(stripWork/8, m-i)
+			dotStrip(&a[i], &b[i], &part[0], lda, ldb, mi, &lastRows[mi&3])
+			for k, v := range part {
+				out[k] += v
+			}
+		}
+		return
 	}
-	for j := 0; j < n; j += step {
-		w := min(step, n-j)
-		mulSub(c[j*ldc+j:], ldc, a[j:], lda, b[j:], ldb, n-j, w, k, fresh)
+	for r := range nb {
+		br := b[r*ldb:][:m]
+		for c := range n {
+			ac := a[c*lda:][:len(br)]
+			var s0, s1, s2, s3 float64
+			i := 0
+			for ; i+4 <= len(br); i += 4 {
+				s0 += ac[i] * br[i]
+				s1 += ac[i+1] * br[i+1]
+				s2 += ac[i+2] * br[i+2]
+				s3 += ac[i+3] * br[i+3]
+			}
+			for ; i < len(br); i++ {
+				s0 += ac[i] * br[i]
+			}
+			out[4*r+c] = (s0 + s1) + (s2 + s3)
+		}
 	}
 }

@@ -20,3 +20,9 @@ func mulSubStrip(c, a, b *float64, ldc, lda, ldb, m, n, k, step, fresh int)
 //
 //go:noescape
 func scaleStrip(c *float64, ldc, m int, t *[10]float64)
+
+// dotStrip does out = Aᵀ·B for four columns of A and three of B, m rows: sum r
+// of column c of A with column r of B at out[4*r+c].
+//
+//go:noescape
+func dotStrip(a, b, out *float64, lda, ldb, m int, mask *[4]int64)

@@ -11,3 +11,7 @@ func mulSubStrip(c, a, b *float64, ldc, lda, ldb, m, n, k, step, fresh int) {
 func scaleStrip(c *float64, ldc, m int, t *[10]float64) {
 	panic("sparse: no strip kernel on this machine")
 }
+
+func dotStrip(a, b, out *float64, lda, ldb, m int, mask *[4]int64) {
+	panic("sparse: no strip kernel on this machine")
+}

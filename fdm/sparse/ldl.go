@@ -2,9 +2,13 @@ package sparse
 
 import "math"
 
-// pivotThreshold bounds the entries of L by 1/pivotThreshold (threshold partial
-// pivoting of Duff & Reid 1983; the value is common practice).
-const pivotThreshold = 0.01
+const (
+	// pivotThreshold bounds the entries of L by 1/pivotThreshold (threshold
+	// partial pivoting, Duff & Reid 1983; the value is common practice).
+	pivotThreshold = 0.01
+	// ldlBlock is the number of columns among which pivots are first sought.
+	ldlBlock = 32
+)
 
 // Inertia returns the numbers of negative, zero and positive eigenvalues of
 // the matrix of the last [Factor.Refactor] (Sylvester's law of inertia: they
@@ -20,56 +24,118 @@ func (f *Factor) Inertia() (neg, zero, pos int, ok bool) {
 }
 
 // Perturbed is the number of pivots of the last LDL factorisation that were
-// too small and were replaced. Solutions are then those of a nearby matrix.
+// zero to working precision and were replaced. Solutions are then those of a
+// nearby matrix.
 func (f *Factor) Perturbed() int { return f.perturbed }
 
-// eliminateLDL factors the first cols columns of the front p and forms its
-// update matrix u.
-func (f *Factor) eliminateLDL(s int32, p []float64, rows, cols int, u []float64) {
-	a := f.a
-	first := int(a.first[s])
-	d := f.diag[first : first+cols]
-	e := f.sub[first : first+cols]
-	piv := f.pivots[first : first+cols]
-	for j := range piv {
-		piv[j] = int32(first + j)
-	}
-	n := ldlPanel(p, rows, rows, cols, d, e, piv, f.scale*1e-15)
-	for k := n; k < cols; k++ {
-		// No acceptable pivot is left: take what there is, made large enough.
-		small := 1e-8 * max(f.scale, math.SmallestNonzeroFloat64/1e-16)
-		dk := p[k*(rows+1)]
-		if math.Abs(dk) < small {
-			dk = math.Copysign(small, dk)
-			f.perturbed++
+// countPivots counts the negative eigenvalues of D.
+func (f *Factor) countPivots() {
+	for k := 0; k < f.a.n; k++ {
+		d, e := f.diag[k], f.sub[k]
+		if e == 0 {
+			if d < 0 {
+				f.negative++
+			}
+			continue
 		}
-		p[k*(rows+1)] = dk
-		ldlStep1(p, rows, rows, cols, k, d, e)
-	}
-	for k := 0; k < cols; k++ {
+		// One of each sign unless the determinant is positive; then both have
+		// the sign of the diagonal.
+		c := f.diag[k+1]
 		switch {
-		case e[k] != 0:
-			f.negative++ // a 2×2 pivot accepted here has one eigenvalue of each sign, or two of d's
-			if d[k]*d[k+1]-e[k]*e[k] > 0 {
-				if d[k] < 0 {
-					f.negative++
-				} else {
-					f.negative--
+		case (d/e)*(c/e) <= 1:
+			f.negative++
+		case d < 0:
+			f.negative += 2
+		}
+		k++
+	}
+}
+
+// rowSizes finds the largest magnitude in each row of the matrix, by place. A
+// pivot is zero to working precision if nothing of its row is left.
+func (f *Factor) rowSizes(values []float64) {
+	a := f.a
+	for k, i := range a.order {
+		f.size[k] = math.Abs(values[i])
+	}
+	entries := values[a.n:]
+	for s := range int32(a.fronts()) {
+		cols, ld := a.shape(s)
+		rows := a.rows[a.rowPtr[s]:a.rowPtr[s+1]]
+		for k := a.sourcePtr[s]; k < a.sourcePtr[s+1]; k++ {
+			v := math.Abs(entries[a.source[k]])
+			c := int(a.target[k]) / ld
+			r := int(a.target[k]) - c*ld
+			i, j := int(a.first[s])+c, int(a.first[s])+r
+			if r >= cols {
+				j = int(rows[r-cols])
+			}
+			f.size[i] = max(f.size[i], v)
+			f.size[j] = max(f.size[j], v)
+		}
+	}
+	// Rounding leaves about this much of a row that cancels (measured on
+	// singular nets).
+	eps := 0x1p-52 * (50 + 10*math.Sqrt(float64(a.n)))
+	for k := range f.size {
+		f.size[k] *= eps
+	}
+}
+
+// perturb replaces the pivots that are left in a root front from column n on,
+// if they are all zero to working precision.
+func (f *Factor) perturb(p []float64, ld, cols, n int, d, e []float64, piv []int32) bool {
+	for k := n; k < cols; k++ {
+		for j := k; j < cols; j++ {
+			col := p[j*ld:][:ld]
+			for i := j; i < cols; i++ {
+				if math.Abs(col[i]) > max(f.size[piv[i]], f.size[piv[j]]) {
+					return false
 				}
 			}
-			k++
-		case d[k] < 0:
-			f.negative++
 		}
 	}
-	nu := rows - cols
+	for k := n; k < cols; k++ {
+		clear(p[k*ld+k:][:ld-k])
+		// The root of the relative rounding error of the row, as static
+		// pivoting commonly takes.
+		small := f.size[piv[k]] * 1e6
+		if small == 0 {
+			small = 1
+		}
+		d[k], e[k] = small, 0
+		f.perturbed++
+	}
+	return true
+}
+
+// ldlUpdate forms u = −L·D·Lᵀ of the nu rows below the n eliminated of the
+// cols columns of a front, a block of W = L·D at a time.
+func ldlUpdate(u, f []float64, ld, below, nu, n int, d, e, scratch []float64) {
 	if nu == 0 {
 		return
 	}
-	// u = −L·D·Lᵀ, a few columns of L at a time with W = L·D.
-	w := make([]float64, nu*cols)
-	ldlScale(w, p[cols:], rows, nu, cols, d, e)
-	mulSubLower(u, nu, p[cols:], rows, w, nu, nu, cols, true)
+	fresh := true
+	for k := 0; k < n; {
+		w := ldlWidth(e, k, n)
+		ldlScale(scratch, f[k*ld+below:], ld, nu, w, d[k:], e[k:])
+		mulSub(u, nu, f[k*ld+below:], ld, scratch, nu, nu, nu, w, fresh, true)
+		fresh = false
+		k += w
+	}
+	if fresh {
+		clear(u)
+	}
+}
+
+// ldlWidth is the width of a block of pivots from k that does not cut a 2×2
+// pivot.
+func ldlWidth(e []float64, k, n int) int {
+	w := min(ldlBlock, n-k)
+	if k+w < n && e[k+w-1] != 0 {
+		w--
+	}
+	return w
 }
 
 // ldlScale does W = L·D for nu rows.
@@ -81,8 +147,9 @@ func ldlScale(w, l []float64, ld, nu, cols int, d, e []float64) {
 			ln := l[(k+1)*ld:][:nu]
 			wn := w[(k+1)*nu:][:nu]
 			for i := range wk {
-				wk[i] = lk[i]*d[k] + ln[i]*e[k]
-				wn[i] = lk[i]*e[k] + ln[i]*d[k+1]
+				x, y := lk[i], ln[i]
+				wk[i] = x*d[k] + y*e[k]
+				wn[i] = x*e[k] + y*d[k+1]
 			}
 			k++
 			continue
@@ -94,101 +161,141 @@ func ldlScale(w, l []float64, ld, nu, cols int, d, e []float64) {
 }
 
 // ldlPanel eliminates as many of the first n columns of a front of m rows as
-// have an acceptable pivot among them, in the order of piv, and returns their
-// number. Pivots are 1×1 or 2×2; tiny is the size below which a column counts
-// as zero.
+// have an acceptable pivot among themselves, moving them to the front, and
+// returns their number. piv names the places of the candidates; tiny[place] is
+// the size below which an entry counts as zero.
+//
+// Pivots are sought in blocks of columns; columns without one wait at the end
+// until another round, and in the last round the search is over all of them.
 //
 // J. R. Bunch & L. Kaufman: Some stable methods for calculating inertia and
 // solving symmetric linear systems. Math. Comp. 31 (1977), 163-179.
 // I. S. Duff & J. K. Reid: The multifrontal solution of indefinite sparse
 // symmetric linear equations. ACM Trans. Math. Softw. 9 (1983), 302-325.
-func ldlPanel(f []float64, ld, m, n int, d, e []float64, piv []int32, tiny float64) int {
+func ldlPanel(f []float64, ld, m, n int, d, e []float64, piv []int32, tiny, scratch []float64) int {
+	l := ldlFront{f: f, ld: ld, m: m, n: n, d: d, e: e, piv: piv, tiny: tiny, scratch: scratch}
 	k := 0
-	for k < n {
-		found := false
-		for j := k; j < n && !found; j++ {
-			// Largest off-diagonal entry of column j, and where.
-			big, bigCandidate, at := columnMax(f, ld, m, n, k, j)
-			if big <= tiny && math.Abs(f[j*ld+j]) <= tiny {
-				continue // a zero column: no pivot here
+	for {
+		start := k
+		end := n // candidates from here on have failed in this round
+		for k < end {
+			b := min(k+ldlBlock, end)
+			from := k
+			k = l.block(k, b)
+			l.apply(from, k, b)
+			for b > k && b <= end {
+				// Failed: to the end.
+				b--
+				end--
+				l.swap(b, end)
+				if end <= k {
+					break
+				}
 			}
-			djj := f[j*ld+j]
-			if math.Abs(djj) > tiny && math.Abs(djj) >= pivotThreshold*big {
-				ldlSwap(f, ld, m, k, j, piv)
-				ldlStep1(f, ld, m, n, k, d, e)
-				k++
-				found = true
-				break
-			}
-			if bigCandidate <= tiny {
-				continue
-			}
-			r := at
-			bigR, _, _ := columnMaxBut(f, ld, m, n, k, r, j)
-			bigJ, _, _ := columnMaxBut(f, ld, m, n, k, j, r)
-			drr := f[r*ld+r]
-			off := f[min(j, r)*ld+max(j, r)]
-			// The determinant computed from scaled entries.
-			scale := max(math.Abs(djj), math.Abs(drr), math.Abs(off))
-			det := (djj/scale)*drr - (off/scale)*off
-			if math.Abs(det) <= 1e-2*scale*0.01 && math.Abs(det) <= tiny {
-				continue
-			}
-			// |D⁻¹|·(bigJ, bigR) ≤ 1/threshold.
-			ia, ib, ic := math.Abs(drr/det/scale), math.Abs(off/det/scale), math.Abs(djj/det/scale)
-			if det == 0 || max(ia*bigJ+ib*bigR, ib*bigJ+ic*bigR) > 1/pivotThreshold {
-				continue
-			}
-			lo, hi := min(j, r), max(j, r)
-			ldlSwap(f, ld, m, k, lo, piv)
-			ldlSwap(f, ld, m, k+1, hi, piv)
-			ldlStep2(f, ld, m, n, k, d, e)
+		}
+		if k == n {
+			return k
+		}
+		if k == start {
+			// No progress by blocks.
+			return l.block(k, n)
+		}
+	}
+}
+
+// ldlFront is a front under elimination.
+type ldlFront struct {
+	f             []float64
+	ld, m, n      int
+	d, e          []float64
+	piv           []int32
+	tiny, scratch []float64
+}
+
+// block eliminates candidates from k on with pivots among columns k to b,
+// which alone (and all their rows) are kept up to date. It returns the first
+// column left.
+func (l *ldlFront) block(k, b int) int {
+	f, ld := l.f, l.ld
+	for j := k; j < b; {
+		big, bigHere, r := l.columnMax(k, b, j, none)
+		djj := math.Abs(f[j*ld+j])
+		tj := l.tiny[l.piv[j]]
+		if djj > tj && djj >= pivotThreshold*big {
+			l.swap(k, j)
+			l.one(k, b)
+			k++
+			j = k
+			continue
+		}
+		if r != none && bigHere > min(tj, l.tiny[l.piv[r]]) && l.accept(k, b, j, int(r)) {
+			l.swap(k, min(j, int(r)))
+			l.swap(k+1, max(j, int(r)))
+			l.two(k, b)
 			k += 2
-			found = true
+			j = k
+			continue
 		}
-		if !found {
-			break
-		}
+		j++
 	}
 	return k
 }
 
+// accept tells whether candidates j and r make a stable 2×2 pivot: |D⁻¹| times
+// the largest entries of both columns is at most 1/pivotThreshold.
+func (l *ldlFront) accept(k, b, j, r int) bool {
+	f, ld := l.f, l.ld
+	a, c := f[j*ld+j], f[r*ld+r]
+	off := f[min(j, r)*ld+max(j, r)]
+	scale := max(math.Abs(a), math.Abs(c), math.Abs(off))
+	det := (a/scale)*c - (off/scale)*off
+	if math.Abs(det) <= max(l.tiny[l.piv[j]], l.tiny[l.piv[r]]) {
+		return false
+	}
+	// The determinant must not be all rounding.
+	if math.Abs(det) <= 1e-10*max(math.Abs(a/scale*c), math.Abs(off/scale*off)) {
+		return false
+	}
+	bigJ, _, _ := l.columnMax(k, b, j, int32(r))
+	bigR, _, _ := l.columnMax(k, b, r, int32(j))
+	ia, io, ic := math.Abs(c/scale/det), math.Abs(off/scale/det), math.Abs(a/scale/det)
+	return max(ia*bigJ+io*bigR, io*bigJ+ic*bigR) <= 1/pivotThreshold
+}
+
 // columnMax returns the largest off-diagonal magnitude of column j of the
-// remaining matrix (rows k to m), and the largest among the candidates (rows k
-// to n) with its row.
-func columnMax(f []float64, ld, m, n, k, j int) (big, candidate float64, at int) {
-	return columnMaxBut(f, ld, m, n, k, j, j)
-}
-
-func columnMaxBut(f []float64, ld, m, n, k, j, skip int) (big, candidate float64, at int) {
-	at = -1
+// remaining matrix (rows from k), leaving out row skip, and the largest within
+// the block (rows k to b) with its row.
+func (l *ldlFront) columnMax(k, b, j int, skip int32) (big, here float64, at int32) {
+	at = none
+	f, ld := l.f, l.ld
 	for i := k; i < j; i++ {
-		if v := math.Abs(f[i*ld+j]); i != skip && v > candidate {
-			candidate, at = v, i
+		if v := math.Abs(f[i*ld+j]); v > here && int32(i) != skip {
+			here, at = v, int32(i)
 		}
 	}
-	col := f[j*ld:][:m]
-	for i := j + 1; i < n; i++ {
-		if v := math.Abs(col[i]); i != skip && v > candidate {
-			candidate, at = v, i
+	col := f[j*ld:][:l.m]
+	for i := j + 1; i < b; i++ {
+		if v := math.Abs(col[i]); v > here && int32(i) != skip {
+			here, at = v, int32(i)
 		}
 	}
-	big = candidate
-	for _, v := range col[n:] {
-		if v = math.Abs(v); v > big {
-			big = v
-		}
+	big = here
+	for _, v := range col[b:] {
+		big = max(big, math.Abs(v))
 	}
-	return big, candidate, at
+	return big, here, at
 }
 
-// ldlSwap exchanges the candidates i ≤ j of the remaining matrix, the rows of
-// the columns already eliminated included.
-func ldlSwap(f []float64, ld, m, i, j int, piv []int32) {
+// swap exchanges candidates i and j, the rows of eliminated columns included.
+func (l *ldlFront) swap(i, j int) {
 	if i == j {
 		return
 	}
-	piv[i], piv[j] = piv[j], piv[i]
+	if i > j {
+		i, j = j, i
+	}
+	f, ld := l.f, l.ld
+	l.piv[i], l.piv[j] = l.piv[j], l.piv[i]
 	for c := range i {
 		f[c*ld+i], f[c*ld+j] = f[c*ld+j], f[c*ld+i]
 	}
@@ -196,52 +303,78 @@ func ldlSwap(f []float64, ld, m, i, j int, piv []int32) {
 	for c := i + 1; c < j; c++ {
 		f[i*ld+c], f[c*ld+j] = f[c*ld+j], f[i*ld+c]
 	}
-	for r := j + 1; r < m; r++ {
-		f[i*ld+r], f[j*ld+r] = f[j*ld+r], f[i*ld+r]
+	ci, cj := f[i*ld:][:l.m], f[j*ld:][:l.m]
+	for r := j + 1; r < l.m; r++ {
+		ci[r], cj[r] = cj[r], ci[r]
 	}
 }
 
-// ldlStep1 eliminates column k with the 1×1 pivot on its diagonal.
-func ldlStep1(f []float64, ld, m, n, k int, d, e []float64) {
+// one eliminates column k with the 1×1 pivot on its diagonal from the columns
+// of the block.
+func (l *ldlFront) one(k, b int) {
+	f, ld, m := l.f, l.ld, l.m
 	col := f[k*ld:][:m]
 	dk := col[k]
-	d[k], e[k] = dk, 0
-	for j := k + 1; j < n; j++ {
-		if w := col[j]; w != 0 {
-			w /= dk
+	l.d[k], l.e[k] = dk, 0
+	for j := k + 1; j < b; j++ {
+		if w := col[j] / dk; w != 0 {
 			cj := f[j*ld:][:m]
 			for i := j; i < m; i++ {
 				cj[i] -= col[i] * w
 			}
 		}
 	}
+	inv := 1 / dk
 	for i := k + 1; i < m; i++ {
-		col[i] /= dk
+		col[i] *= inv
 	}
 }
 
-// ldlStep2 eliminates columns k and k+1 with the 2×2 pivot on their diagonal.
-func ldlStep2(f []float64, ld, m, n, k int, d, e []float64) {
+// two eliminates columns k and k+1 with the 2×2 pivot on their diagonal from
+// the columns of the block.
+func (l *ldlFront) two(k, b int) {
+	f, ld, m := l.f, l.ld, l.m
 	c0 := f[k*ld:][:m]
 	c1 := f[(k+1)*ld:][:m]
-	a, b, c := c0[k], c0[k+1], c1[k+1]
-	d[k], d[k+1], e[k], e[k+1] = a, c, b, 0
-	// L = C·D⁻¹ with the inverse scaled by b, which is not small here.
-	ab, cb := a/b, c/b
-	t := 1 / (ab*cb - 1) / b
-	for j := k + 2; j < n; j++ {
-		x, y := c0[j], c1[j]
-		if x == 0 && y == 0 {
+	d0, off, d1 := c0[k], c0[k+1], c1[k+1]
+	l.d[k], l.d[k+1], l.e[k], l.e[k+1] = d0, d1, off, 0
+	inv := newInverse2(d0, off, d1)
+	for j := k + 2; j < b; j++ {
+		l0, l1 := inv.mul(c0[j], c1[j])
+		if l0 == 0 && l1 == 0 {
 			continue
 		}
-		l0, l1 := (cb*x-y)*t, (ab*y-x)*t
 		cj := f[j*ld:][:m]
 		for i := j; i < m; i++ {
 			cj[i] -= c0[i]*l0 + c1[i]*l1
 		}
 	}
 	for i := k + 2; i < m; i++ {
-		x, y := c0[i], c1[i]
-		c0[i], c1[i] = (cb*x-y)*t, (ab*y-x)*t
+		c0[i], c1[i] = inv.mul(c0[i], c1[i])
 	}
+	// L is the identity within the pivot.
+	c0[k+1] = 0
+}
+
+// inverse2 is the inverse of a symmetric 2×2 pivot.
+type inverse2 struct{ a, b, c float64 }
+
+func newInverse2(a, b, c float64) inverse2 {
+	s := max(math.Abs(a), math.Abs(b), math.Abs(c))
+	det := (a/s)*c - (b/s)*b
+	return inverse2{c / s / det, -b / s / det, a / s / det}
+}
+
+func (v inverse2) mul(x, y float64) (float64, float64) { return v.a*x + v.b*y, v.b*x + v.c*y }
+
+// apply subtracts the pivots from to k, found in a block that ends at b, from
+// the candidates right of the block.
+func (l *ldlFront) apply(from, k, b int) {
+	right := l.n - b
+	if k == from || right == 0 {
+		return
+	}
+	f, ld := l.f, l.ld
+	ldlScale(l.scratch, f[from*ld+b:], ld, right, k-from, l.d[from:], l.e[from:])
+	mulSub(f[b*ld+b:], ld, f[from*ld+b:], ld, l.scratch, right, l.m-b, right, k-from, false, true)
 }

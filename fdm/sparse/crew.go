@@ -1,0 +1,202 @@
+package sparse
+
+import (
+	"context"
+	"errors"
+	"sync"
+	"sync/atomic"
+)
+
+// errDelay says that a static LDL run met a front without enough pivots.
+var errDelay = errors.New("sparse: pivots must be delayed")
+
+// worker is what one goroutine needs to run fronts.
+type worker struct {
+	crew    *crew
+	stack   []float64
+	scratch []float64
+	shares  bool // several workers: see plan
+	alone   bool // runs a subtree beside others, so that fronts are not to be split
+
+	badPlace int32
+	badPivot float64
+}
+
+// helpers is the crew that may share the work inside a front, or nil.
+func (w *worker) helpers() *crew {
+	if w.alone {
+		return nil
+	}
+	return w.crew
+}
+
+// crew runs a factorisation with one or more workers.
+type crew struct {
+	f       *Factor
+	workers []worker
+	wake    chan struct{}
+	done    sync.WaitGroup
+
+	// The job at hand: parts 0 to parts-1, taken in turn.
+	next  atomic.Int64
+	parts int64
+	kind  jobKind
+	ctx   context.Context
+	vals  []float64
+	block blockJob
+
+	mu       sync.Mutex
+	badFront int32
+	badPlace int32
+	badPivot float64
+	err      error
+}
+
+type jobKind int
+
+const (
+	jobSubtrees jobKind = iota
+	jobRows
+	jobColumns
+	jobUpdate
+)
+
+func (c *crew) init(f *Factor, n int) {
+	p := &f.a.plan
+	c.f = f
+	c.workers = make([]worker, n)
+	for i := range c.workers {
+		w := &c.workers[i]
+		w.crew = c
+		w.shares = n > 1
+		size := p.stack
+		if w.shares {
+			size = p.taskStack
+		}
+		w.stack = make([]float64, size+slack)
+		w.scratch = make([]float64, p.scratch+slack)
+	}
+	if n > 1 {
+		f.store = make([]float64, p.topStore+slack)
+		c.wake = make(chan struct{}, n)
+	}
+}
+
+// factor runs all fronts.
+func (c *crew) factor(ctx context.Context, values []float64) error {
+	a := c.f.a
+	c.badFront, c.err = int32(a.fronts()), nil
+	lead := &c.workers[0]
+	if len(c.workers) == 1 {
+		lead.alone = true
+		c.run(ctx, values, lead, 0, int32(a.fronts())-1)
+		return c.result()
+	}
+	for i := range c.workers[1:] {
+		go c.help(&c.workers[i+1])
+	}
+	c.ctx, c.vals = ctx, values
+	for i := range c.workers {
+		c.workers[i].alone = true
+	}
+	c.split(jobSubtrees, len(a.plan.taskRoot))
+	lead.alone = false
+	for _, s := range a.plan.top {
+		if s > c.badFront || c.err != nil {
+			break
+		}
+		if !c.run(ctx, values, lead, s, s) {
+			break
+		}
+	}
+	// A token too many ends a helper.
+	c.parts = -1
+	c.done.Add(len(c.workers) - 1)
+	for range c.workers[1:] {
+		c.wake <- struct{}{}
+	}
+	c.done.Wait()
+	c.ctx, c.vals = nil, nil
+	return c.result()
+}
+
+// run eliminates the fronts from to to.
+func (c *crew) run(ctx context.Context, values []float64, w *worker, from, to int32) bool {
+	for s := from; s <= to; s++ {
+		if err := ctx.Err(); err != nil {
+			c.mu.Lock()
+			c.err = err
+			c.mu.Unlock()
+			return false
+		}
+		if !c.f.front(s, values, w) {
+			c.mu.Lock()
+			if s < c.badFront {
+				c.badFront, c.badPlace, c.badPivot = s, w.badPlace, w.badPivot
+			}
+			c.mu.Unlock()
+			return false
+		}
+	}
+	return true
+}
+
+func (c *crew) result() error {
+	a := c.f.a
+	switch {
+	case c.err != nil:
+		return c.err
+	case int(c.badFront) < a.fronts() && c.f.kind == LDL:
+		return errDelay
+	case int(c.badFront) < a.fronts():
+		return &PivotError{Unknown: int(a.order[c.badPlace]), Pivot: c.badPivot}
+	}
+	return nil
+}
+
+// help takes part in jobs until one with a negative number of parts.
+func (c *crew) help(w *worker) {
+	for range c.wake {
+		if c.parts < 0 {
+			c.done.Done()
+			return
+		}
+		c.take(w)
+		c.done.Done()
+	}
+}
+
+// split does a job of so many parts with all workers. Which worker does which
+// part has no influence on the result.
+func (c *crew) split(kind jobKind, parts int) {
+	c.kind, c.parts = kind, int64(parts)
+	c.next.Store(0)
+	helpers := min(len(c.workers), parts) - 1
+	c.done.Add(max(helpers, 0))
+	for range helpers {
+		c.wake <- struct{}{}
+	}
+	c.take(&c.workers[0])
+	c.done.Wait()
+}
+
+// take works on parts of the job until none is left.
+func (c *crew) take(w *worker) {
+	for {
+		i := c.next.Add(1) - 1
+		if i >= c.parts {
+			return
+		}
+		switch c.kind {
+		case jobSubtrees:
+			p := &c.f.a.plan
+			c.run(c.ctx, c.vals, w, p.taskFirst[i], p.taskRoot[i])
+		case jobRows:
+			c.block.rows(int(i))
+		case jobColumns:
+			c.block.columns(int(i))
+		case jobUpdate:
+			c.block.update(int(i))
+		}
+	}
+}
