@@ -198,7 +198,7 @@ func extendAdd(dst []float64, ld, shift int, u []float64, rel []int32, from, to 
 		if int(c) >= to {
 			break
 		}
-		d := dst[(int(c)-shift)*ld:][:ld]
+		d := dst[(int(c)-shift)*ld:]
 		src := u[j*n+j : j*n+n]
 		for i, r := range rel[j:] {
 			d[int(r)-shift] += src[i]
