@@ -20,6 +20,11 @@ import (
 // all in m. The last two make the bordered system symmetric.
 type common struct {
 	cable int32
+}
+
+// condition is the state of a common's condition at one shape.
+type condition struct {
+	gap   float64 // m
 	scale float64 // m, makes the gap a ratio
 	slack bool    // elastic and too long for its place
 	far   int32   // sag: the node farthest from the chord
@@ -33,7 +38,7 @@ func (v *Solver) pushes(k int) bool { return v.cableOf(k).Kind.Pushes() }
 // conditions computes the gaps of st and, for elastic cables, who is slack.
 func (v *Solver) conditions(st *state) {
 	for k := range v.commons {
-		cm := &v.commons[k]
+		cm := &st.cond[k]
 		cb := v.cableOf(k)
 		switch cb.Law {
 		case canopy.CableSag:
@@ -46,19 +51,19 @@ func (v *Solver) conditions(st *state) {
 				}
 			}
 			cm.far, cm.scale = far, chord
-			st.gap[k] = d - cb.Value*chord
+			cm.gap = d - cb.Value*chord
 		case canopy.CableLength:
 			cm.scale = cb.Value
-			st.gap[k] = v.lengthOf(k, st.at) - cb.Value
+			cm.gap = v.lengthOf(k, st.at) - cb.Value
 		case canopy.CableElastic:
 			cm.scale = cb.Unstressed
 			l := v.lengthOf(k, st.at)
 			cm.slack = l < cb.Unstressed && !v.pushes(k) && st.force[k] <= 0
 			if cm.slack {
 				st.force[k] = 0
-				st.gap[k] = 0
+				cm.gap = 0
 			} else {
-				st.gap[k] = l - cb.Unstressed*(1+st.force[k]/cb.Stiffness)
+				cm.gap = l - cb.Unstressed*(1+st.force[k]/cb.Stiffness)
 			}
 		}
 		if !(cm.scale > 0) {
@@ -122,7 +127,7 @@ func (v *Solver) columnsOf(st *state) {
 // conditionRow calls f with the derivative of the gap of common k by the
 // unknowns, entry by entry; an unknown may come more than once.
 func (v *Solver) conditionRow(st *state, k int, f func(unknown int, x float64)) {
-	cm := &v.commons[k]
+	cm := &st.cond[k]
 	cb := v.cableOf(k)
 	if cb.Law != canopy.CableSag {
 		if cm.slack {
@@ -164,20 +169,20 @@ func (v *Solver) conditionRow(st *state, k int, f func(unknown int, x float64)) 
 }
 
 // conditionSlope is the derivative of the gap of common k by its own force.
-func (v *Solver) conditionSlope(k int) float64 {
+func (v *Solver) conditionSlope(st *state, k int) float64 {
 	cb := v.cableOf(k)
 	if cb.Law != canopy.CableElastic {
 		return 0
 	}
-	if v.commons[k].slack {
+	if st.cond[k].slack {
 		return 1
 	}
 	return -cb.Unstressed / cb.Stiffness
 }
 
 // symmetric reports whether common k makes the bordered system symmetric.
-func (v *Solver) symmetric(k int) bool {
-	return v.cableOf(k).Law != canopy.CableSag && !v.commons[k].slack
+func (v *Solver) symmetric(st *state, k int) bool {
+	return v.cableOf(k).Law != canopy.CableSag && !st.cond[k].slack
 }
 
 // impossible names a condition that no shape can meet, "" when there is none.

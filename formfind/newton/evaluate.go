@@ -181,7 +181,7 @@ func (v *Solver) evaluate(st *state) {
 	st.worst = ratio(math.Sqrt(st.worst), most)
 	m2 := st.eta * st.eta
 	for c := range v.commons {
-		g := st.gap[c] / v.commons[c].scale
+		g := st.cond[c].gap / st.cond[c].scale
 		m2 += g * g
 	}
 	st.merit = math.Sqrt(m2)

@@ -169,7 +169,7 @@ func (v *Solver) iterate(ctx context.Context, set engine.Settings) (engine.Outco
 
 func (v *Solver) gapsMet(tol float64) bool {
 	for k := range v.commons {
-		if math.Abs(v.now.gap[k]) > tol*v.commons[k].scale {
+		if math.Abs(v.now.cond[k].gap) > tol*v.now.cond[k].scale {
 			return false
 		}
 	}
@@ -332,7 +332,7 @@ func (v *Solver) tryStep(ctx context.Context, st *state, shift float64, out *ste
 		// indefinite though the mast itself holds the shape.
 		held := false
 		for k := range v.commons {
-			held = held || v.symmetric(k)
+			held = held || v.symmetric(st, k)
 		}
 		if !held {
 			return false, nil
@@ -367,7 +367,7 @@ func (v *Solver) tryStep(ctx context.Context, st *state, shift float64, out *ste
 		schur, right := v.schur(st, x)
 		if !positive {
 			neg, _, _, known := factor.Inertia()
-			if !known || neg+v.negativeOf(schur)-v.countSymmetric() > 0 {
+			if !known || neg+v.negativeOf(st, schur)-v.countSymmetric(st) > 0 {
 				return false, nil
 			}
 		}
@@ -407,22 +407,22 @@ func (v *Solver) schur(st *state, x []float64) (s, right []float64) {
 	s = make([]float64, m*m)
 	right = make([]float64, m)
 	for k := range m {
-		right[k] = -st.gap[k]
+		right[k] = -st.cond[k].gap
 		v.conditionRow(st, k, func(i int, d float64) {
 			right[k] -= d * x[i*w]
 			for l := range m {
 				s[k*m+l] += d * x[i*w+1+l]
 			}
 		})
-		s[k*m+k] += v.conditionSlope(k)
+		s[k*m+k] += v.conditionSlope(st, k)
 	}
 	return s, right
 }
 
-func (v *Solver) countSymmetric() int {
+func (v *Solver) countSymmetric(st *state) int {
 	n := 0
 	for k := range v.commons {
-		if v.symmetric(k) {
+		if v.symmetric(st, k) {
 			n++
 		}
 	}
@@ -431,11 +431,11 @@ func (v *Solver) countSymmetric() int {
 
 // negativeOf counts the negative eigenvalues of the part of the Schur
 // complement that belongs to symmetric conditions.
-func (v *Solver) negativeOf(schur []float64) int {
+func (v *Solver) negativeOf(st *state, schur []float64) int {
 	m := len(v.commons)
 	var keep []int
 	for k := range m {
-		if v.symmetric(k) {
+		if v.symmetric(st, k) {
 			keep = append(keep, k)
 		}
 	}
@@ -500,7 +500,7 @@ func (v *Solver) negative(ctx context.Context) (int, error) {
 	if !known {
 		return -1, nil
 	}
-	if sym := v.countSymmetric(); sym > 0 {
+	if sym := v.countSymmetric(&v.now); sym > 0 {
 		m := len(v.commons)
 		w := 1 + m
 		for i := range v.unknown {
@@ -513,7 +513,7 @@ func (v *Solver) negative(ctx context.Context) (int, error) {
 			return -1, fmt.Errorf("newton: %w", err)
 		}
 		s, _ := v.schur(&v.now, v.rhs)
-		neg += v.negativeOf(s) - sym
+		neg += v.negativeOf(&v.now, s) - sym
 	}
 	return neg, nil
 }

@@ -75,7 +75,7 @@ type state struct {
 	pull     []r3.Vec  // resultant of pulls and loads at each node, tied nodes' forces left where they act
 	size     []float64 // sum of the sizes of the forces that meet at each node
 	reduced  []float64 // Bᵀ·pull by unknown
-	gap      []float64 // residual of the conditions of the commons
+	cond     []condition
 	energy   float64
 	eta      float64
 	worst    float64
@@ -280,7 +280,7 @@ func (v *Solver) prepare(ctx context.Context, at []r3.Vec, all bool) error {
 			pull:    make([]r3.Vec, n),
 			size:    make([]float64, n),
 			reduced: make([]float64, v.unknown),
-			gap:     make([]float64, len(v.commons)),
+			cond:    make([]condition, len(v.commons)),
 		}
 	}
 	return nil
