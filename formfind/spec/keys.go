@@ -8,8 +8,8 @@ type section struct {
 	id   string // name in the schema
 	doc  string
 	keys []*key
-	// oneOf lists groups of keys of which exactly one must be present
-	// (a key may stand for itself and those that go with it).
+	// oneOf lists keys of which exactly one must be present; unstressed
+	// comes with stiffness.
 	oneOf []string
 	table bool // the rows of a table: the keys are its columns
 }
@@ -74,7 +74,7 @@ type bound struct {
 func quantity(d *Dimension) *shape { return &shape{form: formQuantity, dim: d} }
 func text() *shape                 { return &shape{form: formText} }
 func count(lo, hi float64) *shape  { return (&shape{form: formCount}).from(lo).upTo(hi) }
-func flag() *shape                 { return &shape{form: formSwitch} }
+func yesNo() *shape                { return &shape{form: formSwitch} }
 func word(w ...string) *shape      { return &shape{form: formWord, words: w} }
 func name(thing string) *shape     { return &shape{form: formName, thing: thing} }
 func triple(d *Dimension) *shape   { return &shape{form: formTriple, dim: d} }

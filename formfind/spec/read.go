@@ -167,8 +167,7 @@ func (r *reader) read(text []byte) *canopy.Model {
 	if root == nil {
 		return nil
 	}
-	r.applySets(root)
-	return r.decode(root)
+	return r.decode(r.applySets(root))
 }
 
 // checkText finds bytes that no text file holds.

@@ -9,11 +9,25 @@ import (
 )
 
 // applySets changes the tree by the entries of Options.Set.
-func (r *reader) applySets(root *yaml.Node) {
+func (r *reader) applySets(root *yaml.Node) *yaml.Node {
+	if len(r.options.Set) == 0 {
+		return root
+	}
+	// A change of one value must not change its aliases.
+	budget := maxSetNodes
+	whole := expand(root, 0, &budget)
+	if whole == nil {
+		r.fail(root, nil, "the model's aliases hold too many values", "write the values themselves")
+		return root
+	}
+	root = whole
 	for i, s := range r.options.Set {
 		r.applySet(root, i, s)
 	}
+	return root
 }
+
+const maxSetNodes = 2000000
 
 func (r *reader) failSet(s string, path, message, hint string) {
 	r.add(Diagnostic{File: "--set " + s, Path: path, Text: path, Message: message, Hint: hint}, -1000)
@@ -40,9 +54,6 @@ func (r *reader) applySet(root *yaml.Node, index int, s string) {
 	n, sh := root, in(modelSection)
 	parts := strings.Split(path, ".")
 	for k, part := range parts {
-		for hop := 0; n.Kind == yaml.AliasNode && hop < 10; hop++ {
-			n = n.Alias
-		}
 		last := k == len(parts)-1
 		done := strings.Join(parts[:k], ".")
 		where := "the model"
@@ -246,4 +257,28 @@ func hasAlias(n *yaml.Node) bool {
 		}
 	}
 	return false
+}
+
+// expand copies the tree below n with every alias replaced by what it stands
+// for. It returns nil when that takes more nodes than the budget.
+func expand(n *yaml.Node, depth int, budget *int) *yaml.Node {
+	for hop := 0; n.Kind == yaml.AliasNode; hop++ {
+		if hop > 10 || n.Alias == nil {
+			return nil
+		}
+		n = n.Alias
+	}
+	*budget--
+	if *budget < 0 || depth > 2*maxDepth {
+		return nil
+	}
+	dup := *n
+	dup.Anchor = ""
+	dup.Content = make([]*yaml.Node, len(n.Content))
+	for i, c := range n.Content {
+		if dup.Content[i] = expand(c, depth+1, budget); dup.Content[i] == nil {
+			return nil
+		}
+	}
+	return &dup
 }
