@@ -1,0 +1,301 @@
+package main
+
+import (
+	"bytes"
+	"context"
+	"encoding/json"
+	"io"
+	"os"
+	"os/exec"
+	"path/filepath"
+	"runtime"
+	"strings"
+	"testing"
+
+	"github.com/stretchr/testify/require"
+
+	"anticlast/formfind/spec"
+)
+
+// small is the starter sail on a coarse mesh, for tests that only need some
+// canopy.
+const small = `anticlast: 1
+title: Trial
+mesh: 1 m
+points:
+  A: [0, 0, 4]
+  B: [8, 0, 2]
+  C: [8, 8, 4]
+  D: [0, 8, 2]
+edges:
+  AB: {from: A, to: B, cable: {force: 22 kN}}
+  BC: {from: B, to: C, cable: {sag: 10 %}}
+  CD: {from: C, to: D, cable: {force: 22 kN}}
+  DA: {from: D, to: A, cable: {force: 22 kN}}
+fabrics:
+  sail: {boundary: [AB, BC, CD, DA], prestress: {warp: 2.5 kN/m, weft: 2.5 kN/m}, warp: [1, 1, 0]}
+`
+
+type ran struct {
+	code     int
+	out, err string
+}
+
+func run(t *testing.T, in string, args ...string) ran {
+	t.Helper()
+	var out, errs bytes.Buffer
+	code := Run(t.Context(), args, Streams{In: strings.NewReader(in), Out: &out, Err: &errs})
+	return ran{code, out.String(), errs.String()}
+}
+
+func write(t *testing.T, dir, name, text string) string {
+	t.Helper()
+	p := filepath.Join(dir, name)
+	require.NoError(t, os.WriteFile(p, []byte(text), 0o644))
+	return p
+}
+
+func folder(t *testing.T, dir string) map[string]string {
+	t.Helper()
+	files := map[string]string{}
+	entries, err := os.ReadDir(dir)
+	require.NoError(t, err)
+	for _, e := range entries {
+		b, err := os.ReadFile(filepath.Join(dir, e.Name()))
+		require.NoError(t, err)
+		files[e.Name()] = string(b)
+	}
+	return files
+}
+
+func TestFormWritesTheWholeFolderBesideTheModel(t *testing.T) {
+	dir := t.TempDir()
+	m := write(t, dir, "sail.yaml", small)
+	r := run(t, "", "form", m)
+	require.Equal(t, exitFine, r.code, r.err)
+	require.Contains(t, r.out, "the audit trusts it")
+	require.Contains(t, r.out, "preliminary design")
+	files := folder(t, filepath.Join(dir, "sail-form"))
+	for _, name := range []string{"form.json", "form.glb", "nodes.csv", "members.csv", "triangles.csv", "reactions.csv", "summary.txt"} {
+		require.NotEmpty(t, files[name], name)
+		if name != "form.glb" {
+			require.Contains(t, files[name], "preliminary design", name)
+		}
+	}
+	require.Contains(t, files["form.glb"], "preliminary design")
+	require.Equal(t, exitFine, run(t, "", "check", filepath.Join(dir, "sail-form", "form.json")).code)
+	require.Equal(t, exitFine, run(t, "", "check", filepath.Join(dir, "sail-form")).code, "a folder stands for its form.json")
+	entries, err := os.ReadDir(dir)
+	require.NoError(t, err)
+	require.Len(t, entries, 2, "nothing is left beside the model and the folder")
+}
+
+func TestSameInputSameBytesWhateverGOMAXPROCS(t *testing.T) {
+	dir := t.TempDir()
+	m := write(t, dir, "sail.yaml", small)
+	require.Equal(t, exitFine, run(t, "", "form", m, "-o", filepath.Join(dir, "one")).code)
+	before := runtime.GOMAXPROCS(1)
+	r := run(t, "", "form", m, "-o", filepath.Join(dir, "two"))
+	runtime.GOMAXPROCS(max(before, 2))
+	require.Equal(t, exitFine, r.code)
+	require.Equal(t, exitFine, run(t, "", "form", m, "-o", filepath.Join(dir, "three")).code)
+	runtime.GOMAXPROCS(before)
+	one := folder(t, filepath.Join(dir, "one"))
+	require.Equal(t, one, folder(t, filepath.Join(dir, "two")))
+	require.Equal(t, one, folder(t, filepath.Join(dir, "three")))
+}
+
+func TestSetChangesOneValue(t *testing.T) {
+	dir := t.TempDir()
+	m := write(t, dir, "sail.yaml", small)
+	head := func(args ...string) (h struct {
+		Audit struct{ Trusted bool }
+	}) {
+		r := run(t, "", append([]string{"form", m, "--json"}, args...)...)
+		require.Equal(t, exitFine, r.code, r.err)
+		require.NoError(t, json.Unmarshal([]byte(r.out), &h), r.out)
+		return h
+	}
+	require.True(t, head().Audit.Trusted)
+	before := folder(t, filepath.Join(dir, "sail-form"))["nodes.csv"]
+	head("--set", "points.A.z=6.5")
+	after := folder(t, filepath.Join(dir, "sail-form"))["nodes.csv"]
+	require.NotEqual(t, before, after)
+	require.Contains(t, after, "6.5")
+
+	r := run(t, "", "form", m, "--set", "points.M1.z=6.5")
+	require.Equal(t, exitBadInput, r.code)
+	require.Contains(t, r.err, "M1")
+}
+
+func TestPipesWithoutFiles(t *testing.T) {
+	r := run(t, small, "form", "-")
+	require.Equal(t, exitFine, r.code, r.err)
+	require.True(t, json.Valid([]byte(r.out)))
+	c := run(t, r.out, "check", "-", "--json")
+	require.Equal(t, exitFine, c.code, c.err)
+	require.True(t, json.Valid([]byte(c.out)))
+	c = run(t, small, "check", "-")
+	require.Equal(t, exitFine, c.code, c.err)
+	require.Contains(t, c.out, "trusts")
+	e := run(t, r.out, "export", "-", "--to", "reactions")
+	require.Equal(t, exitFine, e.code, e.err)
+	require.True(t, strings.HasPrefix(e.out, "#"), "the caution comes first")
+}
+
+func TestExportGivesWhatFormWrote(t *testing.T) {
+	dir := t.TempDir()
+	m := write(t, dir, "sail.yaml", small)
+	require.Equal(t, exitFine, run(t, "", "form", m).code)
+	wrote := folder(t, filepath.Join(dir, "sail-form"))
+	for name, ext := range map[string]string{"nodes": "nodes.csv", "members": "members.csv", "triangles": "triangles.csv", "reactions": "reactions.csv", "glb": "form.glb", "json": "form.json"} {
+		e := run(t, "", "export", filepath.Join(dir, "sail-form"), "--to", name, "-o", "-")
+		require.Equal(t, exitFine, e.code, e.err)
+		require.Equal(t, wrote[ext], e.out, "%s from form.json is the same to the byte", name)
+	}
+}
+
+func TestBrokenModelsEndWithTwoAndTheRightLine(t *testing.T) {
+	files, err := filepath.Glob("../../testdata/broken/*.yaml")
+	require.NoError(t, err)
+	require.GreaterOrEqual(t, len(files), 60)
+	for _, f := range files {
+		t.Run(filepath.Base(f), func(t *testing.T) {
+			out := filepath.Join(t.TempDir(), "out")
+			r := run(t, "", "form", f, "-o", out)
+			require.Equal(t, exitBadInput, r.code, r.err)
+			require.Regexp(t, `(?m)^anticlast: .*\.(yaml|csv):\d+`, r.err)
+			require.Empty(t, r.out)
+			_, err := os.Stat(out)
+			require.ErrorIs(t, err, os.ErrNotExist, "nothing half-written")
+		})
+	}
+}
+
+func TestATamperedFormIsFoundOut(t *testing.T) {
+	r := run(t, small, "form", "-")
+	require.Equal(t, exitFine, r.code, r.err)
+	var form map[string]any
+	require.NoError(t, json.Unmarshal([]byte(r.out), &form))
+	nodes := form["nodes"].([]any)
+	for _, n := range nodes {
+		node := n.(map[string]any)
+		fixed := node["fixed"].([]any)
+		if fixed[2] == false {
+			p := node["position"].([]any)
+			p[2] = p[2].(float64) + 1e-4
+			break
+		}
+	}
+	b, err := json.Marshal(form)
+	require.NoError(t, err)
+	c := run(t, string(b), "check", "-")
+	require.Equal(t, exitNotTrusted, c.code, c.err)
+	require.Contains(t, c.out, "NOT TRUSTED")
+	require.Contains(t, c.out, "changed or damaged")
+}
+
+func TestABrokenLimitEndsWithThreeAndSaysWhere(t *testing.T) {
+	m := small + "limits: {reaction: {most: 1 kN}}\n"
+	dir := t.TempDir()
+	r := run(t, "", "form", write(t, dir, "m.yaml", m))
+	if r.code == exitBadInput {
+		r = run(t, "", "form", write(t, dir, "m.yaml", small+"limits: {reaction max: 1 kN}\n"))
+	}
+	require.Equal(t, exitNotTrusted, r.code, r.err)
+	require.Regexp(t, `broken: .*kN`, r.out)
+}
+
+func TestAnEdgeCableTooWeakHasNoShape(t *testing.T) {
+	dir := t.TempDir()
+	m := strings.ReplaceAll(small, "force: 22 kN", "force: 2 kN")
+	m = strings.ReplaceAll(m, "sag: 10 %", "force: 2 kN")
+	p := write(t, dir, "weak.yaml", m)
+	require.NoError(t, os.MkdirAll(filepath.Join(dir, "weak-form"), 0o755))
+	require.Equal(t, exitFine, run(t, "", "form", write(t, dir, "good.yaml", small), "-o", filepath.Join(dir, "weak-form")).code)
+	r := run(t, "", "form", p)
+	require.Equal(t, exitNotTrusted, r.code, r.err)
+	files := folder(t, filepath.Join(dir, "weak-form"))
+	require.NotContains(t, files, "form.json", "yesterday's shape does not survive")
+	require.NotContains(t, files, "form.glb")
+	require.Contains(t, files["summary.txt"], "No shape")
+}
+
+func TestSomebodyElsesFolderIsNotOverwritten(t *testing.T) {
+	dir := t.TempDir()
+	m := write(t, dir, "sail.yaml", small)
+	other := filepath.Join(dir, "photos")
+	require.NoError(t, os.Mkdir(other, 0o755))
+	write(t, other, "holiday.jpg", "x")
+	r := run(t, "", "form", m, "-o", other)
+	require.Equal(t, exitBadInput, r.code)
+	require.Contains(t, r.err, "--force")
+	require.Equal(t, map[string]string{"holiday.jpg": "x"}, folder(t, other))
+	require.Equal(t, exitFine, run(t, "", "form", m, "-o", other, "--force").code)
+	require.Contains(t, folder(t, other), "form.json")
+}
+
+func TestInterruptedEndsWith130AndWritesNothing(t *testing.T) {
+	dir := t.TempDir()
+	m := write(t, dir, "sail.yaml", small)
+	ctx, cancel := context.WithCancel(t.Context())
+	cancel()
+	var out, errs bytes.Buffer
+	code := Run(ctx, []string{"form", m}, Streams{In: strings.NewReader(""), Out: &out, Err: &errs})
+	require.Equal(t, exitInterrupted, code, errs.String())
+	_, err := os.Stat(filepath.Join(dir, "sail-form"))
+	require.ErrorIs(t, err, os.ErrNotExist)
+}
+
+func TestUsageErrorsEndWithTwo(t *testing.T) {
+	for _, args := range [][]string{
+		{"frm", "x.yaml"}, {"form"}, {"form", "a", "b"}, {"form", "--methd", "x"}, {"form", "nothere.yaml"},
+		{"check", "nothere.json"}, {"export", "nothere.json", "--to", "glb"}, {"export", "--to", "glb"},
+		{"sample", "castle"}, {"schema", "castle"}, {"form", ".", "-o", "x"}, {"form", "x.yaml", "--method", "magic"},
+	} {
+		r := run(t, "", args...)
+		require.Equal(t, exitBadInput, r.code, "%v: %s", args, r.err)
+		require.NotEmpty(t, r.err, "%v", args)
+		require.NotContains(t, r.err, "goroutine")
+	}
+	require.Contains(t, run(t, "", "frm").err, "form")
+}
+
+func TestEverySampleForms(t *testing.T) {
+	for _, s := range spec.Samples() {
+		t.Run(s.Name, func(t *testing.T) {
+			r := run(t, "", "sample", s.Name)
+			require.Equal(t, exitFine, r.code)
+			f := run(t, r.out, "form", "-", "-o", filepath.Join(t.TempDir(), "out"))
+			require.Equal(t, exitFine, f.code, f.err+f.out)
+		})
+	}
+}
+
+func TestHelpShowsARealExampleForEveryCommand(t *testing.T) {
+	for _, c := range []string{"form", "check", "export", "sample", "schema", "version"} {
+		r := run(t, "", c, "--help")
+		require.Equal(t, exitFine, r.code)
+		require.Contains(t, r.out, "anticlast "+c, c)
+	}
+	require.Contains(t, run(t, "", "--help").out, "preliminary design")
+}
+
+func TestExitCodesOfTheBuiltProgram(t *testing.T) {
+	bin := filepath.Join(t.TempDir(), "anticlast")
+	build := exec.Command("go", "build", "-o", bin, ".")
+	out, err := build.CombinedOutput()
+	require.NoError(t, err, string(out))
+	code := func(in string, args ...string) int {
+		c := exec.Command(bin, args...)
+		c.Stdin = strings.NewReader(in)
+		c.Stdout, c.Stderr = io.Discard, io.Discard
+		c.Dir = t.TempDir()
+		_ = c.Run()
+		return c.ProcessState.ExitCode()
+	}
+	require.Equal(t, exitFine, code(small, "form", "-"))
+	require.Equal(t, exitFine, code("", "version"))
+	require.Equal(t, exitBadInput, code("anticlast: 1\n", "form", "-"))
+	require.Equal(t, exitBadInput, code("", "form", "missing.yaml"))
+}

@@ -1,0 +1,4 @@
+package audit
+
+// Defaults returns the tolerances that stand behind zero [Options].
+func Defaults() Options { return Options{}.withDefaults() }

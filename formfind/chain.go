@@ -1,0 +1,381 @@
+package formfind
+
+import (
+	"context"
+	"errors"
+	"fmt"
+	"math"
+
+	"gonum.org/v1/gonum/spatial/r3"
+
+	"anticlast/fdm"
+	"anticlast/formfind/canopy"
+	"anticlast/formfind/engine"
+	"anticlast/formfind/load"
+	"anticlast/formfind/newton"
+	"anticlast/formfind/relax"
+)
+
+// chain is one run of the engines over a structure.
+type chain struct {
+	s *canopy.Structure
+	o Options
+	f *canopy.Form // the shape so far
+	// smooth is the surface of prescribed stress, before the pass that
+	// balances in all directions.
+	smooth *canopy.Form
+	did    []string
+	use    []string
+}
+
+func (c *chain) say(format string, a ...any) { c.did = append(c.did, fmt.Sprintf(format, a...)) }
+
+func (c *chain) used(name string) { c.use = appendNew(c.use, name) }
+
+func (c *chain) stage(name, stage string) {
+	if c.o.Progress != nil {
+		c.o.Progress(engine.Step{Engine: name, Stage: stage})
+	}
+}
+
+// findForm chains the engines. The form it returns has positions, forces and
+// stresses; reactions and the forces of balancing masts and guys are left.
+func findForm(ctx context.Context, s *canopy.Structure, o Options) (found, error) {
+	c := &chain{s: s, o: o}
+	var err error
+	if len(s.Corners) > 0 {
+		err = c.fabric(ctx)
+	} else {
+		err = c.net(ctx)
+	}
+	if err != nil {
+		return found{}, err
+	}
+	c.f.Steps, c.f.Engines = c.did, c.use
+	return found{c.f, c.smooth}, nil
+}
+
+// found is what a chain of engines ends with. surface is nil unless fabric has
+// equal prestress.
+type found struct{ form, surface *canopy.Form }
+
+// net finds the shape of a structure without triangles.
+func (c *chain) net(ctx context.Context) error {
+	s := c.s
+	force := guessForces(s, s.Position)
+	q := guessDensities(s, s.Position, force)
+	f, err := c.linear(ctx, q)
+	if err != nil {
+		return err
+	}
+	c.f = f
+	if onlyDensities(s) && steadyLoads(s) {
+		c.f.Converged = true
+		return nil
+	}
+	if c.o.Warm != nil && len(c.o.Warm.Position) == len(s.Position) {
+		c.f = c.warmStart()
+	} else if err := c.aim(ctx, q); err != nil {
+		return err
+	}
+	return c.iterate(ctx, true)
+}
+
+// aim improves the start of a net by a few linear steps whose force densities
+// follow the wanted forces.
+func (c *chain) aim(ctx context.Context, q []float64) error {
+	s := c.s
+	for range naturalUpdates {
+		changed := false
+		for k, e := range s.Ends {
+			if s.Law[k] != canopy.LawForce {
+				continue
+			}
+			if l := r3.Norm(r3.Sub(c.f.Position[e[1]], c.f.Position[e[0]])); l > 0 {
+				q[k] = s.Given[k] / l
+				changed = true
+			}
+		}
+		if !changed {
+			return nil
+		}
+		f, err := c.linear(ctx, q)
+		var singular *fdm.SingularError
+		if errors.As(err, &singular) {
+			return nil // keep the shape there is
+		}
+		if err != nil {
+			return err
+		}
+		c.f = f
+		c.did = c.did[:len(c.did)-1]
+	}
+	c.say("force density, %d linear steps towards the given forces", naturalUpdates)
+	return nil
+}
+
+// linear is one force-density step.
+func (c *chain) linear(ctx context.Context, q []float64) (*canopy.Form, error) {
+	s := c.s
+	c.stage("force density", "first shape")
+	net, panels := network(s, startLoads(s))
+	solver, err := fdm.New(ctx, net, panels)
+	if err != nil {
+		return nil, c.unsupported(err)
+	}
+	f := canopy.NewForm(s)
+	if err := solver.Shape(ctx, f.Position, q); err != nil {
+		return nil, c.unsupported(err)
+	}
+	for k, e := range s.Ends {
+		f.Force[k] = q[k] * r3.Norm(r3.Sub(f.Position[e[1]], f.Position[e[0]]))
+	}
+	c.used("fdm")
+	c.say("force density, linear: a first shape from the boundary and the prestress alone")
+	return f, nil
+}
+
+// unsupported names the nodes of a singular system as the model does.
+func (c *chain) unsupported(err error) error {
+	var singular *fdm.SingularError
+	if !errors.As(err, &singular) {
+		return err
+	}
+	names := make([]string, len(singular.Nodes))
+	for i, n := range singular.Nodes {
+		names[i] = c.s.NodeName.At(int(n))
+	}
+	return &SupportError{Nodes: names, Err: singular}
+}
+
+// SupportError says which nodes of a structure nothing holds, by name.
+type SupportError struct {
+	Nodes []string
+	Err   *fdm.SingularError
+}
+
+func (e *SupportError) Error() string {
+	switch e.Err.Cause {
+	case fdm.NoSupport:
+		return fmt.Sprintf("nothing holds %s in %s: no chain of members or fabric under tension leads from there to a support; anchor a point of that part, or connect it", nodeList(e.Nodes), e.Err.Directions)
+	case fdm.Cancel, fdm.Weak:
+		return fmt.Sprintf("tension and compression cancel at %s, so that nothing says where the nodes should be; change a force there", nodeList(e.Nodes))
+	}
+	return e.Err.Error()
+}
+
+func (e *SupportError) Unwrap() error { return e.Err }
+
+func nodeList(names []string) string {
+	if len(names) == 1 {
+		return "node " + names[0]
+	}
+	return "nodes " + list(names)
+}
+
+func onlyDensities(s *canopy.Structure) bool {
+	for k, l := range s.Law {
+		if l == canopy.LawForceDensity {
+			continue
+		}
+		if l == canopy.LawCable && s.Cables[s.CableOf[k]].Law == canopy.CableBalance {
+			continue
+		}
+		return false
+	}
+	return true
+}
+
+// warmStart takes the positions of the given form, with fixed nodes where the
+// structure now has them.
+func (c *chain) warmStart() *canopy.Form {
+	f := canopy.NewForm(c.s)
+	copy(f.Force, c.o.Warm.Force)
+	for i := range f.Position {
+		fixed := c.s.FixedAt(i)
+		f.Position[i] = r3.Add(only(c.s.Position[i], fixed), only(c.o.Warm.Position[i], canopy.DirAll&^fixed))
+	}
+	c.say("started from an earlier shape")
+	return f
+}
+
+// iterate runs Newton, and relaxation where Newton does not get there.
+func (c *chain) iterate(ctx context.Context, all bool) error {
+	set := engine.Settings{AllDirections: all, Progress: c.o.Progress, Recorder: c.o.Recorder}
+	if c.o.Method == MethodRelax {
+		return c.relax(ctx, set)
+	}
+	f, out, err := newton.Engine{}.Find(ctx, c.s, c.f, set)
+	if err != nil {
+		return fmt.Errorf("newton: %w", err)
+	}
+	if out.Status == engine.Converged {
+		c.f = f
+		c.f.Converged = true
+		c.used("newton")
+		c.say("Newton%s: %d iterations to a residual of %.1e", directions(all), out.Iterations, out.Residual)
+		return nil
+	}
+	c.say("Newton%s %s after %d iterations: %s", directions(all), out.Status, out.Iterations, out.Why)
+	first := out
+	if err := c.relax(ctx, set); err != nil {
+		return err
+	}
+	if c.f.Converged {
+		// Relaxation ends where its damping lets it; Newton takes the rest.
+		f, out, err := newton.Engine{}.Find(ctx, c.s, c.f, set)
+		if err != nil {
+			return fmt.Errorf("newton: %w", err)
+		}
+		if out.Status == engine.Converged {
+			c.f, c.f.Converged = f, true
+			c.used("newton")
+			c.say("Newton%s: %d iterations to a residual of %.1e", directions(all), out.Iterations, out.Residual)
+		}
+		return nil
+	}
+	return &NoEquilibriumError{
+		Text:  fmt.Sprintf("no shape in equilibrium was found: %s; relaxation: %s", first.Why, c.f.Why),
+		Tried: c.did,
+	}
+}
+
+func directions(all bool) string {
+	if all {
+		return ""
+	}
+	return " in the shape-changing directions"
+}
+
+func (c *chain) relax(ctx context.Context, set engine.Settings) error {
+	f, out, err := (&relax.Engine{}).Find(ctx, c.s, c.f, set)
+	if err != nil {
+		return fmt.Errorf("relaxation: %w", err)
+	}
+	c.used("relax")
+	c.say("dynamic relaxation %s after %d iterations, residual %.1e", out.Status, out.Iterations, out.Residual)
+	f.Converged = out.Status == engine.Converged
+	f.Why = out.Why
+	c.f = f
+	return nil
+}
+
+// fabric finds the shape of a structure with triangles.
+func (c *chain) fabric(ctx context.Context) error {
+	s := c.s
+	elastic := false
+	for i := range s.Fabrics {
+		elastic = elastic || s.Fabrics[i].Elastic
+	}
+	force := guessForces(s, s.Position)
+	if c.o.Warm != nil && len(c.o.Warm.Position) == len(s.Position) {
+		c.f = c.warmStart()
+	} else if err := c.natural(ctx, force); err != nil {
+		return err
+	}
+	if elastic {
+		return c.iterate(ctx, true)
+	}
+	if !equalStress(s) {
+		return c.finish(ctx, force, "unequal warp and weft")
+	}
+	if err := c.iterate(ctx, false); err != nil {
+		return err
+	}
+	c.smooth = c.f
+	return c.finish(ctx, c.f.Force, "")
+}
+
+// natural is the first linear step and the fixed few updates.
+func (c *chain) natural(ctx context.Context, force []float64) error {
+	s := c.s
+	f, err := c.linear(ctx, guessDensities(s, s.Position, force))
+	if err != nil {
+		return err
+	}
+	c.stage("natural force density", "")
+	net, panels := network(s, startLoads(s))
+	solver, err := fdm.New(ctx, net, panels)
+	if err != nil {
+		return c.unsupported(err)
+	}
+	r, err := solver.Natural(ctx, f.Position, given(s, force), naturalUpdates)
+	if err != nil {
+		return c.unsupported(err)
+	}
+	c.f = naturalForm(s, r)
+	c.used("natural force density")
+	c.say("natural force density: %d updates", naturalUpdates)
+	return nil
+}
+
+// given splits what members carry into forces and force densities.
+func given(s *canopy.Structure, force []float64) fdm.Given {
+	g := fdm.Given{Force: make([]float64, len(force)), Density: make([]float64, len(force))}
+	for k, t := range force {
+		if s.Law[k] == canopy.LawForceDensity {
+			g.Density[k] = s.Given[k]
+		} else {
+			g.Force[k] = t
+		}
+	}
+	return g
+}
+
+func naturalForm(s *canopy.Structure, r fdm.NaturalResult) *canopy.Form {
+	f := canopy.NewForm(s)
+	copy(f.Position, r.Position)
+	copy(f.Force, r.Force)
+	for t, st := range r.Stress {
+		f.Stress[t] = canopy.Stress{Warp: st.Warp, Weft: st.Weft, Shear: st.Shear}
+		f.Warp[t] = st.Axis
+	}
+	return f
+}
+
+// finish is the pass that balances in all directions: the shape found is the
+// reference, the wanted stress acts on it as second Piola–Kirchhoff stress, and
+// the linear system has one exact solution nearby. The form reports the true
+// stress and forces of that solution.
+func (c *chain) finish(ctx context.Context, force []float64, why string) error {
+	s := c.s
+	c.stage("natural force density", "final pass")
+	ref := c.f.Position
+	steady := steadyLoads(s)
+	for pass := 1; ; pass++ {
+		net, panels := network(s, load.Nodal(s, c.f.Position))
+		solver, err := fdm.New(ctx, net, panels)
+		if err != nil {
+			return c.unsupported(err)
+		}
+		r, err := solver.Natural(ctx, ref, given(s, force), 1)
+		if err != nil {
+			return c.unsupported(err)
+		}
+		move := 0.0
+		for i := range r.Position {
+			move = math.Max(move, r3.Norm(r3.Sub(r.Position[i], c.f.Position[i])))
+		}
+		c.f = naturalForm(s, r)
+		c.f.Converged = true
+		// Loads that follow the shape are those of the last pass: repeat until
+		// that no longer matters.
+		if steady || move <= 1e-13*s.Size() || pass == 12 {
+			c.used("natural force density")
+			if why != "" {
+				why = " (" + why + ")"
+			}
+			c.say("fixed-reference pass%s: exact balance in all directions, residual %.1e", why, r.Residual)
+			return nil
+		}
+	}
+}
+
+func equalStress(s *canopy.Structure) bool {
+	for _, st := range s.Stress {
+		if st[0] != st[1] {
+			return false
+		}
+	}
+	return true
+}

@@ -1,0 +1,150 @@
+package formfind
+
+import (
+	"context"
+	"errors"
+	"fmt"
+	"math"
+	"slices"
+
+	"gonum.org/v1/gonum/spatial/r3"
+
+	"anticlast/formfind/audit"
+	"anticlast/formfind/canopy"
+	"anticlast/formfind/limit"
+	"anticlast/formfind/mesh"
+)
+
+// Find meshes the model, solves it and holds its limits against what was
+// found. See the package comment for errors.
+func Find(ctx context.Context, m *canopy.Model, o Options) (*canopy.Result, error) {
+	s, err := mesh.Build(ctx, m)
+	if err != nil {
+		return nil, err
+	}
+	return solve(ctx, s, m, o)
+}
+
+// Solve finds the shape of a structure: engines, balance of held points,
+// audit. The structure is not changed.
+func Solve(ctx context.Context, s *canopy.Structure, o Options) (*canopy.Result, error) {
+	return solve(ctx, s, &canopy.Model{}, o)
+}
+
+func solve(ctx context.Context, s *canopy.Structure, m *canopy.Model, o Options) (*canopy.Result, error) {
+	if err := s.Validate(); err != nil {
+		return nil, fmt.Errorf("the structure does not fit together: %w", err)
+	}
+	if len(s.Ends) == 0 && len(s.Corners) == 0 {
+		return nil, ErrEmpty
+	}
+	if err := checkStays(s); err != nil {
+		return nil, err
+	}
+	local, origin := nearOrigin(s)
+	got, err := findForm(ctx, local, o)
+	if err != nil {
+		return nil, err
+	}
+	f := got.form
+	setReactions(local, f)
+	if err := balanceHeld(local, f); err != nil {
+		return nil, err
+	}
+	setReactions(local, f)
+	if !finiteForm(f) {
+		return nil, errors.New("the engines left the range of numbers: no shape was found")
+	}
+	var disagreement string
+	if o.CrossCheck {
+		if disagreement, err = crossCheck(ctx, local, got, o); err != nil {
+			return nil, err
+		}
+	}
+	backFrom(s, f, origin)
+	r := &canopy.Result{
+		Title: m.Title, File: m.File, Digest: m.Digest,
+		Limits: m.Limits, Factors: m.Factors,
+		Structure: s, Form: f,
+	}
+	r.Program.Engines = f.Engines
+	if err := Judge(ctx, r); err != nil {
+		return nil, err
+	}
+	if disagreement != "" {
+		r.Audit.Trusted = false
+		r.Audit.Reasons = append(r.Audit.Reasons, disagreement)
+	}
+	return r, nil
+}
+
+// Judge fills the audit, quantities and findings of a result from its
+// structure and form: what check does with a file and Solve with what it
+// found.
+func Judge(ctx context.Context, r *canopy.Result) error {
+	var err error
+	if r.Audit, err = audit.Run(ctx, r.Structure, r.Form, audit.Options{}); err != nil {
+		return fmt.Errorf("audit: %w", err)
+	}
+	if !r.Form.Converged {
+		r.Audit.Trusted = false
+		r.Audit.Reasons = append(r.Audit.Reasons, "the engine did not converge: "+r.Form.Why)
+	}
+	r.Summary = audit.Quantities(r.Structure, r.Form, r.Factors)
+	r.Findings = limit.Check(r.Structure, r.Form, &r.Summary, r.Limits, r.Factors)
+	return nil
+}
+
+// nearOrigin returns the structure about a local origin when it lies far from
+// the global one: coordinates of many digits would cost the digits that
+// equilibrium needs.
+func nearOrigin(s *canopy.Structure) (*canopy.Structure, r3.Vec) {
+	lo, hi := canopy.Bounds(s.Position)
+	mid := r3.Scale(0.5, r3.Add(lo, hi))
+	origin := r3.Vec{X: math.Round(mid.X), Y: math.Round(mid.Y), Z: math.Round(mid.Z)}
+	if r3.Norm(origin) <= 10*r3.Norm(r3.Sub(hi, lo)) {
+		return s, r3.Vec{}
+	}
+	local := *s
+	local.Position = moved(s.Position, r3.Scale(-1, origin))
+	local.Reference = moved(s.Reference, r3.Scale(-1, origin))
+	local.Curves = slices.Clone(s.Curves)
+	for i := range local.Curves {
+		c := &local.Curves[i]
+		c.Start, c.Through, c.End = r3.Sub(c.Start, origin), r3.Sub(c.Through, origin), r3.Sub(c.End, origin)
+	}
+	return &local, origin
+}
+
+func moved(p []r3.Vec, by r3.Vec) []r3.Vec {
+	if p == nil {
+		return nil
+	}
+	out := make([]r3.Vec, len(p))
+	for i := range p {
+		out[i] = r3.Add(p[i], by)
+	}
+	return out
+}
+
+// backFrom moves the form back to the global origin; nodes that do not move
+// get their given coordinates to the last bit.
+func backFrom(s *canopy.Structure, f *canopy.Form, origin r3.Vec) {
+	if origin == (r3.Vec{}) {
+		return
+	}
+	for i := range f.Position {
+		p := r3.Add(f.Position[i], origin)
+		fixed := s.FixedAt(i)
+		if fixed.Has(0) {
+			p.X = s.Position[i].X
+		}
+		if fixed.Has(1) {
+			p.Y = s.Position[i].Y
+		}
+		if fixed.Has(2) {
+			p.Z = s.Position[i].Z
+		}
+		f.Position[i] = p
+	}
+}
