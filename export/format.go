@@ -38,6 +38,7 @@ func Formats() []Format {
 			func(ctx context.Context, w io.Writer, r *canopy.Result, _ Options) error {
 				return formfile.Write(ctx, w, r)
 			}},
+		{"glb", "form.glb", ".glb", "3D scene for viewers and browsers (glTF 2.0), with values in colour", writeGLB},
 		{"nodes", "nodes.csv", ".csv", "table of nodes", writeNodes},
 		{"members", "members.csv", ".csv", "table of cables, masts and struts with lengths and forces", writeMembers},
 		{"triangles", "triangles.csv", ".csv", "table of fabric triangles with stresses", writeTriangles},
@@ -48,7 +49,7 @@ func Formats() []Format {
 
 // Standard are the names of the formats that make up a result folder.
 func Standard() []string {
-	return []string{"json", "nodes", "members", "triangles", "reactions", "summary"}
+	return []string{"json", "glb", "nodes", "members", "triangles", "reactions", "summary"}
 }
 
 // Lookup finds a format by name, file name or extension. The error of a name
