@@ -20,7 +20,7 @@ func (d *drawn) check() {
 	d.duplicateEdges()
 	d.supported()
 	if len(d.m.Edges) == 0 && len(d.m.Stays) == 0 && !d.r.diags.failed() {
-		d.r.add(Diagnostic{File: d.r.file, Line: 1, Column: 1, Message: "the model has points but nothing between them", Hint: "add edges, and fabrics or nets inside them"}, 0)
+		d.r.fail(d.pointsKey, (*place)(nil).down("points"), "the model has points but nothing between them", "add edges, and fabrics or nets inside them")
 	}
 }
 

@@ -25,6 +25,7 @@ type drawn struct {
 	edgeRole                 []string
 	ringUsers                [][]ref
 	boundaryRefs             [][]ref // of fabrics, then of nets
+	pointsKey                *yaml.Node
 }
 
 // decode reads the root mapping.
@@ -64,7 +65,7 @@ func (r *reader) decode(root *yaml.Node) *canopy.Model {
 		}
 		return m
 	}
-	d := &drawn{r: r, m: m}
+	d := &drawn{r: r, m: m, pointsKey: f.keyNode("points")}
 	d.points(f)
 	d.edges(f)
 	d.cables(f)
@@ -148,6 +149,9 @@ func (d *drawn) findPoint(q ref) int {
 }
 
 func (d *drawn) undefined(q ref, thing string, names []string) {
+	if d.r.broken[thing+"\x00"+q.name] {
+		return // its definition has been complained about
+	}
 	hint := fmt.Sprintf("define it under %ss", thing)
 	if near := nearest(q.name, names); near != "" {
 		hint = fmt.Sprintf("did you mean %q?", near)
@@ -205,6 +209,7 @@ func (d *drawn) edges(f *fields) {
 	for _, e := range entries {
 		p := f.p.down("edges").down(e.name)
 		if d.r.mapping(e.n, p, edgeSection) == nil {
+			d.r.breaks("edge", e.name)
 			continue
 		}
 		g := d.r.section(e.n, edgeSection, p)
@@ -494,6 +499,7 @@ func (d *drawn) rings(f *fields) {
 	for _, e := range f.named("rings") {
 		p := f.p.down("rings").down(e.name)
 		if d.r.mapping(e.n, p, ringSection) == nil {
+			d.r.breaks("ring", e.name)
 			continue
 		}
 		g := d.r.section(e.n, ringSection, p)

@@ -39,13 +39,15 @@ func (r *reader) listed(f *fields) *canopy.Structure {
 
 // lister fills a structure from tables.
 type lister struct {
-	r    *reader
-	g    *fields
-	s    *canopy.Structure
-	ids  nodeIndex
-	line []int32 // of each node
-	file string  // of the nodes, for messages
-	rank int
+	r     *reader
+	g     *fields
+	s     *canopy.Structure
+	ids   nodeIndex
+	line  []int32 // of each node
+	file  string  // of the nodes, for messages
+	col   int     // of their rows, where that is known
+	rank  int
+	quiet bool // some nodes could not be read, so that others seem missing
 
 	fabric map[string]int
 	preset []preset
@@ -109,8 +111,7 @@ func (l *lister) nodes() bool {
 		index[i] = nodeColumns.index(k)
 	}
 	named := false
-	nameCol := 0
-	count, _ := l.r.table(l.g, "nodes", func(t *tableReader) {
+	count, ok := l.r.table(l.g, "nodes", func(t *tableReader) {
 		w := &t.row
 		l.file, l.rank = t.file, t.rank
 		if len(s.Position) >= math.MaxInt32-1 {
@@ -118,11 +119,11 @@ func (l *lister) nodes() bool {
 		}
 		s.Position = grow(s.Position, t)
 		l.line = grow(l.line, t)
-		line, col := t.where(index[0])
+		line, col := t.where(-1)
 		l.line = append(l.line, int32(line))
 		s.Position = append(s.Position, r3.Vec{X: w.value[index[1]], Y: w.value[index[2]], Z: w.value[index[3]]})
 		if t.count == 0 {
-			named, nameCol = w.filled(index[0]), col
+			named, l.col = w.filled(index[0]), col
 		}
 		if w.filled(index[0]) != named {
 			if !t.bad() {
@@ -148,6 +149,7 @@ func (l *lister) nodes() bool {
 	if l.r.fatal != nil {
 		return false
 	}
+	l.quiet = !ok
 	l.ids.n = len(s.Position)
 	l.ids.named = named
 	if named && l.ids.names.Len() != l.ids.n {
@@ -160,12 +162,8 @@ func (l *lister) nodes() bool {
 			l.r.diags.more++
 			return
 		}
-		col := 0
-		if nameCol == 1 {
-			col = 1
-		}
 		name := l.ids.names.At(j)
-		l.r.add(Diagnostic{File: l.file, Line: max(int(l.line[j]), 0), Column: col, Text: name, Path: l.g.p.down("nodes").item(j).String(),
+		l.r.add(Diagnostic{File: l.file, Line: max(int(l.line[j]), 0), Column: l.col, Text: name, Path: l.g.p.down("nodes").item(j).String(),
 			Message: fmt.Sprintf("node %q is here twice", clip(name)), Hint: fmt.Sprintf("the first is in line %d; give each its own name", l.line[i])}, l.rank)
 	})
 	if l.ids.ordinal {
@@ -204,6 +202,10 @@ func (l *lister) node(t *tableReader, k int) int32 {
 	}
 	if i := l.ids.find(t.row.text[k]); i >= 0 {
 		return i
+	}
+	t.row.has |= 1 << 31
+	if l.quiet {
+		return -1
 	}
 	name := string(t.row.text[k])
 	hint := ""
@@ -649,7 +651,7 @@ func (l *lister) connected() {
 			continue
 		}
 		name := s.NodeName.At(i)
-		d := Diagnostic{File: l.file, Line: max(int(l.line[i]), 0), Text: name, Path: l.g.p.down("nodes").item(i).String()}
+		d := Diagnostic{File: l.file, Line: max(int(l.line[i]), 0), Column: l.col, Text: name, Path: l.g.p.down("nodes").item(i).String()}
 		if good[i] {
 			d.Message, d.Hint = fmt.Sprintf("node %q is supported but nothing is attached to it", name), "remove it"
 			l.r.diags.warnings = append(l.r.diags.warnings, placed{d, l.rank})

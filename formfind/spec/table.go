@@ -357,7 +357,7 @@ func (r *reader) csv(t *tableReader, c *csvReader, place func(line, col int) (in
 		if k >= 0 && keyField[k] >= 0 && keyField[k] < len(c.at) {
 			return place(c.line, c.column(int(c.at[keyField[k]])))
 		}
-		return place(c.line, 1)
+		return place(c.line, c.column(int(c.at[0])))
 	}
 	t.hint = func() (int, bool) {
 		if c.consumed == 0 {

@@ -704,19 +704,31 @@ func (f *fields) named(key string) []entry {
 	for _, e := range all {
 		if c := checkName(e.name); c != "" {
 			f.r.fail(e.kn, p.down(e.name), fmt.Sprintf("%q cannot be the name of a %s: %s", clip(e.name), s.thing, c), "names are made of "+nameRule)
+			f.r.breaks(s.thing, e.name)
 			continue
 		}
 		e.n = f.r.resolve(e.n, p)
 		if e.n == nil {
+			f.r.breaks(s.thing, e.name)
 			continue
 		}
 		if isNull(e.n) {
+			f.r.breaks(s.thing, e.name)
 			f.r.fail(e.kn, p.down(e.name), fmt.Sprintf("%s %q says nothing", s.thing, e.name), "for example "+s.thing+"s: "+modelExample(key))
 			continue
 		}
 		out = append(out, e)
 	}
 	return out
+}
+
+// breaks notes that the definition of a thing is wrong, so that nobody is told
+// that it is missing.
+func (r *reader) breaks(thing, name string) {
+	if r.broken == nil {
+		r.broken = map[string]bool{}
+	}
+	r.broken[thing+"\x00"+name] = true
 }
 
 func modelExample(key string) string {
