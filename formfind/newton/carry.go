@@ -148,6 +148,28 @@ func (v *Solver) meshEdges() [][2]int32 {
 	return slices.Compact(out)
 }
 
+// indexEdges returns the number in edges of each triangle's edge k, at
+// 3·triangle + k, and then of each member.
+func (v *Solver) indexEdges(edges [][2]int32) []int32 {
+	find := func(i, j int32) int32 {
+		k, _ := slices.BinarySearchFunc(edges, [2]int32{min(i, j), max(i, j)}, func(a, b [2]int32) int {
+			if a[0] != b[0] {
+				return int(a[0]) - int(b[0])
+			}
+			return int(a[1]) - int(b[1])
+		})
+		return int32(k)
+	}
+	out := make([]int32, 0, 3*len(v.s.Corners)+len(v.s.Ends))
+	for _, c := range v.s.Corners {
+		out = append(out, find(c[1], c[2]), find(c[2], c[0]), find(c[0], c[1]))
+	}
+	for _, e := range v.s.Ends {
+		out = append(out, find(e[0], e[1]))
+	}
+	return out
+}
+
 // slide computes, for a Newton step u, how the nodes inside the fabric follow
 // in its plane what the edges do: v.along by node. It is nil for a step small
 // against the mesh. Sliding does not change the energy to first order, so that
@@ -166,10 +188,10 @@ func (v *Solver) slide(ctx context.Context, st *state, u []float64) ([]r3.Vec, e
 		}
 		move[i] = d
 		if v.filmAt[i] {
-			most = max(most, r3.Norm(d))
+			most = max(most, norm(d))
 		}
 	}
-	if len(v.s.Corners) == 0 || most < 0.01*v.meshSize {
+	if len(v.s.Corners) == 0 || most < 0.1*v.meshSize {
 		return nil, nil
 	}
 	if v.inside == nil {
@@ -219,21 +241,13 @@ func (v *Solver) carry(ctx context.Context, start *canopy.Form, to []r3.Vec) err
 			return err
 		}
 		v.everywhere = p
+		v.edgeOf = v.indexEdges(p.edges)
 		v.carryWeights = make([]float64, len(p.edges))
 	}
 	p := v.everywhere
 	w := v.carryWeights
 	for k := range w {
 		w[k] = 0
-	}
-	index := func(i, j int32) int {
-		k, _ := slices.BinarySearchFunc(p.edges, [2]int32{min(i, j), max(i, j)}, func(a, b [2]int32) int {
-			if a[0] != b[0] {
-				return int(a[0]) - int(b[0])
-			}
-			return int(a[1]) - int(b[1])
-		})
-		return k
 	}
 	sum := 0.0
 	for t, c := range s.Corners {
@@ -246,7 +260,7 @@ func (v *Solver) carry(ctx context.Context, start *canopy.Form, to []r3.Vec) err
 			// positive so that the mean stays a mean.
 			q := -0.25 * r3.Dot(tri.Edge[(k+1)%3], tri.Edge[(k+2)%3]) / tri.Area
 			q = s.Stress[t][0] * max(q, 0.05)
-			w[index(c[(k+1)%3], c[(k+2)%3])] += q
+			w[v.edgeOf[3*t+k]] += q
 			sum += q
 		}
 	}
@@ -267,7 +281,7 @@ func (v *Solver) carry(ctx context.Context, start *canopy.Form, to []r3.Vec) err
 		if f < 0 {
 			f = -f
 		}
-		w[index(e[0], e[1])] += f / l
+		w[v.edgeOf[3*len(s.Corners)+m]] += f / l
 		sum += f / l
 	}
 	for k := range w {

@@ -46,7 +46,7 @@ func (v *Solver) conditions(st *state) {
 			_, chord, _ := element.Line(a, b)
 			d, far := 0.0, cb.Nodes[0]
 			for _, i := range cb.Nodes {
-				if w := r3.Norm(offChord(a, b, st.at[i])); w > d {
+				if w := norm(offChord(a, b, st.at[i])); w > d {
 					d, far = w, i
 				}
 			}
@@ -145,7 +145,7 @@ func (v *Solver) conditionRow(st *state, k int, f func(unknown int, x float64)) 
 	a, b := st.at[na], st.at[nb]
 	t, chord, ok := element.Line(a, b)
 	w := offChord(a, b, st.at[cm.far])
-	d := r3.Norm(w)
+	d := norm(w)
 	if !ok || d == 0 {
 		return
 	}
@@ -193,7 +193,7 @@ func (v *Solver) impossible(at []r3.Vec) string {
 		if v.first[na] >= 0 || v.first[nb] >= 0 {
 			continue
 		}
-		chord := r3.Norm(r3.Sub(at[nb], at[na]))
+		chord := norm(r3.Sub(at[nb], at[na]))
 		switch {
 		case cb.Law == canopy.CableLength && cb.Value < chord*(1-1e-12):
 			return fmt.Sprintf("cable %s is to be %.6g m long, but its ends are %.6g m apart", cb.Name, cb.Value, chord)
@@ -266,7 +266,7 @@ func (v *Solver) fallbackForce(k int, at []r3.Vec) float64 {
 			sum += p[0]
 		}
 		cb := v.cableOf(k)
-		return sum / float64(n) * r3.Norm(r3.Sub(at[cb.Nodes[len(cb.Nodes)-1]], at[cb.Nodes[0]]))
+		return sum / float64(n) * norm(r3.Sub(at[cb.Nodes[len(cb.Nodes)-1]], at[cb.Nodes[0]]))
 	}
 	for m := range v.s.Ends {
 		if v.active[m] && v.comOf[m] < 0 {

@@ -148,7 +148,7 @@ func tangentOf(l line, i int32, at []r3.Vec) r3.Vec {
 	a, _, _ := element.Line(at[l.before], at[i])
 	b, _, _ := element.Line(at[i], at[l.after])
 	t := r3.Add(a, b)
-	if n := r3.Norm(t); n > 1e-9 {
+	if n := norm(t); n > 1e-9 {
 		return r3.Scale(1/n, t)
 	}
 	return r3.Vec{}
@@ -173,27 +173,19 @@ func (v *Solver) countDirections(i int32, at []r3.Vec) int {
 	return 0
 }
 
-// refreshBasis computes the directions of all unknowns at the positions at.
+// refreshBasis computes the directions of all unknowns at the positions at,
+// from the vector areas at the nodes in v.normalSum.
 // A direction that does not exist there (say, the normal of a node that may
 // only move along its fabric) is zero; assembly then keeps the node in place.
 func (v *Solver) refreshBasis(at []r3.Vec, basis []r3.Vec) {
 	s := v.s
-	for i := range v.normalSum {
-		v.normalSum[i] = r3.Vec{}
-	}
-	for _, c := range s.Corners {
-		a := r3.Cross(r3.Sub(at[c[1]], at[c[0]]), r3.Sub(at[c[2]], at[c[0]]))
-		for _, i := range c {
-			v.normalSum[i] = r3.Add(v.normalSum[i], a)
-		}
-	}
 	for i := range v.cls {
 		b := basis[v.start[i]:v.start[i+1]]
 		switch v.cls[i] {
 		case normal:
 			a := v.normalSum[i]
 			p := mask(s.FixedAt(i), a)
-			if l := r3.Norm(p); l > 1e-3*r3.Norm(a) && l > 0 {
+			if l := norm(p); l > 1e-3*norm(a) && l > 0 {
 				b[0] = r3.Scale(1/l, p)
 			} else {
 				b[0] = r3.Vec{}
@@ -214,7 +206,7 @@ func (v *Solver) refreshBasis(at []r3.Vec, basis []r3.Vec) {
 			switch len(e) {
 			case 2:
 				d := r3.Sub(r3.Scale(r3.Dot(t, e[1]), e[0]), r3.Scale(r3.Dot(t, e[0]), e[1]))
-				if l := r3.Norm(d); l > 0 {
+				if l := norm(d); l > 0 {
 					b[0] = r3.Scale(1/l, d)
 				} else {
 					b[0] = e[0]
@@ -229,6 +221,10 @@ func (v *Solver) refreshBasis(at []r3.Vec, basis []r3.Vec) {
 		}
 	}
 }
+
+// norm is the length of a. (The library's guards against overflow, at several
+// times the cost; sizes here are far from it.)
+func norm(a r3.Vec) float64 { return math.Sqrt(a.X*a.X + a.Y*a.Y + a.Z*a.Z) }
 
 // perpendicular returns two unit vectors normal to the unit vector t and to
 // each other, without branches that depend on anything but t.
@@ -247,6 +243,6 @@ func perpendicular(t r3.Vec) (a, b r3.Vec) {
 		e = r3.Vec{Z: 1}
 	}
 	a = r3.Sub(e, r3.Scale(r3.Dot(e, t), t))
-	a = r3.Scale(1/r3.Norm(a), a)
+	a = r3.Scale(1/norm(a), a)
 	return a, r3.Cross(t, a)
 }

@@ -43,16 +43,16 @@ func (v *Solver) potential() bool {
 }
 
 // evaluate computes everything of st that follows from its positions and
-// common forces.
+// common forces. An element that has collapsed since the start is noted.
 func (v *Solver) evaluate(st *state) {
 	s := v.s
 	at := st.at
-	v.refreshBasis(at, st.basis)
 	st.collapse = none
 	for i := range at {
+		v.normalSum[i] = r3.Vec{}
 		l := s.LoadAt(i)
 		st.pull[i] = l
-		st.size[i] = r3.Norm(l)
+		st.size[i] = norm(l)
 	}
 	energy := 0.0
 	for i := range at {
@@ -65,9 +65,11 @@ func (v *Solver) evaluate(st *state) {
 			continue
 		}
 		t, l, ok := element.Line(at[e[0]], at[e[1]])
-		if !ok {
+		if !ok || l < collapsed*v.lengthStart[m] {
 			st.collapse = int32(-1 - m)
-			continue
+			if !ok {
+				continue
+			}
 		}
 		f := v.tension(m, l, st.force)
 		energy += f.Energy
@@ -91,17 +93,21 @@ func (v *Solver) evaluate(st *state) {
 	}
 	for k, c := range s.Corners {
 		tri, ok := element.NewTriangle(at[c[0]], at[c[1]], at[c[2]])
-		if !ok {
+		if !ok || tri.Area < collapsed*v.areaStart[k] {
 			st.collapse = int32(k)
-			continue
+			if !ok {
+				continue
+			}
 		}
+		a := r3.Scale(tri.Area, tri.Normal)
 		fabric := &s.Fabrics[s.FabricOf[k]]
 		stress := s.Stress[k][0]
 		f := tri.FilmPull(stress)
 		energy += stress * tri.Area
 		for j, i := range c {
+			v.normalSum[i] = r3.Add(v.normalSum[i], a)
 			st.pull[i] = r3.Add(st.pull[i], f[j])
-			st.size[i] += 0.5 * stress * r3.Norm(tri.Edge[j])
+			st.size[i] += 0.5 * stress * norm(tri.Edge[j])
 		}
 		if fabric.Pressure != 0 {
 			p := tri.PressurePush(fabric.Pressure)
@@ -147,6 +153,7 @@ func (v *Solver) evaluate(st *state) {
 		}
 	}
 	st.energy = energy
+	v.refreshBasis(at, st.basis)
 	for i := range st.reduced {
 		st.reduced[i] = 0
 	}

@@ -76,8 +76,8 @@ func (v *Solver) iterate(ctx context.Context, set engine.Settings) (engine.Outco
 		if set.Progress != nil {
 			set.Progress(engine.Step{Engine: Name, Stage: "balancing", Iteration: it, Residual: v.now.merit, Target: set.Residual})
 		}
-		if why := v.lost(&v.now); why != "" {
-			out.Status, out.Why = engine.Diverged, why
+		if v.now.collapse != none {
+			out.Status, out.Why = engine.Diverged, v.collapseText(v.now.collapse)
 			return out, nil
 		}
 		if v.unknown == 0 {
@@ -179,29 +179,7 @@ func (v *Solver) gapsMet(tol float64) bool {
 // modelSize is the diagonal of the box around all nodes.
 func (v *Solver) modelSize(at []r3.Vec) float64 {
 	lo, hi := canopy.Bounds(at)
-	return max(r3.Norm(r3.Sub(hi, lo)), math.SmallestNonzeroFloat64)
-}
-
-// lost says in plain words which element has collapsed, "" when none has.
-func (v *Solver) lost(st *state) string {
-	if st.collapse != none {
-		return v.collapseText(st.collapse)
-	}
-	for t, c := range v.s.Corners {
-		tri, ok := element.NewTriangle(st.at[c[0]], st.at[c[1]], st.at[c[2]])
-		if !ok || tri.Area < collapsed*v.areaStart[t] {
-			return v.collapseText(int32(t))
-		}
-	}
-	for m, e := range v.s.Ends {
-		if !v.active[m] {
-			continue
-		}
-		if _, l, ok := element.Line(st.at[e[0]], st.at[e[1]]); !ok || l < collapsed*v.lengthStart[m] {
-			return v.collapseText(int32(-1 - m))
-		}
-	}
-	return ""
+	return max(norm(r3.Sub(hi, lo)), math.SmallestNonzeroFloat64)
 }
 
 func (v *Solver) collapseText(k int32) string {
@@ -323,6 +301,7 @@ func (v *Solver) tryStep(ctx context.Context, st *state, shift float64, out *ste
 	factor := v.chol
 	err = factor.Refactor(ctx, values)
 	positive := err == nil
+	v.positive = positive && shift == 0
 	if err != nil {
 		var pe *sparse.PivotError
 		if !errors.As(err, &pe) {
@@ -474,7 +453,7 @@ func (v *Solver) limitForces(st *state, change []float64) {
 // negative counts the negative pivots of the unshifted tangent in v.values on
 // the shapes that symmetric conditions allow; −1 when rounding hides it.
 func (v *Solver) negative(ctx context.Context) (int, error) {
-	if v.unknown == 0 {
+	if v.unknown == 0 || v.positive {
 		return 0, nil
 	}
 	err := v.chol.Refactor(ctx, v.values)

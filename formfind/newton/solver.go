@@ -59,10 +59,12 @@ type Solver struct {
 	areaStart    []float64
 	lengthStart  []float64
 	lastShift    float64
+	positive     bool    // v.values were factorised and are positive definite
 	meshSize     float64 // side of a typical triangle, m
 	inside       *spread // nodes inside the fabric follow its edges
 	everywhere   *spread // all follow moved supports
 	carryWeights []float64
+	edgeOf       []int32
 	slideWork    []r3.Vec
 	along        []r3.Vec // how nodes slide in the step at hand, nil
 }
