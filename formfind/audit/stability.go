@@ -10,6 +10,7 @@ import (
 
 	"anticlast/fdm/sparse"
 	"anticlast/formfind/canopy"
+	"anticlast/formfind/surface"
 )
 
 // StabilityResult says whether a form in equilibrium would stay.
@@ -25,9 +26,10 @@ type StabilityResult struct {
 	// their nodes. A membrane of stress σ under the pressure λ·σ·u is moved
 	// by u in that shape. NaN when not computed.
 	Eigenvalue float64
-	// Firmness is λ times the square of the model's size: a number that does
-	// not depend on mesh, scale, units or level of prestress. Surfaces held on
-	// all sides have tens; below zero the form is unstable.
+	// Firmness is λ·d², d twice the largest distance of a node from the
+	// centroid of the tension: a number that does not depend on mesh,
+	// position, scale, units or level of prestress. Surfaces held on all sides
+	// have tens; below zero the form is unstable.
 	Firmness float64
 	// Threshold is the Firmness in size below which a direction counts as
 	// without stiffness instead of unstable.
@@ -144,7 +146,7 @@ func stability(ctx context.Context, c *audited, o Options) (StabilityResult, err
 	if err != nil {
 		return res, err
 	}
-	size2 := c.size * c.size
+	size2 := c.diameter2()
 	delta := 1e-11 * k.meanStiffness()
 	res.Threshold = delta * size2
 	neg, ok, err := sol.below(ctx, -delta)
@@ -175,6 +177,39 @@ func stability(ctx context.Context, c *audited, o Options) (StabilityResult, err
 	res.Eigenvalue, res.Firmness = lambda, lambda*size2
 	res.Mode, res.Node = d.motion(c.s, mode)
 	return res, nil
+}
+
+// diameter2 is the square of twice the largest distance of a node from the
+// centroid of the tension.
+func (c *audited) diameter2() float64 {
+	w := make([]float64, len(c.x))
+	for k, e := range c.s.Ends {
+		m := math.Abs(c.f.Force[k]) * c.length[k] / 4
+		w[e[0]] += m
+		w[e[1]] += m
+	}
+	for t, t3 := range c.s.Corners {
+		a, _ := surface.AreaNormal(c.x[t3[0]], c.x[t3[1]], c.x[t3[2]])
+		m := a * (math.Abs(c.f.Stress[t].Warp) + math.Abs(c.f.Stress[t].Weft)) / 6
+		for _, i := range t3 {
+			w[i] += m
+		}
+	}
+	var sum r3.Vec
+	var total, far float64
+	for i, m := range w {
+		sum = r3.Add(sum, r3.Scale(m, c.arm(c.x[i])))
+		total += m
+	}
+	if total > 0 {
+		sum = r3.Scale(1/total, sum)
+	}
+	for i := range c.x {
+		if w[i] > 0 {
+			far = max(far, r3.Norm2(r3.Sub(c.arm(c.x[i]), sum)))
+		}
+	}
+	return 4 * far
 }
 
 // convex reports whether the energy is convex by construction.

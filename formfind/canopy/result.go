@@ -92,7 +92,7 @@ type Audit struct {
 	// Stability of the prescribed-stress problem in the shape-changing directions.
 	StabilityKnown bool
 	Unstable       int     // number of unstable directions
-	Softest        float64 // how firmly the shape sits: smallest eigenvalue of the tangent, tension tributary to the nodes as mass, times the square of the size, –; does not depend on mesh, scale or level of prestress; NaN when not computed
+	Softest        float64 // how firmly the shape sits: smallest eigenvalue of the tangent, tension tributary to the nodes as mass, times the square of the diameter about the centroid, –; does not depend on mesh, scale or level of prestress; NaN when not computed
 	SoftestNode    int32   // where its mode moves most, −1 when not computed
 	StabilityNote  string  // why it is not known or not computed
 
