@@ -5,6 +5,7 @@ import (
 	"slices"
 
 	"anticlast/formfind/canopy"
+	"gonum.org/v1/gonum/spatial/r3"
 )
 
 // wantedTriangles is about how many triangles a model gets that gives no mesh size.
@@ -220,9 +221,11 @@ func (b *builder) edgeNodes() {
 			on = int32(len(s.Curves))
 			s.Curves = append(s.Curves, b.curve[i].Curve)
 		}
+		sag := b.sagVector(i)
 		for k := 1; k < n; k++ {
 			t := float64(k) / float64(n)
-			v := b.addNode(b.curve[i].at(t), numbered(e.Name, k))
+			at := r3.Add(b.curve[i].at(t), r3.Scale(4*t*(1-t), sag))
+			v := b.addNode(at, numbered(e.Name, k))
 			if on >= 0 {
 				s.Fixed[v], s.OnCurve[v], s.Param[v] = canopy.DirAll, on, t
 			}

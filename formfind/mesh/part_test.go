@@ -458,3 +458,27 @@ func TestListedModelIsCheckedAndReturned(t *testing.T) {
 	_, err = mesh.Build(context.Background(), &canopy.Model{Listed: s})
 	require.ErrorContains(t, err, "triangle 7: it has no area")
 }
+
+// Rim cables start about where the prestress pulls them: at their sag, or on the
+// arc of radius force over stress; lines inside the canopy start straight.
+func TestRimCablesStartSagged(t *testing.T) {
+	m := laws()
+	m.Cables[0].Force = 16e3
+	s := build(t, m)
+	sag := func(k int) float64 {
+		c := s.Cables[k]
+		a, b := s.Position[c.Nodes[0]], s.Position[c.Nodes[len(c.Nodes)-1]]
+		return r3.Norm(r3.Sub(s.Position[c.Nodes[len(c.Nodes)/2]], r3.Scale(0.5, r3.Add(a, b)))) / r3.Norm(r3.Sub(a, b))
+	}
+	require.InDelta(t, 0.1, sag(1), 1e-9)
+	c := r3.Norm(r3.Sub(m.Points[0].At, m.Points[1].At))
+	const radius = 16e3 / 2e3
+	require.InDelta(t, (radius-math.Sqrt(radius*radius-c*c/4))/c, sag(0), 1e-9)
+	// Towards the inside.
+	middle := s.Position[s.Cables[0].Nodes[len(s.Cables[0].Nodes)/2]]
+	require.Less(t, math.Hypot(middle.X, middle.Y), 8/math.Sqrt2)
+	s = build(t, ridges())
+	for k := 4; k < 8; k++ {
+		require.InDelta(t, 0, sag(k), 1e-12)
+	}
+}
