@@ -191,7 +191,7 @@ func (v *Solver) slide(ctx context.Context, st *state, u []float64) ([]r3.Vec, e
 			most = max(most, norm(d))
 		}
 	}
-	if len(v.s.Corners) == 0 || most < 0.1*v.meshSize {
+	if len(v.s.Corners) == 0 || most < 0.02*v.meshSize {
 		return nil, nil
 	}
 	if v.inside == nil {
