@@ -289,9 +289,13 @@ func (c *chain) fabric(ctx context.Context) error {
 // natural is the first linear step and the fixed few updates.
 func (c *chain) natural(ctx context.Context, force []float64) error {
 	s := c.s
-	f, err := c.linear(ctx, guessDensities(s, s.Position, force))
-	if err != nil {
-		return err
+	ref := s.Position
+	if !soundMesh(s) {
+		f, err := c.linear(ctx, guessDensities(s, s.Position, force))
+		if err != nil {
+			return err
+		}
+		ref = f.Position
 	}
 	c.stage("natural force density", "")
 	net, panels := network(s, startLoads(s))
@@ -299,7 +303,7 @@ func (c *chain) natural(ctx context.Context, force []float64) error {
 	if err != nil {
 		return c.unsupported(err)
 	}
-	r, err := solver.Natural(ctx, f.Position, given(s, force), naturalUpdates)
+	r, err := solver.Natural(ctx, ref, given(s, force), naturalUpdates)
 	if err != nil {
 		return c.unsupported(err)
 	}

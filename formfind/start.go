@@ -17,6 +17,25 @@ import (
 // that many updates let nodes run together.
 const naturalUpdates = 5
 
+// soundMesh reports whether the start positions make a mesh without thin
+// triangles. Natural force densities carry the proportions of such a mesh over
+// to the found shape; the linear step knows only how nodes are connected and
+// crushes the row of triangles next to a cable. Drawn models start sound; a
+// listed one may start anywhere.
+func soundMesh(s *canopy.Structure) bool {
+	const thin = 0.1763 // tan 10°
+	for _, c := range s.Corners {
+		for k := range c {
+			p := s.Position[c[k]]
+			u, v := r3.Sub(s.Position[c[(k+1)%3]], p), r3.Sub(s.Position[c[(k+2)%3]], p)
+			if d := r3.Dot(u, v); d > 0 && r3.Norm(r3.Cross(u, v)) < thin*d {
+				return false
+			}
+		}
+	}
+	return true
+}
+
 // network hands a structure's supports, ties and members to the force density
 // solver. Members whose force is found afterwards from balance stay in it with
 // no force.
