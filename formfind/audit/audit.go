@@ -68,7 +68,7 @@ type Options struct {
 	MemoryBudget int64
 	// ConvexUnknowns: up to this many unknowns the smallest eigenvalue is
 	// computed even where instability is already excluded because every
-	// element is in tension and no fabric stress is prescribed. Zero: 15000.
+	// element is in tension and no fabric stress is prescribed. Zero: 6000.
 	ConvexUnknowns int
 }
 
@@ -90,7 +90,7 @@ func (o Options) withDefaults() Options {
 		o.MemoryBudget = 2 << 30
 	}
 	if o.ConvexUnknowns == 0 {
-		o.ConvexUnknowns = 15000
+		o.ConvexUnknowns = 6000
 	}
 	return o
 }

@@ -279,7 +279,7 @@ func TestAuditIsInvariant(t *testing.T) {
 		after := run(t, s2, f2)
 		require.Equal(t, before.Trusted, after.Trusted, "%v", after.Reasons)
 		require.Equal(t, before.Unstable, after.Unstable)
-		tol := 1e-7 + 1e-10*r3.Norm(by)/k
+		tol := 1e-5 + 1e-10*r3.Norm(by)/k
 		require.InEpsilon(t, before.Softest, after.Softest, tol)
 		require.InDelta(t, before.MinAngle, after.MinAngle, tol)
 	})

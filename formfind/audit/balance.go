@@ -49,7 +49,7 @@ func (c *audited) residuals(a *canopy.Audit, o Options, why *reasons) {
 		if c.s.Fixed[i] == canopy.DirAll || c.s.MasterOf(i) >= 0 {
 			continue
 		}
-		r := r3.Norm(masked(sum[i], canopy.DirAll&^c.s.Fixed[i]))
+		r := norm(masked(sum[i], canopy.DirAll&^c.s.Fixed[i]))
 		rr += r * r
 		ss += meet[i] * meet[i]
 		tt += round[i] * round[i]
@@ -102,7 +102,7 @@ func (c *audited) reactions(a *canopy.Audit, o Options, why *reasons) {
 	over := 1.0
 	for i := range sum {
 		want := masked(r3.Scale(-1, sum[i]), c.s.Fixed[i])
-		d := r3.Norm(r3.Sub(c.f.Reaction[i], want))
+		d := norm(r3.Sub(c.f.Reaction[i], want))
 		if d == 0 {
 			continue
 		}
@@ -119,14 +119,14 @@ func (c *audited) reactions(a *canopy.Audit, o Options, why *reasons) {
 	}
 	for r := range c.s.Rings {
 		want, scale, rnd := c.couple(r)
-		d := r3.Norm(r3.Sub(c.f.Couple[r], want))
+		d := norm(r3.Sub(c.f.Couple[r], want))
 		if d == 0 {
 			continue
 		}
 		scale = max(scale, 1e-6*most*c.size)
 		a.ReactionMismatch = max(a.ReactionMismatch, d/scale)
 		if d > max(o.Reaction*scale, rnd) {
-			why.add("the reported couple of ring %s, %.4g kNm, is not what its forces ask for, %.4g kNm", c.s.Rings[r].Name, r3.Norm(c.f.Couple[r])/1e3, r3.Norm(want)/1e3)
+			why.add("the reported couple of ring %s, %.4g kNm, is not what its forces ask for, %.4g kNm", c.s.Rings[r].Name, norm(c.f.Couple[r])/1e3, norm(want)/1e3)
 		}
 	}
 }
@@ -146,8 +146,8 @@ func (c *audited) couple(r int) (m r3.Vec, scale, round float64) {
 		p := c.passed(int(i), r3.Add(c.pull[i], c.load[i]))
 		arm := r3.Sub(c.x[i], c.x[g.Centre])
 		m = r3.Sub(m, r3.Cross(arm, p))
-		scale += r3.Norm(arm) * c.meet[i]
-		round += r3.Norm(arm) * c.meet[i] * c.rounding(int(i))
+		scale += norm(arm) * c.meet[i]
+		round += norm(arm) * c.meet[i] * c.rounding(int(i))
 	}
 	return m, scale, round
 }
@@ -175,27 +175,27 @@ func (c *audited) balance(a *canopy.Audit, o Options, why *reasons) {
 		v := r3.Add(c.f.Reaction[i], c.load[i])
 		f = r3.Add(f, v)
 		m = r3.Add(m, r3.Cross(c.arm(c.x[i]), v))
-		size += r3.Norm(c.f.Reaction[i])
+		size += norm(c.f.Reaction[i])
 	}
 	for r := range c.s.Rings {
 		m = r3.Add(m, c.f.Couple[r])
 	}
 	if size == 0 {
 		for _, v := range c.load {
-			size += r3.Norm(v)
+			size += norm(v)
 		}
 	}
 	if size == 0 || c.size == 0 {
 		return
 	}
-	a.ForceBalance = r3.Norm(f) / size
-	a.MomentBalance = r3.Norm(m) / (size * c.size)
+	a.ForceBalance = norm(f) / size
+	a.MomentBalance = norm(m) / (size * c.size)
 	allowed := max(o.Balance, c.globalRounding())
 	if a.ForceBalance > allowed {
-		why.add("the reported reactions do not balance the loads: %.3g kN is left over (%.2g of all reactions)", r3.Norm(f)/1e3, a.ForceBalance)
+		why.add("the reported reactions do not balance the loads: %.3g kN is left over (%.2g of all reactions)", norm(f)/1e3, a.ForceBalance)
 	}
 	if a.MomentBalance > allowed {
-		why.add("the moments of the reported reactions do not balance those of the loads: %.3g kNm is left over", r3.Norm(m)/1e3)
+		why.add("the moments of the reported reactions do not balance those of the loads: %.3g kNm is left over", norm(m)/1e3)
 	}
 }
 

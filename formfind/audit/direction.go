@@ -74,7 +74,7 @@ func (c *audited) findFreedoms(ctx context.Context) (*freedoms, error) {
 	var rays []ray
 	add := func(i, j int32, elastic bool) {
 		d := r3.Sub(x[j], x[i])
-		l := r3.Norm(d)
+		l := norm(d)
 		if !(l > 0) {
 			return
 		}
@@ -173,7 +173,7 @@ func (c *audited) findFreedoms(ctx context.Context) (*freedoms, error) {
 			for _, u := range d.dir[from:] {
 				v = r3.Sub(v, r3.Scale(r3.Dot(u, v), u))
 			}
-			if l := r3.Norm(v); l > 0.05 {
+			if l := norm(v); l > 0.05 {
 				d.dir = append(d.dir, r3.Scale(1/l, v))
 				d.node = append(d.node, int32(i))
 			}

@@ -31,13 +31,13 @@ func (c *audited) elasticTriangle(t int) (e elasticTri, ok bool) {
 	a, b, d := ref[t3[0]], ref[t3[1]], ref[t3[2]]
 	u, v := r3.Sub(b, a), r3.Sub(d, a)
 	n := r3.Cross(u, v)
-	twice := r3.Norm(n)
+	twice := norm(n)
 	if !(twice > 0) {
 		return e, false
 	}
 	n = r3.Scale(1/twice, n)
 	w := r3.Sub(s.Warp[t], r3.Scale(r3.Dot(s.Warp[t], n), n))
-	if !(r3.Norm(w) > 0) {
+	if !(norm(w) > 0) {
 		return e, false
 	}
 	w = r3.Unit(w)
@@ -115,13 +115,13 @@ func (e *elasticTri) pull(x *[3]r3.Vec, s [3]float64) (p [3]r3.Vec) {
 func (e *elasticTri) pulledBack(st canopy.Stress, warp r3.Vec) (s [3]float64, ok bool) {
 	w, f := e.images(&e.x)
 	n := r3.Cross(w, f)
-	j := r3.Norm(n)
+	j := norm(n)
 	if !(j > 0) {
 		return s, false
 	}
 	n = r3.Scale(1/j, n)
 	u := r3.Sub(warp, r3.Scale(r3.Dot(warp, n), n))
-	if !(r3.Norm(u) > 0) {
+	if !(norm(u) > 0) {
 		return s, false
 	}
 	u = r3.Unit(u)

@@ -11,6 +11,10 @@ import (
 // ulp is the relative spacing of float64.
 const ulp = 0x1p-52
 
+// norm is the length of v. r3.Norm guards against overflow, which costs more
+// than all else here; coordinates and forces are far from it.
+func norm(v r3.Vec) float64 { return math.Sqrt(r3.Norm2(v)) }
+
 // audited is a form under audit with what several checks need.
 type audited struct {
 	s *canopy.Structure
@@ -41,7 +45,7 @@ func newCase(s *canopy.Structure, f *canopy.Form) *audited {
 	n := len(f.Position)
 	c := &audited{s: s, f: f, x: f.Position}
 	lo, hi := canopy.Bounds(c.x)
-	c.size = r3.Norm(r3.Sub(hi, lo))
+	c.size = norm(r3.Sub(hi, lo))
 	for _, v := range []r3.Vec{lo, hi} {
 		c.reach = max(c.reach, math.Abs(v.X), math.Abs(v.Y), math.Abs(v.Z))
 	}
@@ -55,7 +59,7 @@ func newCase(s *canopy.Structure, f *canopy.Form) *audited {
 	}
 	c.length = make([]float64, len(s.Ends))
 	for k, e := range s.Ends {
-		c.length[k] = r3.Norm(r3.Sub(c.x[e[1]], c.x[e[0]]))
+		c.length[k] = norm(r3.Sub(c.x[e[1]], c.x[e[0]]))
 	}
 	c.fabric = make([]bool, n)
 	for t, t3 := range s.Corners {
@@ -78,13 +82,13 @@ func (c *audited) arm(p r3.Vec) r3.Vec { return r3.Sub(p, c.centre) }
 func stressPull(a, b, d, warp r3.Vec, st canopy.Stress) (p [3]r3.Vec, ok bool) {
 	e := [3]r3.Vec{r3.Sub(d, b), r3.Sub(a, d), r3.Sub(b, a)}
 	n := r3.Cross(e[2], r3.Scale(-1, e[1]))
-	twice := r3.Norm(n)
+	twice := norm(n)
 	if !(twice > 0) {
 		return p, false
 	}
 	n = r3.Scale(1/twice, n)
 	w := r3.Sub(warp, r3.Scale(r3.Dot(warp, n), n))
-	l := r3.Norm(w)
+	l := norm(w)
 	if !(l > 0) {
 		return p, false
 	}
@@ -130,12 +134,12 @@ func (c *audited) forces() {
 		// Area from the sides alone (Heron, in Kahan's stable order), so
 		// that the virial sum shares nothing with the nodal forces.
 		area, longest := heron(
-			r3.Norm(r3.Sub(x[t3[1]], x[t3[0]])),
-			r3.Norm(r3.Sub(x[t3[2]], x[t3[1]])),
-			r3.Norm(r3.Sub(x[t3[0]], x[t3[2]])))
+			norm(r3.Sub(x[t3[1]], x[t3[0]])),
+			norm(r3.Sub(x[t3[2]], x[t3[1]])),
+			norm(r3.Sub(x[t3[0]], x[t3[2]])))
 		for k, i := range t3 {
 			c.pull[i] = r3.Add(c.pull[i], p[k])
-			c.meet[i] += r3.Norm(p[k])
+			c.meet[i] += norm(p[k])
 			c.short[i] = min(c.short[i], 2*area/longest)
 		}
 		st := c.f.Stress[t]
@@ -144,7 +148,7 @@ func (c *audited) forces() {
 	}
 	c.loads()
 	for i, v := range c.load {
-		c.meet[i] += r3.Norm(v)
+		c.meet[i] += norm(v)
 	}
 }
 
@@ -185,7 +189,7 @@ func (c *audited) loads() {
 		}
 		v := r3.Cross(r3.Sub(x[t3[1]], x[t3[0]]), r3.Sub(x[t3[2]], x[t3[0]]))
 		push := r3.Scale(fab.Pressure/6, v)
-		w := weight * r3.Norm(v) / 6
+		w := weight * norm(v) / 6
 		for _, i := range t3 {
 			c.load[i] = r3.Add(c.load[i], push)
 			down(i, w)

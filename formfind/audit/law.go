@@ -25,7 +25,7 @@ func (c *audited) checkAxes(why *reasons) {
 		if area > 0 {
 			tol += 8 * ulp * c.reach / math.Sqrt(area)
 		}
-		if math.Abs(r3.Norm(w)-1) > axisTolerance || math.Abs(r3.Dot(w, n)) > tol {
+		if math.Abs(norm(w)-1) > axisTolerance || math.Abs(r3.Dot(w, n)) > tol {
 			count++
 			if bad < 0 {
 				bad = t

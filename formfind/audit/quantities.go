@@ -18,7 +18,7 @@ func Quantities(s *canopy.Structure, f *canopy.Form, factors canopy.Factors) can
 	var q canopy.Quantities
 	fabrics(s, f, factors, &q)
 	for k, e := range s.Ends {
-		q.KindLength[min(s.Kind[k], canopy.KindStrut)] += r3.Norm(r3.Sub(f.Position[e[1]], f.Position[e[0]]))
+		q.KindLength[min(s.Kind[k], canopy.KindStrut)] += norm(r3.Sub(f.Position[e[1]], f.Position[e[0]]))
 	}
 	q.Cables = make([]canopy.CableReport, len(s.Cables))
 	for c := range s.Cables {
@@ -103,7 +103,7 @@ func cableReport(s *canopy.Structure, f *canopy.Form, factors canopy.Factors, c 
 	r.ForceMin, r.ForceMax = math.Inf(1), math.Inf(-1)
 	for _, k := range c.Members {
 		e := s.Ends[k]
-		l := r3.Norm(r3.Sub(f.Position[e[1]], f.Position[e[0]]))
+		l := norm(r3.Sub(f.Position[e[1]], f.Position[e[0]]))
 		t := f.Force[k]
 		r.Length += l
 		r.ForceMean += t * l
@@ -135,7 +135,7 @@ func lineReport(f *canopy.Form, nodes []int32) canopy.LineReport {
 	}
 	side := make([]float64, n-1)
 	for i := range side {
-		side[i] = r3.Norm(r3.Sub(f.Position[nodes[i+1]], f.Position[nodes[i]]))
+		side[i] = norm(r3.Sub(f.Position[nodes[i+1]], f.Position[nodes[i]]))
 		r.Length += side[i]
 	}
 	closed := nodes[0] == nodes[n-1]
@@ -144,7 +144,7 @@ func lineReport(f *canopy.Form, nodes []int32) canopy.LineReport {
 	take := func(i int, width float64) {
 		v := f.Reaction[nodes[i]]
 		r.Total = r3.Add(r.Total, v)
-		size := r3.Norm(v)
+		size := norm(v)
 		if width > 0 {
 			r.Min, r.Max = min(r.Min, size/width), max(r.Max, size/width)
 			sum += size

@@ -158,8 +158,10 @@ func (sp *spectrum) smallest(ctx context.Context, first float64, negative bool) 
 }
 
 const (
-	lanczosSteps     = 80
-	lanczosTolerance = 1e-9
+	lanczosSteps = 100
+	// lanczosResidual ends the iteration: the error of the eigenvalue is of
+	// the order of its square.
+	lanczosResidual = 1e-3
 )
 
 // lanczos returns the largest eigenvalue of A⁻¹·M and its vector, A given by
@@ -224,7 +226,7 @@ func (sp *spectrum) lanczos(ctx context.Context, f *sparse.Factor) (theta float6
 			}
 			// Residual of the pair, and the error of the value by its square.
 			res := b * math.Abs(y[len(y)-1])
-			if last || res <= math.Sqrt(lanczosTolerance)*math.Abs(t) {
+			if last || res <= lanczosResidual*math.Abs(t) {
 				if res > 0.05*math.Abs(t) {
 					return 0, nil, false, nil
 				}

@@ -354,7 +354,7 @@ func (d *freedoms) motion(s *canopy.Structure, u []float64) ([]r3.Vec, int32) {
 		for _, h := range d.at(s, int32(i), buf) {
 			v[i] = r3.Add(v[i], r3.Scale(u[h.unknown], h.dir))
 		}
-		if l := r3.Norm(v[i]); l > most*(1+1e-9) { // the first of equals, whatever the rounding
+		if l := norm(v[i]); l > most*(1+1e-9) { // the first of equals, whatever the rounding
 			at, most = int32(i), l
 		}
 	}

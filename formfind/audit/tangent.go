@@ -190,7 +190,7 @@ func (c *audited) fabricTangent(d *freedoms, k *tangent, put func(p, q int32, v 
 			}
 		}
 		x := [3]r3.Vec{c.x[t3[0]], c.x[t3[1]], c.x[t3[2]]}
-		area, longest := heron(r3.Norm(r3.Sub(x[1], x[0])), r3.Norm(r3.Sub(x[2], x[1])), r3.Norm(r3.Sub(x[0], x[2])))
+		area, longest := heron(norm(r3.Sub(x[1], x[0])), norm(r3.Sub(x[2], x[1])), norm(r3.Sub(x[0], x[2])))
 		if !(area > 0) {
 			continue
 		}

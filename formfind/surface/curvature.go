@@ -106,7 +106,7 @@ func fitQuadric(position []r3.Vec, i int32, ring []int32, n r3.Vec) (Curvature, 
 	ev := r3.Cross(n, eu)
 	scale := 0.0
 	for _, j := range ring {
-		scale = max(scale, r3.Norm(r3.Sub(position[j], position[i])))
+		scale = max(scale, norm(r3.Sub(position[j], position[i])))
 	}
 	if !(scale > 0) {
 		return Curvature{}, false

@@ -17,13 +17,13 @@ func Sag(position []r3.Vec, nodes []int32) (sag, chord float64) {
 	}
 	a := position[nodes[0]]
 	u := r3.Sub(position[nodes[len(nodes)-1]], a)
-	chord = r3.Norm(u)
+	chord = norm(u)
 	if !(chord > 0) {
 		return 0, 0
 	}
 	u = r3.Scale(1/chord, u)
 	for _, i := range nodes {
-		sag = max(sag, r3.Norm(r3.Cross(r3.Sub(position[i], a), u)))
+		sag = max(sag, norm(r3.Cross(r3.Sub(position[i], a), u)))
 	}
 	return sag, chord
 }
@@ -52,7 +52,7 @@ func Specified(s *canopy.Structure, x []r3.Vec, k int) (float64, bool) {
 	switch s.Law[k] {
 	case canopy.LawForceDensity:
 		e := s.Ends[k]
-		return s.Given[k] * r3.Norm(r3.Sub(x[e[1]], x[e[0]])), true
+		return s.Given[k] * norm(r3.Sub(x[e[1]], x[e[0]])), true
 	case canopy.LawForce:
 		return s.Given[k], true
 	}

@@ -1,8 +1,9 @@
 package surface
 
 import (
+	"cmp"
 	"math"
-	"sort"
+	"slices"
 
 	"anticlast/formfind/canopy"
 )
@@ -25,11 +26,14 @@ func Spread(values, weights []float64) canopy.Spread {
 	if len(items) == 0 {
 		return canopy.Spread{}
 	}
-	sort.Slice(items, func(a, b int) bool {
-		if items[a].v != items[b].v {
-			return items[a].v < items[b].v
+	slices.SortFunc(items, func(a, b item) int {
+		switch {
+		case a.v < b.v:
+			return -1
+		case a.v > b.v:
+			return 1
 		}
-		return items[a].w < items[b].w
+		return cmp.Compare(a.w, b.w)
 	})
 	at := func(q float64) float64 {
 		var w float64

@@ -13,12 +13,16 @@ import (
 	"gonum.org/v1/gonum/spatial/r3"
 )
 
+// norm is the length of v. r3.Norm guards against overflow, which costs more
+// than all else here.
+func norm(v r3.Vec) float64 { return math.Sqrt(r3.Norm2(v)) }
+
 // AreaNormal returns the area of the triangle abc (m²) and its unit normal
 // towards the side from which a, b, c run counter-clockwise. The normal of a
 // triangle without area is zero.
 func AreaNormal(a, b, c r3.Vec) (area float64, normal r3.Vec) {
 	w := r3.Cross(r3.Sub(b, a), r3.Sub(c, a))
-	d := r3.Norm(w)
+	d := norm(w)
 	if d == 0 || math.IsNaN(d) || math.IsInf(d, 0) {
 		return d / 2, r3.Vec{}
 	}
@@ -52,7 +56,7 @@ func VertexNormals(position []r3.Vec, corners [][3]int32) []r3.Vec {
 		}
 	}
 	for i, v := range n {
-		if d := r3.Norm(v); d > 0 {
+		if d := norm(v); d > 0 {
 			n[i] = r3.Scale(1/d, v)
 		}
 	}
@@ -64,7 +68,7 @@ func VertexNormals(position []r3.Vec, corners [][3]int32) []r3.Vec {
 func Angles(a, b, c r3.Vec) [3]float64 {
 	angle := func(p, q, r r3.Vec) float64 {
 		u, v := r3.Sub(q, p), r3.Sub(r, p)
-		return math.Atan2(r3.Norm(r3.Cross(u, v)), r3.Dot(u, v))
+		return math.Atan2(norm(r3.Cross(u, v)), r3.Dot(u, v))
 	}
 	return [3]float64{angle(a, b, c), angle(b, c, a), angle(c, a, b)}
 }
@@ -96,7 +100,7 @@ func MeasureQuality(position []r3.Vec, corners [][3]int32) Quality {
 			}
 		}
 		u, v := e[(k+1)%3], e[(k+2)%3]
-		m := math.Atan2(r3.Norm(r3.Cross(u, v)), -r3.Dot(u, v))
+		m := math.Atan2(norm(r3.Cross(u, v)), -r3.Dot(u, v))
 		if !(m >= q.MinAngle) { // also for NaN
 			q.MinAngle, q.Triangle = m, int32(t)
 		}
