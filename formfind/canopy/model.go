@@ -33,10 +33,14 @@ type Hold uint8
 
 // Holds of a point.
 const (
-	HoldAuto     Hold = iota // held when a mast or guy is there to balance it, else anchored
-	HoldAnchored             // a support that reacts in the directions of Fixed
-	HoldHeld                 // position given; masts and guys balance it
-	HoldFree                 // position found
+	// HoldAuto: held at the head of a mast or guy whose force is to be found;
+	// free at a head where all of them have a force, length or stiffness;
+	// supported in the other directions at the point of a rigid ring that may
+	// move in some; else anchored.
+	HoldAuto     Hold = iota
+	HoldAnchored      // a support that reacts in the directions of Fixed
+	HoldHeld          // position given; masts and guys balance it
+	HoldFree          // position found
 )
 
 // Point is a named place.

@@ -134,6 +134,13 @@ type Fabric struct {
 }
 
 // Ring is the ring of a high or low point.
+//
+// The nodes of a rigid ring are tied to its centre (Structure.Master), and it is
+// the centre that is supported, held or free in each direction, so that one
+// reaction is reported there. Only a rigid ring that is anchored in all
+// directions with nothing else at its centre is a row of supports: its nodes are
+// Fixed and react one by one, and none is tied. The nodes of a cable ring move
+// each for itself in the directions of Free and are Fixed in the others.
 type Ring struct {
 	Name   string
 	Centre int32   // node at the centre
