@@ -29,8 +29,9 @@ const (
 	csvMaxLine = 1 << 20
 )
 
-func newCSV(in io.Reader) *csvReader {
-	return &csvReader{in: in, buf: make([]byte, csvBuffer)}
+// newCSV returns a reader with a buffer of size bytes, or less.
+func newCSV(in io.Reader, size int) *csvReader {
+	return &csvReader{in: in, buf: make([]byte, min(max(size, 64), csvBuffer))}
 }
 
 // csvError is a fault of the text at a place in the current line.

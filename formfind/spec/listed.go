@@ -6,6 +6,7 @@ import (
 	"hash/maphash"
 	"math"
 	"unicode/utf8"
+	"unsafe"
 
 	"anticlast/formfind/canopy"
 
@@ -137,7 +138,8 @@ func (l *lister) nodes() bool {
 				t.fail(index[0], fmt.Sprintf("%q cannot be the name of a node: %s", clip(string(name)), c), "")
 				name = nil
 			}
-			l.ids.names.Append(string(name))
+			// The list copies the letters, so the name may be a view.
+			l.ids.names.Append(unsafe.String(unsafe.SliceData(name), len(name)))
 		}
 	})
 	if len(s.Position) == 0 {

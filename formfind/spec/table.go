@@ -222,7 +222,7 @@ func (r *reader) block(t *tableReader, n *yaml.Node, each func(t *tableReader)) 
 			break
 		}
 	}
-	c := newCSV(strings.NewReader(n.Value))
+	c := newCSV(strings.NewReader(n.Value), len(n.Value)+1)
 	r.csv(t, c, func(l, col int) (int, int) {
 		if line < 0 {
 			return line, 0
@@ -259,7 +259,7 @@ func (r *reader) csvFile(t *tableReader, n *yaml.Node, each func(t *tableReader)
 		t.file = n.Value
 	}
 	in := io.TeeReader(io.LimitReader(f, r.options.MaxTableBytes), r.hash)
-	r.csv(t, newCSV(in), func(l, col int) (int, int) { return l, col }, size, each)
+	r.csv(t, newCSV(in, csvBuffer), func(l, col int) (int, int) { return l, col }, size, each)
 }
 
 // open opens a CSV file named in the model.
@@ -370,19 +370,18 @@ func (r *reader) csv(t *tableReader, c *csvReader, place func(line, col int) (in
 		if t.count&0xffff == 0xffff && r.ctx.Err() != nil {
 			return
 		}
-		err := c.next()
-		if err == io.EOF {
-			return
-		}
-		var ce *csvError
-		if errors.As(err, &ce) {
+		if err := c.next(); err != nil {
+			if err == io.EOF {
+				return
+			}
+			ce, ok := err.(*csvError)
+			if !ok {
+				r.fatal = fmt.Errorf("reading %s: %w", t.file, err)
+				return
+			}
 			failLine(ce)
 			t.count++
 			continue
-		}
-		if err != nil {
-			r.fatal = fmt.Errorf("reading %s: %w", t.file, err)
-			return
 		}
 		t.row.has = 0
 		if len(c.fields) != len(cols) {
