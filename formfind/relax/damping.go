@@ -27,6 +27,8 @@ type run struct {
 	bestRest  int // place of rest
 	rests     int
 
+	mostContrast float64
+
 	startAngle float64
 	crushed    int // looks in a row that found a collapsed triangle
 }
@@ -46,6 +48,7 @@ func (r *run) begin() {
 	r.out = engine.Outcome{NegativePivots: -1}
 	r.bestMerit = math.Inf(1)
 	r.lastMove = math.Inf(1)
+	r.mostContrast = 1e4
 	r.rest = append([]r3.Vec(nil), r.x...)
 	r.best = append([]r3.Vec(nil), r.x...)
 	r.elements()
@@ -165,7 +168,12 @@ func (r *run) heavier() bool {
 		r.finish(engine.Diverged, fmt.Sprintf("the motion grows without bound, most at node %s", r.nodeName(r.fastestNode())))
 		return false
 	}
-	r.safety *= 2
+	if r.contrast > 1 {
+		r.mostContrast = max(1, r.contrast/16)
+		r.contrast = 1
+	} else {
+		r.safety *= 2
+	}
 	r.back()
 	return true
 }
@@ -209,6 +217,9 @@ func (r *run) resting(it int, eta float64) bool {
 		copy(r.best, r.x)
 	}
 	r.rests++
+	if r.directed != nil {
+		r.sharpen(eta)
+	}
 	if eta <= r.set.Residual && cable <= cableTarget && (r.lastMove <= r.set.Move*r.size || eta == 0) {
 		if r.arrived() {
 			return true
@@ -229,6 +240,24 @@ func (r *run) resting(it int, eta float64) bool {
 		return true
 	}
 	return false
+}
+
+// sharpen raises the contrast of masses as the canopy comes to rest, and takes
+// it back when that did not go well.
+func (r *run) sharpen(eta float64) {
+	switch {
+	case eta > 0.2:
+		r.contrast = 1
+	case r.rests-r.bestRest > 8 && r.contrast > 1:
+		r.contrast /= 4
+		r.mostContrast = r.contrast
+		r.bestRest = r.rests
+	case r.contrast < r.mostContrast:
+		r.contrast = min(4*r.contrast, r.mostContrast)
+	default:
+		return
+	}
+	r.renew()
 }
 
 // arrived checks all criteria afresh.

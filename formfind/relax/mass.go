@@ -25,6 +25,9 @@ func (st *state) refresh() {
 			stiff, meet := st.stiffness(i)
 			st.mass[i] = stiff
 			st.meet[i] = meet
+			if st.directed != nil {
+				st.direct(i, stiff)
+			}
 			st.stride2[i] = stride * stride * st.near2(i)
 		}
 	})

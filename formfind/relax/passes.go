@@ -31,7 +31,9 @@ type state struct {
 	lineOf          []int32  // index into line, −1; nil without lines
 	parts           []sums
 	ringSums        sums
-	safety          float64 // factor on all masses
+	safety          float64    // factor on all masses
+	directed        []directed // masses with directions, nil without elastic elements
+	contrast        float64    // between the stiffest direction and the lightest
 }
 
 // sums are what a pass over nodes adds up.
@@ -56,7 +58,17 @@ func newState(p *problem, x []r3.Vec, viscous bool) *state {
 		x: x, next: append([]r3.Vec(nil), x...), before: append([]r3.Vec(nil), x...),
 		v: make([]r3.Vec, n), mass: make([]float64, n), meet: make([]float64, n), stride2: make([]float64, n),
 		q: make([]float64, len(p.ends)), facets: make([]facet, len(p.corners)),
-		parts: make([]sums, (n+block-1)/block), safety: 1,
+		parts: make([]sums, (n+block-1)/block), safety: 1, contrast: 1,
+	}
+	for _, l := range p.law {
+		if l == byStretch && st.directed == nil {
+			st.directed = make([]directed, n)
+		}
+	}
+	for _, l := range p.triLaw {
+		if l == elastic && st.directed == nil {
+			st.directed = make([]directed, n)
+		}
 	}
 	if p.hang != nil || len(p.cable) > 0 {
 		st.length = make([]float64, len(p.ends))
@@ -315,9 +327,14 @@ func (st *state) step(i int, f, v r3.Vec, keep, push float64, s *sums) {
 		s.work += v.X*(o.X-f.X) + v.Y*(o.Y-f.Y) + v.Z*(o.Z-f.Z)
 		st.force0[i] = f
 	}
-	v.X = keep*v.X + g*f.X
-	v.Y = keep*v.Y + g*f.Y
-	v.Z = keep*v.Z + g*f.Z
+	d := st.directed != nil && st.directed[i].used
+	if d {
+		v = r3.Add(r3.Scale(keep, v), r3.Scale(push, st.directed[i].inverse.mul(f)))
+	} else {
+		v.X = keep*v.X + g*f.X
+		v.Y = keep*v.Y + g*f.Y
+		v.Z = keep*v.Z + g*f.Z
+	}
 	v2 := v.X*v.X + v.Y*v.Y + v.Z*v.Z
 	if v2 > st.stride2[i] {
 		v = r3.Scale(math.Sqrt(st.stride2[i]/v2), v)
@@ -327,7 +344,11 @@ func (st *state) step(i int, f, v r3.Vec, keep, push float64, s *sums) {
 	x := st.x[i]
 	st.next[i] = r3.Vec{X: x.X + v.X, Y: x.Y + v.Y, Z: x.Z + v.Z}
 	s.residual2 += f.X*f.X + f.Y*f.Y + f.Z*f.Z
-	s.kinetic += 0.5 * m * v2
+	if d {
+		s.kinetic += 0.5 * r3.Dot(v, st.directed[i].mass.mul(v))
+	} else {
+		s.kinetic += 0.5 * m * v2
+	}
 	if !(v2 <= s.fastest2) { // not a number too
 		s.fastest2 = v2
 	}

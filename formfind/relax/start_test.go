@@ -15,6 +15,16 @@ import (
 // conjugate gradients on the graph.
 func linearStart(s *canopy.Structure, updates int) *canopy.Form {
 	f := canopy.NewForm(s)
+	for u := 0; u <= updates; u++ {
+		naturalUpdate(s, f, u > 0)
+	}
+	return f
+}
+
+// naturalUpdate solves for the places of all free nodes with the force
+// densities that the wanted stresses and forces have on the shape of f, or with
+// the same for all sides of triangles.
+func naturalUpdate(s *canopy.Structure, f *canopy.Form, natural bool) {
 	mean := 0.0
 	for _, st := range s.Stress {
 		mean += (st[0] + st[1]) / 2
@@ -22,43 +32,40 @@ func linearStart(s *canopy.Structure, updates int) *canopy.Form {
 	if len(s.Stress) > 0 {
 		mean /= float64(len(s.Stress))
 	}
-	for u := 0; u <= updates; u++ {
-		var ends [][2]int32
-		var q []float64
-		add := func(a, b int32, w float64) {
-			ends, q = append(ends, [2]int32{a, b}), append(q, w)
-		}
-		for _, c := range s.Corners {
-			x := [3]r3.Vec{f.Position[c[0]], f.Position[c[1]], f.Position[c[2]]}
-			twice := r3.Norm(r3.Cross(r3.Sub(x[1], x[0]), r3.Sub(x[2], x[0])))
-			for k := range 3 {
-				i, j := (k+1)%3, (k+2)%3
-				w := mean / 2
-				if u > 0 {
-					w = mean * r3.Dot(r3.Sub(x[i], x[k]), r3.Sub(x[j], x[k])) / (2 * twice)
-				}
-				add(c[i], c[j], w)
+	var ends [][2]int32
+	var q []float64
+	add := func(a, b int32, w float64) {
+		ends, q = append(ends, [2]int32{a, b}), append(q, w)
+	}
+	for _, c := range s.Corners {
+		x := [3]r3.Vec{f.Position[c[0]], f.Position[c[1]], f.Position[c[2]]}
+		twice := r3.Norm(r3.Cross(r3.Sub(x[1], x[0]), r3.Sub(x[2], x[0])))
+		for k := range 3 {
+			i, j := (k+1)%3, (k+2)%3
+			w := mean / 2
+			if natural {
+				w = mean * r3.Dot(r3.Sub(x[i], x[k]), r3.Sub(x[j], x[k])) / (2 * twice)
 			}
-		}
-		for k, e := range s.Ends {
-			l := r3.Norm(r3.Sub(f.Position[e[0]], f.Position[e[1]]))
-			w := s.Given[k]
-			switch {
-			case s.Law[k] == canopy.LawElastic:
-				w = s.Stiffness[k] / 100 / l
-			case s.Law[k] != canopy.LawForceDensity:
-				if w == 0 {
-					w = 10 * mean
-				}
-				w /= l
-			}
-			add(e[0], e[1], w)
-		}
-		for d := range 3 {
-			solveLinear(s, f.Position, ends, q, d)
+			add(c[i], c[j], w)
 		}
 	}
-	return f
+	for k, e := range s.Ends {
+		l := r3.Norm(r3.Sub(f.Position[e[0]], f.Position[e[1]]))
+		w := s.Given[k]
+		switch {
+		case s.Law[k] == canopy.LawElastic:
+			w = s.Stiffness[k] / 100 / l
+		case s.Law[k] != canopy.LawForceDensity:
+			if w == 0 {
+				w = 10 * mean
+			}
+			w /= l
+		}
+		add(e[0], e[1], w)
+	}
+	for d := range 3 {
+		solveLinear(s, f.Position, ends, q, d)
+	}
 }
 
 // solveLinear solves direction d of a net of force densities in place.
