@@ -58,11 +58,12 @@ func BenchmarkRefactorLDL(b *testing.B)      { benchmarkRefactor(b, LDL) }
 func BenchmarkSolve3(b *testing.B) {
 	forEachSize(b, func(b *testing.B, s *system) {
 		f := factorise(b, s, Cholesky, Options{})
-		x := make([]float64, 3*s.n)
-		for i := range x {
-			x[i] = float64(i%7) - 3
+		rhs, x := make([]float64, 3*s.n), make([]float64, 3*s.n)
+		for i := range rhs {
+			rhs[i] = float64(i%7) - 3
 		}
 		for b.Loop() {
+			copy(x, rhs)
 			if err := f.Solve(x, 3); err != nil {
 				b.Fatal(err)
 			}

@@ -24,7 +24,8 @@ type blockJob struct {
 }
 
 // choleskyPanel factors the first n columns of a front of m rows in place:
-// lower triangle of the n×n top, and the rows below. It returns the column of
+// lower triangle of the n×n top, with the diagonal of L inverted since it is
+// only ever divided by, and the rows below. It returns the column of
 // the first pivot that is not positive and its value, or -1.
 func choleskyPanel(f []float64, ld, m, n int, help *crew) (int, float64) {
 	if n <= blockColumns && m <= 2*blockRows {
@@ -131,9 +132,8 @@ func choleskyTop(f []float64, ld, n int) (int, float64) {
 		if !(d > 0) || d > math.MaxFloat64 {
 			return j, d
 		}
-		d = math.Sqrt(d)
+		d = 1 / math.Sqrt(d)
 		cj[j] = d
-		d = 1 / d
 		for i := j + 1; i < n; i++ {
 			cj[i] *= d
 		}
@@ -148,15 +148,15 @@ func choleskyTop(f []float64, ld, n int) (int, float64) {
 }
 
 // scaleRows solves X·Tᵀ = C in place for m rows of n ≤ 4 columns, T the lower
-// triangle of an n×n block.
+// triangle of an n×n block with its diagonal inverted.
 func scaleRows(c []float64, ldc, m, n int, t []float64, ldt int) {
 	switch n {
 	case 4:
 		w := [10]float64{
-			1 / t[0],
-			t[1], 1 / t[ldt+1],
-			t[2], t[ldt+2], 1 / t[2*ldt+2],
-			t[3], t[ldt+3], t[2*ldt+3], 1 / t[3*ldt+3],
+			t[0],
+			t[1], t[ldt+1],
+			t[2], t[ldt+2], t[2*ldt+2],
+			t[3], t[ldt+3], t[2*ldt+3], t[3*ldt+3],
 		}
 		i := 0
 		if haveStrips && m >= 4 {
@@ -173,7 +173,7 @@ func scaleRows(c []float64, ldc, m, n int, t []float64, ldt int) {
 			c0[i], c1[i], c2[i], c3[i] = x0, x1, x2, x3
 		}
 	case 3:
-		w0, w1, w2, w3, w4, w5 := 1/t[0], t[1], 1/t[ldt+1], t[2], t[ldt+2], 1/t[2*ldt+2]
+		w0, w1, w2, w3, w4, w5 := t[0], t[1], t[ldt+1], t[2], t[ldt+2], t[2*ldt+2]
 		c0, c1, c2 := c[:m], c[ldc:][:m], c[2*ldc:][:m]
 		for i := range c0 {
 			x0 := c0[i] * w0
@@ -181,14 +181,14 @@ func scaleRows(c []float64, ldc, m, n int, t []float64, ldt int) {
 			c0[i], c1[i], c2[i] = x0, x1, (c2[i]-x0*w3-x1*w4)*w5
 		}
 	case 2:
-		w0, w1, w2 := 1/t[0], t[1], 1/t[ldt+1]
+		w0, w1, w2 := t[0], t[1], t[ldt+1]
 		c0, c1 := c[:m], c[ldc:][:m]
 		for i := range c0 {
 			x0 := c0[i] * w0
 			c0[i], c1[i] = x0, (c1[i]-x0*w1)*w2
 		}
 	case 1:
-		w0 := 1 / t[0]
+		w0 := t[0]
 		c0 := c[:m]
 		for i := range c0 {
 			c0[i] *= w0

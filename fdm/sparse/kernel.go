@@ -100,9 +100,8 @@ var lastRows = [4][4]int64{{}, {-1}, {-1, -1}, {-1, -1, -1}}
 // mulTrans does out = Aᵀ·B for n ≤ 4 columns of A and nb ≤ 3 of B with m rows:
 // the product of columns c and r stands at out[4*r+c].
 func mulTrans(out *[12]float64, a []float64, lda int, b []float64, ldb int, m, n, nb int) {
-	if haveStrips && n == 4 && nb == 3 && m > 0 {
-		_ = a[3*lda+m-1]
-		_ = b[2*ldb+m-1]
+	if haveStrips && m > 0 && 3*lda+m <= len(a) && 2*ldb+m <= len(b) {
+		// Columns that are not wanted are computed all the same: they are there.
 		// No call longer than some 50 µs, and the sums in fixed groups.
 		if m <= stripWork/8 {
 			dotStrip(&a[0], &b[0], &out[0], lda, ldb, m, &lastRows[m&3])

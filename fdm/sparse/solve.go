@@ -89,7 +89,7 @@ type frontView struct {
 	cols  int
 	first int     // number of the first pivot
 	rows  []int32 // places of the rows below
-	unit  bool    // the diagonal of L is 1
+	unit  bool    // the diagonal of L is 1; otherwise it is stored inverted
 }
 
 func (f *Factor) view(s int32) frontView {
@@ -100,7 +100,7 @@ func (f *Factor) view(s int32) frontView {
 	}
 	cols, ld := a.shape(s)
 	return frontView{
-		p: f.panels[a.panel[s] : a.panel[s+1]+slack], ld: ld, cols: cols, first: int(a.first[s]),
+		p: f.panels[a.panel[s]:], ld: ld, cols: cols, first: int(a.first[s]),
 		rows: a.rows[a.rowPtr[s]:a.rowPtr[s+1]], unit: f.kind == LDL,
 	}
 }
@@ -120,7 +120,7 @@ func (v *frontView) forward(x []float64, w int, position []int32, scratch []floa
 			c := p[j*v.ld:][:n]
 			inv := 1.0
 			if !v.unit {
-				inv = 1 / c[j]
+				inv = c[j]
 			}
 			if w == 3 {
 				yj := y[3*j : 3*j+3 : 3*j+3]
@@ -247,7 +247,7 @@ func (v *frontView) backward(x []float64, w int, position []int32, scratch []flo
 			c := p[j*v.ld:][:n]
 			inv := 1.0
 			if !v.unit {
-				inv = 1 / c[j]
+				inv = c[j]
 			}
 			if w == 3 {
 				yj := y[3*j : 3*j+3 : 3*j+3]
