@@ -39,11 +39,8 @@ func triangle(s *canopy.Structure, a, b, c int32, warp r3.Vec, w, f float64) {
 
 // chain makes a cable of the members in a row.
 func chain(s *canopy.Structure, name string, kind canopy.Kind, law canopy.CableLaw, members ...int32) *canopy.Cable {
-	if s.CableOf == nil {
-		s.CableOf = make([]int32, len(s.Ends))
-		for i := range s.CableOf {
-			s.CableOf[i] = -1
-		}
+	for len(s.CableOf) < len(s.Ends) {
+		s.CableOf = append(s.CableOf, -1)
 	}
 	c := canopy.Cable{Name: name, Kind: kind, Law: law, Members: members}
 	c.Nodes = append(c.Nodes, s.Ends[members[0]][0])
