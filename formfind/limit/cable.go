@@ -62,7 +62,7 @@ func (c *check) cables() {
 	}
 	if at, w := off.worst(); at >= 0 {
 		c.add(canopy.Finding{ID: "cable-off", Severity: canopy.Warning, Source: SourcePractice, Value: w, Limit: cableBand, Count: len(off.at),
-			Text: fmt.Sprintf("Cable forces achieved are off: %s (%s in all more than 5 %% off).", offText, plural(len(off.at), "cable", "cables")), Places: off.places(c.cable)})
+			Text: fmt.Sprintf("Cable forces achieved are off: %s (%s more than 5 %% off).", offText, plural(len(off.at), "cable", "cables")), Places: off.places(c.cable)})
 	}
 	if at, w := uneven.worst(); at >= 0 {
 		c.add(canopy.Finding{ID: "cable-uneven", Severity: canopy.Note, Source: SourcePractice, Value: w, Limit: evennessBand, Count: len(uneven.at),
