@@ -219,12 +219,16 @@ func TestEveryFormatCarriesTheCautionAndRepeats(t *testing.T) {
 	for _, f := range Formats() {
 		for _, r := range []*canopy.Result{sail(4), cone(8), grid(4)} {
 			var a, b bytes.Buffer
-			require.NoError(t, f.Write(background, &a, r, Options{}), f.Name)
+			if err := f.Write(background, &a, r, Options{}); errors.Is(err, ErrNoFabric) && len(r.Structure.Corners) == 0 {
+				continue
+			} else {
+				require.NoError(t, err, f.Name)
+			}
 			require.NoError(t, f.Write(background, &b, r, Options{}), f.Name)
 			require.True(t, bytes.Equal(a.Bytes(), b.Bytes()), f.Name)
-			if f.Name != "stl" && f.Name != "png" {
+			if f.Name != "png" {
 				text := strings.Join(strings.Fields(a.String()), " ")
-				require.Contains(t, text, "For preliminary design only.", f.Name)
+				require.Contains(t, text, "reliminary design only", f.Name)
 			}
 		}
 	}

@@ -113,10 +113,7 @@ func newScene(r *canopy.Result) *scene {
 	for _, t := range r.Form.Force {
 		g.most = max(g.most, math.Abs(t))
 	}
-	centre := r3.Scale(0.5, r3.Add(lo, hi))
-	if r3.Norm(centre) > 20*g.size {
-		g.origin = r3.Vec{X: math.Round(centre.X), Y: math.Round(centre.Y), Z: math.Round(lo.Z)}
-	}
+	g.origin = localOrigin(r)
 	g.doc = &gltf.Document{
 		Asset: gltf.Asset{Version: "2.0", Generator: oneLine(r.Program.Name + " " + r.Program.Version),
 			Extras: map[string]any{

@@ -39,14 +39,22 @@ func tool(t *testing.T, name string) string {
 // first, for distributions install such modules there.
 func python(t *testing.T, modules ...string) string {
 	t.Helper()
+	list := strings.Join(modules, ", ")
+	if path, ok := pythons[list]; ok {
+		return path
+	}
 	for _, path := range []string{"/usr/bin/python3", "python3"} {
-		if exec.Command(path, "-c", "import "+strings.Join(modules, ", ")).Run() == nil {
+		if exec.Command(path, "-c", "import "+list).Run() == nil {
+			pythons[list] = path
 			return path
 		}
 	}
-	absent(t, "Python with "+strings.Join(modules, ", "))
+	absent(t, "Python with "+list)
 	return ""
 }
+
+// pythons remembers what python found.
+var pythons = map[string]string{}
 
 // saved writes r in a format to a file.
 func saved(t *testing.T, name string, r *canopy.Result) string {
