@@ -113,7 +113,7 @@ func (v *Solver) columnsOf(st *state) {
 					continue
 				}
 				for a, b := range st.basis[v.start[i]:v.start[i+1]] {
-					x := r3.Dot(t, b)
+					x := v.shareOf(int(e)) * r3.Dot(t, b)
 					if side == 1 {
 						x = -x
 					}

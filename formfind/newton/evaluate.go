@@ -18,15 +18,19 @@ func (v *Solver) tension(m int, length float64, common []float64) element.Tensio
 	case canopy.LawElastic:
 		return element.Elastic(s.Stiffness[m], s.Unstressed[m], length, s.Kind[m].Pushes())
 	case canopy.LawCable:
-		return element.GivenForce(common[v.comOf[m]], length)
+		return element.GivenForce(v.shareOf(m)*common[v.comOf[m]], length)
 	}
-	return element.GivenForce(s.Given[m], length)
+	return element.GivenForce(v.shareOf(m)*s.Given[m], length)
 }
 
 // potential reports whether the residual is the gradient of the energy that
-// evaluate computes: no pressure, no weight that changes with the shape.
+// evaluate computes: no pressure, no weight that changes with the shape, no
+// unequal stress.
 func (v *Solver) potential() bool {
 	s := v.s
+	if v.uneven {
+		return false
+	}
 	for f := range s.Fabrics {
 		if s.Fabrics[f].Pressure != 0 || (s.SelfWeight && s.Fabrics[f].Weight != 0) {
 			return false
@@ -101,8 +105,19 @@ func (v *Solver) evaluate(st *state) {
 		}
 		a := r3.Scale(tri.Area, tri.Normal)
 		fabric := &s.Fabrics[s.FabricOf[k]]
-		stress := s.Stress[k][0]
-		f := tri.FilmPull(stress)
+		stress, weftStress := v.stressOf(k)
+		var f [3]r3.Vec
+		if stress == weftStress {
+			f = tri.FilmPull(stress)
+		} else {
+			warp, weft, err := tri.ProjectWarp(s.Warp[k])
+			if err != nil {
+				st.collapse = int32(k)
+				continue
+			}
+			f = tri.StressPull(warp, weft, stress, weftStress, 0)
+			stress = 0.5 * (stress + weftStress)
+		}
 		energy += stress * tri.Area
 		for j, i := range c {
 			v.normalSum[i] = r3.Add(v.normalSum[i], a)
@@ -238,7 +253,7 @@ func (v *Solver) assemble(st *state) {
 		if !ok {
 			continue
 		}
-		v.addFilm(st, c, &tri, s.Stress[t][0], s.Fabrics[s.FabricOf[t]].Pressure, p.triangle[t])
+		v.addFilm(st, t, &tri, p.triangle[t])
 	}
 	// Directions that do not exist at this shape, and those that nothing
 	// resists or drives, stay where they are.
@@ -310,19 +325,48 @@ func (v *Solver) put(i, j int32, a, b, ni, nj int, slot int32, x float64) {
 	}
 }
 
-// addFilm adds a triangle of uniform stress and pressure. The block of corners
-// i and its successor j is σ(eᵢ·eⱼ)/(4A)·n·nᵀ − ½σ[n]ₓ plus the symmetric part
-// of the pressure's, (p/12)[eᵢ − eⱼ]ₓ.
-func (v *Solver) addFilm(st *state, c [3]int32, tri *element.Triangle, stress, pressure float64, slots [3]int32) {
+// addFilm adds triangle t. The block of corners i and its successor j is
+// k·n·nᵀ − ½σ[n]ₓ, with k = σ(eᵢ·eⱼ)/(4A) for a uniform stress and
+// k = hᵢ·S·hⱼ/A, h = ½n × e, for an unequal one, whose mean is the σ of the
+// second term (on a surface in balance both then resist a move along the normal
+// by S:∇∇u − (tr S)·K·u, K the Gaussian curvature). Left out is the turning of
+// the warp. The symmetric part of the pressure's block is (p/12)[eᵢ − eⱼ]ₓ.
+func (v *Solver) addFilm(st *state, t int, tri *element.Triangle, slots [3]int32) {
+	c := v.s.Corners[t]
+	pressure := v.s.Fabrics[v.s.FabricOf[t]].Pressure
 	n := tri.Normal
-	f := stress / (4 * tri.Area)
+	stress, weftStress := v.stressOf(t)
+	var same, next [3]float64
+	if stress == weftStress {
+		f := stress / (4 * tri.Area)
+		for k := range 3 {
+			same[k] = f * r3.Norm2(tri.Edge[k])
+			next[k] = f * r3.Dot(tri.Edge[k], tri.Edge[(k+1)%3])
+		}
+	} else {
+		warp, weft, err := tri.ProjectWarp(v.s.Warp[t])
+		if err != nil {
+			return
+		}
+		var a, b [3]float64
+		for k := range 3 {
+			h := tri.Altitude(k)
+			a[k], b[k] = r3.Dot(h, warp), r3.Dot(h, weft)
+		}
+		for k := range 3 {
+			l := (k + 1) % 3
+			same[k] = (stress*a[k]*a[k] + weftStress*b[k]*b[k]) / tri.Area
+			next[k] = (stress*a[k]*a[l] + weftStress*b[k]*b[l]) / tri.Area
+		}
+		stress = 0.5 * (stress + weftStress)
+	}
 	for k, i := range c {
 		fi := v.first[i]
 		if fi < 0 {
 			continue
 		}
 		bi := st.basis[v.start[i]:v.start[i+1]]
-		w := f * r3.Norm2(tri.Edge[k])
+		w := same[k]
 		own := int(v.pattern.own[i])
 		for a := range bi {
 			pa := w * r3.Dot(n, bi[a])
@@ -338,7 +382,7 @@ func (v *Solver) addFilm(st *state, c [3]int32, tri *element.Triangle, stress, p
 		l := (k + 1) % 3
 		j := c[l]
 		bj := st.basis[v.start[j]:v.start[j+1]]
-		w = f * r3.Dot(tri.Edge[k], tri.Edge[l])
+		w = next[k]
 		skew := r3.Scale(-0.5*stress, n)
 		if pressure != 0 {
 			skew = r3.Add(skew, r3.Scale(pressure/12, r3.Sub(tri.Edge[k], tri.Edge[l])))

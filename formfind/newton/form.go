@@ -1,8 +1,6 @@
 package newton
 
 import (
-	"fmt"
-
 	"gonum.org/v1/gonum/spatial/r3"
 
 	"anticlast/formfind/canopy"
@@ -24,7 +22,7 @@ func (v *Solver) form(st *state) (*canopy.Form, error) {
 		}
 	}
 	for t, c := range s.Corners {
-		f.Stress[t] = canopy.Stress{Warp: s.Stress[t][0], Weft: s.Stress[t][1]}
+		f.Stress[t].Warp, f.Stress[t].Weft = v.stressOf(t)
 		tri, ok := element.NewTriangle(st.at[c[0]], st.at[c[1]], st.at[c[2]])
 		if !ok {
 			f.Warp[t] = s.Warp[t]
@@ -32,7 +30,7 @@ func (v *Solver) form(st *state) (*canopy.Form, error) {
 		}
 		w, _, err := tri.ProjectWarp(s.Warp[t])
 		if err != nil {
-			return nil, fmt.Errorf("newton: triangle %d of fabric %s at (%.3f, %.3f, %.3f) m: %w", t, s.Fabrics[s.FabricOf[t]].Name, st.at[c[0]].X, st.at[c[0]].Y, st.at[c[0]].Z, err)
+			return nil, v.warpError(t, err)
 		}
 		f.Warp[t] = w
 	}

@@ -60,14 +60,52 @@ func (v *Solver) measure(at []r3.Vec) error {
 	return nil
 }
 
-func (v *Solver) iterate(ctx context.Context, set engine.Settings) (engine.Outcome, error) {
+// fits is how often the magnitude of unequal stress is fitted to the shape
+// before the last, exact, run; each time the shape moves less.
+const fits = 3
+
+// rounds iterates to balance. For unequal stress it alternates with fits of the
+// magnitude; the shape returned is in balance, along the normals, with the
+// magnitude returned.
+func (v *Solver) rounds(ctx context.Context, set engine.Settings) (engine.Outcome, error) {
+	first := 0
+	if v.uneven {
+		for t := range v.s.Corners {
+			c := v.s.Corners[t]
+			tri, ok := element.NewTriangle(v.now.at[c[0]], v.now.at[c[1]], v.now.at[c[2]])
+			if !ok {
+				continue
+			}
+			if _, _, err := tri.ProjectWarp(v.s.Warp[t]); err != nil {
+				return engine.Outcome{NegativePivots: -1}, v.warpError(t, err)
+			}
+		}
+		rough := set
+		for k := range fits {
+			tol := []float64{1e-3, 1e-4, 1e-5}[k]
+			rough.Residual, rough.Worst, rough.Move = max(set.Residual, tol), max(set.Worst, 10*tol), max(set.Move, tol)
+			out, err := v.iterate(ctx, rough, first)
+			if err != nil || out.Status != engine.Converged {
+				return out, err
+			}
+			first = out.Iterations
+			if err := v.fit(ctx, &v.now); err != nil {
+				return out, err
+			}
+		}
+	}
+	return v.iterate(ctx, set, first)
+}
+
+func (v *Solver) iterate(ctx context.Context, set engine.Settings, first int) (engine.Outcome, error) {
 	out := engine.Outcome{NegativePivots: -1}
+	v.mixing.forget()
 	size := v.modelSize(v.now.at)
 	hasEnergy := v.potential()
 	v.evaluate(&v.now)
 	refused := 0
 	st := step{u: make([]float64, v.unknown), force: make([]float64, len(v.commons))}
-	for it := 0; ; it++ {
+	for it := first; ; it++ {
 		if err := ctx.Err(); err != nil {
 			return out, err
 		}
@@ -102,6 +140,15 @@ func (v *Solver) iterate(ctx context.Context, set engine.Settings) (engine.Outco
 			out.Why = fmt.Sprintf("not in balance after %d steps: residual %.2g of the forces that meet (wanted %.2g), largest at node %s", it, v.now.eta, set.Residual, v.s.NodeName.At(int(v.now.worstAt)))
 			out.NegativePivots, err = v.negative(ctx)
 			return out, err
+		}
+		if v.uneven {
+			done, err := v.mixedStep(ctx, &st, size)
+			if err != nil {
+				return out, err
+			}
+			if done {
+				continue
+			}
 		}
 		// Take the step, or as much of it as helps.
 		if v.along, err = v.slide(ctx, &v.now, st.u); err != nil {
@@ -165,6 +212,32 @@ func (v *Solver) iterate(ctx context.Context, set engine.Settings) (engine.Outco
 		}
 		v.now, v.trial = v.trial, v.now
 	}
+}
+
+// mixedStep takes the step mixed with those before when it is small enough and
+// reduces the residual. It leaves st as it is when it does not.
+func (v *Solver) mixedStep(ctx context.Context, st *step, size float64) (bool, error) {
+	u := append([]float64(nil), st.u...)
+	v.mixing.mix(u)
+	if v.largestMove(&v.now, u) > 0.1*size {
+		v.mixing.forget()
+		return false, nil
+	}
+	var err error
+	if v.along, err = v.slide(ctx, &v.now, u); err != nil {
+		return false, err
+	}
+	if v.keepsShape(1, u) {
+		copy(v.trial.force, st.force)
+		v.evaluate(&v.trial)
+		if v.trial.collapse == none && v.trial.merit < 0.9*v.now.merit {
+			v.mixing.took(1, u)
+			v.now, v.trial = v.trial, v.now
+			return true, nil
+		}
+	}
+	v.mixing.forget()
+	return false, nil
 }
 
 func (v *Solver) gapsMet(tol float64) bool {

@@ -28,6 +28,15 @@
 // solved together with the shape by the Schur complement of the bordered
 // system.
 //
+// Fabric of unequal warp and weft stress: along the normal only their ratio
+// matters, and the surface found holds it everywhere. In its plane a constant
+// magnitude is in balance only by chance, so a smooth factor with mean 1 over
+// each fabric is fitted by least squares to the balance in all directions, and
+// for each chain of given or common force bonded to such fabric a distribution
+// of its force with mean 1 (by length). Fits and shape are found in turn; the
+// form has the stresses and forces that balance the shape along its normals.
+// The iteration is then accelerated by mixing steps (Anderson 1965).
+//
 // Left out of the tangent: the turning of B, and the change of area- and
 // length-dependent weights. They make the last steps converge linearly with a
 // small factor instead of quadratically. Of pressure the symmetric part is
@@ -56,10 +65,6 @@ const Name = "newton"
 const DefaultIterations = 60
 
 var (
-	// ErrUnequalStress is returned for fabric whose wanted warp and weft
-	// stresses differ: a film of constant unequal stresses has no
-	// equilibrium in general.
-	ErrUnequalStress = errors.New("newton: warp and weft stress differ")
 	// ErrElasticFabric is returned for fabric whose stress follows strain.
 	ErrElasticFabric = errors.New("newton: elastic fabric is not treated")
 	// ErrNotTension is returned for a fabric stress that is not positive.

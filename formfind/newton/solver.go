@@ -54,6 +54,10 @@ type Solver struct {
 	shifted      []float64
 	now, trial   state
 	normalSum    []r3.Vec
+	uneven       bool // some warp and weft stresses differ
+	unevenFabric []bool
+	magnitude    *magnitudes // nil unless uneven
+	mixing       anderson
 	rhs          []float64
 	columns      []float64
 	areaStart    []float64
@@ -109,16 +113,30 @@ func New(ctx context.Context, s *canopy.Structure) (*Solver, error) {
 	return v, nil
 }
 
-// checkStress refuses what a film of uniform stress cannot be.
-func (v *Solver) checkStress() error {
+// checkStress refuses what a film cannot be, and prepares for unequal stress.
+func (v *Solver) checkStress(ctx context.Context) error {
 	s := v.s
+	uneven := make([]bool, len(s.Fabrics))
+	v.uneven = false
 	for t, p := range s.Stress {
 		if !(p[0] > 0) || !(p[1] > 0) {
 			return fmt.Errorf("%w (fabric %s: warp %g, weft %g N/m)", ErrNotTension, s.Fabrics[s.FabricOf[t]].Name, p[0], p[1])
 		}
-		if math.Abs(p[0]-p[1]) > 1e-12*p[0] {
-			return fmt.Errorf("%w (fabric %s: warp %g, weft %g N/m)", ErrUnequalStress, s.Fabrics[s.FabricOf[t]].Name, p[0], p[1])
+		if isUneven(p) {
+			uneven[s.FabricOf[t]], v.uneven = true, true
 		}
+	}
+	if !slices.Equal(uneven, v.unevenFabric) {
+		v.magnitude, v.unevenFabric = nil, uneven
+	}
+	if v.magnitude == nil && v.uneven {
+		var err error
+		if v.magnitude, err = v.newMagnitudes(ctx); err != nil {
+			return err
+		}
+	}
+	if v.magnitude != nil {
+		v.magnitude.reset()
 	}
 	return nil
 }
@@ -346,7 +364,7 @@ func (v *Solver) Find(ctx context.Context, start *canopy.Form, set engine.Settin
 	if err := ctx.Err(); err != nil {
 		return nil, out, err
 	}
-	if err := v.checkStress(); err != nil {
+	if err := v.checkStress(ctx); err != nil {
 		return nil, out, err
 	}
 	at := make([]r3.Vec, len(v.s.Position))
@@ -373,7 +391,7 @@ func (v *Solver) Find(ctx context.Context, start *canopy.Form, set engine.Settin
 		return f, out, err
 	}
 	v.startForces(start)
-	out, err := v.iterate(ctx, set)
+	out, err := v.rounds(ctx, set)
 	if err != nil {
 		return nil, out, err
 	}
