@@ -118,7 +118,7 @@ func (c *chain) aim(ctx context.Context, q []float64) error {
 func (c *chain) linear(ctx context.Context, q []float64) (*canopy.Form, error) {
 	s := c.s
 	c.stage("force density", "first shape")
-	net, panels := network(s, startLoads(s))
+	net, panels := startNetwork(s, startLoads(s))
 	solver, err := fdm.New(ctx, net, panels)
 	if err != nil {
 		return nil, c.unsupported(err)
@@ -274,16 +274,32 @@ func (c *chain) fabric(ctx context.Context) error {
 		return err
 	}
 	if elastic {
-		return c.iterate(ctx, true)
+		// Newton's tangent is that of prescribed stress.
+		return c.relax(ctx, engine.Settings{AllDirections: true, Progress: c.o.Progress, Recorder: c.o.Recorder})
 	}
-	if !equalStress(s) {
-		return c.finish(ctx, force, "unequal warp and weft")
-	}
-	if err := c.iterate(ctx, false); err != nil {
+	equal := equalStress(s)
+	first := c.f
+	err := c.iterate(ctx, false)
+	var none *NoEquilibriumError
+	switch {
+	case err == nil:
+	case !equal && errors.As(err, &none) && !none.Shown:
+		// The ratio could not be held everywhere. The shape of the natural
+		// updates is in balance with the stress it reports; the report says
+		// how far that is from what was asked.
+		c.f = first
+		for t, w := range s.Stress {
+			c.f.Stress[t] = canopy.Stress{Warp: w[0], Weft: w[1]}
+		}
+		copy(c.f.Force, force)
+		c.say("kept the shape of the natural force densities, whose stress deviates from the wanted ratio")
+	default:
 		return err
 	}
-	c.smooth = c.f
-	return c.finish(ctx, c.f.Force, "")
+	if equal {
+		c.smooth = c.f
+	}
+	return c.finish(ctx)
 }
 
 // natural is the first linear step and the fixed few updates.
@@ -298,7 +314,7 @@ func (c *chain) natural(ctx context.Context, force []float64) error {
 		ref = f.Position
 	}
 	c.stage("natural force density", "")
-	net, panels := network(s, startLoads(s))
+	net, panels := startNetwork(s, startLoads(s))
 	solver, err := fdm.New(ctx, net, panels)
 	if err != nil {
 		return c.unsupported(err)
@@ -341,18 +357,24 @@ func naturalForm(s *canopy.Structure, r fdm.NaturalResult) *canopy.Form {
 // reference, the wanted stress acts on it as second Piola–Kirchhoff stress, and
 // the linear system has one exact solution nearby. The form reports the true
 // stress and forces of that solution.
-func (c *chain) finish(ctx context.Context, force []float64, why string) error {
+func (c *chain) finish(ctx context.Context) error {
 	s := c.s
+	found := c.f
 	c.stage("natural force density", "final pass")
 	ref := c.f.Position
 	steady := steadyLoads(s)
 	for pass := 1; ; pass++ {
 		net, panels := network(s, load.Nodal(s, c.f.Position))
+		for t := range panels {
+			// Of unequal warp and weft only the ratio is what was asked for;
+			// the magnitude is what Newton fitted.
+			panels[t].WarpStress, panels[t].WeftStress = found.Stress[t].Warp, found.Stress[t].Weft
+		}
 		solver, err := fdm.New(ctx, net, panels)
 		if err != nil {
 			return c.unsupported(err)
 		}
-		r, err := solver.Natural(ctx, ref, given(s, force), 1)
+		r, err := solver.Natural(ctx, ref, given(s, found.Force), 1)
 		if err != nil {
 			return c.unsupported(err)
 		}
@@ -366,10 +388,7 @@ func (c *chain) finish(ctx context.Context, force []float64, why string) error {
 		// that no longer matters.
 		if steady || move <= 1e-13*s.Size() || pass == 12 {
 			c.used("natural force density")
-			if why != "" {
-				why = " (" + why + ")"
-			}
-			c.say("fixed-reference pass%s: exact balance in all directions, residual %.1e", why, r.Residual)
+			c.say("fixed-reference pass: exact balance in all directions, residual %.1e", r.Residual)
 			return nil
 		}
 	}

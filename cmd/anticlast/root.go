@@ -71,6 +71,7 @@ not met, or shown to have no equilibrium; 130 interrupted.
 	root.SetFlagErrorFunc(func(cmd *cobra.Command, err error) error {
 		return usageError{fmt.Errorf("%w; see %s --help", err, cmd.CommandPath())}
 	})
+	root.SuggestionsMinimumDistance = 2
 	root.CompletionOptions.HiddenDefaultCmd = false
 	root.AddCommand(a.formCommand(), a.checkCommand(), a.exportCommand(), a.sampleCommand(), a.schemaCommand(), a.versionCommand())
 	return root
