@@ -57,6 +57,26 @@ func network(s *canopy.Structure, loads []r3.Vec) (fdm.Network, []fdm.Panel) {
 	return n, panels
 }
 
+// startNetwork is network with the free ends of masts kept where they start. A
+// strut of given force has no place of its own in a linear step: its force
+// density grows as it shortens, and it would shrink to nothing. Newton's method
+// moves it later. Struts of given force density stay free.
+func startNetwork(s *canopy.Structure, loads []r3.Vec) (fdm.Network, []fdm.Panel) {
+	n, panels := network(s, loads)
+	for k, e := range s.Ends {
+		if !s.Kind[k].Pushes() || s.Law[k] == canopy.LawForceDensity {
+			continue
+		}
+		for _, i := range e {
+			if m := s.MasterOf(int(i)); m >= 0 {
+				i = m
+			}
+			n.Fixed[i] = fdm.Directions(canopy.DirAll)
+		}
+	}
+	return n, panels
+}
+
 // guessForces returns a force for every member to start from, in N: what is
 // given, or what would hold a cable's sag against what pulls at it.
 func guessForces(s *canopy.Structure, x []r3.Vec) []float64 {
