@@ -28,6 +28,7 @@ type run struct {
 	rests     int
 
 	mostContrast float64
+	doubled      bool // masses doubled for want of progress
 
 	startAngle float64
 	crushed    int // looks in a row that found a collapsed triangle
@@ -184,9 +185,7 @@ func (r *run) back() {
 	copy(r.next, r.best)
 	copy(r.before, r.best)
 	clear(r.v)
-	if r.force0 != nil {
-		clear(r.force0)
-	}
+	clear(r.force0)
 	r.lastMove = math.Inf(1)
 	r.elements()
 	r.renew()
@@ -229,9 +228,10 @@ func (r *run) resting(it int, eta float64) bool {
 		return true
 	}
 	if it-r.bestAt > patience && r.rests-r.bestRest > restPatience {
-		if r.safety == 1 {
+		if !r.doubled {
 			// Perhaps the masses are too light for what happens here.
-			r.safety = 2
+			r.doubled = true
+			r.safety *= 2
 			r.bestAt, r.bestRest = it, r.rests
 			r.renew()
 			return false

@@ -27,10 +27,11 @@ type state struct {
 	length          []float64 // of members, m; nil when nobody asks
 	facets          []facet
 	onRing          []r3.Vec // forces on the nodes of rings, nil without rings
-	force0          []r3.Vec // forces of the last step, for viscous damping
+	force0          []r3.Vec // forces of the last step
 	lineOf          []int32  // index into line, −1; nil without lines
 	parts           []sums
 	ringSums        sums
+	smooth          float64    // damping in proportion to stiffness, steps
 	safety          float64    // factor on all masses
 	directed        []directed // masses with directions, nil without elastic elements
 	contrast        float64    // between the stiffest direction and the lightest
@@ -57,7 +58,8 @@ func newState(p *problem, x []r3.Vec, viscous bool) *state {
 		problem: p, crew: newCrew(n + len(p.corners) + len(p.ends)),
 		x: x, next: append([]r3.Vec(nil), x...), before: append([]r3.Vec(nil), x...),
 		v: make([]r3.Vec, n), mass: make([]float64, n), meet: make([]float64, n), stride2: make([]float64, n),
-		q: make([]float64, len(p.ends)), facets: make([]facet, len(p.corners)),
+		force0: make([]r3.Vec, n),
+		q:      make([]float64, len(p.ends)), facets: make([]facet, len(p.corners)),
 		parts: make([]sums, (n+block-1)/block), safety: 1, contrast: 1,
 	}
 	for _, l := range p.law {
@@ -76,8 +78,9 @@ func newState(p *problem, x []r3.Vec, viscous bool) *state {
 	if len(p.ring) > 0 {
 		st.onRing = make([]r3.Vec, n)
 	}
-	if viscous {
-		st.force0 = make([]r3.Vec, n)
+	if !viscous {
+		st.smooth = smoothing
+		st.safety = 1 + 2*smoothing
 	}
 	if len(p.line) > 0 {
 		st.lineOf = make([]int32, n)
@@ -319,14 +322,27 @@ func (st *state) move(keep, push float64) sums {
 	return all
 }
 
+// smoothing damps the quickest modes of motion under kinetic damping, by
+// −smoothing·K·v (the part of Rayleigh's damping in proportion to stiffness),
+// for which the change of force over a step stands in. Without it their
+// flutter makes the kinetic energy peak, and the canopy stop, long before the
+// slow modes have got going. It asks for masses greater by 1 + 2·smoothing.
+const smoothing = 0.1
+
+// step moves node i by one step under the force f, with the velocity v before.
 func (st *state) step(i int, f, v r3.Vec, keep, push float64, s *sums) {
+	s.residual2 += f.X*f.X + f.Y*f.Y + f.Z*f.Z
+	o := st.force0[i]
+	st.force0[i] = f
+	change := r3.Vec{X: f.X - o.X, Y: f.Y - o.Y, Z: f.Z - o.Z}
+	s.work -= v.X*change.X + v.Y*change.Y + v.Z*change.Z
+	if b := st.smooth; b > 0 && keep == 1 {
+		f.X += b * change.X
+		f.Y += b * change.Y
+		f.Z += b * change.Z
+	}
 	m := st.mass[i]
 	g := push / m
-	if st.force0 != nil {
-		o := st.force0[i]
-		s.work += v.X*(o.X-f.X) + v.Y*(o.Y-f.Y) + v.Z*(o.Z-f.Z)
-		st.force0[i] = f
-	}
 	d := st.directed != nil && st.directed[i].used
 	if d {
 		v = r3.Add(r3.Scale(keep, v), r3.Scale(push, st.directed[i].inverse.mul(f)))
@@ -343,7 +359,6 @@ func (st *state) step(i int, f, v r3.Vec, keep, push float64, s *sums) {
 	st.v[i] = v
 	x := st.x[i]
 	st.next[i] = r3.Vec{X: x.X + v.X, Y: x.Y + v.Y, Z: x.Z + v.Z}
-	s.residual2 += f.X*f.X + f.Y*f.Y + f.Z*f.Z
 	if d {
 		s.kinetic += 0.5 * r3.Dot(v, st.directed[i].mass.mul(v))
 	} else {
