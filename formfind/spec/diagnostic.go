@@ -5,6 +5,7 @@ import (
 	"slices"
 	"strconv"
 	"strings"
+	"unicode"
 	"unicode/utf8"
 )
 
@@ -102,11 +103,15 @@ func sorted(p []placed) []Diagnostic {
 		}
 		return a.Column - b.Column
 	})
-	var out []Diagnostic
+	out := make([]Diagnostic, 0, len(p))
+	seen := make(map[Diagnostic]bool, len(p))
 	for _, q := range p {
-		if n := len(out); n > 0 && out[n-1] == q.Diagnostic {
+		d := q.Diagnostic
+		d.Path = "" // one text, used in several places through aliases
+		if seen[d] {
 			continue
 		}
+		seen[d] = true
 		out = append(out, q.Diagnostic)
 	}
 	return out
@@ -118,6 +123,12 @@ func clip(s string) string {
 	if i := strings.IndexAny(s, "\r\n"); i >= 0 {
 		s = s[:i] + "…"
 	}
+	s = strings.Map(func(c rune) rune {
+		if unicode.IsPrint(c) {
+			return c
+		}
+		return '\uFFFD'
+	}, s)
 	if utf8.RuneCountInString(s) <= most {
 		return s
 	}

@@ -92,7 +92,7 @@ func (d *Dimension) find(name string) (Unit, bool) {
 	return Unit{}, false
 }
 
-var unitTidy = strings.NewReplacer(" ", "", "²", "2", "³", "3", "^2", "2", "^3", "3", "**2", "2", "º", "°", "degrees", "deg", "degree", "deg", "percent", "%")
+var unitTidy = strings.NewReplacer(" /", "/", "/ ", "/", "5 cm", "5cm", "²", "2", "³", "3", "^2", "2", "^3", "3", "**2", "2", "º", "°", "degrees", "deg", "degree", "deg", "percent", "%")
 
 // value turns v in unit u to SI.
 func (d *Dimension) value(v float64, u Unit) float64 {

@@ -64,7 +64,7 @@ const (
 	defaultMaxBytes      = 4 << 20
 	defaultMaxTableBytes = 2 << 30
 	maxDepth             = 40      // nesting of a model file; the format itself needs 8
-	maxVisits            = 5000000 // values looked at, aliases counted each time
+	maxVisits            = 2000000 // values looked at, aliases counted each time
 )
 
 // Read reads a model. An error of what the model says is an *Errors that holds

@@ -27,10 +27,13 @@ func (r *reader) applySets(root *yaml.Node) *yaml.Node {
 	return root
 }
 
-const maxSetNodes = 2000000
+const maxSetNodes = 1000000
+
+// setLabel stands where messages have a file name.
+func setLabel(s string) string { return "--set " + clip(s) }
 
 func (r *reader) failSet(s string, path, message, hint string) {
-	r.add(Diagnostic{File: "--set " + s, Path: path, Text: path, Message: message, Hint: hint}, -1000)
+	r.add(Diagnostic{File: setLabel(s), Path: clip(path), Text: clip(path), Message: message, Hint: hint}, -1000)
 }
 
 func (r *reader) applySet(root *yaml.Node, index int, s string) {
@@ -41,7 +44,7 @@ func (r *reader) applySet(root *yaml.Node, index int, s string) {
 		return
 	}
 	if len(text) > 1<<16 {
-		r.failSet(clip(s), path, "the value is longer than 65536 bytes", "")
+		r.failSet(s, path, "the value is longer than 65536 bytes", "")
 		return
 	}
 	var doc yaml.Node

@@ -66,7 +66,7 @@ func (t *tableReader) failAt(line, col, k int, message, hint string) {
 		d.Path = p.String()
 	}
 	if line < 0 {
-		d.File, d.Line, d.Column = "--set "+t.r.options.Set[-line-1], 0, 0
+		d.File, d.Line, d.Column = setLabel(t.r.options.Set[-line-1]), 0, 0
 	}
 	t.r.add(d, t.rank)
 }
@@ -74,15 +74,14 @@ func (t *tableReader) failAt(line, col, k int, message, hint string) {
 // cell reads the text of a cell for key k into the row.
 func (t *tableReader) cell(k int, text []byte, unit *Unit) {
 	key := t.sec.keys[k]
+	t.row.text[k] = text
 	if len(text) == 0 {
 		if key.required {
-			t.row.text[k] = text
 			t.fail(k, fmt.Sprintf("%s is empty", key.name), "for example "+key.example)
 			t.row.has |= 1 << 31 // a required cell is wrong
 		}
 		return
 	}
-	t.row.text[k] = text
 	s := key.shape
 	if s.form != formQuantity {
 		t.row.has |= 1 << uint(k)

@@ -40,7 +40,7 @@ func (r *reader) at(n *yaml.Node) (file string, line, col int) {
 		return r.file, 0, 0
 	}
 	if n.Line < 0 { // from an entry of Options.Set
-		return "--set " + r.options.Set[-n.Line-1], 0, 0
+		return setLabel(r.options.Set[-n.Line-1]), 0, 0
 	}
 	return r.file, n.Line, n.Column
 }
@@ -169,7 +169,7 @@ func (r *reader) merged(v *yaml.Node, p *place, depth int) []entry {
 	if v == nil {
 		return nil
 	}
-	if depth > 8 {
+	if depth > 4 {
 		r.fail(v, p, "merge keys nested too deep", "write the values themselves")
 		return nil
 	}
@@ -214,10 +214,11 @@ type fields struct {
 func (r *reader) section(n *yaml.Node, sec *section, p *place) *fields {
 	before := len(r.diags.errors) + r.diags.more
 	f := &fields{r: r, sec: sec, node: n, p: p}
+	meant := "" // required keys that are there, but misspelt
 	for _, e := range r.entries(n, p, 0) {
 		e.key = sec.get(e.name)
 		if e.key == nil {
-			r.unknownKey(e, sec, p)
+			meant += "\x00" + r.unknownKey(e, sec, p) + "\x00"
 			continue
 		}
 		e.n = r.resolve(e.n, p)
@@ -237,7 +238,7 @@ func (r *reader) section(n *yaml.Node, sec *section, p *place) *fields {
 		f.got = append(f.got, e)
 	}
 	for _, k := range sec.keys {
-		if !k.required || f.listed(n, k.name) || sec == modelSection {
+		if !k.required || f.listed(n, k.name) || sec == modelSection || meant != "" && strings.Contains(meant, "\x00"+k.name+"\x00") {
 			continue
 		}
 		r.fail(n, p, fmt.Sprintf("%s has no %q", sec.label(p), k.name), "for example "+k.name+": "+k.example)
@@ -279,14 +280,18 @@ func (s *section) label(p *place) string {
 	return p.String()
 }
 
-func (r *reader) unknownKey(e entry, sec *section, p *place) {
+// unknownKey complains about a key and returns the one that was meant, "" when
+// there is none like it.
+func (r *reader) unknownKey(e entry, sec *section, p *place) string {
 	hint := ""
-	if near := nearest(e.name, sec.names()); near != "" {
+	near := nearest(e.name, sec.names())
+	if near != "" {
 		hint = fmt.Sprintf("did you mean %q?", near)
 	} else {
 		hint = sec.label(p) + " may have " + list(sec.names(), "and")
 	}
 	r.fail(e.kn, p.down(e.name), fmt.Sprintf("unknown key %q", clip(e.name)), hint)
+	return near
 }
 
 // get returns the value of a key, nil when it is not there.
