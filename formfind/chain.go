@@ -270,8 +270,15 @@ func (c *chain) fabric(ctx context.Context) error {
 	force := guessForces(s, s.Position)
 	if c.o.Warm != nil && len(c.o.Warm.Position) == len(s.Position) {
 		c.f = c.warmStart()
-	} else if err := c.natural(ctx, force); err != nil {
-		return err
+	} else {
+		if c.o.Listed {
+			if kept, err := c.givenShape(ctx); kept || err != nil {
+				return err
+			}
+		}
+		if err := c.natural(ctx, force); err != nil {
+			return err
+		}
 	}
 	if elastic {
 		// Newton's tangent is that of prescribed stress.
@@ -362,9 +369,22 @@ func (c *chain) finish(ctx context.Context) error {
 	found := c.f
 	c.stage("natural force density", "final pass")
 	ref := c.f.Position
-	steady := steadyLoads(s)
+	masts := freeMasts(s)
+	steady := steadyLoads(s) && len(masts) == 0
+	members := given(s, found.Force)
+	for _, k := range masts {
+		members.Force[k] = 0
+	}
 	for pass := 1; ; pass++ {
-		net, panels := network(s, load.Nodal(s, c.f.Position))
+		// A free mast pushes with the force found, along where it now stands.
+		loads := load.Nodal(s, c.f.Position)
+		for _, k := range masts {
+			e := s.Ends[k]
+			pull := r3.Scale(found.Force[k], r3.Unit(r3.Sub(c.f.Position[e[1]], c.f.Position[e[0]])))
+			loads[e[0]] = r3.Add(loads[e[0]], pull)
+			loads[e[1]] = r3.Sub(loads[e[1]], pull)
+		}
+		net, panels := network(s, loads)
 		for t := range panels {
 			// Of unequal warp and weft only the ratio is what was asked for;
 			// the magnitude is what Newton fitted.
@@ -374,7 +394,7 @@ func (c *chain) finish(ctx context.Context) error {
 		if err != nil {
 			return c.unsupported(err)
 		}
-		r, err := solver.Natural(ctx, ref, given(s, found.Force), 1)
+		r, err := solver.Natural(ctx, ref, members, 1)
 		if err != nil {
 			return c.unsupported(err)
 		}
@@ -384,15 +404,21 @@ func (c *chain) finish(ctx context.Context) error {
 		}
 		c.f = naturalForm(s, r)
 		c.f.Converged = true
+		for _, k := range masts {
+			c.f.Force[k] = found.Force[k]
+		}
 		// Loads that follow the shape are those of the last pass: repeat until
 		// that no longer matters.
-		if steady || move <= 1e-13*s.Size() || pass == 12 {
+		if steady || move <= 1e-13*s.Size() || pass == maxPasses {
 			c.used("natural force density")
 			c.say("fixed-reference pass: exact balance in all directions, residual %.1e", r.Residual)
 			return nil
 		}
 	}
 }
+
+// maxPasses bounds the passes of finish where loads follow the shape.
+const maxPasses = 40
 
 func equalStress(s *canopy.Structure) bool {
 	for _, st := range s.Stress {

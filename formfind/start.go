@@ -63,11 +63,8 @@ func network(s *canopy.Structure, loads []r3.Vec) (fdm.Network, []fdm.Panel) {
 // moves it later. Struts of given force density stay free.
 func startNetwork(s *canopy.Structure, loads []r3.Vec) (fdm.Network, []fdm.Panel) {
 	n, panels := network(s, loads)
-	for k, e := range s.Ends {
-		if !s.Kind[k].Pushes() || s.Law[k] == canopy.LawForceDensity {
-			continue
-		}
-		for _, i := range e {
+	for _, k := range freeMasts(s) {
+		for _, i := range s.Ends[k] {
 			if m := s.MasterOf(int(i)); m >= 0 {
 				i = m
 			}
@@ -75,6 +72,32 @@ func startNetwork(s *canopy.Structure, loads []r3.Vec) (fdm.Network, []fdm.Panel
 		}
 	}
 	return n, panels
+}
+
+// freeMasts lists the masts and struts whose force is not a force density and
+// not found from balance afterwards, with an end that may move. A linear step
+// would take such a force for a force density, which grows as the mast
+// shortens.
+func freeMasts(s *canopy.Structure) []int32 {
+	var list []int32
+	for k, e := range s.Ends {
+		if !s.Kind[k].Pushes() || s.Law[k] == canopy.LawForceDensity {
+			continue
+		}
+		if s.Law[k] == canopy.LawCable && s.Cables[s.CableOf[k]].Law == canopy.CableBalance {
+			continue
+		}
+		for _, i := range e {
+			if m := s.MasterOf(int(i)); m >= 0 {
+				i = m
+			}
+			if s.FixedAt(int(i)) != canopy.DirAll {
+				list = append(list, int32(k))
+				break
+			}
+		}
+	}
+	return list
 }
 
 // guessForces returns a force for every member to start from, in N: what is
