@@ -227,7 +227,7 @@ func (g *scene) supports() []int {
 	size := 0.012 * g.size
 	brass := g.material("support", footPaint, 0.8, false)
 	var nodes []int
-	onLine := make([]bool, len(s.Position))
+	onLine := make([]bool, len(s.Position)) // between the ends of a fixed line
 	for i := range s.Lines {
 		l := &s.Lines[i]
 		if l.Role == "seam" {
@@ -237,7 +237,7 @@ func (g *scene) supports() []int {
 		var total r3.Vec
 		for k, v := range l.Nodes {
 			points[k] = f.Position[v]
-			onLine[v] = true
+			onLine[v] = onLine[v] || k > 0 && k < len(l.Nodes)-1
 			if k == 0 || v != l.Nodes[0] {
 				total = r3.Add(total, f.Reaction[v])
 			}
@@ -273,7 +273,7 @@ func (g *scene) supports() []int {
 		held := s.FixedAt(i) != fixed
 		named := len(s.NodeName.Bytes(i)) > 0
 		switch {
-		case fixed == 0 && !held:
+		case fixed == 0 && !held, onLine[i]:
 		case named:
 			what := "support "
 			if fixed == 0 {
@@ -287,7 +287,7 @@ func (g *scene) supports() []int {
 				n.Extras.(map[string]any)["reaction_on_structure_N"] = upExtras(f.Reaction[i])
 			}
 			nodes = append(nodes, g.node(n))
-		case fixed != 0 && !onLine[i] && len(rest.corners) < 6*manyMembers:
+		case fixed != 0 && len(rest.corners) < 6*manyMembers:
 			rest.foot(f.Position[i], 0.5*size)
 		}
 	}

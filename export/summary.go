@@ -384,7 +384,7 @@ func (p *page) cables(r *canopy.Result) {
 		}
 		// The most loaded first when not all can be shown.
 		shown := chains
-		if len(shown) > mostCables {
+		if len(shown) > mostCables+3 { // three more are shown before they are counted
 			shown = slices.Clone(chains)
 			slices.SortStableFunc(shown, func(a, b int) int { return cmp.Compare(q.Cables[b].ForceMax, q.Cables[a].ForceMax) })
 			shown = shown[:mostCables]
@@ -549,8 +549,10 @@ func (p *page) audit(r *canopy.Result) {
 		p.wrap("  ", "stability: "+note)
 	case a.Unstable > 0:
 		p.wrap("  ", fmt.Sprintf("UNSTABLE in %s", plural(a.Unstable, "direction")))
+	case math.IsNaN(a.Softest):
+		p.wrap("  ", "stable")
 	default:
-		p.wrap("  ", fmt.Sprintf("stable; softest direction %s of the mean stiffness", tiny(a.Softest)))
+		p.wrap("  ", fmt.Sprintf("stable, firmness %s (0 would be on the brink)", figure(a.Softest)))
 	}
 	if len(r.Structure.Corners) > 0 && a.MinAngle > 0 {
 		line := fmt.Sprintf("smallest mesh angle %.1f°", degrees(a.MinAngle))
