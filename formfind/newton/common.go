@@ -255,6 +255,7 @@ func (v *Solver) startForces(start *canopy.Form) {
 		}
 		st.force[k] = t
 	}
+	v.firstForce = append(v.firstForce[:0], st.force...)
 }
 
 // fallbackForce is a tension of the right size for common k: the mean fabric

@@ -501,8 +501,9 @@ func (v *Solver) negativeOf(st *state, schur []float64) int {
 	return negativeEigenvalues(a, n)
 }
 
-// limitForces keeps the change of tensions within a factor of three and stops
-// them at zero, where an elastic cable goes slack.
+// limitForces keeps the change of tensions within a factor of three: a cable
+// that lets go at once takes the fabric with it. An elastic cable that is too
+// long at a thousandth of its first force goes slack.
 func (v *Solver) limitForces(st *state, change []float64) {
 	for k := range change {
 		if v.pushes(k) {
@@ -510,14 +511,13 @@ func (v *Solver) limitForces(st *state, change []float64) {
 		}
 		t := st.force[k]
 		to := t + change[k]
-		switch {
-		case v.cableOf(k).Law == canopy.CableElastic:
-			if t > 0 {
-				to = min(to, 3*t)
-			}
-			to = max(to, 0)
-		case t > 0:
+		if t > 0 {
 			to = min(max(to, t/3), 3*t)
+		} else {
+			to = max(to, 0)
+		}
+		if v.cableOf(k).Law == canopy.CableElastic && st.cond[k].gap < 0 && to < 1e-3*v.firstForce[k] {
+			to = 0
 		}
 		change[k] = to - t
 	}

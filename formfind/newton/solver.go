@@ -34,8 +34,9 @@ type Solver struct {
 	openEdges [][2]int32
 	active    []bool // member takes part (not of a CableBalance cable)
 
-	commons []common // cables of common force
-	comOf   []int32  // member → commons or −1
+	commons    []common  // cables of common force
+	firstForce []float64 // the forces they start from
+	comOf      []int32   // member → commons or −1
 
 	// Unknowns, for the classes at the last start.
 	cls     []class
