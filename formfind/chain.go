@@ -369,21 +369,16 @@ func (c *chain) finish(ctx context.Context) error {
 	found := c.f
 	c.stage("natural force density", "final pass")
 	ref := c.f.Position
-	masts := freeMasts(s)
-	steady := steadyLoads(s) && len(masts) == 0
+	masts := thrusts{s: s, masts: freeMasts(s)}
+	thrust := masts.of(found)
+	steady := steadyLoads(s) && len(thrust) == 0
 	members := given(s, found.Force)
-	for _, k := range masts {
+	for _, k := range masts.masts {
 		members.Force[k] = 0
 	}
 	for pass := 1; ; pass++ {
-		// A free mast pushes with the force found, along where it now stands.
 		loads := load.Nodal(s, c.f.Position)
-		for _, k := range masts {
-			e := s.Ends[k]
-			pull := r3.Scale(found.Force[k], r3.Unit(r3.Sub(c.f.Position[e[1]], c.f.Position[e[0]])))
-			loads[e[0]] = r3.Add(loads[e[0]], pull)
-			loads[e[1]] = r3.Sub(loads[e[1]], pull)
-		}
+		masts.load(loads, thrust)
 		net, panels := network(s, loads)
 		for t := range panels {
 			// Of unequal warp and weft only the ratio is what was asked for;
@@ -404,12 +399,13 @@ func (c *chain) finish(ctx context.Context) error {
 		}
 		c.f = naturalForm(s, r)
 		c.f.Converged = true
-		for _, k := range masts {
-			c.f.Force[k] = found.Force[k]
+		off := 0.0
+		if len(thrust) > 0 {
+			thrust, off = masts.correct(c.f, thrust)
 		}
 		// Loads that follow the shape are those of the last pass: repeat until
 		// that no longer matters.
-		if steady || move <= 1e-13*s.Size() || pass == maxPasses {
+		if steady || move <= 1e-13*s.Size() && off <= 1e-12 || pass == maxPasses {
 			c.used("natural force density")
 			c.say("fixed-reference pass: exact balance in all directions, residual %.1e", r.Residual)
 			return nil

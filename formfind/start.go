@@ -74,32 +74,6 @@ func startNetwork(s *canopy.Structure, loads []r3.Vec) (fdm.Network, []fdm.Panel
 	return n, panels
 }
 
-// freeMasts lists the masts and struts whose force is not a force density and
-// not found from balance afterwards, with an end that may move. A linear step
-// would take such a force for a force density, which grows as the mast
-// shortens.
-func freeMasts(s *canopy.Structure) []int32 {
-	var list []int32
-	for k, e := range s.Ends {
-		if !s.Kind[k].Pushes() || s.Law[k] == canopy.LawForceDensity {
-			continue
-		}
-		if s.Law[k] == canopy.LawCable && s.Cables[s.CableOf[k]].Law == canopy.CableBalance {
-			continue
-		}
-		for _, i := range e {
-			if m := s.MasterOf(int(i)); m >= 0 {
-				i = m
-			}
-			if s.FixedAt(int(i)) != canopy.DirAll {
-				list = append(list, int32(k))
-				break
-			}
-		}
-	}
-	return list
-}
-
 // guessForces returns a force for every member to start from, in N: what is
 // given, or what would hold a cable's sag against what pulls at it.
 func guessForces(s *canopy.Structure, x []r3.Vec) []float64 {
