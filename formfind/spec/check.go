@@ -452,23 +452,98 @@ func (d *drawn) ringUse() {
 	}
 }
 
+// hold is what keeps a point in place once the rest of the model is known.
+type hold struct {
+	fixed canopy.Freedom // directions of its support
+	held  bool
+}
+
+// settle decides for every point whether it is anchored, held or free, by the
+// rule that the key hold documents.
+func (d *drawn) settle() []hold {
+	n := len(d.m.Points)
+	heads, toFind := make([]bool, n), make([]bool, n)
+	for _, s := range d.m.Stays {
+		h, ok := d.point[stayHead(s)]
+		if !ok {
+			continue
+		}
+		heads[h] = true
+		if stayForceUnknown(s) {
+			toFind[h] = true
+		}
+	}
+	moves := make([]canopy.Freedom, n)
+	for _, r := range d.m.Rings {
+		if i, ok := d.point[r.At]; ok && r.Rigid {
+			moves[i] |= r.Free
+		}
+	}
+	out := make([]hold, n)
+	for i, p := range d.m.Points {
+		h := p.Hold
+		if h == canopy.HoldAuto {
+			switch {
+			case moves[i] != 0 || !heads[i]:
+				h = canopy.HoldAnchored
+			case toFind[i]:
+				h = canopy.HoldHeld
+			default:
+				h = canopy.HoldFree
+			}
+		}
+		switch h {
+		case canopy.HoldAnchored:
+			out[i].fixed = canopy.DirAll
+			if p.Fixed != 0 {
+				out[i].fixed = p.Fixed
+			}
+			out[i].fixed &^= moves[i]
+		case canopy.HoldHeld:
+			out[i].held = true
+		case canopy.HoldFree:
+			if moves[i] != 0 {
+				out[i].fixed = canopy.DirAll &^ moves[i]
+			}
+		}
+	}
+	return out
+}
+
+// stayHead names the point that a mast carries or a guy stays.
+func stayHead(s canopy.Stay) string {
+	if s.Mast {
+		return s.To
+	}
+	return s.From
+}
+
+func stayForceUnknown(s canopy.Stay) bool {
+	return !s.HasForce && s.Length == 0 && s.Unstressed == 0
+}
+
 // holds checks what keeps points in place against masts, guys, rings and
 // edges.
 func (d *drawn) holds() {
 	n := len(d.m.Points)
+	settled := d.settle()
 	stays := make([]int, n)     // masts and guys at each point
 	unknown := make([]int, n)   // those whose force is to be found
-	loose := make([]bool, n)    // free, or free to follow a ring
 	attached := make([]bool, n) // something other than a stay pulls
-	for i, p := range d.m.Points {
-		loose[i] = p.Hold == canopy.HoldFree
-	}
-	for _, r := range d.m.Rings {
-		if i, ok := d.point[r.At]; ok {
-			attached[i] = true
-			if r.Free != 0 && r.Rigid && d.m.Points[i].Hold == canopy.HoldAuto {
-				loose[i] = true
-			}
+	ringAt := map[int]string{}
+	for k, r := range d.m.Rings {
+		i, ok := d.point[r.At]
+		if !ok {
+			continue
+		}
+		attached[i] = true
+		at := d.ringAt[k]
+		if first, twice := ringAt[i]; twice {
+			d.r.fail(at.n, at.p.down("at"), fmt.Sprintf("rings %q and %q are at the same point %q", first, r.Name, r.At), "give each ring its own point")
+		}
+		ringAt[i] = r.Name
+		if r.Rigid && r.Free != 0 && d.m.Points[i].Hold == canopy.HoldHeld {
+			d.r.fail(at.n, at.p.down("free"), fmt.Sprintf("ring %q may move but its point %q is held", r.Name, r.At), "leave out free, or do not hold the point")
 		}
 	}
 	for k, e := range d.m.Edges {
@@ -478,16 +553,12 @@ func (d *drawn) holds() {
 				continue
 			}
 			attached[i] = true
-			if e.Kind == canopy.EdgeFixed && d.edgeHas[k] == "fixed" && d.m.Points[i].Hold == canopy.HoldFree {
+			if e.Kind == canopy.EdgeFixed && d.edgeHas[k] == "fixed" && !settled[i].held && settled[i].fixed == 0 {
 				d.r.fail(d.edgeAt[k].n, d.edgeAt[k].p, fmt.Sprintf("edge %q is fixed but its end %q is free", e.Name, name), "anchor the point, or make the edge a cable")
 			}
 		}
 	}
 	for k, s := range d.m.Stays {
-		what := "guy"
-		if s.Mast {
-			what = "mast"
-		}
 		i, ok1 := d.point[s.From]
 		j, ok2 := d.point[s.To]
 		if !ok1 || !ok2 {
@@ -495,34 +566,37 @@ func (d *drawn) holds() {
 		}
 		stays[i]++
 		stays[j]++
-		if s.HasForce || s.Length > 0 || s.Unstressed > 0 {
+		if !stayForceUnknown(s) {
 			continue
 		}
 		unknown[i]++
 		unknown[j]++
-		at := d.stayAt[k]
-		held := func(x int, head bool) bool {
-			h := d.m.Points[x].Hold
-			return h == canopy.HoldHeld || h == canopy.HoldAuto && head && !loose[x]
+		what, at := "guy", d.stayAt[k]
+		if s.Mast {
+			what = "mast"
 		}
+		loose := ""
 		for _, x := range [2]int{i, j} {
-			if loose[x] {
-				d.r.fail(at.n, at.p, fmt.Sprintf("%s %q has no force, and its end %q is free to move", what, s.Name, d.m.Points[x].Name), "give the force or the length, or hold the point: hold: held")
-				break
+			if !settled[x].held && settled[x].fixed != canopy.DirAll {
+				loose = d.m.Points[x].Name
 			}
 		}
-		if !loose[i] && !loose[j] && !held(i, !s.Mast) && !held(j, s.Mast) {
+		switch {
+		case loose != "":
+			d.r.fail(at.n, at.p, fmt.Sprintf("%s %q has no force, and its end %q is free to move", what, s.Name, loose), "give the force or the length, or hold the point: hold: held")
+		case !settled[i].held && !settled[j].held:
 			d.r.fail(at.n, at.p, fmt.Sprintf("%s %q has no force, and neither of its ends is held for it to balance", what, s.Name), "give its force, or hold its end: hold: held")
 		}
 	}
 	for i, p := range d.m.Points {
+		at := d.pointAt[i]
 		switch {
 		case p.Hold == canopy.HoldHeld && stays[i] == 0:
-			d.r.fail(d.pointAt[i].n, d.pointAt[i].p, fmt.Sprintf("point %q is held but no mast or guy is there to balance it", p.Name), "add a mast or guy, or anchor it: hold: anchored")
-		case p.Hold == canopy.HoldFree && !attached[i] && stays[i] == 0:
-			if d.used[i] {
-				d.r.fail(d.pointAt[i].n, d.pointAt[i].p, fmt.Sprintf("point %q is free but nothing is attached to it", p.Name), "attach an edge, a mast or a guy, or anchor it")
-			}
+			d.r.fail(at.n, at.p, fmt.Sprintf("point %q is held but no mast or guy is there to balance it", p.Name), "add a mast or guy, or anchor it: hold: anchored")
+		case p.Hold == canopy.HoldHeld && unknown[i] == 0:
+			d.r.fail(at.n, at.p, fmt.Sprintf("point %q is held but all its masts and guys have their forces, so that none can balance it", p.Name), "leave out the force of one of them, or let the point find its place: hold: free")
+		case p.Hold == canopy.HoldFree && !attached[i] && stays[i] == 0 && d.used[i]:
+			d.r.fail(at.n, at.p, fmt.Sprintf("point %q is free but nothing is attached to it", p.Name), "attach an edge, a mast or a guy, or anchor it")
 		}
 	}
 }
@@ -565,23 +639,11 @@ func (d *drawn) supported() {
 	n := len(d.m.Points)
 	set := newSets(n)
 	anchored := make([]bool, n)
-	head := make([]bool, n) // held by a mast or guy rather than anchored
+	for i, h := range d.settle() {
+		anchored[i] = h.fixed != 0
+	}
 	for _, s := range d.m.Stays {
-		h := s.From
-		if s.Mast {
-			h = s.To
-		}
-		head[d.point[h]] = true
 		set.join(d.point[s.From], d.point[s.To])
-	}
-	for i, p := range d.m.Points {
-		anchored[i] = p.Hold == canopy.HoldAnchored || p.Hold == canopy.HoldAuto && !head[i]
-	}
-	for _, r := range d.m.Rings {
-		i := d.point[r.At]
-		if r.Free != 0 && d.m.Points[i].Hold == canopy.HoldAuto {
-			anchored[i] = false
-		}
 	}
 	for _, e := range d.m.Edges {
 		i, j := d.point[e.From], d.point[e.To]

@@ -51,7 +51,7 @@ var pointSection = &section{id: "point", doc: "A named place.", keys: []*key{
 	{name: "x", shape: quantity(Length), required: true, example: "0", doc: "Coordinate x."},
 	{name: "y", shape: quantity(Length), required: true, example: "9.2", doc: "Coordinate y."},
 	{name: "z", shape: quantity(Length), required: true, example: "4500 mm", doc: "Height."},
-	{name: "hold", shape: word("anchored", "held", "free"), deflt: "held when it is the head of a mast or guy, free where a ring may move, else anchored", example: "held",
+	{name: "hold", shape: word("anchored", "held", "free"), deflt: "held at the head of a mast or guy whose force is to be found, free at a head where all forces are given, else anchored", example: "held",
 		doc: "What keeps the point in place. anchored: a support. held: the place is given, and the masts and guys that meet there balance it. free: the place is found, the one given is only the start."},
 	{name: "support", shape: wordList(directionWords...), deflt: "[x, y, z]", example: "[x, y]",
 		doc: "Directions in which the support of an anchored point reacts; it may move in the others."},
