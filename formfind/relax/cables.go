@@ -69,7 +69,7 @@ func (p *problem) addCables(x []r3.Vec) error {
 		cable := &p.s.Cables[g.index]
 		length := 0.0
 		for _, m := range g.members {
-			length += r3.Norm(r3.Sub(x[p.ends[m][1]], x[p.ends[m][0]]))
+			length += norm(r3.Sub(x[p.ends[m][1]], x[p.ends[m][0]]))
 			if g.base == 0 {
 				g.base = p.s.Given[p.src[m]]
 			}
@@ -111,7 +111,7 @@ func (p *problem) guessForce(g *sliding, length float64) float64 {
 					load = max(load, math.Abs(p.given[l.member]))
 				}
 			}
-			load += r3.Norm(p.lead[i])
+			load += norm(p.lead[i])
 		}
 	}
 	if count > 0 && stress > 0 {
@@ -191,7 +191,7 @@ func (st *state) stiffenCables() {
 					sum = r3.Add(sum, unit(r3.Sub(st.x[l.other], st.x[i])))
 				}
 			}
-			return r3.Norm(masked(sum, st.free[i]))
+			return norm(masked(sum, st.free[i]))
 		}
 		for _, i := range k.nodes {
 			v := seen(i)

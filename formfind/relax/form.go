@@ -37,7 +37,7 @@ func (st *state) form(frozen *canopy.Form) *canopy.Form {
 	}
 	for m, k := range st.src {
 		e := st.ends[m]
-		f.Force[k] = st.q[m] * r3.Norm(r3.Sub(st.x[e[1]], st.x[e[0]]))
+		f.Force[k] = st.q[m] * norm(r3.Sub(st.x[e[1]], st.x[e[0]]))
 	}
 	for t := range st.corners {
 		st.reportStress(t, f)

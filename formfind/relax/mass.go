@@ -82,13 +82,13 @@ func (st *state) leastMass(i int) float64 {
 func (st *state) stiffness(i int) (stiff, meet float64) {
 	x := st.x
 	load := r3.Add(st.lead[i], st.shapeLoad(i))
-	meet = r3.Norm(load)
+	meet = norm(load)
 	for _, c := range st.around[st.cornerAt[i]:st.cornerAt[i+1]] {
 		t := int(c.at >> 2)
 		next, prev := x[c.next], x[c.prev]
 		e := r3.Sub(prev, next)
 		if st.push != nil {
-			stiff += math.Abs(st.push[t]) * r3.Norm(e)
+			stiff += math.Abs(st.push[t]) * norm(e)
 		}
 		if t < st.uniforms {
 			f := &st.facets[t]
@@ -97,7 +97,7 @@ func (st *state) stiffness(i int) (stiff, meet float64) {
 			a, b := r3.Sub(x[i], prev), r3.Sub(next, x[i])
 			ee := r3.Norm2(e)
 			stiff += g * ee * excess(ee, r3.Norm2(a), r3.Norm2(b), r3.Dot(e, a), r3.Dot(a, b), r3.Dot(b, e))
-			meet += g * r3.Norm(f.twice) * math.Sqrt(ee)
+			meet += g * norm(f.twice) * math.Sqrt(ee)
 			continue
 		}
 		k := t - st.uniforms
@@ -105,7 +105,7 @@ func (st *state) stiffness(i int) (stiff, meet float64) {
 		at := c.at & 3
 		qo, qp := d[after[after[at]]], d[after[at]]
 		pull := r3.Add(r3.Scale(qo, r3.Sub(next, x[i])), r3.Scale(qp, r3.Sub(prev, x[i])))
-		meet += r3.Norm(pull)
+		meet += norm(pull)
 		qi := d[at]
 		geometric := math.Abs(qo) + math.Abs(qp)
 		if qo+qp > 0 && qi+qp > 0 && qi+qo > 0 {
@@ -118,7 +118,7 @@ func (st *state) stiffness(i int) (stiff, meet float64) {
 	}
 	for _, l := range st.links[st.linkAt[i]:st.linkAt[i+1]] {
 		q := math.Abs(st.q[l.member])
-		meet += q * r3.Norm(r3.Sub(x[l.other], x[i]))
+		meet += q * norm(r3.Sub(x[l.other], x[i]))
 		if st.law[l.member] == byStretch {
 			q = max(q, st.given[l.member]) // EA/L₀ bounds both directions
 		}
@@ -219,7 +219,7 @@ func (st *state) meetNorm() float64 {
 func (st *state) sharpest() (angle float64, triangle int) {
 	angle, triangle = math.Pi, -1
 	for t, c := range st.corners {
-		tw := r3.Norm(st.facets[t].twice)
+		tw := norm(st.facets[t].twice)
 		a := r3.Norm2(r3.Sub(st.x[c[1]], st.x[c[0]]))
 		b := r3.Norm2(r3.Sub(st.x[c[2]], st.x[c[1]]))
 		d := r3.Norm2(r3.Sub(st.x[c[0]], st.x[c[2]]))

@@ -4,6 +4,8 @@ import (
 	"math"
 
 	"gonum.org/v1/gonum/spatial/r3"
+
+	"anticlast/formfind/canopy"
 )
 
 // state is a problem on its way to rest.
@@ -169,7 +171,7 @@ func (st *state) pullWeighted(t int, x [3]r3.Vec) {
 		st.density[k] = ft.Densities(s)
 	case woven:
 		twice := st.facets[t].twice
-		l := r3.Norm(twice)
+		l := norm(twice)
 		st.density[k] = [3]float64{}
 		if !(l > 0) {
 			return
@@ -259,7 +261,7 @@ func (st *state) shapeLoad(i int) (f r3.Vec) {
 			f.Z += p * tw.Z
 		}
 		if st.drape != nil {
-			f.Z -= st.drape[t] * r3.Norm(tw)
+			f.Z -= st.drape[t] * norm(tw)
 		}
 	}
 	if st.hang != nil {
@@ -273,7 +275,7 @@ func (st *state) shapeLoad(i int) (f r3.Vec) {
 // project leaves of v what moves node i in its mode; area is the sum of the
 // vector areas around it.
 func (st *state) project(i int, v, area r3.Vec) r3.Vec {
-	if f := st.free[i]; f != 7 {
+	if f := st.free[i]; f != canopy.DirAll {
 		v = masked(v, f)
 		area = masked(area, f)
 	}
@@ -303,9 +305,17 @@ func (st *state) move(keep, push float64) sums {
 			}
 			f, area := st.nodal(i)
 			v := st.v[i]
-			if st.mode[i] != every || st.free[i] != 7 {
+			if st.free[i] != canopy.DirAll || st.mode[i] == across {
 				f = st.project(i, f, area)
 				v = st.project(i, v, area)
+			} else if st.mode[i] == normal {
+				// As project does, with the normal's length found once.
+				inv := 0.0
+				if n2 := r3.Norm2(area); n2 > 0 {
+					inv = 1 / n2
+				}
+				f = r3.Scale(inv*r3.Dot(f, area), area)
+				v = r3.Scale(inv*r3.Dot(v, area), area)
 			}
 			st.step(i, f, v, keep, push, &s)
 		}

@@ -131,7 +131,7 @@ func compile(s *canopy.Structure, start []r3.Vec, form *canopy.Form, all bool) (
 	p := &problem{s: s, n: n}
 	lo, hi := canopy.Bounds(start)
 	p.origin = r3.Scale(0.5, r3.Add(lo, hi))
-	p.size = r3.Norm(r3.Sub(hi, lo))
+	p.size = norm(r3.Sub(hi, lo))
 	if !(p.size > 0) || math.IsInf(p.size, 0) {
 		return nil, nil, fmt.Errorf("all nodes are in one place")
 	}
@@ -207,7 +207,7 @@ func (p *problem) addMembers(form *canopy.Form) error {
 		law, given, rest := byDensity, s.Given[k], 0.0
 		switch {
 		case form != nil:
-			l := r3.Norm(r3.Sub(form.Position[e[1]], form.Position[e[0]]))
+			l := norm(r3.Sub(form.Position[e[1]], form.Position[e[0]]))
 			if !(l > 0) {
 				return fmt.Errorf("member %s has no length", name())
 			}
@@ -462,7 +462,7 @@ func (p *problem) addWeights() {
 		if l0 := at(s.Unstressed, k); l0 > 0 || leftOut(s, k) {
 			if l0 <= 0 {
 				// Between points that are held: its length does not change.
-				l0 = r3.Norm(r3.Sub(s.Position[e[1]], s.Position[e[0]]))
+				l0 = norm(r3.Sub(s.Position[e[1]], s.Position[e[0]]))
 			}
 			p.lead[e[0]].Z -= w * l0 / 2
 			p.lead[e[1]].Z -= w * l0 / 2
