@@ -47,7 +47,7 @@ type magnitudes struct {
 
 const (
 	// smoothness weighs the gradient of the magnitude against the balance.
-	smoothness = 1e-4
+	smoothness = 3e-4
 	// trace holds what the balance says nothing about near one.
 	traceWeight = 1e-8
 	// leastShare keeps fitted stresses in tension.
@@ -220,7 +220,9 @@ func (v *Solver) fit(ctx context.Context, st *state) error {
 	for k := range values {
 		values[k] = 0
 	}
-	scale := 0.0
+	// Balance and gradient are weighed by the magnitude of the last fit, so
+	// that they are relative where the stress is low.
+	level, count := make([]float64, len(s.Position)), make([]float64, len(s.Position))
 	for t, c := range s.Corners {
 		if g.corner[t][0] < 0 {
 			continue
@@ -244,8 +246,11 @@ func (v *Solver) fit(ctx context.Context, st *state) error {
 		}
 		// Gradient penalty: smoothness·(σA)²|∇s|².
 		q := 0.5 * (p[0] + p[1]) * tri.Area
-		w := smoothness * q * q
-		scale += q
+		w := smoothness * q * q / (g.triangle[t] * g.triangle[t])
+		for _, i := range c {
+			level[i] += g.triangle[t]
+			count[i]++
+		}
 		for k := range 3 {
 			l := (k + 1) % 3
 			values[g.corner[t][k]] += w * r3.Norm2(tri.Edge[k]) / (4 * tri.Area * tri.Area)
@@ -274,10 +279,15 @@ func (v *Solver) fit(ctx context.Context, st *state) error {
 		from, to := int(g.rows[r]), int(g.rows[r+1])
 		k := g.unknowns + int(g.rowPair[r])
 		b := mask(fixed, rest[i])
+		weight := 1.0
+		if level[i] > 0 {
+			weight = count[i] / level[i]
+			weight *= weight
+		}
 		for a := from; a < to; a++ {
-			fa := mask(fixed, acts[a])
+			fa := r3.Scale(weight, mask(fixed, acts[a]))
 			u := g.column[a]
-			values[u] += r3.Norm2(fa)
+			values[u] += r3.Dot(fa, acts[a])
 			right[u] -= r3.Dot(fa, b)
 			for c := a + 1; c < to; c++ {
 				values[k] += r3.Dot(fa, acts[c])

@@ -58,7 +58,7 @@ func TestConesOfConstantRatio(t *testing.T) {
 		sizes = []int{12, 24, 48, 96}
 	}
 	for _, k := range []struct{ h, m, law, ratio float64 }{
-		{1, 0.5, 0.01, 0.002}, {2, 0.5, 0.02, 0.003}, {3, 1.0 / 3, 0.02, 0.004}, {0.5, 2, 0.08, 0.005}, {0.3, 3, 0.15, 0.006},
+		{1, 0.5, 0.01, 0.002}, {2, 0.5, 0.02, 0.003}, {3, 1.0 / 3, 0.02, 0.004}, {0.5, 2, 0.08, 0.012}, {0.3, 3, 0.15, 0.02},
 	} {
 		t.Run(fmt.Sprintf("h=%g m=%.3g", k.h, k.m), func(t *testing.T) {
 			var place []float64
