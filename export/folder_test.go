@@ -226,7 +226,7 @@ func TestEveryFormatCarriesTheCautionAndRepeats(t *testing.T) {
 			}
 			require.NoError(t, f.Write(background, &b, r, Options{}), f.Name)
 			require.True(t, bytes.Equal(a.Bytes(), b.Bytes()), f.Name)
-			if f.Name != "png" {
+			if f.Name != "png" && f.Name != "handover" { // compressed
 				text := strings.Join(strings.Fields(a.String()), " ")
 				require.Contains(t, text, "reliminary design only", f.Name)
 			}

@@ -44,6 +44,7 @@ func Formats() []Format {
 		{"triangles", "triangles.csv", ".csv", "table of fabric triangles with stresses", writeTriangles},
 		{"reactions", "reactions.csv", ".csv", "table of reactions and actions on foundations", writeReactions},
 		{"summary", "summary.txt", ".txt", "what was found, to read in ten seconds", writeSummary},
+		{"handover", "handover.zip", ".zip", "everything an analysis engineer needs to rebuild the structure", writeHandover},
 		{"dxf", "form.dxf", ".dxf", "CAD drawing with layers, names and forces (DXF release 12)", writeDXF},
 		{"obj", "form.obj", ".obj", "mesh and cables for modelling programs", writeOBJ},
 		{"stl", "form.stl", ".stl", "fabric for printers and mesh tools", writeSTL},
