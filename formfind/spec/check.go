@@ -601,11 +601,24 @@ func (d *drawn) holds() {
 	}
 }
 
+// unusedPoints warns of points that nothing refers to, and of those that were
+// perhaps meant to be one.
 func (d *drawn) unusedPoints() {
 	for i, p := range d.m.Points {
 		if !d.used[i] {
 			d.r.warn(d.pointAt[i].n, d.pointAt[i].p, fmt.Sprintf("point %q is not used", p.Name), "remove it, or use it in an edge")
 		}
+	}
+	first := make(map[r3.Vec]int, len(d.m.Points))
+	for i, p := range d.m.Points {
+		if !d.used[i] {
+			continue
+		}
+		if j, twice := first[p.At]; twice {
+			d.r.warn(d.pointAt[i].n, d.pointAt[i].p, fmt.Sprintf("point %q is at the same place as %q, but not connected to it", p.Name, d.m.Points[j].Name), "use one point for both")
+			continue
+		}
+		first[p.At] = i
 	}
 }
 

@@ -283,7 +283,9 @@ func (r *reader) syntax(err error) Diagnostic {
 	case strings.Contains(m, "did not find expected '-' indicator"):
 		d.Message, d.Hint = fmt.Sprintf("%q does not fit the list above", d.Text), "start each entry with -, indented alike"
 	case strings.Contains(m, "unexpected end of stream"):
-		d.Message, d.Hint = fmt.Sprintf("the quoted text that starts in line %d is not closed", le.ContextMark.Line), "add the closing quote"
+		d.Line, d.Column = le.ContextMark.Line, le.ContextMark.Column
+		d.Text = clip(strings.TrimSpace(r.line(d.Line)))
+		d.Message, d.Hint = fmt.Sprintf("a quoted text in %q is not closed", d.Text), "add the closing quote"
 	case strings.Contains(m, "unknown anchor"):
 		d.Message, d.Hint = m, "define it with & before it is used with *"
 	case strings.Contains(m, "max depth"):

@@ -255,6 +255,12 @@ func TestWarnings(t *testing.T) {
 	require.Contains(t, got[1], "a prestress of 2000 kN/m is more than any fabric carries")
 	require.Contains(t, got[2], `a fabric of "10" is heavier than any`)
 	require.Contains(t, got[3], `ring "top" is in no fabric`)
+
+	got = nil
+	text = strings.NewReplacer("  D: ", "  E: [0, 0, 3]\n  D: ", "fabrics:", "  EC: {from: E, to: C, cable: {force: 1}}\nfabrics:").Replace(sail)
+	_, err = spec.Read(context.Background(), spec.Input(strings.NewReader(text), "."), spec.Options{Warn: func(d spec.Diagnostic) { got = append(got, d.String()) }})
+	require.NoError(t, err)
+	require.Equal(t, []string{`-:6:3: point "E" is at the same place as "A", but not connected to it; use one point for both`}, got)
 }
 
 func TestDigestCoversAllBytesRead(t *testing.T) {
