@@ -78,7 +78,7 @@ func (c *chain) net(ctx context.Context) error {
 	} else if err := c.aim(ctx, q); err != nil {
 		return err
 	}
-	return c.iterate(ctx, true)
+	return c.iterate(ctx, true, func(context.Context) error { return nil })
 }
 
 // aim improves the start of a net by a few linear steps whose force densities
@@ -199,45 +199,85 @@ func (c *chain) warmStart() *canopy.Form {
 	return f
 }
 
-// iterate runs Newton, and relaxation where Newton does not get there.
-func (c *chain) iterate(ctx context.Context, all bool) error {
-	set := engine.Settings{AllDirections: all, Progress: c.o.Progress, Recorder: c.o.Recorder}
-	if c.o.Method == MethodRelax {
-		return c.relax(ctx, set)
-	}
-	f, out, err := newton.Engine{}.Find(ctx, c.s, c.f, set)
+// newton runs Newton from the shape so far and keeps its shape if it converged;
+// otherwise it returns why not.
+func (c *chain) newton(ctx context.Context, all bool) (why string, err error) {
+	f, out, err := newton.Engine{}.Find(ctx, c.s, c.f, c.settings(all))
 	if err != nil {
-		return fmt.Errorf("newton: %w", err)
+		return "", fmt.Errorf("newton: %w", err)
 	}
-	if out.Status == engine.Converged {
-		c.f = f
-		c.f.Converged = true
-		c.used("newton")
-		c.say("Newton%s: %d iterations to a residual of %.1e", directions(all), out.Iterations, out.Residual)
-		return nil
+	if out.Status != engine.Converged {
+		c.say("Newton%s %s after %d iterations: %s", directions(all), out.Status, out.Iterations, out.Why)
+		return out.Why, nil
 	}
-	c.say("Newton%s %s after %d iterations: %s", directions(all), out.Status, out.Iterations, out.Why)
-	first := out
-	if err := c.relax(ctx, set); err != nil {
+	c.f, c.f.Converged = f, true
+	c.used("newton")
+	c.say("Newton%s: %d iterations to a residual of %.1e", directions(all), out.Iterations, out.Residual)
+	return "", nil
+}
+
+// iterate runs Newton from one start after the other, and relaxation where
+// Newton does not get there.
+func (c *chain) iterate(ctx context.Context, all bool, starts ...func(context.Context) error) error {
+	first := ""
+	for _, start := range starts {
+		err := start(ctx)
+		var collapsed *fdm.ReferenceError
+		if errors.As(err, &collapsed) {
+			c.say("that start collapsed: %v", collapsed)
+			continue
+		}
+		if err != nil {
+			return err
+		}
+		if c.o.Method == MethodRelax {
+			break
+		}
+		why, err := c.newton(ctx, all)
+		if err != nil || why == "" {
+			return err
+		}
+		if first == "" {
+			first = why + "; "
+		}
+	}
+	var limit *NoEquilibriumError
+	if len(c.s.Corners) > 0 && c.o.Method == MethodAuto {
+		done, met, err := c.walk(ctx)
+		if err != nil || done {
+			return err
+		}
+		limit = met
+	}
+	if c.f == nil {
+		var err error
+		if c.f, err = c.linear(ctx, guessDensities(c.s, c.s.Position, guessForces(c.s, c.s.Position))); err != nil {
+			return err
+		}
+	}
+	if err := c.relax(ctx, c.settings(all)); err != nil {
 		return err
 	}
-	if c.f.Converged {
-		// Relaxation ends where its damping lets it; Newton takes the rest.
-		f, out, err := newton.Engine{}.Find(ctx, c.s, c.f, set)
-		if err != nil {
-			return fmt.Errorf("newton: %w", err)
+	if !c.f.Converged {
+		if limit != nil {
+			limit.Tried = c.did
+			return limit
 		}
-		if out.Status == engine.Converged {
-			c.f, c.f.Converged = f, true
-			c.used("newton")
-			c.say("Newton%s: %d iterations to a residual of %.1e", directions(all), out.Iterations, out.Residual)
+		return &NoEquilibriumError{
+			Text:  fmt.Sprintf("no shape in equilibrium was found: %srelaxation: %s", first, c.f.Why),
+			Tried: c.did,
 		}
+	}
+	if c.o.Method == MethodRelax {
 		return nil
 	}
-	return &NoEquilibriumError{
-		Text:  fmt.Sprintf("no shape in equilibrium was found: %s; relaxation: %s", first.Why, c.f.Why),
-		Tried: c.did,
-	}
+	// Relaxation ends where its damping lets it; Newton takes the rest.
+	_, err := c.newton(ctx, all)
+	return err
+}
+
+func (c *chain) settings(all bool) engine.Settings {
+	return engine.Settings{AllDirections: all, Progress: c.o.Progress, Recorder: c.o.Recorder}
 }
 
 func directions(all bool) string {
@@ -268,25 +308,28 @@ func (c *chain) fabric(ctx context.Context) error {
 		elastic = elastic || s.Fabrics[i].Elastic
 	}
 	force := guessForces(s, s.Position)
+	var starts []func(context.Context) error
 	if c.o.Warm != nil && len(c.o.Warm.Position) == len(s.Position) {
-		c.f = c.warmStart()
-	} else {
-		if c.o.Listed {
-			if kept, err := c.givenShape(ctx); kept || err != nil {
-				return err
-			}
+		starts = append(starts, func(context.Context) error { c.f = c.warmStart(); return nil })
+	}
+	if soundMesh(s) {
+		starts = append(starts, func(ctx context.Context) error { return c.natural(ctx, force, true) })
+	}
+	starts = append(starts, func(ctx context.Context) error { return c.natural(ctx, force, false) })
+	if elastic {
+		// Newton's tangent is that of prescribed stress.
+		if err := starts[0](ctx); err != nil {
+			return err
 		}
-		if err := c.natural(ctx, force); err != nil {
+		return c.relax(ctx, c.settings(true))
+	}
+	if c.o.Listed {
+		if kept, err := c.givenShape(ctx); kept || err != nil {
 			return err
 		}
 	}
-	if elastic {
-		// Newton's tangent is that of prescribed stress.
-		return c.relax(ctx, engine.Settings{AllDirections: true, Progress: c.o.Progress, Recorder: c.o.Recorder})
-	}
 	equal := equalStress(s)
-	first := c.f
-	err := c.iterate(ctx, false)
+	err := c.iterate(ctx, false, starts...)
 	var none *NoEquilibriumError
 	switch {
 	case err == nil:
@@ -294,7 +337,9 @@ func (c *chain) fabric(ctx context.Context) error {
 		// The ratio could not be held everywhere. The shape of the natural
 		// updates is in balance with the stress it reports; the report says
 		// how far that is from what was asked.
-		c.f = first
+		if err := c.natural(ctx, force, soundMesh(s)); err != nil {
+			return err
+		}
 		for t, w := range s.Stress {
 			c.f.Stress[t] = canopy.Stress{Warp: w[0], Weft: w[1]}
 		}
@@ -309,11 +354,12 @@ func (c *chain) fabric(ctx context.Context) error {
 	return c.finish(ctx)
 }
 
-// natural is the first linear step and the fixed few updates.
-func (c *chain) natural(ctx context.Context, force []float64) error {
+// natural is a fixed few updates from the nodes as drawn, or from the linear
+// step, which does not depend on them.
+func (c *chain) natural(ctx context.Context, force []float64, drawn bool) error {
 	s := c.s
 	ref := s.Position
-	if !soundMesh(s) {
+	if !drawn {
 		f, err := c.linear(ctx, guessDensities(s, s.Position, force))
 		if err != nil {
 			return err

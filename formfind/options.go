@@ -42,6 +42,10 @@ type Options struct {
 	// Warm is a Form of the same structure, perhaps with other positions or
 	// prestress, from which to start instead of from force densities.
 	Warm *canopy.Form
+	// Listed says that the positions of the structure's free nodes mean
+	// something: if they are an equilibrium themselves, and an unstable one,
+	// that is what is returned, not trusted. [Find] sets it for listed models.
+	Listed bool
 	// Progress, if set, is called now and then.
 	Progress func(engine.Step)
 	// Recorder, if set, records every iteration of every engine.

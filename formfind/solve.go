@@ -22,6 +22,7 @@ func Find(ctx context.Context, m *canopy.Model, o Options) (*canopy.Result, erro
 	if err != nil {
 		return nil, err
 	}
+	o.Listed = o.Listed || m.Listed != nil
 	return solve(ctx, s, m, o)
 }
 
