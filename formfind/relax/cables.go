@@ -32,6 +32,7 @@ type sliding struct {
 	// Secant of ln(sag) over ln(force).
 	lastForce, lastSag, slope float64
 	changes                   int
+	seenSag                   float64 // at the last place of rest
 }
 
 func (p *problem) addCables(x []r3.Vec) error {
@@ -252,19 +253,22 @@ func (st *state) adjustCables(eta float64) {
 		case canopy.CableSag:
 			sag := st.sag(g)
 			e := math.Log(max(sag, 1e-6) / g.value)
-			if eta > 0.05*math.Abs(e) {
+			// Not before the canopy has answered to the last change.
+			drift := math.Log(max(sag, 1e-6) / max(g.seenSag, 1e-6))
+			g.seenSag = sag
+			if eta > 0.05*math.Abs(e) || math.Abs(drift) > 0.05*math.Abs(e) {
 				break
 			}
 			if g.changes > 0 {
 				if d := math.Log(g.force / g.lastForce); math.Abs(d) > 1e-12 {
 					if m := math.Log(max(sag, 1e-6)/g.lastSag) / d; !math.IsNaN(m) {
-						g.slope = min(max(m, -3), -0.3)
+						g.slope = min(max(m, -2), -0.5)
 					}
 				}
 			}
 			g.lastForce, g.lastSag = g.force, max(sag, 1e-6)
 			g.changes++
-			g.force *= math.Exp(min(max(-e/g.slope, -0.7), 0.7))
+			g.force *= math.Exp(min(max(-e/g.slope, -0.4), 0.4))
 		}
 	}
 }

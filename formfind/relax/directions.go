@@ -41,7 +41,7 @@ func (p *problem) chooseDirections(x []r3.Vec, all bool) {
 		case all:
 			p.mode[i] = every
 		default:
-			p.mode[i] = p.modeOf(i, sides)
+			p.mode[i] = p.modeOf(i, sides, x)
 		}
 		if p.mode[i] == every && p.linkAt[i] == p.linkAt[i+1] && p.cornerAt[i] == p.cornerAt[i+1] {
 			p.mode[i] = still // attached to nothing
@@ -49,7 +49,7 @@ func (p *problem) chooseDirections(x []r3.Vec, all bool) {
 	}
 }
 
-func (p *problem) modeOf(i int, sides [][]int32) mode {
+func (p *problem) modeOf(i int, sides [][]int32, x []r3.Vec) mode {
 	fabric := p.cornerAt[i+1] > p.cornerAt[i]
 	for _, c := range p.around[p.cornerAt[i]:p.cornerAt[i+1]] {
 		if p.triLaw[c.at>>2] >= elastic {
@@ -78,7 +78,7 @@ func (p *problem) modeOf(i int, sides [][]int32) mode {
 	if len(ends) != 2 || len(links) == 1 || len(links) > 2 {
 		return every
 	}
-	if len(links) == 2 && !p.slides(links[0].member, links[1].member) {
+	if len(links) == 2 && !p.slides(x, i, links[0], links[1]) {
 		return every
 	}
 	if !fabric && (p.lead[i] != (r3.Vec{}) || p.hang != nil) {
@@ -88,19 +88,24 @@ func (p *problem) modeOf(i int, sides [][]int32) mode {
 	return across
 }
 
-// slides reports whether two members carry one constant force, so that the
-// node between them may be anywhere along the line.
-func (p *problem) slides(a, b int32) bool {
-	if p.law[a] != p.law[b] {
+// slides reports whether two members carry one given force, so that the node
+// between them may be anywhere along the line: members of one cable, or
+// members of the same force in about the same direction.
+func (p *problem) slides(x []r3.Vec, i int, a, b link) bool {
+	given := func(m int32) bool { return p.law[m] == byForce || p.law[m] == byCable }
+	if !given(a.member) || !given(b.member) {
 		return false
 	}
-	switch p.law[a] {
-	case byForce:
-		return p.given[a] == p.given[b]
-	case byCable:
-		return p.s.CableOf[p.src[a]] == p.s.CableOf[p.src[b]]
+	if of := p.s.CableOf; of != nil {
+		if c := of[p.src[a.member]]; c >= 0 && c == of[p.src[b.member]] {
+			return true
+		}
 	}
-	return false
+	t, u := p.given[a.member], p.given[b.member]
+	if p.law[a.member] != byForce || p.law[b.member] != byForce || math.Abs(t-u) > 1e-6*math.Abs(t) {
+		return false
+	}
+	return r3.Dot(unit(r3.Sub(x[i], x[a.other])), unit(r3.Sub(x[b.other], x[i]))) > 0.5
 }
 
 // sides returns for each node of fabric its neighbours along sides that are

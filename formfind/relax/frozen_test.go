@@ -118,11 +118,10 @@ func TestDisturbIsRepeatableAndKeepsSupports(t *testing.T) {
 
 // The same bytes whatever the number of workers.
 func TestSameBitsForAnyNumberOfWorkers(t *testing.T) {
-	c := cases.FourPoint(10, 4, 2000, 20000, 0.1, 96)
-	start := linearStart(c.S, 2)
+	c := cases.FourPoint(10, 4, 2000, 20000, 0.1, 80)
 	set := engine.Settings{MaxIterations: 60}
 	find := func() *canopy.Form {
-		f, _, err := relax.New().Find(context.Background(), c.S, start, set)
+		f, _, err := relax.New().Find(context.Background(), c.S, nil, set)
 		require.NoError(t, err)
 		return f
 	}
