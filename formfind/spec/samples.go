@@ -18,7 +18,7 @@ type Sample struct {
 
 var samplePurposes = []Sample{
 	{Name: "sail", Purpose: "a four-point sail with edge cables"},
-	{Name: "cone", Purpose: "a high point with a ring, corner masts and guys"},
+	{Name: "cone", Purpose: "a high point with a ring, corners on masts with guys"},
 	{Name: "arch", Purpose: "a vault on three arches"},
 	{Name: "ridge", Purpose: "two fabrics with a ridge cable between them"},
 	{Name: "net", Purpose: "an orthogonal cable net with edge cables"},
