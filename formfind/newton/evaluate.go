@@ -9,6 +9,9 @@ import (
 	"anticlast/formfind/element"
 )
 
+// ulp is the spacing of numbers next to one.
+const ulp = 0x1p-52
+
 // tension is the state of member m at the given length.
 func (v *Solver) tension(m int, length float64, common []float64) element.Tension {
 	s := v.s
@@ -58,7 +61,7 @@ func (v *Solver) evaluate(st *state) {
 		st.pull[i] = l
 		st.size[i] = norm(l)
 	}
-	energy := 0.0
+	energy, noise, noise2 := 0.0, 0.0, 0.0
 	for i := range at {
 		if s.Load != nil {
 			energy -= r3.Dot(s.Load[i], r3.Sub(at[i], s.Position[i]))
@@ -75,7 +78,13 @@ func (v *Solver) evaluate(st *state) {
 				continue
 			}
 		}
-		f := v.tension(m, l, st.force)
+		f := v.tensionOf(st, m, l)
+		if s.Law[m] == canopy.LawElastic {
+			// What rounding of positions does to the force of a stiff member.
+			d := f.Stiffness * ulp * (norm(at[e[0]]) + norm(at[e[1]]))
+			noise2 += d * d
+			noise = max(noise, d)
+		}
 		energy += f.Energy
 		p := r3.Scale(f.Force, t)
 		st.pull[e[0]] = r3.Add(st.pull[e[0]], p)
@@ -201,6 +210,7 @@ func (v *Solver) evaluate(st *state) {
 	}
 	st.eta = ratio(math.Sqrt(r2), math.Sqrt(s2))
 	st.worst = ratio(math.Sqrt(st.worst), most)
+	st.noise, st.noiseWorst = 2*ratio(math.Sqrt(noise2), math.Sqrt(s2)), 4*ratio(noise, most)
 	m2 := st.eta * st.eta
 	for c := range v.commons {
 		g := st.cond[c].gap / st.cond[c].scale
@@ -239,7 +249,7 @@ func (v *Solver) assemble(st *state) {
 		if !ok {
 			continue
 		}
-		k := element.MemberTangent(t, l, v.tension(m, l, st.force))
+		k := element.MemberTangent(t, l, v.tensionOf(st, m, l))
 		v.addOwn(st, i, &k)
 		v.addOwn(st, j, &k)
 		k.Scale(-1)

@@ -64,11 +64,17 @@ func (v *Solver) measure(at []r3.Vec) error {
 // before the last, exact, run; each time the shape moves less.
 const fits = 3
 
-// rounds iterates to balance. For unequal stress it alternates with fits of the
+// rounds iterates to balance, after an approach where members are elastic. For unequal stress it alternates with fits of the
 // magnitude; the shape returned is in balance, along the normals, with the
 // magnitude returned.
-func (v *Solver) rounds(ctx context.Context, set engine.Settings) (engine.Outcome, error) {
+func (v *Solver) rounds(ctx context.Context, set engine.Settings, start *canopy.Form) (engine.Outcome, error) {
 	first := 0
+	if v.hasElastic() {
+		var err error
+		if first, err = v.approach(ctx, set, start, 0); err != nil {
+			return engine.Outcome{NegativePivots: -1}, err
+		}
+	}
 	if v.uneven {
 		for t := range v.s.Corners {
 			c := v.s.Corners[t]
@@ -130,12 +136,12 @@ func (v *Solver) iterate(ctx context.Context, set engine.Settings, first int) (e
 		}
 		move := v.largestMove(&v.now, st.u)
 		out.Move = move / size
-		if v.now.eta <= set.Residual && v.now.worst <= set.Worst && v.gapsMet(set.Residual) && out.Move <= set.Move {
+		if v.now.eta <= max(set.Residual, v.now.noise) && v.now.worst <= max(set.Worst, v.now.noiseWorst) && v.gapsMet(set.Residual) && out.Move <= set.Move {
 			out.Status = engine.Converged
 			out.NegativePivots, err = v.negative(ctx)
 			return out, err
 		}
-		if it == set.MaxIterations {
+		if it >= set.MaxIterations {
 			out.Status = engine.Stalled
 			out.Why = fmt.Sprintf("not in balance after %d steps: residual %.2g of the forces that meet (wanted %.2g), largest at node %s", it, v.now.eta, set.Residual, v.s.NodeName.At(int(v.now.worstAt)))
 			out.NegativePivots, err = v.negative(ctx)

@@ -70,7 +70,9 @@ func TestWire(t *testing.T) {
 		{1e4, 5e3, 0.6662582198, 18927.326276},
 	} {
 		c := cases.Wire(5, 1e6, v.n0, v.p)
-		f, out := find(t, c.S, nil)
+		f, out, err := newton.Engine{}.Find(ctx, c.S, nil, engine.Settings{Residual: 1e-12, Worst: 1e-11})
+		require.NoError(t, err)
+		require.Equal(t, engine.Converged, out.Status, out.Why)
 		assert.InDelta(t, -v.sag, f.Position[2].Z, 2e-10)
 		assert.InEpsilon(t, v.force, f.Force[0], 1e-9)
 		t.Log(out.Iterations, "steps")
@@ -97,6 +99,81 @@ func TestElasticCatenary(t *testing.T) {
 			t.Log(out.Iterations, "steps", miss[len(miss)-1])
 		}
 		assert.Greater(t, math.Log2(miss[0]/miss[1]), 1.8)
+	}
+}
+
+// A chain that hardly stretches is found in as few steps as a soft one, and is
+// the inextensible catenary: span 100, length 105: a = 91.9639630037, sag
+// 13.9304206592, H = w·a (recomputed from 2a·sinh(l/2a) = S). With supports 20
+// apart in level and length 110: a = 72.288087476.
+func TestStiffChain(t *testing.T) {
+	for _, ea := range []float64{1e6, 1e8, 1e10} {
+		c := cases.HangingChain(100, 0, 105, ea, 10, 60)
+		f, out, err := newton.Engine{}.Find(ctx, c.S, nil, engine.Settings{})
+		require.NoError(t, err)
+		require.Equal(t, engine.Converged, out.Status, out.Why)
+		assert.LessOrEqual(t, out.Iterations, 8)
+		if ea > 1e7 {
+			assert.InEpsilon(t, 10*91.9639630037, f.Reaction[60].X, 3e-4)
+			assert.InEpsilon(t, -13.9304206592, f.Position[30].Z, 4e-4)
+		}
+	}
+	c := cases.HangingChain(100, 20, 110, 1e9, 10, 60)
+	f, out, err := newton.Engine{}.Find(ctx, c.S, nil, engine.Settings{})
+	require.NoError(t, err)
+	require.Equal(t, engine.Converged, out.Status, out.Why)
+	assert.InEpsilon(t, 10*72.288087476, f.Reaction[60].X, 3e-4)
+}
+
+// The parabola of a cable under equal loads at equal horizontal distances,
+// H = wL²/8f: force densities q leave nodes at equal distances in plan and
+// give z_i = −P·i·(n−i)/(2q) exactly (Schek 1974).
+func TestLoadedForceDensityCable(t *testing.T) {
+	const n, q, p = 10, 5.0, 3.0
+	s := &canopy.Structure{}
+	for i := range n + 1 {
+		s.Position = append(s.Position, r3.Vec{X: float64(i * i)})
+		s.Fixed = append(s.Fixed, 0)
+		s.Load = append(s.Load, r3.Vec{Z: -p})
+		if i > 0 {
+			s.Ends = append(s.Ends, [2]int32{int32(i - 1), int32(i)})
+			s.Kind, s.Law, s.Given = append(s.Kind, canopy.KindCable), append(s.Law, canopy.LawForceDensity), append(s.Given, q)
+		}
+	}
+	s.Fixed[0], s.Fixed[n] = canopy.DirAll, canopy.DirAll
+	f, _ := find(t, s, nil)
+	for i := range n + 1 {
+		assert.InDelta(t, -p*float64(i*(n-i))/(2*q), f.Position[i].Z, 1e-11)
+		assert.InDelta(t, 10*float64(i), f.Position[i].X, 1e-11)
+	}
+}
+
+// An elastic net under heavy load and under uplift: reactions balance loads.
+func TestElasticNetUnderLoad(t *testing.T) {
+	c := cases.QuadNet(40, 8, 10000, 24)
+	s := c.S
+	f, _ := find(t, s, nil)
+	for m, e := range s.Ends {
+		l := r3.Norm(r3.Sub(f.Position[e[0]], f.Position[e[1]]))
+		s.Law[m], s.Stiffness[m], s.Unstressed[m] = canopy.LawElastic, 1e7, l/(1+f.Force[m]/1e7)
+	}
+	s.Load = make([]r3.Vec, len(s.Position))
+	for _, load := range []float64{0, 1000, 10000, -6000} {
+		for i := range s.Load {
+			s.Load[i].Z = -load
+		}
+		g, out := find(t, s, f)
+		least, sum := math.Inf(1), r3.Vec{}
+		for _, v := range g.Force {
+			least = min(least, v)
+		}
+		for i, r := range g.Reaction {
+			sum = r3.Add(sum, r3.Add(r, s.Load[i]))
+		}
+		assert.Less(t, r3.Norm(sum), 1e-3)
+		assert.GreaterOrEqual(t, least, 0.0)
+		assert.Less(t, out.Iterations, 20)
+		t.Logf("load %g: %d steps, least force %.0f N", load, out.Iterations, least)
 	}
 }
 

@@ -59,6 +59,7 @@ type Solver struct {
 	unevenFabric []bool
 	magnitude    *magnitudes // nil unless uneven
 	mixing       anderson
+	approaching  bool
 	rhs          []float64
 	columns      []float64
 	areaStart    []float64
@@ -76,19 +77,21 @@ type Solver struct {
 
 // state is a shape with what follows from it.
 type state struct {
-	at       []r3.Vec
-	basis    []r3.Vec
-	force    []float64 // common forces
-	pull     []r3.Vec  // resultant of pulls and loads at each node, tied nodes' forces left where they act
-	size     []float64 // sum of the sizes of the forces that meet at each node
-	reduced  []float64 // Bᵀ·pull by unknown
-	cond     []condition
-	energy   float64
-	eta      float64
-	worst    float64
-	worstAt  int32
-	merit    float64
-	collapse int32 // a triangle without area or, negative, −1−member without length; else none
+	at                []r3.Vec
+	basis             []r3.Vec
+	force             []float64 // common forces
+	pull              []r3.Vec  // resultant of pulls and loads at each node, tied nodes' forces left where they act
+	size              []float64 // sum of the sizes of the forces that meet at each node
+	reduced           []float64 // Bᵀ·pull by unknown
+	cond              []condition
+	own               []float64 // approach: forces of elastic members
+	energy            float64
+	eta               float64
+	worst             float64
+	worstAt           int32
+	noise, noiseWorst float64 // what rounding leaves of eta and worst in stiff members
+	merit             float64
+	collapse          int32 // a triangle without area or, negative, −1−member without length; else none
 }
 
 const none = math.MinInt32
@@ -392,7 +395,7 @@ func (v *Solver) Find(ctx context.Context, start *canopy.Form, set engine.Settin
 		return f, out, err
 	}
 	v.startForces(start)
-	out, err := v.rounds(ctx, set)
+	out, err := v.rounds(ctx, set, start)
 	if err != nil {
 		return nil, out, err
 	}
