@@ -26,7 +26,9 @@ type Analysis struct {
 	parent []int32 // front that takes the update matrix, none for a root; parent[s] > s
 	rowPtr []int64
 	rows   []int32
-	rel    []int32 // position of each update row among the rows of the parent's front
+	// Where the update rows are among the rows of the parent's front.
+	runPtr []int64
+	runs   []run
 
 	// The children of front s in the order in which they are eliminated.
 	childPtr []int32
@@ -149,19 +151,13 @@ func renumber(parent, post []int32) {
 	}
 }
 
-// maxZeros is the share of explicit zeros allowed in a front of the given
-// number of columns when it is joined with its parent: large fronts run near
-// the speed of the machine and must not be diluted, small ones are all overhead.
-func maxZeros(cols int32) float64 {
-	switch {
-	case cols <= 4:
-		return 0.8
-	case cols <= 16:
-		return 0.3
-	case cols <= 48:
-		return 0.1
-	}
-	return 0.05
+// frontCost estimates the time, in nanoseconds, that a front costs in one
+// factorisation and one solve. The terms are: the front itself, its rows, the
+// entries of its panel, adding its update matrix to its parent's front, and the
+// arithmetic. Fitted roughly to one machine; only the balance matters.
+func frontCost(cols, below int32) float64 {
+	c, b := float64(cols), float64(below)
+	return 200 + 6*(c+b) + 1.0*c*(c+b) + 0.4*b*b + 0.08*frontFlops(c, b)
 }
 
 // joinColumns finds the supernodes: runs of columns with one structure, and
@@ -215,7 +211,7 @@ func (a *Analysis) joinColumns(parent, count []int32) {
 			nc := cols[c] + cols[s]
 			all := area(nc, below[s])
 			z := zeros[c] + zeros[s] + all - area(cols[c], below[c]) - area(cols[s], below[s])
-			if z == 0 || float64(z) < maxZeros(nc)*float64(all) {
+			if z == 0 || 2*z < all && frontCost(nc, below[s]) < frontCost(cols[c], below[c])+frontCost(cols[s], below[s]) {
 				into[c] = s
 				cols[s], zeros[s] = nc, z
 				for gc := child[c]; gc != none; {
@@ -363,11 +359,10 @@ func (a *Analysis) orderFronts(tree, into, cols, below []int32) []int32 {
 	return out
 }
 
-// frontRows fills rows, rel and panel.
+// frontRows fills rows, runs and panel.
 func (a *Analysis) frontRows(g graph) {
 	m := int32(a.fronts())
 	a.rows = make([]int32, a.rowPtr[m])
-	a.rel = make([]int32, a.rowPtr[m])
 	a.panel = make([]int64, m+1)
 	stamp := make([]int32, a.n)
 	for i := range stamp {
@@ -396,28 +391,56 @@ func (a *Analysis) frontRows(g graph) {
 		cols, rows := a.shape(s)
 		a.panel[s+1] = a.panel[s] + int64(cols)*int64(rows)
 	}
-	// Relative positions: local[i] is the position of row i in front p.
+	// Relative positions: local[i] is the position of row i in front p. Fronts
+	// are met by parent here, so the runs are made in two passes.
+	a.runPtr = make([]int64, m+1)
 	local := stamp
-	for p := range m {
-		kids := a.children[a.childPtr[p]:a.childPtr[p+1]]
-		if len(kids) == 0 {
-			continue
+	rel := make([]int32, 0, 64)
+	var total int64
+	for pass := range 2 {
+		if pass == 1 {
+			for s := range m {
+				a.runPtr[s+1] += a.runPtr[s]
+			}
+			a.runs = make([]run, total)
 		}
-		cols := a.first[p+1] - a.first[p]
-		for k, i := range a.rows[a.rowPtr[p]:a.rowPtr[p+1]] {
-			local[i] = cols + int32(k)
-		}
-		for _, c := range kids {
-			for k := a.rowPtr[c]; k < a.rowPtr[c+1]; k++ {
-				if i := a.rows[k]; i < a.first[p+1] {
-					a.rel[k] = i - a.first[p]
-				} else {
-					a.rel[k] = local[i]
+		for p := range m {
+			kids := a.children[a.childPtr[p]:a.childPtr[p+1]]
+			if len(kids) == 0 {
+				continue
+			}
+			cols := a.first[p+1] - a.first[p]
+			for k, i := range a.rows[a.rowPtr[p]:a.rowPtr[p+1]] {
+				local[i] = cols + int32(k)
+			}
+			for _, c := range kids {
+				rel = rel[:0]
+				for _, i := range a.rows[a.rowPtr[c]:a.rowPtr[c+1]] {
+					if i < a.first[p+1] {
+						rel = append(rel, i-a.first[p])
+					} else {
+						rel = append(rel, local[i])
+					}
 				}
+				if pass == 1 {
+					appendRuns(a.runs[a.runPtr[c]:a.runPtr[c]:a.runPtr[c+1]], rel, cols)
+					continue
+				}
+				count := int64(0)
+				for k, q := range rel {
+					if k == 0 || q != rel[k-1]+1 || q == cols {
+						count++
+					}
+				}
+				a.runPtr[c+1] = count
+				total += count
 			}
 		}
 	}
 }
+
+// runsOf front c in its parent's front.
+func (a *Analysis) runsOf(c int32) []run { return a.runs[a.runPtr[c]:a.runPtr[c+1]] }
 
 // assembly lists for each front where its values go.
 func (a *Analysis) assembly(pairs [][2]int32) error {
@@ -483,7 +506,7 @@ func (a *Analysis) measure() {
 		c.LargestFront = max(c.LargestFront, rows)
 	}
 	c.Bytes = 8*a.panel[c.Fronts] + 8*a.plan.bytesFloats(a.workers()) +
-		4*(3*int64(a.n)+2*int64(len(a.rows))+4*int64(c.Fronts)+2*int64(a.entries)) + 32*int64(c.Fronts) +
+		4*(3*int64(a.n)+int64(len(a.rows))+4*int64(c.Fronts)+2*int64(a.entries)) + 8*int64(len(a.runs)) + 40*int64(c.Fronts) +
 		8*3*int64(a.n)
 }
 

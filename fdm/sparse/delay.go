@@ -24,7 +24,8 @@ func (f *Factor) factorDelayed(ctx context.Context, values []float64) error {
 	m := int32(a.fronts())
 	f.delayed = make([]delayedFront, m)
 	local := make([]int32, a.n)
-	own := make([]float64, 0)
+	var own []float64
+	var rel []int32
 	pivot := 0
 	for s := range m {
 		if err := ctx.Err(); err != nil {
@@ -56,16 +57,15 @@ func (f *Factor) factorDelayed(ctx context.Context, values []float64) error {
 		for j := range ownCols {
 			copy(p[(late+j)*ld+late:(late+j+1)*ld], own[j*ownRows:])
 		}
-		rel := func(c int32) []int32 {
+		runs := make([][]run, len(kids))
+		for x, c := range kids {
 			k := &f.delayed[c]
-			r := make([]int32, len(k.rows)-k.cols)
-			for x, i := range k.rows[k.cols:] {
-				r[x] = local[i]
+			rel = rel[:0]
+			for _, i := range k.rows[k.cols:] {
+				rel = append(rel, local[i])
 			}
-			return r
-		}
-		for _, c := range kids {
-			extendAdd(p, ld, 0, f.delayed[c].u, rel(c), 0, cand)
+			runs[x] = appendRuns(nil, rel, int32(cand))
+			extendAdd(p, ld, 0, k.u, len(rel), runs[x], 0, cand)
 		}
 		d, e := make([]float64, cand), make([]float64, cand)
 		scratch := make([]float64, ld*max(ldlBlock, 1)+slack)
@@ -95,8 +95,9 @@ func (f *Factor) factorDelayed(ctx context.Context, values []float64) error {
 				k += w
 			}
 			front.u = u
-			for _, c := range kids {
-				extendAdd(u[at:], left, cand, f.delayed[c].u, rel(c), cand, ld)
+			for x, c := range kids {
+				k := &f.delayed[c]
+				extendAdd(u[at:], left, cand, k.u, len(k.rows)-k.cols, runs[x], cand, ld)
 			}
 		}
 		for _, c := range kids {

@@ -37,7 +37,7 @@ func (a *Analysis) NewFactor(k Kind) (*Factor, error) {
 		return nil, fmt.Errorf("sparse: unknown kind of factorisation %d", int(k))
 	}
 	f := &Factor{a: a, kind: k}
-	f.panels = make([]float64, a.panel[a.fronts()]+3*int64(a.cost.LargestFront)+slack)
+	f.panels = make([]float64, int(a.panel[a.fronts()])+3*a.cost.LargestFront+slack)
 	f.crew.init(f, a.workers())
 	if k == LDL {
 		f.diag = make([]float64, a.n)
@@ -118,10 +118,10 @@ func (f *Factor) front(s int32, values []float64, w *worker) bool {
 	f.assemble(p, s, values, cols, rows)
 	kids := a.children[a.childPtr[s]:a.childPtr[s+1]]
 	for _, c := range kids {
-		u, rel := f.updateOf(c, w)
-		extendAdd(p, rows, 0, u, rel, 0, cols)
+		n := int(a.rowPtr[c+1] - a.rowPtr[c])
+		extendAdd(p, rows, 0, f.updateOf(c, w), n, a.runsOf(c), 0, cols)
 	}
-	u, _ := f.updateOf(s, w)
+	u := f.updateOf(s, w)
 	if f.kind == LDL {
 		first := int(a.first[s])
 		d, e, piv := f.diag[first:first+cols], f.sub[first:first+cols], f.pivots[first:first+cols]
@@ -147,8 +147,8 @@ func (f *Factor) front(s int32, values []float64, w *worker) bool {
 	}
 	if nu > 0 {
 		for _, c := range kids {
-			cu, rel := f.updateOf(c, w)
-			extendAdd(u, nu, cols, cu, rel, cols, rows)
+			n := int(a.rowPtr[c+1] - a.rowPtr[c])
+			extendAdd(u, nu, cols, f.updateOf(c, w), n, a.runsOf(c), cols, rows)
 		}
 	}
 	return true
@@ -171,37 +171,15 @@ func (f *Factor) assemble(p []float64, s int32, values []float64, cols, ld int) 
 	}
 }
 
-// updateOf is the update matrix that front c leaves for its parent, and where
-// its rows are in the parent's front.
-func (f *Factor) updateOf(c int32, w *worker) (u []float64, rel []int32) {
+// updateOf is the update matrix that front c leaves for its parent.
+func (f *Factor) updateOf(c int32, w *worker) []float64 {
 	a := f.a
-	rel = a.rel[a.rowPtr[c]:a.rowPtr[c+1]]
-	n := len(rel)
+	n := a.updateSize(c)
 	switch {
 	case !w.shares:
-		return w.stack[a.plan.update[c]:][:n*n], rel
+		return w.stack[a.plan.update[c]:][:n]
 	case a.plan.shared[c]:
-		return f.store[a.plan.local[c]:][:n*n], rel
+		return f.store[a.plan.local[c]:][:n]
 	}
-	return w.stack[a.plan.local[c]:][:n*n], rel
-}
-
-// extendAdd adds those columns of a child's update u whose position in the
-// parent is in [from, to) to dst, whose first row and column are position
-// shift. rel ascends, so that lower triangles go to lower triangles.
-func extendAdd(dst []float64, ld, shift int, u []float64, rel []int32, from, to int) {
-	n := len(rel)
-	for j, c := range rel {
-		if int(c) < from {
-			continue
-		}
-		if int(c) >= to {
-			break
-		}
-		d := dst[(int(c)-shift)*ld:]
-		src := u[j*n+j : j*n+n]
-		for i, r := range rel[j:] {
-			d[int(r)-shift] += src[i]
-		}
-	}
+	return w.stack[a.plan.local[c]:][:n]
 }

@@ -26,3 +26,9 @@ func scaleStrip(c *float64, ldc, m int, t *[10]float64)
 //
 //go:noescape
 func dotStrip(a, b, out *float64, lda, ldb, m int, mask *[4]int64)
+
+// addRuns adds cols columns of the lower triangle of an update matrix, those
+// from skip on of the first of the runs, to the columns of a front.
+//
+//go:noescape
+func addRuns(dst, src *float64, ld, n, cols, skip, shift int, runs *run, count int)

@@ -397,3 +397,79 @@ sum:
 	VMOVUPD Y8, 64(DI)
 	VZEROUPPER
 	RET
+
+// func addRuns(dst, src *float64, ld, n, cols, skip, shift int, runs *run, count int)
+// Adds columns of a lower triangle to those of a larger one. The columns are
+// skip, skip+1, ... of the first run; src points at the diagonal entry of the
+// first of them, in a matrix with n rows, dst at the start of the column of dst
+// that takes it. Row position p is row p−shift of dst.
+TEXT ·addRuns(SB), NOSPLIT, $0-72
+	MOVQ dst+0(FP), DI
+	MOVQ src+8(FP), SI
+	MOVQ ld+16(FP), R8
+	SHLQ $3, R8
+	MOVQ n+24(FP), R9
+	SHLQ $3, R9
+	ADDQ $8, R9             // one column right, one row down
+	MOVQ cols+32(FP), R10
+	MOVQ skip+40(FP), R11
+	MOVQ runs+56(FP), R12
+	MOVQ count+64(FP), R13
+
+column:
+	MOVQ SI, BX
+	MOVQ R12, DX
+	MOVQ R13, CX
+	MOVLQSX (DX), AX        // position
+	MOVLQSX 4(DX), R14      // length
+	ADDQ R11, AX
+	SUBQ R11, R14
+
+part:
+	SUBQ shift+48(FP), AX
+	LEAQ (DI)(AX*8), AX
+	SUBQ $4, R14
+	JLT  few
+
+fours:
+	VMOVUPD (BX), Y0
+	VADDPD  (AX), Y0, Y0
+	VMOVUPD Y0, (AX)
+	ADDQ    $32, BX
+	ADDQ    $32, AX
+	SUBQ    $4, R14
+	JGE     fours
+
+few:
+	TESTQ $2, R14
+	JZ    single
+	VMOVUPD (BX), X0
+	VADDPD  (AX), X0, X0
+	VMOVUPD X0, (AX)
+	ADDQ    $16, BX
+	ADDQ    $16, AX
+
+single:
+	TESTQ $1, R14
+	JZ    nextpart
+	VMOVSD (BX), X0
+	VADDSD (AX), X0, X0
+	VMOVSD X0, (AX)
+	ADDQ   $8, BX
+
+nextpart:
+	DECQ CX
+	JZ   nextcolumn
+	ADDQ $8, DX
+	MOVLQSX (DX), AX
+	MOVLQSX 4(DX), R14
+	JMP  part
+
+nextcolumn:
+	ADDQ R9, SI
+	ADDQ R8, DI
+	INCQ R11
+	DECQ R10
+	JNZ  column
+	VZEROUPPER
+	RET

@@ -15,3 +15,7 @@ func scaleStrip(c *float64, ldc, m int, t *[10]float64) {
 func dotStrip(a, b, out *float64, lda, ldb, m int, mask *[4]int64) {
 	panic("sparse: no strip kernel on this machine")
 }
+
+func addRuns(dst, src *float64, ld, n, cols, skip, shift int, runs *run, count int) {
+	panic("sparse: no strip kernel on this machine")
+}

@@ -1,0 +1,66 @@
+package sparse
+
+// run says that consecutive rows of a child's update matrix are consecutive
+// rows of the parent's front: length rows from position on.
+type run struct{ position, length int32 }
+
+// appendRuns turns the positions of a child's update rows among the rows of its
+// parent's front (ascending) into runs. No run crosses from the cols columns
+// that the parent eliminates to its update rows.
+func appendRuns(runs []run, rel []int32, cols int32) []run {
+	for k, p := range rel {
+		if k > 0 && p == rel[k-1]+1 && p != cols {
+			runs[len(runs)-1].length++
+			continue
+		}
+		runs = append(runs, run{p, 1})
+	}
+	return runs
+}
+
+// extendAdd adds those columns of a child's update u of n rows whose position
+// in the parent is in [from, to) to dst, whose first row and column are position
+// shift. Positions ascend, so that lower triangles go to lower triangles.
+func extendAdd(dst []float64, ld, shift int, u []float64, n int, runs []run, from, to int) {
+	j := 0
+	for k, r := range runs {
+		position, length := int(r.position), int(r.length)
+		if position >= to {
+			return
+		}
+		if position < from {
+			j += length
+			continue
+		}
+		if haveStrips {
+			// The last entry of the last column, checked once.
+			end := runs[len(runs)-1]
+			_ = dst[(position+length-1-shift)*ld+int(end.position+end.length)-1-shift]
+			_ = u[(j+length)*n-1]
+			// Not more than some 50 µs at a time.
+			for c, step := 0, max(1, stripWork/2/n); c < length; c += step {
+				addRuns(&dst[(position+c-shift)*ld], &u[(j+c)*(n+1)], ld, n, min(step, length-c), c, shift, &runs[k], len(runs)-k)
+			}
+			j += length
+			continue
+		}
+		for c := range length {
+			d := dst[(position+c-shift)*ld:]
+			src := u[j*(n+1):]
+			first := position + c
+			left := length - c
+			for x := k; ; {
+				e := d[first-shift:][:left]
+				for i, v := range src[:left] {
+					e[i] += v
+				}
+				src = src[left:]
+				if x++; x == len(runs) {
+					break
+				}
+				first, left = int(runs[x].position), int(runs[x].length)
+			}
+			j++
+		}
+	}
+}
