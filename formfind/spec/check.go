@@ -193,7 +193,7 @@ func joinComma(s []string) string {
 // order puts edges into an order in which they form a closed loop, nil when
 // there is none.
 func (d *drawn) order(edges []int) []int {
-	if len(edges) > 1000 {
+	if len(edges) > 100 {
 		return nil
 	}
 	left := append([]int(nil), edges[1:]...)
@@ -251,14 +251,17 @@ func arcAt(a, m, b r3.Vec, t float64) r3.Vec {
 	return r3.Add(a, r3.Add(c, r3.Scale(radius, r3.Add(r3.Scale(co, ex), r3.Scale(s, ey)))))
 }
 
+// maxPairs bounds the work of looking for crossings in one model.
+const maxPairs = 50e6
+
 // crossings finds edges of a boundary that cross or touch each other, seen in
 // plan, or in the plane of a boundary that stands upright. Edges that pass
 // each other far above one another, as in a steep twisted panel, do not cross.
 func (d *drawn) crossings(refs []ref, edges []int, o outline, what string) bool {
 	p := project(o.at)
 	n := len(p.xy)
-	if n > 3000 {
-		return false
+	if d.pairs += n * n; d.pairs > maxPairs {
+		return false // left to the mesher
 	}
 	reported := false
 	type pair struct{ a, b int }
@@ -677,12 +680,17 @@ func (d *drawn) supported() {
 		}
 	}
 	said := make([]bool, n)
+	told := 0
 	for i := range n {
+		if told == maxPerTable {
+			break
+		}
 		root := set.find(i)
 		if good[root] || said[root] || !d.used[i] {
 			continue
 		}
 		said[root] = true
+		told++
 		var names []string
 		for j := range n {
 			if set.find(j) == root {

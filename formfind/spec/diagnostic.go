@@ -183,21 +183,26 @@ func nearest(word string, candidates []string) string {
 		return ""
 	}
 	w := fold(word)
+	letters := utf8.RuneCountInString(w)
 	for _, c := range candidates {
 		if c == "" || utf8.RuneCountInString(c) > 100 {
 			continue
 		}
-		d := 2 * distance(w, fold(c))
-		if d == 0 {
+		f := fold(c)
+		if f == w {
 			return c // differs in case or word separators only
 		}
-		if strings.HasPrefix(fold(c), w) && utf8.RuneCountInString(w) >= 3 {
-			d = min(d, 2)
-		}
-		n := max(utf8.RuneCountInString(w), utf8.RuneCountInString(c))
+		n := max(letters, utf8.RuneCountInString(f))
 		allowed := 2 * max(1, n/3)
 		if n <= 2 {
 			allowed = 0 // short names are all alike
+		}
+		d := 2 * (2*n - letters - utf8.RuneCountInString(f)) // at least
+		switch {
+		case letters >= 3 && strings.HasPrefix(f, w):
+			d = 2
+		case d <= allowed:
+			d = 2 * distance(w, f)
 		}
 		if d <= allowed && d < bestD {
 			best, bestD = c, d

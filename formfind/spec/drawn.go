@@ -15,6 +15,8 @@ type drawn struct {
 	m *canopy.Model
 
 	point, edge, cable, ring map[string]int
+	stay                     map[string]int
+	pairs                    int   // of boundary pieces compared
 	pointAt, edgeAt, ringAt  []ref // where each is defined
 	cableAt, stayAt          []ref
 	fabricAt, netAt          []ref
@@ -65,7 +67,7 @@ func (r *reader) decode(root *yaml.Node) *canopy.Model {
 		}
 		return m
 	}
-	d := &drawn{r: r, m: m, pointsKey: f.keyNode("points")}
+	d := &drawn{r: r, m: m, stay: map[string]int{}, pointsKey: f.keyNode("points")}
 	d.points(f)
 	d.edges(f)
 	d.cables(f)
@@ -134,23 +136,30 @@ func (d *drawn) points(f *fields) {
 	d.used = make([]bool, len(d.m.Points))
 }
 
+// maxCompared bounds the names looked at for suggestions in one model.
+const maxCompared = 100000
+
 // findPoint looks up a point and marks it as used; −1 after an error.
 func (d *drawn) findPoint(q ref) int {
 	if i, ok := d.point[q.name]; ok {
 		d.used[i] = true
 		return i
 	}
-	names := make([]string, len(d.m.Points))
-	for i, p := range d.m.Points {
-		names[i] = p.Name
-	}
-	d.undefined(q, "point", names)
+	d.undefined(q, "point", len(d.m.Points), func(i int) string { return d.m.Points[i].Name })
 	return -1
 }
 
-func (d *drawn) undefined(q ref, thing string, names []string) {
+func (d *drawn) undefined(q ref, thing string, n int, nameOf func(i int) string) {
 	if d.r.broken[thing+"\x00"+q.name] {
 		return // its definition has been complained about
+	}
+	// Suggestions stop when they would cost more than they help.
+	var names []string
+	if d.r.compared += n; len(d.r.diags.errors) < maxErrors && d.r.compared <= maxCompared {
+		names = make([]string, n)
+		for i := range names {
+			names[i] = nameOf(i)
+		}
 	}
 	hint := fmt.Sprintf("define it under %ss", thing)
 	if near := nearest(q.name, names); near != "" {
@@ -165,11 +174,7 @@ func (d *drawn) findEdge(q ref) int {
 	if i, ok := d.edge[q.name]; ok {
 		return i
 	}
-	names := make([]string, len(d.m.Edges))
-	for i, e := range d.m.Edges {
-		names[i] = e.Name
-	}
-	d.undefined(q, "edge", names)
+	d.undefined(q, "edge", len(d.m.Edges), func(i int) string { return d.m.Edges[i].Name })
 	return -1
 }
 
@@ -572,11 +577,10 @@ func (d *drawn) stays(f *fields, key string, sec *section, mast bool) {
 		if g.has("unstressed") && !g.has("stiffness") {
 			d.r.fail(g.keyNode("unstressed"), p.down("unstressed"), fmt.Sprintf("%s has an unstressed length but no stiffness", label), "add stiffness, for example stiffness: 90 MN")
 		}
-		for i, t := range d.m.Stays {
-			if t.Name == e.name {
-				d.r.fail(e.kn, p, fmt.Sprintf("there are two masts or guys called %q", e.name), fmt.Sprintf("the other is in line %d; give one of them another name", d.stayAt[i].n.Line))
-				break
-			}
+		if i, twice := d.stay[e.name]; twice {
+			d.r.fail(e.kn, p, fmt.Sprintf("there are two masts or guys called %q", e.name), fmt.Sprintf("the other is in line %d; give one of them another name", d.stayAt[i].n.Line))
+		} else {
+			d.stay[e.name] = len(d.m.Stays)
 		}
 		d.m.Stays = append(d.m.Stays, s)
 		d.stayAt = append(d.stayAt, ref{e.name, e.kn, p})
@@ -643,11 +647,7 @@ func (d *drawn) fabrics(f *fields) {
 			if i, known := d.ring[q.name]; known {
 				d.ringUsers[i] = append(d.ringUsers[i], ref{e.name, q.n, q.p})
 			} else {
-				names := make([]string, len(d.m.Rings))
-				for i, r := range d.m.Rings {
-					names[i] = r.Name
-				}
-				d.undefined(q, "ring", names)
+				d.undefined(q, "ring", len(d.m.Rings), func(i int) string { return d.m.Rings[i].Name })
 			}
 		}
 		d.warp(g, &fab, e.name)

@@ -214,6 +214,7 @@ func (l *lister) node(t *tableReader, k int) int32 {
 	switch {
 	case !l.ids.named:
 		hint = fmt.Sprintf("nodes are called by number, 0 to %d", l.ids.n-1)
+	case t.fails >= maxPerTable: // not shown
 	case l.ids.n <= 2000:
 		names := make([]string, l.ids.n)
 		for i := range names {

@@ -129,9 +129,11 @@ type reader struct {
 	text    []byte
 	diags   diagnostics
 	visits  int
-	broken  map[string]bool // things whose definition is wrong
-	fatal   error           // an error that is not the model's
-	tables  int             // CSV files opened, for the order of messages
+	// names compared for suggestions
+	compared int
+	broken   map[string]bool // things whose definition is wrong
+	fatal    error           // an error that is not the model's
+	tables   int             // CSV files opened, for the order of messages
 }
 
 // slurp reads the model file.

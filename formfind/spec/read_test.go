@@ -502,3 +502,59 @@ func TestRenamingNodesChangesNothing(t *testing.T) {
 		}
 	}
 }
+
+// Inputs made to keep the reader busy are read in about linear time.
+func TestHostileSizes(t *testing.T) {
+	const n = 4000
+	for name, write := range map[string]func(b *strings.Builder){
+		"undefined points": func(b *strings.Builder) {
+			b.WriteString("points:\n")
+			for i := range n {
+				fmt.Fprintf(b, "  a-rather-long-name-of-a-point-%d: [%d, 0, 0]\n", i, i)
+			}
+			b.WriteString("edges:\n")
+			for i := range n {
+				fmt.Fprintf(b, "  e%d: {from: a-rather-long-nome-of-a-point-%d, to: b%d, seam: true}\n", i, i, i)
+			}
+		},
+		"parts without support": func(b *strings.Builder) {
+			b.WriteString("points:\n")
+			for i := range n {
+				fmt.Fprintf(b, "  p%d: {x: %d, y: 0, z: 0, hold: free}\n  q%d: {x: %d, y: 1, z: 0, hold: free}\n", i, i, i, i)
+			}
+			b.WriteString("edges:\n")
+			for i := range n {
+				fmt.Fprintf(b, "  e%d: {from: p%d, to: q%d, cable: {force: 1}}\n", i, i, i)
+			}
+		},
+		"stays": func(b *strings.Builder) {
+			b.WriteString("points:\n  a: [0, 0, 0]\n  b: [1, 0, 0]\nguys:\n")
+			for i := range n {
+				fmt.Fprintf(b, "  g%d: {from: a, to: b, force: -1}\n", i)
+			}
+		},
+		"long boundary": func(b *strings.Builder) {
+			b.WriteString("points:\n")
+			for i := range n {
+				s, c := math.Sincos(2 * math.Pi * float64(i) / n)
+				fmt.Fprintf(b, "  p%d: [%.9f, %.9f, 0]\n", i, 100*c, 100*s)
+			}
+			b.WriteString("edges:\n")
+			for i := range n {
+				fmt.Fprintf(b, "  e%d: {from: p%d, to: p%d, fixed: straight}\n", i, i, (i+1)%n)
+			}
+			b.WriteString("fabrics: {f: {prestress: -1, boundary: [e0")
+			for i := 1; i < n; i++ {
+				fmt.Fprintf(b, ", e%d", i)
+			}
+			b.WriteString("]}}\n")
+		},
+	} {
+		t.Run(name, func(t *testing.T) {
+			var b strings.Builder
+			b.WriteString("anticlast: 1\n")
+			write(&b)
+			readErr(t, b.String(), spec.Options{})
+		})
+	}
+}

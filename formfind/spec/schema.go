@@ -164,7 +164,7 @@ func (k *key) describe() string {
 	return t
 }
 
-const namePattern = `^[\p{L}\p{Nd}\p{Mn}_-]([\p{L}\p{Nd}\p{Mn} _-]{0,62}[\p{L}\p{Nd}\p{Mn}_-])?$`
+const namePattern = `^[\p{L}\p{Nd}\p{M}_-]([\p{L}\p{Nd}\p{M} _-]{0,62}[\p{L}\p{Nd}\p{M}_-])?$`
 
 // scalar is any single value, which the reader takes as text.
 var scalar = []string{"string", "number", "boolean"}

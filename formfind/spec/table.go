@@ -281,6 +281,10 @@ func (r *reader) open(name string) (*os.File, *complaint) {
 		if !filepath.IsAbs(local) {
 			local = filepath.Join(r.folder, local)
 		}
+		// A pipe would keep Open waiting.
+		if st, err := os.Stat(local); err == nil && !st.Mode().IsRegular() {
+			return nil, &complaint{fmt.Sprintf("%q is not a file", clip(name)), "name a CSV file"}
+		}
 		f, err := os.Open(local)
 		if err != nil {
 			return nil, cannot(err)

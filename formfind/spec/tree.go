@@ -755,7 +755,7 @@ func checkName(s string) string {
 		return "it is too long"
 	}
 	for _, c := range s {
-		if !unicode.IsLetter(c) && !unicode.IsDigit(c) && !unicode.Is(unicode.Mn, c) && c != ' ' && c != '-' && c != '_' {
+		if !unicode.IsLetter(c) && !unicode.IsDigit(c) && !unicode.IsMark(c) && c != ' ' && c != '-' && c != '_' {
 			return fmt.Sprintf("it has %q", string(c))
 		}
 	}
