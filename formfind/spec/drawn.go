@@ -137,7 +137,7 @@ func (d *drawn) points(f *fields) {
 }
 
 // maxCompared bounds the names looked at for suggestions in one model.
-const maxCompared = 100000
+const maxCompared = 30000
 
 // findPoint looks up a point and marks it as used; −1 after an error.
 func (d *drawn) findPoint(q ref) int {
