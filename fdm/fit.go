@@ -240,6 +240,9 @@ func (f *fit) run(ctx context.Context) (FitResult, error) {
 		// The damping fades with the differences, and is measured by what J
 		// does to them.
 		slope := norm2(gradient) / size
+		if !finite(slope * slope) {
+			return f.result(FitStopped, "values and targets are too far apart to reckon with", iteration), nil
+		}
 		mu := damping * math.Min(1, size*size) * slope * slope
 		promised, err := solve.step(ctx, step, mu)
 		if err != nil {

@@ -156,7 +156,7 @@ func (d *denseStep) step(_ context.Context, p []float64, mu float64) (float64, e
 	f := d.f
 	n := len(d.j)
 	clear(p)
-	if d.scale == 0 {
+	if d.scale == 0 || !finite(d.scale) {
 		return 0, nil
 	}
 	rhs := mat.NewVecDense(n, nil)
@@ -169,18 +169,22 @@ func (d *denseStep) step(_ context.Context, p []float64, mu float64) (float64, e
 	}
 	var y mat.VecDense
 	var chol mat.Cholesky
-	for floor := 1e-15 * d.scale; ; floor *= 100 {
+	solved := false
+	floor := 1e-15 * d.scale
+	for tries := 0; !solved; tries++ {
+		if tries == 8 {
+			return 0, nil // beyond numbers
+		}
 		damped := mat.NewSymDense(n, nil)
 		damped.CopySym(d.product)
 		for i := range n {
 			damped.SetSym(i, i, damped.At(i, i)+mu+floor)
 		}
-		if !chol.Factorize(damped) {
-			continue // ends: the floor outgrows everything
+		if solved = chol.Factorize(damped); solved {
+			// A bad condition is what the damping is for.
+			_ = chol.SolveVecTo(&y, rhs)
 		}
-		// A bad condition is what the damping is for.
-		_ = chol.SolveVecTo(&y, rhs)
-		break
+		floor *= 100
 	}
 	out := make([]float64, len(f.off))
 	if d.byRows() {

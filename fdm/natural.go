@@ -110,7 +110,10 @@ func (s *Solver) Natural(ctx context.Context, ref []r3.Vec, given Given, updates
 		return none, err
 	}
 	s.weigh(&r)
-	return r, s.polish(ctx, &r, laid)
+	if err := s.polish(ctx, &r, laid); err != nil {
+		return none, err
+	}
+	return r, nil
 }
 
 // polish takes the rounding of the solve out of the shape: once more with what
@@ -130,19 +133,37 @@ func (s *Solver) polish(ctx context.Context, r *NaturalResult, laid []flat) erro
 		}
 		before := r.Residual
 		shift(r.Position, s.move)
-		if err := s.carried(r, laid); err != nil {
+		if err := s.reweigh(r, laid); err != nil {
 			return err
 		}
-		s.weigh(r)
 		if !(r.Residual < before) {
 			unshift(r.Position, s.move)
-			if err := s.carried(r, laid); err != nil {
+			if err := s.reweigh(r, laid); err != nil {
 				return err
 			}
-			s.weigh(r)
-			return nil
+			break
 		}
 	}
+	// As in settle: pivots may have been replaced.
+	if r.Residual > enough && s.kind == mixed {
+		if _, err := s.refine(ctx, r.Position, enough); err != nil {
+			return err
+		}
+		if err := s.reweigh(r, laid); err != nil {
+			return err
+		}
+	}
+	if !(r.Residual <= max(stillBalanced, enough)) {
+		return s.lost(nil, r.Position)
+	}
+	return nil
+}
+
+func (s *Solver) reweigh(r *NaturalResult, laid []flat) error {
+	if err := s.carried(r, laid); err != nil {
+		return err
+	}
+	s.weigh(r)
 	return nil
 }
 

@@ -32,7 +32,7 @@ func (s *Solver) refine(ctx context.Context, x []r3.Vec, enough float64) (float6
 			}
 			move, pull := make([]r3.Vec, n), make([]r3.Vec, n)
 			if err := s.solve(move, r); err != nil {
-				return left, s.lost(err)
+				return left, s.lost(err, x)
 			}
 			s.apply(pull, move)
 			for k := range pulls {

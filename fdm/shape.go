@@ -134,7 +134,7 @@ func (s *Solver) settle(ctx context.Context, dst []r3.Vec) error {
 	copy(x, s.start)
 	s.imbalance(x)
 	if err := s.solve(s.move, s.force); err != nil {
-		return s.lost(err)
+		return s.lost(err, x)
 	}
 	shift(x, s.move)
 	left := s.imbalance(x)
@@ -144,7 +144,7 @@ func (s *Solver) settle(ctx context.Context, dst []r3.Vec) error {
 			return err
 		}
 		if err := s.solve(s.move, s.force); err != nil {
-			return s.lost(err)
+			return s.lost(err, x)
 		}
 		shift(x, s.move)
 		now := s.imbalance(x)
@@ -166,7 +166,7 @@ func (s *Solver) settle(ctx context.Context, dst []r3.Vec) error {
 		}
 	}
 	if !(left <= max(stillBalanced, enough)) {
-		return s.lost(nil)
+		return s.lost(nil, x)
 	}
 	copy(dst, x)
 	return nil
@@ -199,7 +199,7 @@ func (s *Solver) rounding(x []r3.Vec) float64 {
 }
 
 // lost says why a system that passed all checks still gave no shape.
-func (s *Solver) lost(err error) error {
+func (s *Solver) lost(err error, x []r3.Vec) error {
 	worst, where, axes := 0.0, int32(-1), DirAll
 	for _, sys := range s.systems {
 		for i, u := range sys.unknown {
@@ -207,7 +207,7 @@ func (s *Solver) lost(err error) error {
 				continue
 			}
 			for _, axis := range sys.axes {
-				v := math.Abs(*at(&s.trial[i], axis) - *at(&s.start[i], axis))
+				v := math.Abs(*at(&x[i], axis) - *at(&s.start[i], axis))
 				if where < 0 || v > worst || !finite(v) && finite(worst) {
 					worst, where, axes = v, sys.node[u], sys.directions()
 				}
