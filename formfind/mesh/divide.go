@@ -169,6 +169,9 @@ func (b *builder) chooseSize() {
 		return
 	}
 	b.size = math.Sqrt(2 * b.area() / wantedTriangles)
+	if b.m.Coarser > 0 {
+		b.size *= b.m.Coarser
+	}
 	if !(b.size > 0) {
 		b.size = 1 // only nets and cables: not used
 	}

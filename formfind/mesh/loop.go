@@ -84,7 +84,7 @@ func (b *builder) addLoop(l *loop) {
 	}
 	l.sides = b.corners(l)
 	b.loop = append(b.loop, l)
-	l.patch = choosePatch(l)
+	l.patch = b.choosePatch(l)
 }
 
 // chain orders the edges of a boundary into a closed walk.

@@ -7,8 +7,7 @@ import (
 	"gonum.org/v1/gonum/spatial/r3"
 )
 
-// patcher is a way to fill a boundary with triangles. A general triangulation
-// joins the structured ways here by satisfying this interface.
+// patcher is a way to fill a boundary with triangles.
 type patcher interface {
 	// relate says what the patch asks of the division of its edges.
 	relate(d *division, l *loop)
@@ -16,21 +15,6 @@ type patcher interface {
 	triangles(b *builder, l *loop) float64
 	// fill makes nodes and triangles inside the divided boundary.
 	fill(p *plot)
-}
-
-func choosePatch(l *loop) patcher {
-	switch {
-	case l.ring >= 0:
-		return radialPatch{}
-	case len(l.sides) == 2:
-		return lensPatch{}
-	case len(l.sides) == 3:
-		return triPatch{}
-	case len(l.sides) == 4:
-		return gridPatch{}
-	default:
-		return starPatch{}
-	}
 }
 
 // plot is the place where a patch puts its nodes and triangles.

@@ -121,30 +121,30 @@ func TestRandomOutlines(t *testing.T) {
 
 // Turning and moving a model turns and moves its mesh.
 func TestMeshTurnsWithTheModel(t *testing.T) {
-	rapid.Check(t, func(rt *rapid.T) {
-		m := randomModel(rt)
-		angle := rapid.Float64Range(0, 2*math.Pi).Draw(rt, "turn")
-		sin, cos := math.Sincos(angle)
-		turn := func(p r3.Vec) r3.Vec { return r3.Vec{X: cos*p.X - sin*p.Y, Y: sin*p.X + cos*p.Y, Z: p.Z} }
-		move := r3.Vec{X: 30, Y: -12, Z: 5}
-		s, err := mesh.Build(context.Background(), m)
-		if err != nil {
-			return
-		}
-		for i := range m.Points {
-			m.Points[i].At = r3.Add(turn(m.Points[i].At), move)
-		}
-		for i := range m.Fabrics {
-			m.Fabrics[i].WarpDir = turn(m.Fabrics[i].WarpDir)
-		}
-		got, err := mesh.Build(context.Background(), m)
-		require.NoError(t, err)
-		require.Equal(t, len(s.Position), len(got.Position))
-		for i, p := range s.Position {
-			require.InDelta(t, 0, r3.Norm(r3.Sub(got.Position[i], r3.Add(turn(p), move))), 1e-9)
-		}
-		for k, w := range s.Warp {
-			require.InDelta(t, 0, r3.Norm(r3.Sub(got.Warp[k], turn(w))), 1e-9)
-		}
-	})
+	for name, model := range all {
+		t.Run(name, func(t *testing.T) {
+			sin, cos := math.Sincos(0.7 + float64(len(name)))
+			turn := func(p r3.Vec) r3.Vec { return r3.Vec{X: cos*p.X - sin*p.Y, Y: sin*p.X + cos*p.Y, Z: p.Z} }
+			move := r3.Vec{X: 30, Y: -12, Z: 5}
+			m := model()
+			s := build(t, m)
+			for i := range m.Points {
+				m.Points[i].At = r3.Add(turn(m.Points[i].At), move)
+			}
+			for i := range m.Edges {
+				m.Edges[i].Through = r3.Add(turn(m.Edges[i].Through), move)
+			}
+			for i := range m.Fabrics {
+				m.Fabrics[i].WarpDir = turn(m.Fabrics[i].WarpDir)
+			}
+			got := build(t, m)
+			require.Equal(t, len(s.Position), len(got.Position))
+			for i, p := range s.Position {
+				require.InDelta(t, 0, r3.Norm(r3.Sub(got.Position[i], r3.Add(turn(p), move))), 1e-9)
+			}
+			for k, w := range s.Warp {
+				require.InDelta(t, 0, r3.Norm(r3.Sub(got.Warp[k], turn(w))), 1e-9)
+			}
+		})
+	}
 }

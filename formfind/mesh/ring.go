@@ -41,6 +41,13 @@ func (b *builder) ringNodes() {
 		if !ok {
 			continue
 		}
+		if _, free := l.patch.(freePatch); free {
+			n := max(16, 2*int(math.Round(math.Pi*r.Radius/b.meshSize(l))))
+			phi = make([]float64, n)
+			for j := range phi {
+				phi[j] = 2 * math.Pi * float64(j) / float64(n)
+			}
+		}
 		p := b.point[r.At]
 		fixed := canopy.Freedom(0)
 		if !r.Rigid {

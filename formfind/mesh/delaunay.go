@@ -1,0 +1,405 @@
+package mesh
+
+import (
+	"errors"
+	"math"
+)
+
+// delaunay is a triangulation of points in the plane that is Delaunay but for
+// the segments it must contain (a constrained Delaunay triangulation). Points
+// are added one by one, with edge flips (Lawson 1977); segments are recovered by
+// flips (Sloan 1993).
+//
+// The first three points are far corners around everything.
+type delaunay struct {
+	p    []xy
+	v    [][3]int32 // corners of a triangle, counter-clockwise
+	n    [][3]int32 // neighbour across the side opposite corner i, −1 = none
+	held [][3]bool  // side opposite corner i is a segment
+	at   []int32    // per point: a triangle at it
+	last int32      // where the next search starts
+	todo []int32    // triangles whose side opposite corner 0 may need a flip
+}
+
+var (
+	errTwice = errors.New("two points at the same place")
+	errTouch = errors.New("a segment passes through a point")
+	errCross = errors.New("two segments cross")
+)
+
+// newDelaunay prepares for points in the box from lo to hi.
+func newDelaunay(lo, hi xy) *delaunay {
+	c := xy{(lo.x + hi.x) / 2, (lo.y + hi.y) / 2}
+	r := 64 * max(hi.x-lo.x, hi.y-lo.y, math.SmallestNonzeroFloat64)
+	return &delaunay{
+		p:    []xy{{c.x - 2*r, c.y - r}, {c.x + 2*r, c.y - r}, {c.x, c.y + 2*r}},
+		v:    [][3]int32{{0, 1, 2}},
+		n:    [][3]int32{{-1, -1, -1}},
+		held: make([][3]bool, 1),
+		at:   []int32{0, 0, 0},
+	}
+}
+
+// locate walks to the triangle that holds q. side is −1 when q is inside it, or
+// the side it lies on, or 3 when q is one of its corners. With stop set the walk
+// ends at a held side in its way, and blocked is true.
+func (d *delaunay) locate(q xy, from int32, stop bool) (t int32, side int, blocked bool) {
+	t = from
+	prev := int32(-1)
+	for step := 0; step < 2*len(d.v)+8; step++ {
+		side = -1
+		next := int32(-1)
+		// Start at a side that changes with the step, so that the walk cannot
+		// go round in circles where the mesh is not Delaunay.
+		for k := range 3 {
+			i := (k + step) % 3
+			a, b := d.v[t][(i+1)%3], d.v[t][(i+2)%3]
+			if d.n[t][i] == prev && prev >= 0 {
+				continue
+			}
+			o := orient(d.p[a], d.p[b], q)
+			if o < 0 {
+				if stop && d.held[t][i] {
+					return t, i, true
+				}
+				next = d.n[t][i]
+				break
+			}
+		}
+		if next < 0 {
+			break
+		}
+		prev, t = t, next
+	}
+	zero := 0
+	for i := range 3 {
+		if orient(d.p[d.v[t][(i+1)%3]], d.p[d.v[t][(i+2)%3]], q) == 0 {
+			side = i
+			zero++
+		}
+	}
+	if zero > 1 {
+		return t, 3, false
+	}
+	return t, side, false
+}
+
+// insert adds q, which locate has found in t on side, and returns its number.
+func (d *delaunay) insert(q xy, t int32, side int) int32 {
+	i := int32(len(d.p))
+	d.p = append(d.p, q)
+	d.at = append(d.at, t)
+	if side < 0 {
+		d.splitInside(i, t)
+	} else {
+		d.splitSide(i, t, side)
+	}
+	d.legalise()
+	d.last = d.at[i]
+	return i
+}
+
+// add locates and inserts q.
+func (d *delaunay) add(q xy) (int32, error) {
+	t, side, _ := d.locate(q, d.last, false)
+	if side == 3 {
+		return -1, errTwice
+	}
+	if side >= 0 && d.held[t][side] {
+		return -1, errTouch
+	}
+	return d.insert(q, t, side), nil
+}
+
+func (d *delaunay) newTriangle() int32 {
+	d.v = append(d.v, [3]int32{})
+	d.n = append(d.n, [3]int32{-1, -1, -1})
+	d.held = append(d.held, [3]bool{})
+	return int32(len(d.v) - 1)
+}
+
+// set makes t the triangle q, a, b whose side a–b has neighbour n.
+func (d *delaunay) set(t, q, a, b, n int32, held bool) {
+	d.v[t] = [3]int32{q, a, b}
+	d.n[t] = [3]int32{n, -1, -1}
+	d.held[t] = [3]bool{held, false, false}
+	d.at[q], d.at[a], d.at[b] = t, t, t
+	if n >= 0 {
+		d.n[n][d.sideTo(n, a, b)] = t
+	}
+}
+
+// sideTo returns the side of t with the ends a and b.
+func (d *delaunay) sideTo(t, a, b int32) int {
+	for i, c := range d.v[t] {
+		if c != a && c != b {
+			return i
+		}
+	}
+	return 0
+}
+
+func (d *delaunay) splitInside(i, t int32) {
+	v, n, h := d.v[t], d.n[t], d.held[t]
+	u, w := d.newTriangle(), d.newTriangle()
+	d.set(t, i, v[0], v[1], n[2], h[2])
+	d.set(u, i, v[1], v[2], n[0], h[0])
+	d.set(w, i, v[2], v[0], n[1], h[1])
+	// Corner 1 of t is opposite the side to w, corner 2 … see set: (q, a, b).
+	d.n[t][1], d.n[t][2] = u, w
+	d.n[u][1], d.n[u][2] = w, t
+	d.n[w][1], d.n[w][2] = t, u
+	d.todo = append(d.todo, t, u, w)
+}
+
+func (d *delaunay) splitSide(i, t int32, side int) {
+	a, b, c := d.v[t][side], d.v[t][(side+1)%3], d.v[t][(side+2)%3]
+	nb, nc := d.n[t][(side+1)%3], d.n[t][(side+2)%3]
+	hb, hc := d.held[t][(side+1)%3], d.held[t][(side+2)%3]
+	o := d.n[t][side]
+	keep := d.held[t][side]
+	t2 := d.newTriangle()
+	// t: a, b, i and t2: c, a, i with i first.
+	d.set(t, i, a, b, nc, hc)
+	d.set(t2, i, c, a, nb, hb)
+	d.n[t][2], d.n[t2][1] = t2, t
+	d.todo = append(d.todo, t, t2)
+	if o < 0 {
+		d.held[t][1], d.held[t2][2] = keep, keep
+		return
+	}
+	k := d.sideTo(o, b, c)
+	e := d.v[o][k] // o: e, c, b
+	oc, ob := d.n[o][d.sideTo(o, e, b)], d.n[o][d.sideTo(o, e, c)]
+	hoc, hob := d.held[o][d.sideTo(o, e, b)], d.held[o][d.sideTo(o, e, c)]
+	o2 := d.newTriangle()
+	d.set(o, i, b, e, oc, hoc)
+	d.set(o2, i, e, c, ob, hob)
+	d.n[o][1], d.n[o2][2] = o2, o
+	// Across the two halves of the old side b–c.
+	d.n[t][1], d.n[o][2] = o, t
+	d.n[t2][2], d.n[o2][1] = o2, t2
+	d.held[t][1], d.held[o][2] = keep, keep
+	d.held[t2][2], d.held[o2][1] = keep, keep
+	d.todo = append(d.todo, o, o2)
+}
+
+// legalise flips sides opposite the newest point until all are Delaunay.
+func (d *delaunay) legalise() {
+	for len(d.todo) > 0 {
+		t := d.todo[len(d.todo)-1]
+		d.todo = d.todo[:len(d.todo)-1]
+		o := d.n[t][0]
+		if o < 0 || d.held[t][0] {
+			continue
+		}
+		q, a, b := d.v[t][0], d.v[t][1], d.v[t][2]
+		e := d.v[o][d.sideTo(o, a, b)]
+		if inCircle(d.p[q], d.p[a], d.p[b], d.p[e]) > 0 {
+			d.flip(t, 0)
+			d.todo = append(d.todo, t, o)
+		}
+	}
+}
+
+// flip replaces the diagonal opposite corner i of t. Afterwards t and the old
+// neighbour o both have that corner first: t = (q, a, e), o = (q, e, b).
+func (d *delaunay) flip(t int32, i int) {
+	o := d.n[t][i]
+	q, a, b := d.v[t][i], d.v[t][(i+1)%3], d.v[t][(i+2)%3]
+	k := d.sideTo(o, a, b)
+	e := d.v[o][k]
+	// Outer sides: of t b–q and q–a; of o a–e and e–b.
+	nbq, hbq := d.n[t][(i+1)%3], d.held[t][(i+1)%3]
+	nqa, hqa := d.n[t][(i+2)%3], d.held[t][(i+2)%3]
+	ka, kb := d.sideTo(o, e, b), d.sideTo(o, a, e)
+	neb, heb := d.n[o][ka], d.held[o][ka]
+	nae, hae := d.n[o][kb], d.held[o][kb]
+	d.set(t, q, a, e, nae, hae)
+	d.set(o, q, e, b, neb, heb)
+	d.n[t][1], d.n[o][2] = o, t
+	d.n[t][2], d.held[t][2] = nqa, hqa
+	d.n[o][1], d.held[o][1] = nbq, hbq
+	if nqa >= 0 {
+		d.n[nqa][d.sideTo(nqa, q, a)] = t
+	}
+	if nbq >= 0 {
+		d.n[nbq][d.sideTo(nbq, b, q)] = o
+	}
+}
+
+// edge returns the triangle and side between points a and b, ok false when they
+// are not joined.
+func (d *delaunay) edge(a, b int32) (t int32, side int, ok bool) {
+	t = d.at[a]
+	for start, first := t, true; first || t != start; first = false {
+		i := d.corner(t, a)
+		if d.v[t][(i+1)%3] == b {
+			return t, (i + 2) % 3, true
+		}
+		if d.v[t][(i+2)%3] == b {
+			return t, (i + 1) % 3, true
+		}
+		// Turn around a; only far corners have an end to that.
+		if t = d.n[t][(i+1)%3]; t < 0 {
+			break
+		}
+	}
+	return -1, 0, false
+}
+
+func (d *delaunay) corner(t, a int32) int {
+	for i, c := range d.v[t] {
+		if c == a {
+			return i
+		}
+	}
+	return 0
+}
+
+// hold makes the segment a–b part of the triangulation.
+func (d *delaunay) hold(a, b int32) error {
+	for range len(d.v) + 1 {
+		if t, side, ok := d.edge(a, b); ok {
+			d.mark(t, side)
+			return nil
+		}
+		// Find the side that the segment leaves a through.
+		t, start := d.at[a], d.at[a]
+		var i int
+		for {
+			i = d.corner(t, a)
+			u, w := d.v[t][(i+1)%3], d.v[t][(i+2)%3]
+			ou, ow := orient(d.p[a], d.p[b], d.p[u]), orient(d.p[a], d.p[b], d.p[w])
+			ahead := func(k int32) bool {
+				return (d.p[k].x-d.p[a].x)*(d.p[b].x-d.p[a].x)+(d.p[k].y-d.p[a].y)*(d.p[b].y-d.p[a].y) > 0
+			}
+			if ou == 0 && ahead(u) || ow == 0 && ahead(w) {
+				return errTouch
+			}
+			if ou < 0 && ow > 0 {
+				break
+			}
+			if t = d.n[t][(i+1)%3]; t < 0 || t == start {
+				return errCross
+			}
+		}
+		if err := d.clear(a, b, t, i); err != nil {
+			return err
+		}
+	}
+	return errCross
+}
+
+// clear walks from a to b and flips what is in the way and can be flipped.
+func (d *delaunay) clear(a, b, t int32, i int) error {
+	// Sides crossed, each by its two ends.
+	var crossed [][2]int32
+	for {
+		if d.held[t][i] {
+			return errCross
+		}
+		u, w := d.v[t][(i+1)%3], d.v[t][(i+2)%3]
+		crossed = append(crossed, [2]int32{u, w})
+		o := d.n[t][i]
+		k := d.sideTo(o, u, w)
+		e := d.v[o][k]
+		if e == b {
+			break
+		}
+		side := orient(d.p[a], d.p[b], d.p[e])
+		if side == 0 {
+			return errTouch
+		}
+		// The segment leaves o through the side with ends on both sides of it:
+		// w is on the left, u on the right.
+		if side > 0 {
+			t, i = o, d.sideTo(o, u, e)
+		} else {
+			t, i = o, d.sideTo(o, e, w)
+		}
+	}
+	for tries := 0; len(crossed) > 0; tries++ {
+		if tries > 64*(len(crossed)+16)*(len(crossed)+16) {
+			return errCross
+		}
+		s := crossed[0]
+		crossed = crossed[1:]
+		t, i, ok := d.edge(s[0], s[1])
+		if !ok {
+			continue
+		}
+		o := d.n[t][i]
+		q, x, y := d.v[t][i], d.v[t][(i+1)%3], d.v[t][(i+2)%3]
+		e := d.v[o][d.sideTo(o, x, y)]
+		if !(orient(d.p[q], d.p[x], d.p[e]) > 0 && orient(d.p[q], d.p[e], d.p[y]) > 0) {
+			crossed = append(crossed, s) // not convex yet
+			continue
+		}
+		d.flip(t, i)
+		if q != a && q != b && e != a && e != b &&
+			(orient(d.p[a], d.p[b], d.p[q]) > 0) != (orient(d.p[a], d.p[b], d.p[e]) > 0) {
+			crossed = append(crossed, [2]int32{q, e})
+		}
+	}
+	return nil
+}
+
+func (d *delaunay) mark(t int32, side int) {
+	d.held[t][side] = true
+	if o := d.n[t][side]; o >= 0 {
+		a, b := d.v[t][(side+1)%3], d.v[t][(side+2)%3]
+		d.held[o][d.sideTo(o, a, b)] = true
+	}
+}
+
+// settle flips until every side that is not held is Delaunay.
+func (d *delaunay) settle() {
+	for changed := true; changed; {
+		changed = false
+		for t := range d.v {
+			for i := range 3 {
+				o := d.n[t][i]
+				if o < int32(t) || d.held[t][i] {
+					continue
+				}
+				q, a, b := d.v[t][i], d.v[t][(i+1)%3], d.v[t][(i+2)%3]
+				e := d.v[o][d.sideTo(o, a, b)]
+				if inCircle(d.p[q], d.p[a], d.p[b], d.p[e]) > 0 {
+					d.flip(int32(t), i)
+					changed = true
+				}
+			}
+		}
+	}
+}
+
+// inside marks the triangles that an odd number of held lines encloses.
+func (d *delaunay) inside() []bool {
+	const unseen = 2
+	depth := make([]uint8, len(d.v))
+	for t := range depth {
+		depth[t] = unseen
+	}
+	start := d.at[0]
+	depth[start] = 0
+	queue := []int32{start}
+	for h := 0; h < len(queue); h++ {
+		t := queue[h]
+		for i, o := range d.n[t] {
+			if o < 0 || depth[o] != unseen {
+				continue
+			}
+			depth[o] = depth[t]
+			if d.held[t][i] {
+				depth[o] ^= 1
+			}
+			queue = append(queue, o)
+		}
+	}
+	in := make([]bool, len(d.v))
+	for t := range in {
+		in[t] = depth[t] == 1
+	}
+	return in
+}
