@@ -235,6 +235,71 @@ func TestFaultsAreCaught(t *testing.T) {
 	}
 }
 
+// A residual too small to matter at any node, but everywhere.
+func TestResidualEverywhere(t *testing.T) {
+	s, f := sail(t, 12, 2000, 2000)
+	seed := uint64(5)
+	for i := range f.Position {
+		if s.Fixed[i] == 0 {
+			seed = seed*6364136223846793005 + 1442695040888963407
+			f.Position[i].Z += 3e-9 * (float64(seed>>33)/(1<<31) - 0.5)
+		}
+	}
+	react(s, f)
+	a := run(t, s, f)
+	require.Less(t, a.ResidualLargest, 1e-8)
+	require.Greater(t, a.ResidualRMS, 1e-9)
+	untrusted(t, a, "mean residual")
+}
+
+// The laws of whole cables, away from fabric, where they must hold exactly.
+func TestCableLaws(t *testing.T) {
+	// A cable over two nodes that ropes of given force pull down and out;
+	// lengths 5, 6, 5, sag 4 over chord 12. (With dead loads instead of the
+	// ropes the nodes could slide along the cable.)
+	build := func(law canopy.CableLaw) (*canopy.Structure, *canopy.Form, *canopy.Cable) {
+		s := structure()
+		node(s, 0, 0, 0, canopy.DirAll)
+		node(s, 3, 0, -4, 0)
+		node(s, 9, 0, -4, 0)
+		node(s, 12, 0, 0, canopy.DirAll)
+		var line []int32
+		for i := range int32(3) {
+			line = append(line, member(s, i, i+1, canopy.KindCable, canopy.LawCable, 0))
+		}
+		rope := 1e3 * math.Sqrt(0.8)
+		for i, x := range [2]float64{3 - 2, 9 + 2} {
+			member(s, int32(i)+1, node(s, x, 0, -8, canopy.DirAll), canopy.KindGuy, canopy.LawForce, rope)
+		}
+		s.Load = make([]r3.Vec, 6)
+		c := chain(s, "line", canopy.KindCable, law, line...)
+		return s, report(s, 1e3, 1e3, 1e3, rope, rope), c
+	}
+	s, f, c := build(canopy.CableSag)
+	c.Value = 4. / 12
+	trusted(t, run(t, s, f))
+	c.Value *= 1.0001
+	untrusted(t, run(t, s, f), "a sag over chord of")
+	s, f, c = build(canopy.CableLength)
+	c.Value = 16
+	trusted(t, run(t, s, f))
+	c.Value = 16.001
+	untrusted(t, run(t, s, f), "a length in m of")
+	s, f, c = build(canopy.CableElastic)
+	c.Stiffness, c.Unstressed = 1e5, 16/1.01
+	trusted(t, run(t, s, f))
+	c.Unstressed = 15.85
+	untrusted(t, run(t, s, f), "where its law gives")
+	// Another force in the middle, balanced by other loads: not one force.
+	s, f, c = build(canopy.CableLength)
+	c.Value = 16
+	f.Force[1] = 1.2e3
+	s.Load[1].X -= 200
+	s.Load[2].X += 200
+	react(s, f)
+	untrusted(t, run(t, s, f), "cable line carries")
+}
+
 func TestSlicesThatDoNotFitAreAnError(t *testing.T) {
 	s, f := net(t, 4)
 	f.Force = f.Force[1:]

@@ -118,6 +118,20 @@ func TestWrinkledFabric(t *testing.T) {
 	untrusted(t, a, "nothing in the form carries any force")
 }
 
+// Fabric that claims to be slack although it is stretched one way.
+func TestStretchedFabricIsNotSlack(t *testing.T) {
+	st, f := stretched(0.3, [3]float64{0.01, -0.02, 0}, [3]float64{}, weave, [2]float64{})
+	require.Greater(t, run(t, st, f).ForceMismatch, 1.)
+}
+
+// Compression that follows the law without wrinkles is still not allowed.
+func TestFabricDoesNotPush(t *testing.T) {
+	s := [3]float64{4000, -2000, 0}
+	e := [3]float64{s[0]/600e3 - 0.3*s[1]/600e3, s[1]/400e3 - 0.3*s[0]/600e3, 0}
+	st, f := stretched(0.3, e, s, weave, [2]float64{})
+	require.Greater(t, run(t, st, f).ForceMismatch, 0.1)
+}
+
 // Elastic cables: tension when longer than unstressed, slack when shorter.
 func TestElasticCableLaw(t *testing.T) {
 	build := func(l0 float64, kind canopy.Kind, force float64) canopy.Audit {
