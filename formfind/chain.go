@@ -5,6 +5,7 @@ import (
 	"errors"
 	"fmt"
 	"math"
+	"strings"
 
 	"gonum.org/v1/gonum/spatial/r3"
 
@@ -34,6 +35,9 @@ func (c *chain) used(name string) { c.use = appendNew(c.use, name) }
 
 func (c *chain) stage(name, stage string) {
 	if c.o.Progress != nil {
+		if c.o.level != "" {
+			stage = strings.TrimPrefix(stage+", ", ", ") + c.o.level
+		}
 		c.o.Progress(engine.Step{Engine: name, Stage: stage})
 	}
 }
@@ -55,8 +59,8 @@ func findForm(ctx context.Context, s *canopy.Structure, o Options) (found, error
 	return found{c.f, c.smooth}, nil
 }
 
-// found is what a chain of engines ends with. surface is nil unless fabric has
-// equal prestress.
+// found is what a chain of engines ends with. surface is the fabric's before the
+// pass that balances in all directions.
 type found struct{ form, surface *canopy.Form }
 
 // net finds the shape of a structure without triangles.
@@ -195,7 +199,11 @@ func (c *chain) warmStart() *canopy.Form {
 		fixed := c.s.FixedAt(i)
 		f.Position[i] = r3.Add(only(c.s.Position[i], fixed), only(c.o.Warm.Position[i], canopy.DirAll&^fixed))
 	}
-	c.say("started from an earlier shape")
+	if c.o.below != nil {
+		c.say("coarse to fine: started from the surface found with mesh sides twice as long")
+	} else {
+		c.say("started from an earlier shape")
+	}
 	return f
 }
 
@@ -348,8 +356,9 @@ func (c *chain) fabric(ctx context.Context) error {
 	default:
 		return err
 	}
-	if equal {
-		c.smooth = c.f
+	c.smooth = c.f
+	if c.o.surface {
+		return nil
 	}
 	return c.finish(ctx)
 }

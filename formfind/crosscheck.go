@@ -44,7 +44,7 @@ func crossCheck(ctx context.Context, s *canopy.Structure, found found, o Options
 		}
 		return verdict(f, out, largestMove(f.Position, g.Position)/size, "the net from disturbed nodes"), nil
 	}
-	if found.surface != nil {
+	if found.surface != nil && equalStress(s) {
 		smooth := found.surface
 		normals := surface.VertexNormals(smooth.Position, s.Corners)
 		start := alongNormals(smooth, relax.Disturb(s, smooth, 2, 3e-4*size), normals)

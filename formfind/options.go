@@ -50,6 +50,10 @@ type Options struct {
 	Progress func(engine.Step)
 	// Recorder, if set, records every iteration of every engine.
 	Recorder *engine.Recorder
+
+	below   *canopy.Form // the surface found on the mesh half as fine
+	level   string       // which of several levels this is
+	surface bool         // leave out the pass that balances in all directions
 }
 
 // ErrEmpty is returned for a structure with nothing to find.

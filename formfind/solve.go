@@ -23,6 +23,25 @@ func Find(ctx context.Context, m *canopy.Model, o Options) (*canopy.Result, erro
 		return nil, err
 	}
 	o.Listed = o.Listed || m.Listed != nil
+	if o.Warm == nil {
+		coarse, steps, err := meshLevels(ctx, m, s)
+		if err != nil {
+			return nil, err
+		}
+		if len(steps) > 0 {
+			if err := check(coarse); err != nil {
+				return nil, err
+			}
+			warm, below, err := climb(ctx, coarse, steps, o)
+			if err != nil {
+				return nil, err
+			}
+			if warm != nil {
+				o.Warm, o.below = warm, below
+				s = steps[len(steps)-1].Fine
+			}
+		}
+	}
 	return solve(ctx, s, m, o)
 }
 
@@ -33,16 +52,15 @@ func Solve(ctx context.Context, s *canopy.Structure, o Options) (*canopy.Result,
 }
 
 func solve(ctx context.Context, s *canopy.Structure, m *canopy.Model, o Options) (*canopy.Result, error) {
-	if err := s.Validate(); err != nil {
-		return nil, fmt.Errorf("the structure does not fit together: %w", err)
-	}
-	if len(s.Ends) == 0 && len(s.Corners) == 0 {
-		return nil, ErrEmpty
-	}
-	if err := checkStays(s); err != nil {
+	if err := check(s); err != nil {
 		return nil, err
 	}
 	local, origin := nearOrigin(s)
+	if o.Warm != nil && origin != (r3.Vec{}) {
+		warm := *o.Warm
+		warm.Position = moved(warm.Position, r3.Scale(-1, origin))
+		o.Warm = &warm
+	}
 	got, err := findForm(ctx, local, o)
 	if err != nil {
 		return nil, err
@@ -63,6 +81,11 @@ func solve(ctx context.Context, s *canopy.Structure, m *canopy.Model, o Options)
 		}
 	}
 	backFrom(s, f, origin)
+	finer := math.NaN()
+	if o.below != nil && got.surface != nil {
+		backFrom(s, got.surface, origin)
+		finer = moveOnRefinement(o.below, got.surface, s) / 3 / s.Size()
+	}
 	r := &canopy.Result{
 		Title: m.Title, File: m.File, Digest: m.Digest,
 		Limits: m.Limits, Factors: m.Factors,
@@ -72,6 +95,7 @@ func solve(ctx context.Context, s *canopy.Structure, m *canopy.Model, o Options)
 	if err := Judge(ctx, r); err != nil {
 		return nil, err
 	}
+	r.Audit.Discretisation = finer
 	if disagreement != "" {
 		r.Audit.Trusted = false
 		r.Audit.Reasons = append(r.Audit.Reasons, disagreement)
@@ -79,14 +103,32 @@ func solve(ctx context.Context, s *canopy.Structure, m *canopy.Model, o Options)
 	return r, nil
 }
 
+// check refuses what cannot be solved before anything is.
+func check(s *canopy.Structure) error {
+	if err := s.Validate(); err != nil {
+		return fmt.Errorf("the structure does not fit together: %w", err)
+	}
+	if len(s.Ends) == 0 && len(s.Corners) == 0 {
+		return ErrEmpty
+	}
+	return checkStays(s)
+}
+
 // Judge fills the audit, quantities and findings of a result from its
 // structure and form: what check does with a file and Solve with what it
 // found.
 func Judge(ctx context.Context, r *canopy.Result) error {
 	var err error
+	// How far a finer mesh would move the answer was seen while solving and
+	// cannot be recomputed from the shape.
+	finer := r.Audit.Discretisation
+	if finer == 0 {
+		finer = math.NaN()
+	}
 	if r.Audit, err = audit.Run(ctx, r.Structure, r.Form, audit.Options{}); err != nil {
 		return fmt.Errorf("audit: %w", err)
 	}
+	r.Audit.Discretisation = finer
 	if !r.Form.Converged {
 		r.Audit.Trusted = false
 		r.Audit.Reasons = append(r.Audit.Reasons, "the engine did not converge: "+r.Form.Why)
@@ -134,6 +176,7 @@ func backFrom(s *canopy.Structure, f *canopy.Form, origin r3.Vec) {
 	if origin == (r3.Vec{}) {
 		return
 	}
+	f.Position = append([]r3.Vec(nil), f.Position...) // forms may share it
 	for i := range f.Position {
 		p := r3.Add(f.Position[i], origin)
 		fixed := s.FixedAt(i)

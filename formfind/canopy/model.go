@@ -22,8 +22,12 @@ type Model struct {
 
 	Listed *Structure
 
-	MeshSize   float64 // wanted length of a mesh side, m; 0 = chosen from the size of the model
-	SelfWeight bool    // weights act during form finding
+	MeshSize float64 // wanted length of a mesh side, m; 0 = chosen from the size of the model
+	// Coarser makes a mesh size that is chosen from the size of the model this
+	// many times longer; 0 = as it is. The front door sets it for the first of
+	// several levels.
+	Coarser    float64
+	SelfWeight bool // weights act during form finding
 	Limits     Limits
 	Factors    Factors
 }

@@ -1,0 +1,118 @@
+package formfind
+
+import (
+	"context"
+	"fmt"
+	"math"
+
+	"gonum.org/v1/gonum/spatial/r3"
+
+	"anticlast/formfind/canopy"
+	"anticlast/formfind/mesh"
+	"anticlast/formfind/surface"
+)
+
+// coarsest is about how many triangles the first of several levels has: few
+// enough to be solved at once, enough to have the shape of the answer.
+const coarsest = 300
+
+// coarserModel returns a model whose mesh sides are 2^levels times longer, or
+// false where numbers of segments given by hand do not allow that.
+func coarserModel(m *canopy.Model, levels int) (*canopy.Model, bool) {
+	k := 1 << levels
+	out := *m
+	out.MeshSize *= float64(k)
+	out.Coarser = float64(k)
+	out.Edges = append([]canopy.Edge(nil), m.Edges...)
+	for i := range out.Edges {
+		if out.Edges[i].Segments%k != 0 {
+			return nil, false
+		}
+		out.Edges[i].Segments /= k
+	}
+	out.Fabrics = append([]canopy.ModelFabric(nil), m.Fabrics...)
+	for i := range out.Fabrics {
+		out.Fabrics[i].MeshSize *= float64(k)
+	}
+	return &out, true
+}
+
+// meshLevels returns refinements from a coarse mesh of the model to one about
+// as fine as s, its mesh at once; none when one level is better.
+func meshLevels(ctx context.Context, m *canopy.Model, s *canopy.Structure) (*canopy.Structure, []*mesh.Refinement, error) {
+	if m.Listed != nil || len(s.Corners) < coarsest {
+		return nil, nil, nil
+	}
+	levels := max(1, int(math.Round(math.Log(float64(len(s.Corners))/coarsest)/math.Log(4))))
+	for ; levels > 0; levels-- {
+		cm, ok := coarserModel(m, levels)
+		if !ok {
+			continue
+		}
+		coarse, err := mesh.Build(ctx, cm)
+		if err != nil {
+			if ctx.Err() != nil {
+				return nil, nil, err
+			}
+			continue // what cannot be meshed coarsely is meshed at once
+		}
+		// Least numbers of segments may keep the coarse mesh from being as
+		// coarse as was asked for.
+		if got := float64(len(coarse.Corners)) * math.Pow(4, float64(levels)); got > 1.5*float64(len(s.Corners)) {
+			continue
+		}
+		var steps []*mesh.Refinement
+		for at := coarse; len(steps) < levels; {
+			r, err := mesh.Refine(at)
+			if err != nil {
+				return nil, nil, fmt.Errorf("refining the mesh: %w", err)
+			}
+			steps = append(steps, r)
+			at = r.Fine
+		}
+		return coarse, steps, nil
+	}
+	return nil, nil, nil
+}
+
+// climb solves level after level and returns a start for the last one and the
+// surface found on the one below it; nothing when a level has no shape, which
+// is for the last one to say.
+func climb(ctx context.Context, coarse *canopy.Structure, steps []*mesh.Refinement, o Options) (warm, below *canopy.Form, err error) {
+	o.surface, o.CrossCheck = true, false
+	s := coarse
+	for i, r := range steps {
+		o.level = fmt.Sprintf("level %d of %d", i+1, len(steps)+1)
+		local, origin := nearOrigin(s)
+		if o.Warm != nil {
+			w := *o.Warm
+			w.Position = moved(w.Position, r3.Scale(-1, origin))
+			o.Warm = &w
+		}
+		got, err := findForm(ctx, local, o)
+		if err != nil {
+			if ctx.Err() != nil {
+				return nil, nil, err
+			}
+			return nil, nil, nil
+		}
+		backFrom(s, got.form, origin)
+		below = got.form
+		o.Warm, o.below = r.Prolong(below), below
+		s = r.Fine
+	}
+	return o.Warm, below, nil
+}
+
+// moveOnRefinement is how far the nodes of the coarse mesh lie from the surface
+// of the fine one, along its normals, at most. For a method of second order a
+// third of it estimates how far the fine surface is from the smooth one
+// (Richardson 1911).
+func moveOnRefinement(coarse, fine *canopy.Form, s *canopy.Structure) float64 {
+	normals := surface.VertexNormals(fine.Position, s.Corners)
+	worst := 0.0
+	for i, p := range coarse.Position {
+		worst = math.Max(worst, math.Abs(r3.Dot(normals[i], r3.Sub(fine.Position[i], p))))
+	}
+	return worst
+}
