@@ -273,3 +273,16 @@ func TestThreeFilmsMeetAt120Degrees(t *testing.T) {
 		assert.Equal(t, 7, seam)
 	})
 }
+
+// A film whose border nothing holds shrinks away; it must not pass for a shape
+// because its inside is smooth.
+func TestFilmWithAFreeBorderIsNotConverged(t *testing.T) {
+	c := cases.EdgeCableStrip(10, 8, 3000, 39000, 12, 8)
+	s := *c.S
+	s.Ends, s.Kind, s.Law, s.Given, s.Cables, s.CableOf = nil, nil, nil, nil, nil, nil
+	for _, e := range []*relax.Engine{relax.New(), {Viscous: true}} {
+		_, out, err := e.Find(context.Background(), &s, nil, engine.Settings{MaxIterations: 20000})
+		require.NoError(t, err)
+		assert.NotEqual(t, engine.Converged, out.Status, e.Name())
+	}
+}
