@@ -23,7 +23,8 @@ const smoothLine = 0.8191520442889918
 //   - Fabric of prescribed stress away from lines: the normal of the surface.
 //     The stress does not resist sliding in the surface and does not change
 //     by it.
-//   - A node on one smooth cable or seam, with fabric or not: the two
+//   - A node on one smooth cable or seam, with fabric or not, and any node of
+//     a chain of given forces, two cables in tension and nothing else: the two
 //     directions across it.
 //   - All directions where lines meet, where fabric or a member there is
 //     elastic (sliding then stretches something), and in nets.
@@ -48,6 +49,7 @@ type ray struct {
 	node    int32
 	along   r3.Vec // unit, away from the node
 	elastic bool   // stretching it is resisted
+	pushed  bool
 }
 
 // findFreedoms chooses the unknowns.
@@ -72,27 +74,27 @@ func (c *audited) findFreedoms(ctx context.Context) (*freedoms, error) {
 	// Rays: members, and sides along which fabrics of different stress or
 	// more than two sheets meet.
 	var rays []ray
-	add := func(i, j int32, elastic bool) {
+	add := func(i, j int32, elastic, pushed bool) {
 		d := r3.Sub(x[j], x[i])
 		l := norm(d)
 		if !(l > 0) {
 			return
 		}
 		d = r3.Scale(1/l, d)
-		rays = append(rays, ray{i, d, elastic}, ray{j, r3.Scale(-1, d), elastic})
+		rays = append(rays, ray{i, d, elastic, pushed}, ray{j, r3.Scale(-1, d), elastic, pushed})
 	}
 	for k, e := range s.Ends {
 		flag[e[0]] |= touched
 		flag[e[1]] |= touched
 		_, axial := c.memberStiffness(k)
-		add(e[0], e[1], axial > 0)
+		add(e[0], e[1], axial > 0, c.f.Force[k] < 0)
 	}
 	if len(s.Corners) > 0 {
 		for _, e := range surface.Edges(s.Corners) {
 			if e.Triangles == 1 || e.Triangles == 2 && sameStress(s, e.First, e.Second) {
 				continue
 			}
-			add(e.Nodes[0], e.Nodes[1], false)
+			add(e.Nodes[0], e.Nodes[1], false, false)
 		}
 	}
 	if err := ctx.Err(); err != nil {
@@ -202,6 +204,11 @@ func smooth(rays []ray, fabric bool) (r3.Vec, bool) {
 	for _, r := range rays {
 		if r.elastic {
 			return r3.Vec{}, false
+		}
+	}
+	if !fabric && len(rays) == 2 && !rays[0].pushed && !rays[1].pushed {
+		if d := r3.Sub(rays[0].along, rays[1].along); norm(d) > 0.1 {
+			return r3.Unit(d), true
 		}
 	}
 	// The line is the sum of the rays turned to the side of the first.

@@ -232,6 +232,66 @@ func TestCommonForceEigenvalue(t *testing.T) {
 	require.InEpsilon(t, eig.Values(nil)[0], r.Eigenvalue, 1e-5)
 }
 
+// A sharply kinked chain of given forces under dead loads, a funicular: as
+// beads its nodes could slide along it, as a shape it is stable.
+func TestFunicularIsTrusted(t *testing.T) {
+	s := structure()
+	s.Load = make([]r3.Vec, 5)
+	for i, p := range [][2]float64{{0, 0}, {1, -4}, {4, -6}, {7, -4}, {8, 0}} {
+		fixed := canopy.Freedom(0)
+		if i%4 == 0 {
+			fixed = canopy.DirAll
+		}
+		node(s, p[0], 0, p[1], fixed)
+	}
+	var q []float64
+	for i := range int32(4) {
+		q = append(q, []float64{6e3, 2e3, 2e3, 6e3}[i])
+		member(s, i, i+1, canopy.KindCable, canopy.LawForceDensity, q[i])
+	}
+	// The loads that these force densities carry in this shape: vertical.
+	for i := 1; i < 4; i++ {
+		p, a, b := s.Position[i], s.Position[i-1], s.Position[i+1]
+		s.Load[i] = r3.Sub(r3.Scale(q[i-1], r3.Sub(p, a)), r3.Scale(q[i], r3.Sub(b, p)))
+		require.Zero(t, s.Load[i].X)
+		require.Negative(t, s.Load[i].Z)
+	}
+	trusted(t, run(t, s, solveForm(t, s, q)))
+}
+
+// A cable ring on three radial cables, all of given force: it balances at any
+// radius, since 2·T·sin 60° of the ring is the radial force whatever its size.
+// All being in tension this is no instability; it is said.
+func TestRingOfGivenForceFloats(t *testing.T) {
+	s := structure()
+	const T = 1e3
+	var force []float64
+	for k := range 3 {
+		g := 2 * math.Pi * float64(k) / 3
+		node(s, math.Cos(g), math.Sin(g), 0, 0)
+	}
+	for k := range 3 {
+		g := 2 * math.Pi * float64(k) / 3
+		e := node(s, 4*math.Cos(g), 4*math.Sin(g), 0, canopy.DirAll)
+		member(s, int32(k), e, canopy.KindNetCable, canopy.LawForce, math.Sqrt(3)*T)
+		force = append(force, math.Sqrt(3)*T)
+	}
+	for k := range int32(3) {
+		member(s, k, (k+1)%3, canopy.KindRingCable, canopy.LawForce, T)
+		force = append(force, T)
+	}
+	f := report(s, force...)
+	a := run(t, s, f)
+	trusted(t, a)
+	require.Contains(t, a.StabilityNote, "only the stretching of cables")
+	// With a stiffness in the ring it sits.
+	s.Stiffness = []float64{0, 0, 0, 1e6, 1e6, 1e6}
+	a = run(t, s, f)
+	trusted(t, a)
+	require.Empty(t, a.StabilityNote)
+	require.Greater(t, a.Softest, 1.)
+}
+
 // Equal tensions on the corners of a square: the two junctions of the minimal
 // network, length (1+√3)·d with 120° between its cables (Steiner), and the
 // crossing of the diagonals, are both in equilibrium; each is stable as

@@ -385,6 +385,11 @@ func (c *audited) judgeStability(a *canopy.Audit, r StabilityResult, why *reason
 		why.add("stability is not known: %s", r.Note)
 	case len(r.Loose) > 0:
 		why.add("nothing holds node %s in some direction (%d nodes in all)", c.s.NodeName.At(int(r.Loose[0])), len(r.Loose))
+	case !math.IsNaN(r.Firmness) && r.Firmness <= r.Threshold && r.Convex:
+		// Members turn nowhere in this motion, they only change their
+		// length. Real ones resist that; these have no stiffness given.
+		a.StabilityNote = fmt.Sprintf("the prestress alone does not hold node %s along (%.2f, %.2f, %.2f): only the stretching of cables does, whose stiffness is not given",
+			c.s.NodeName.At(int(r.Node)), r.Mode[r.Node].X, r.Mode[r.Node].Y, r.Mode[r.Node].Z)
 	case !math.IsNaN(r.Firmness) && r.Firmness <= r.Threshold:
 		why.add("part of the structure has no stiffness: node %s can be moved along (%.2f, %.2f, %.2f) without resistance", c.s.NodeName.At(int(r.Node)), r.Mode[r.Node].X, r.Mode[r.Node].Y, r.Mode[r.Node].Z)
 	}
