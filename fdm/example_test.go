@@ -36,10 +36,10 @@ func Example() {
 	fmt.Printf("forces %.0f N\n", force)
 	// Output:
 	// node at (6.00, 6.00, 1.20) m
-	// forces [8569 7256 11567 7746] N
+	// forces [8570 7255 11565 7736] N
 }
 
-// A hanging cable of given unstressed length: Fit finds its force density.
+// A hanging cable of given sag: Fit finds its force density.
 func ExampleSolver_Fit() {
 	network := fdm.Network{
 		Position: []r3.Vec{{}, {X: 5}, {X: 10}, {X: 15}, {X: 20}},

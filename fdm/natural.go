@@ -119,7 +119,7 @@ func (s *Solver) Natural(ctx context.Context, ref []r3.Vec, given Given, updates
 // polish takes the rounding of the solve out of the shape: once more with what
 // is out of balance, kept if it helps.
 func (s *Solver) polish(ctx context.Context, r *NaturalResult, laid []flat) error {
-	enough := 4 * s.rounding(r.Position)
+	enough := 4 * s.rounding(r.Position, false)
 	for range 3 {
 		if r.Residual <= enough {
 			return nil
@@ -153,7 +153,7 @@ func (s *Solver) polish(ctx context.Context, r *NaturalResult, laid []flat) erro
 			return err
 		}
 	}
-	if !(r.Residual <= max(stillBalanced, enough)) {
+	if !s.acceptable(r.Residual, r.Position) {
 		return s.lost(nil, r.Position)
 	}
 	return nil

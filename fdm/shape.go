@@ -138,7 +138,7 @@ func (s *Solver) settle(ctx context.Context, dst []r3.Vec) error {
 	}
 	shift(x, s.move)
 	left := s.imbalance(x)
-	enough := 4 * s.rounding(x)
+	enough := 4 * s.rounding(x, false)
 	for left > enough {
 		if err := ctx.Err(); err != nil {
 			return err
@@ -165,40 +165,74 @@ func (s *Solver) settle(ctx context.Context, dst []r3.Vec) error {
 			return err
 		}
 	}
-	if !(left <= max(stillBalanced, enough)) {
+	if !s.acceptable(left, x) {
 		return s.lost(nil, x)
 	}
 	copy(dst, x)
 	return nil
 }
 
-// stillBalanced is the imbalance ‖r‖₂/‖s‖₂ beyond which a shape is none.
+// stillBalanced is the imbalance ‖r‖₂/‖s‖₂ beyond which a shape is none, unless
+// the forces themselves are lost in rounding.
 const stillBalanced = 1e-6
 
 // rounding is about the imbalance that rounding the positions x to floating
 // point causes by itself: in a fine net members are short beside coordinates.
-// It belongs to the sizes that the last imbalance left in s.size.
-func (s *Solver) rounding(x []r3.Vec) float64 {
+// It belongs to the sizes that the last imbalance left in s.size. Each node's
+// own coordinates count, or, when far, the largest of all.
+func (s *Solver) rounding(x []r3.Vec, far bool) float64 {
 	const unit = 1.0 / (1 << 53)
-	var have, size float64
+	var reach r3.Vec
+	if far {
+		for _, p := range x {
+			p = absVec(p)
+			reach = r3.Vec{X: max(reach.X, p.X), Y: max(reach.Y, p.Y), Z: max(reach.Z, p.Z)}
+		}
+	}
+	coordinate := func(sys *system, u, axis int) float64 {
+		if far {
+			return *at(&reach, axis)
+		}
+		return math.Abs(*at(&x[sys.node[u]], axis))
+	}
+	// Both norms are taken over their largest entry: squares of tiny numbers
+	// vanish.
+	var have, size, top, most float64
 	for _, sys := range s.systems {
 		for u, d := range sys.values[:sys.n] {
 			for _, axis := range sys.axes {
-				p := d * *at(&x[sys.node[u]], axis)
+				top = max(top, math.Abs(d)*coordinate(sys, u, axis))
+			}
+		}
+	}
+	for _, p := range s.size {
+		most = max(most, p.X, p.Y, p.Z)
+	}
+	if most == 0 || top == 0 {
+		return 0
+	}
+	for _, sys := range s.systems {
+		for u, d := range sys.values[:sys.n] {
+			for _, axis := range sys.axes {
+				p := d / top * coordinate(sys, u, axis)
 				have += p * p
 			}
 		}
 	}
 	for _, p := range s.size {
-		size += r3.Norm2(p)
+		size += r3.Norm2(r3.Scale(1/most, p))
 	}
-	if size == 0 {
-		return 0
-	}
-	return unit * math.Sqrt(have/size)
+	return unit * (top / most) * math.Sqrt(have/size)
 }
 
-// lost says why a system that passed all checks still gave no shape.
+// acceptable reports whether the imbalance left at x is one that rounding
+// explains, or small.
+func (s *Solver) acceptable(left float64, x []r3.Vec) bool {
+	return left <= stillBalanced || left <= 256*s.rounding(x, true)
+}
+
+// lost says why a system that passed all checks still gave no shape x: by the
+// node that has gone farthest.
 func (s *Solver) lost(err error, x []r3.Vec) error {
 	worst, where, axes := 0.0, int32(-1), DirAll
 	for _, sys := range s.systems {
