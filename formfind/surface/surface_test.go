@@ -390,3 +390,51 @@ func BenchmarkContours(b *testing.B) {
 		surface.Contours(p, c, levels)
 	}
 }
+
+// The distance of points from a surface, against looking at every triangle.
+func TestDistance(t *testing.T) {
+	p, c := patch(12, 3, 0.3, func(x, y float64) float64 { return 0.3 * x * y })
+	brute := func(q r3.Vec) float64 { // dense sampling of every triangle
+		best := math.Inf(1)
+		for _, k := range c {
+			const n = 12
+			for i := 0; i <= n; i++ {
+				for j := 0; i+j <= n; j++ {
+					u, v := float64(i)/n, float64(j)/n
+					w := r3.Add(p[k[0]], r3.Add(r3.Scale(u, r3.Sub(p[k[1]], p[k[0]])), r3.Scale(v, r3.Sub(p[k[2]], p[k[0]]))))
+					best = min(best, r3.Norm(r3.Sub(q, w)))
+				}
+			}
+		}
+		return best
+	}
+	rapid.Check(t, func(t *rapid.T) {
+		g := rapid.Float64Range(-6, 6)
+		q := r3.Vec{X: g.Draw(t, "x"), Y: g.Draw(t, "y"), Z: g.Draw(t, "z")}
+		d, at := surface.Distance([]r3.Vec{q}, p, c)
+		require.Zero(t, at)
+		b := brute(q)
+		require.LessOrEqual(t, d, b+1e-12)
+		require.Greater(t, d, b-0.06)
+	})
+	// Points of the surface itself, and one that is not.
+	d, _ := surface.Distance(p, p, c)
+	require.InDelta(t, 0, d, 1e-12)
+	d, at := surface.Distance([]r3.Vec{p[3], {Z: 2}, p[5]}, p, c)
+	require.Equal(t, 1, at)
+	require.InDelta(t, 2, d, 0.2)
+	_, at = surface.Distance(nil, p, c)
+	require.Equal(t, -1, at)
+	// A finer mesh of the same surface is near.
+	fine, _ := patch(24, 3, 0, func(x, y float64) float64 { return 0.3 * x * y })
+	d, _ = surface.Distance(fine, p, c)
+	require.Less(t, d, 0.06)
+}
+
+func BenchmarkDistance(b *testing.B) {
+	p, c := patch(175, 5, 0.2, func(x, y float64) float64 { return 0.1 * x * y })
+	q, _ := patch(170, 5, 0.2, func(x, y float64) float64 { return 0.1 * x * y })
+	for b.Loop() {
+		surface.Distance(q, p, c)
+	}
+}
