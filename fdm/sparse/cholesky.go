@@ -12,74 +12,79 @@ const (
 	shareFlops = 400e3
 )
 
-// blockJob is one step in the elimination of a front f of m rows with n
-// columns to eliminate, at the block of w columns from column k.
+// blockJob is one step in the elimination of a front, in pieces that helpers
+// may take.
 type blockJob struct {
-	f       []float64
-	ld      int
-	m, n    int
-	k, w    int
-	u       []float64
-	ldu, nu int
+	// Solving the rows below a block of w columns at column k of a front f of
+	// m rows.
+	f    []float64
+	ld   int
+	m    int
+	k, w int
+	// The product C −= A·Bᵀ, B the first n rows of A: its lower trapezoid.
+	c, a    []float64
+	ldc     int
+	rows, n int
+	depth   int
+	fresh   bool
+	packed  []float64 // A packed, or nil
 }
 
 // choleskyPanel factors the first n columns of a front of m rows in place:
 // lower triangle of the n×n top, with the diagonal of L inverted since it is
-// only ever divided by, and the rows below. It returns the column of
-// the first pivot that is not positive and its value, or -1.
-func choleskyPanel(f []float64, ld, m, n int, help *crew) (int, float64) {
+// only ever divided by, and the rows below. It returns the column of the first
+// pivot that is not positive and its value, or -1.
+func choleskyPanel(f []float64, ld, m, n int, w *worker) (int, float64) {
 	if n <= blockColumns && m <= 2*blockRows {
 		return choleskyBlock(f, ld, m, n)
 	}
-	var own blockJob
-	b := &own
-	if help != nil {
-		b = &help.block
-	}
-	*b = blockJob{f: f, ld: ld, m: m, n: n}
+	b := w.job()
+	b.f, b.ld, b.m = f, ld, m
 	for k := 0; k < n; k += blockColumns {
 		b.k, b.w = k, min(blockColumns, n-k)
 		if bad, pivot := choleskyBlock(f[k*ld+k:], ld, b.w, b.w); bad >= 0 {
 			return k + bad, pivot
 		}
-		right := n - k - b.w
-		each(help, b, jobRows, (m-k-b.w+blockRows-1)/blockRows, float64(m-k-b.w)*float64(b.w*b.w))
-		each(help, b, jobColumns, (right+blockColumns-1)/blockColumns, 2*float64(m-k-b.w)*float64(b.w)*float64(right))
+		r := k + b.w
+		w.each(jobRows, (m-r+blockRows-1)/blockRows, float64(m-r)*float64(b.w*b.w))
+		if r < n {
+			w.lowerProduct(f[r*ld+r:], ld, f[k*ld+r:], ld, m-r, n-r, b.w, false)
+		}
 	}
 	return -1, 0
 }
 
-// choleskyUpdate forms u = −L·Lᵀ of the rows below the n columns.
-func choleskyUpdate(u, f []float64, ld, n, nu int, help *crew) {
-	if help == nil || nu <= blockColumns {
+// choleskyUpdate forms u = −L·Lᵀ of the nu rows below the n columns.
+func choleskyUpdate(u, f []float64, ld, n, nu int, w *worker) {
+	if nu < packFrom {
 		mulSub(u, nu, f[n:], ld, f[n:], ld, nu, nu, n, true, true)
 		return
 	}
-	b := &help.block
-	*b = blockJob{f: f, ld: ld, m: n + nu, n: n, u: u, ldu: nu, nu: nu}
-	each(help, b, jobUpdate, (nu+lowerStep-1)/lowerStep, float64(nu)*float64(nu)*float64(n))
+	w.lowerProduct(u, nu, f[n:], ld, nu, nu, n, true)
 }
 
-// each runs the parts of a job, with helpers if it is worth it.
-func each(help *crew, b *blockJob, kind jobKind, parts int, flops float64) {
-	if help != nil && parts > 1 && flops > shareFlops {
-		help.split(kind, parts)
-		return
+// lowerProduct does C −= A·Bᵀ (C = −A·Bᵀ if fresh) for the lower trapezoid of
+// m×n C, A m×k, B the first n rows of A.
+func (w *worker) lowerProduct(c []float64, ldc int, a []float64, lda, m, n, k int, fresh bool) {
+	b := w.job()
+	b.c, b.ldc, b.ld, b.rows, b.n = c, ldc, lda, m, n
+	packs := haveStrips && m >= packFrom && k >= packThick
+	depth := k
+	if packs {
+		depth = packDepth
 	}
-	for i := range parts {
-		switch kind {
-		case jobRows:
-			b.rows(i)
-		case jobColumns:
-			b.columns(i)
-		case jobUpdate:
-			b.update(i)
+	for l := 0; l < k; l += depth {
+		b.a, b.depth, b.fresh, b.packed = a[l*lda:], min(depth, k-l), fresh && l == 0, nil
+		if packs {
+			b.packed = w.scratch
+			pack(b.packed, b.a, lda, m, b.depth)
 		}
+		w.each(jobProduct, (n+packColumns-1)/packColumns, float64(2*m-n)*float64(n)*float64(b.depth))
 	}
 }
 
-// rows solves piece i of the rows below the diagonal block.
-func (b *blockJob) rows(i int) {
+// rowsPiece solves piece i of the rows below the diagonal block.
+func (b *blockJob) rowsPiece(i int) {
 	f, ld := b.f, b.ld
 	from := b.k + b.w + i*blockRows
 	to := min(from+blockRows, b.m)
@@ -90,20 +95,15 @@ func (b *blockJob) rows(i int) {
 	}
 }
 
-// columns subtracts the block from piece i of the columns to its right.
-func (b *blockJob) columns(i int) {
-	f, ld := b.f, b.ld
-	j := b.k + b.w + i*blockColumns
-	v := min(blockColumns, b.n-j)
-	mulSub(f[j*ld+j:], ld, f[b.k*ld+j:], ld, f[b.k*ld+j:], ld, b.m-j, v, b.w, false, true)
-}
-
-// update forms piece i of the columns of the update matrix.
-func (b *blockJob) update(i int) {
-	j := i * lowerStep
-	v := min(lowerStep, b.nu-j)
-	l := b.f[b.n+j:]
-	mulSub(b.u[j*b.ldu+j:], b.ldu, l, b.ld, l, b.ld, b.nu-j, v, b.n, true, true)
+// productPiece does piece i of the columns of the product.
+func (b *blockJob) productPiece(i int) {
+	if b.packed != nil {
+		mulSubPacked(b.c, b.ldc, b.packed, b.rows, b.n, b.depth, i, b.fresh)
+		return
+	}
+	j := i * packColumns
+	v := min(packColumns, b.n-j)
+	mulSub(b.c[j*b.ldc+j:], b.ldc, b.a[j:], b.ld, b.a[j:], b.ld, b.rows-j, v, b.depth, b.fresh, true)
 }
 
 // choleskyBlock factors n columns of m rows, four columns at a time.

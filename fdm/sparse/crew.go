@@ -17,17 +17,38 @@ type worker struct {
 	scratch []float64
 	shares  bool // several workers: see plan
 	alone   bool // runs a subtree beside others, so that fronts are not to be split
+	block   blockJob
 
 	badPlace int32
 	badPivot float64
 }
 
-// helpers is the crew that may share the work inside a front, or nil.
-func (w *worker) helpers() *crew {
+// job is the description of the work inside the front at hand.
+func (w *worker) job() *blockJob {
 	if w.alone {
-		return nil
+		return &w.block
 	}
-	return w.crew
+	return &w.crew.block
+}
+
+// each runs the pieces of a job, with the rest of the crew if it is worth it.
+func (w *worker) each(kind jobKind, pieces int, flops float64) {
+	if !w.alone && pieces > 1 && flops > shareFlops {
+		w.crew.split(kind, pieces)
+		return
+	}
+	b := w.job()
+	for i := range pieces {
+		b.piece(kind, i)
+	}
+}
+
+func (b *blockJob) piece(kind jobKind, i int) {
+	if kind == jobRows {
+		b.rowsPiece(i)
+	} else {
+		b.productPiece(i)
+	}
 }
 
 // crew runs a factorisation with one or more workers.
@@ -57,8 +78,7 @@ type jobKind int
 const (
 	jobSubtrees jobKind = iota
 	jobRows
-	jobColumns
-	jobUpdate
+	jobProduct
 )
 
 func (c *crew) init(f *Factor, n int) {
@@ -191,12 +211,8 @@ func (c *crew) take(w *worker) {
 		case jobSubtrees:
 			p := &c.f.a.plan
 			c.run(c.ctx, c.vals, w, p.taskFirst[i], p.taskRoot[i])
-		case jobRows:
-			c.block.rows(int(i))
-		case jobColumns:
-			c.block.columns(int(i))
-		case jobUpdate:
-			c.block.update(int(i))
+		default:
+			c.block.piece(c.kind, int(i))
 		}
 	}
 }

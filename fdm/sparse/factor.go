@@ -139,11 +139,11 @@ func (f *Factor) front(s int32, values []float64, w *worker) bool {
 		}
 		ldlUpdate(u, p, rows, cols, nu, cols, d, e, w.scratch)
 	} else {
-		if bad, pivot := choleskyPanel(p, rows, rows, cols, w.helpers()); bad >= 0 {
+		if bad, pivot := choleskyPanel(p, rows, rows, cols, w); bad >= 0 {
 			w.badPlace, w.badPivot = a.first[s]+int32(bad), pivot
 			return false
 		}
-		choleskyUpdate(u, p, rows, cols, nu, w.helpers())
+		choleskyUpdate(u, p, rows, cols, nu, w)
 	}
 	if nu > 0 {
 		for _, c := range kids {

@@ -91,9 +91,6 @@ func mulSubPortable(c []float64, ldc int, a []float64, lda int, b []float64, ldb
 	}
 }
 
-// lowerStep is the width of the pieces in which workers share a lower triangle.
-const lowerStep = 32
-
 // lastRows are the masks for 0 to 3 rows of a group of four.
 var lastRows = [4][4]int64{{}, {-1}, {-1, -1}, {-1, -1, -1}}
 

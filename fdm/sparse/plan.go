@@ -49,8 +49,13 @@ func (a *Analysis) newPlan() plan {
 		_, rows := a.shape(s)
 		p.scratch = max(p.scratch, rows)
 	}
-	// The scratch holds a block of W = L·D, or an update of 4 columns in a solve.
-	p.scratch *= ldlBlock
+	// The scratch holds packed rows, a block of W = L·D, or the three columns of
+	// a solve.
+	if p.scratch >= packFrom {
+		p.scratch = (p.scratch + packRows) * packDepth
+	} else {
+		p.scratch *= ldlBlock
+	}
 	a.planTasks(&p, odd)
 	return p
 }

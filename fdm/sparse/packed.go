@@ -1,0 +1,48 @@
+package sparse
+
+const (
+	packRows    = 8   // rows of a packed block
+	packDepth   = 128 // columns packed at a time: a block of eight rows is a quarter of the first-level cache
+	packColumns = 64  // columns of C worked on at a time: their blocks are a part of the second-level cache
+	packFrom    = 96  // rows from which packing pays, in a product at least packThick deep
+	packThick   = 24
+)
+
+// pack copies m rows of k columns into blocks of eight rows, each stored column
+// by column, the last one filled up with zeros.
+func pack(dst, a []float64, lda, m, k int) {
+	i := 0
+	for ; i+packRows <= m; i += packRows {
+		block := dst[i*k:][:packRows*k]
+		for l := range k {
+			d := (*[packRows]float64)(block[packRows*l:])
+			s := (*[packRows]float64)(a[l*lda+i:])
+			*d = *s
+		}
+	}
+	if i < m {
+		block := dst[i*k:][:packRows*k]
+		clear(block)
+		for l := range k {
+			copy(block[packRows*l:], a[l*lda+i:l*lda+m])
+		}
+	}
+}
+
+// mulSubPacked does piece i, packColumns wide, of the lower trapezoid of
+// C −= A·Bᵀ (C = −A·Bᵀ if fresh), where B is the first n of the m rows of A,
+// packed at p.
+func mulSubPacked(c []float64, ldc int, p []float64, m, n, k, i int, fresh bool) {
+	flag := 0
+	if fresh {
+		flag = 1
+	}
+	j0 := i * packColumns
+	j1 := min(j0+packColumns, n)
+	for i := j0; i < m; i += packRows {
+		mi := min(packRows, m-i)
+		for j := j0; j < j1 && j < i+mi; j += 4 {
+			mulSubStrip(&c[j*ldc+i], &p[i*k], &p[(j&^7)*k+j&7], ldc, packRows, packRows, mi, min(4, j1-j), k, 8, flag)
+		}
+	}
+}
