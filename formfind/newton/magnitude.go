@@ -43,13 +43,16 @@ type magnitudes struct {
 
 	triangle []float64 // s by triangle
 	member   []float64 // share by member
+	last     []float64 // the last fit by unknown
 }
 
 const (
-	// smoothness weighs the gradient of the magnitude against the balance.
-	smoothness = 3e-4
-	// trace holds what the balance says nothing about near one.
-	traceWeight = 1e-8
+	// smoothness weighs the gradient of the magnitude against the balance, for a
+	// triangle as large as all fabric of unequal stress; smaller ones by area,
+	// so that a finer mesh comes nearer to balance.
+	smoothness = 0.3
+	// traceWeight holds what the balance says nothing about where it was.
+	traceWeight = 1e-10
 	// leastShare keeps fitted stresses in tension.
 	leastShare = 1e-3
 )
@@ -70,6 +73,9 @@ func (g *magnitudes) reset() {
 	}
 	for m := range g.member {
 		g.member[m] = 1
+	}
+	for u := range g.last {
+		g.last[u] = 1
 	}
 }
 
@@ -190,6 +196,7 @@ func (v *Solver) newMagnitudes(ctx context.Context) (*magnitudes, error) {
 		return nil, fmt.Errorf("newton: %w", err)
 	}
 	g.values = make([]float64, g.unknowns+len(pairs))
+	g.last = make([]float64, g.unknowns)
 	return g, nil
 }
 
@@ -223,6 +230,13 @@ func (v *Solver) fit(ctx context.Context, st *state) error {
 	// Balance and gradient are weighed by the magnitude of the last fit, so
 	// that they are relative where the stress is low.
 	level, count := make([]float64, len(s.Position)), make([]float64, len(s.Position))
+	area := 0.0
+	for t, c := range s.Corners {
+		if g.corner[t][0] >= 0 {
+			tri, _ := element.NewTriangle(st.at[c[0]], st.at[c[1]], st.at[c[2]])
+			area += tri.Area
+		}
+	}
 	for t, c := range s.Corners {
 		if g.corner[t][0] < 0 {
 			continue
@@ -244,9 +258,9 @@ func (v *Solver) fit(ctx context.Context, st *state) error {
 			}
 			mean[g.corner[t][k]] += tri.Area / 3
 		}
-		// Gradient penalty: smoothness·(σA)²|∇s|².
+		// Gradient penalty: smoothness·(A/ΣA)·(σA)²·|∇s/s|².
 		q := 0.5 * (p[0] + p[1]) * tri.Area
-		w := smoothness * q * q / (g.triangle[t] * g.triangle[t])
+		w := smoothness * tri.Area / area * q * q / (g.triangle[t] * g.triangle[t])
 		for _, i := range c {
 			level[i] += g.triangle[t]
 			count[i]++
@@ -295,14 +309,11 @@ func (v *Solver) fit(ctx context.Context, st *state) error {
 			}
 		}
 	}
-	// A pull towards one, far below everything else.
-	most := 0.0
-	for _, d := range values[:g.unknowns] {
-		most = max(most, d)
-	}
+	// A pull towards the last fit, far below everything else.
 	for u := range g.unknowns {
-		values[u] += traceWeight * most
-		right[u] += traceWeight * most
+		w := traceWeight * values[u]
+		values[u] += w
+		right[u] += w * g.last[u]
 	}
 	if err := g.factor.Refactor(ctx, values); err != nil {
 		return fmt.Errorf("newton: magnitude of unequal stress: %w", err)
@@ -343,6 +354,7 @@ func (v *Solver) fit(ctx context.Context, st *state) error {
 		}
 		z[u] = max(z[u], leastShare)
 	}
+	copy(g.last, z)
 	for t := range s.Corners {
 		if c := g.corner[t]; c[0] >= 0 {
 			g.triangle[t] = (z[c[0]] + z[c[1]] + z[c[2]]) / 3

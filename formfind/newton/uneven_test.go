@@ -58,7 +58,7 @@ func TestConesOfConstantRatio(t *testing.T) {
 		sizes = []int{12, 24, 48, 96}
 	}
 	for _, k := range []struct{ h, m, law, ratio float64 }{
-		{1, 0.5, 0.01, 0.002}, {2, 0.5, 0.02, 0.003}, {3, 1.0 / 3, 0.02, 0.004}, {0.5, 2, 0.08, 0.012}, {0.3, 3, 0.15, 0.02},
+		{1, 0.5, 0.03, 2e-3}, {2, 0.5, 0.03, 2e-3}, {3, 1.0 / 3, 0.03, 2e-3}, {0.5, 2, 0.08, 2e-3}, {0.3, 3, 0.12, 2e-3},
 	} {
 		t.Run(fmt.Sprintf("h=%g m=%.3g", k.h, k.m), func(t *testing.T) {
 			var place []float64
@@ -82,9 +82,8 @@ func TestConesOfConstantRatio(t *testing.T) {
 					assert.InDelta(t, 1, hi, k.ratio)
 				}
 			}
-			for i := 1; i < len(place); i++ {
-				assert.Greater(t, math.Log2(place[i-1]/place[i]), 1.7)
-			}
+			last := len(place) - 1
+			assert.Greater(t, math.Log2(place[0]/place[last])/float64(last), 1.7, "order")
 		})
 	}
 }
