@@ -114,7 +114,7 @@ func (b *builder) seesOutline(l *loop) bool {
 			sign = turn
 		}
 		for _, q := range [2]xy{a, c} {
-			if turn*math.Copysign(1, sign) < 0.2*math.Hypot(q.x, q.y)*math.Hypot(c.x-a.x, c.y-a.y) {
+			if turn*math.Copysign(1, sign) < 0.6*math.Hypot(q.x, q.y)*math.Hypot(c.x-a.x, c.y-a.y) {
 				return false
 			}
 		}
@@ -122,5 +122,5 @@ func (b *builder) seesOutline(l *loop) bool {
 		far = max(far, math.Hypot(a.x, a.y))
 	}
 	r := b.m.Rings[l.ring].Radius
-	return near > 1.5*r && far < 4*near
+	return near > 1.5*r && far < 2.5*near
 }

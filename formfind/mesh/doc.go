@@ -9,7 +9,9 @@
 // sides an edge gets follows from the wanted length of a side (the fabric's, the
 // model's, or one chosen so that the whole canopy has about 1,600 triangles),
 // from the spacing of net lines, or from the edge itself (Edge.Segments), which
-// wins. Patches relate the edges around them:
+// wins. Where its shape allows that without thin triangles, a fabric is meshed
+// by a structured patch whose lines follow the boundary, and so the yarn laid
+// along it:
 //
 //   - four sides (or a boundary whose corners group it into four sides with as
 //     many edges on opposite ones): a grid by transfinite interpolation
@@ -21,8 +23,16 @@
 //   - around a ring, any number of sides, divided as they like: radial lines
 //     with layers whose depth grows with the distance from the ring.
 //
-// Numbers of sides chosen here are even, and diagonals mirror about the middle
-// of a patch, so that a symmetric model has a symmetric mesh.
+// Any other outline, with a ring in it or without, is triangulated in the plane
+// of its vector area: constrained Delaunay (Lawson 1977; Sloan 1993) with exact
+// predicates (after Shewchuk 1997), refined by circumcentres (Chew 1989;
+// Ruppert 1995), smoothed, and lifted into space by mean value coordinates
+// (Floater 2003). Its sides may be divided in any way.
+//
+// Rim cables start about at the sag that the prestress will give them, so that
+// the mesh of the found shape is about as even as that of the start. Numbers of
+// sides chosen here are even, and diagonals of structured patches mirror about
+// their middle, so that a symmetric model has a symmetric mesh.
 //
 // # Names
 //

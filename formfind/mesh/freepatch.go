@@ -43,7 +43,11 @@ func (freePatch) fill(p *plot) {
 		p.b.foldedOutline(p.l, f, err)
 		return
 	}
-	r := refinement{d: d, size: f.size, in: d.inside(), rim: len(d.p)}
+	mean := 0.0
+	for _, h := range f.size[3:] {
+		mean += h / float64(len(f.size)-3)
+	}
+	r := refinement{d: d, size: f.size, most: max(mean, p.b.meshSize(p.l)), in: d.inside(), rim: len(d.p)}
 	r.run(MaxTriangles)
 	r.smooth(4)
 	// Nodes and triangles in space: offsets from the plane by mean value
@@ -195,6 +199,7 @@ func halfTan(x0, y0, r0, x1, y1, r1 float64) float64 {
 type refinement struct {
 	d    *delaunay
 	size []float64 // per point
+	most float64   // largest wanted side
 	in   []bool    // per triangle: inside the outline
 	rim  int       // points of the outline and far corners
 	used []bool    // per point: corner of a triangle inside
@@ -207,7 +212,7 @@ const (
 	fat = 1.065
 	// … or more than large times the wanted side; that of an equilateral
 	// triangle is 0.577.
-	large = 0.62
+	large = 0.76
 	// growth of the wanted side per distance from what is smaller.
 	growth = 0.2
 )
@@ -312,7 +317,7 @@ func (r *refinement) crowds(o xy, t int32) bool {
 
 func (r *refinement) insert(o xy, t int32, side int) {
 	d := r.d
-	want := math.Inf(1)
+	want := r.most
 	for _, i := range d.v[t] {
 		want = min(want, r.size[i]+growth*math.Hypot(d.p[i].x-o.x, d.p[i].y-o.y))
 	}

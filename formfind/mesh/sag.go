@@ -30,6 +30,13 @@ func (b *builder) sagVector(i int) r3.Vec {
 		return r3.Vec{}
 	}
 	s := min(b.expectedSag(i, l, c), b.sagRoom(i, l))
+	if l.ring >= 0 {
+		// Clear of the ring.
+		d := r3.Sub(b.curve[i].at(0.5), b.ringAt(l))
+		axis := b.ringAxis(l.ring)
+		flat := r3.Norm(r3.Sub(d, r3.Scale(r3.Dot(d, axis), axis)))
+		s = min(s, max(0, flat-2*b.m.Rings[l.ring].Radius)/c)
+	}
 	return r3.Scale(s*c/r3.Norm(in), in)
 }
 
