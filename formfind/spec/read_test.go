@@ -185,6 +185,13 @@ func TestUnits(t *testing.T) {
 		require.NoError(t, err, c.text)
 		require.InEpsilon(t, c.want, got, 1e-15, c.text)
 	}
+	// A tenth of a metre is 0.1 to the last bit, whatever the unit.
+	for i := range 1000 {
+		want := float64(i) / 1000
+		got, err := spec.ParseQuantity(fmt.Sprintf("%d mm", i), spec.Length)
+		require.NoError(t, err)
+		require.Equal(t, want, got)
+	}
 	for _, s := range []string{"", "kN", "2.5.1 m", "1 2 m", "2 m m", "2 /m", "1e m", "∞", "−3 m", "3;"} {
 		_, err := spec.ParseQuantity(s, spec.Length)
 		require.Error(t, err, s)
@@ -456,7 +463,7 @@ listed:
 // Rows in the file, CSV text in the file and a CSV file say the same.
 func TestThreeWaysToWriteATable(t *testing.T) {
 	dir := t.TempDir()
-	require.NoError(t, os.WriteFile(filepath.Join(dir, "nodes.csv"), []byte("x,y,z\n0,0,0\n1,0,0\n2,0.5,0\n"), 0o644))
+	require.NoError(t, os.WriteFile(filepath.Join(dir, "nodes.csv"), []byte("\xef\xbb\xbfx,y,z\n0,0,0\n1,0,0\n2,0.5,0"), 0o644))
 	var first *canopy.Structure
 	for _, nodes := range []string{"nodes.csv", "[{x: 0, y: 0, z: 0}, {x: 1000 mm, y: 0, z: 0}, {x: 2, y: 50 cm, z: 0}]", "|\n    x, y, z\n    0, 0, 0\n    1, 0, 0\n    2, 0.5, 0"} {
 		text := "anticlast: 1\nlisted:\n  nodes: " + nodes + "\n  supports: [{node: 0}, {node: 2}]\n  members: [{from: 0, to: 1, force: 3}, {from: 1, to: 2, force: 3}]\n"
