@@ -99,15 +99,10 @@ func FuzzListedCSV(f *testing.F) {
 	f.Add([]byte("x [mm];y [mm];z [mm]\n0;0;0\r\n1e3;0;0\n# end\n"), []byte("node\n0\n"), []byte("from;to;force [N];cable;group;kind\n0;1;\"3\";K;\"g\"\"h\";strut\n"), []byte("a,b,c\n"))
 	f.Add([]byte("\xef\xbb\xbfname\tx\ty\tz\n7\t0\t0\t0\n9\t1\t1\t1\n"), []byte("node\n7\n9\n"), []byte("name,from,to,unstressed,stiffness,weight,strength\nm,7,9,1,2,3,4\n"), []byte("a,b,c,fabric,warp x\n7,9,7,s,1\n"))
 	f.Add([]byte(nodes), []byte("node\n\"a\n"), []byte("from,to\n"), []byte(""))
-	folder := f.TempDir()
 	model := "anticlast: 1\nlisted: {nodes: n.csv, supports: s.csv, members: m.csv, triangles: t.csv, fabrics: {s: {prestress: 2 kN/m, warp: [1, 0, 0]}}}\n"
 	f.Fuzz(func(t *testing.T, n, s, m, tri []byte) {
-		for name, b := range map[string][]byte{"n.csv": n, "s.csv": s, "m.csv": m, "t.csv": tri} {
-			if err := os.WriteFile(filepath.Join(folder, name), b, 0o644); err != nil {
-				t.Fatal(err)
-			}
-		}
-		got, err := spec.Read(context.Background(), spec.Input(strings.NewReader(model), folder), spec.Options{Warn: func(spec.Diagnostic) {}})
+		o := spec.WithTables(spec.Options{Warn: func(spec.Diagnostic) {}}, map[string][]byte{"n.csv": n, "s.csv": s, "m.csv": m, "t.csv": tri})
+		got, err := spec.Read(context.Background(), spec.Input(strings.NewReader(model), "."), o)
 		checkOutcome(t, got, err)
 	})
 }

@@ -58,6 +58,8 @@ type Options struct {
 	MaxBytes int64
 	// MaxTableBytes is the largest CSV file that is read. Zero: 2 GiB.
 	MaxTableBytes int64
+
+	open func(name string) (io.ReadCloser, int64, *complaint) // in place of files, for tests
 }
 
 const (

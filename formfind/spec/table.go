@@ -232,24 +232,19 @@ func (r *reader) block(t *tableReader, n *yaml.Node, each func(t *tableReader)) 
 
 // csvFile reads a table from a file beside the model.
 func (r *reader) csvFile(t *tableReader, n *yaml.Node, each func(t *tableReader)) {
-	f, c := r.open(n.Value)
+	open := r.open
+	if r.options.open != nil {
+		open = r.options.open
+	}
+	f, size, c := open(n.Value)
 	if c != nil {
 		r.fail(n, t.p, c.message, c.hint)
 		return
 	}
 	defer f.Close()
-	st, err := f.Stat()
-	if err == nil && !st.Mode().IsRegular() {
-		r.fail(n, t.p, fmt.Sprintf("%q is not a file", clip(n.Value)), "name a CSV file beside the model file")
-		return
-	}
-	if err == nil && st.Size() > r.options.MaxTableBytes {
+	if size > r.options.MaxTableBytes {
 		r.fail(n, t.p, fmt.Sprintf("%q is larger than %d bytes", clip(n.Value), r.options.MaxTableBytes), "")
 		return
-	}
-	size := int64(0)
-	if err == nil {
-		size = st.Size()
 	}
 	r.tables++
 	t.rank = r.tables
@@ -261,54 +256,60 @@ func (r *reader) csvFile(t *tableReader, n *yaml.Node, each func(t *tableReader)
 	r.csv(t, newCSV(in, csvBuffer), func(l, col int) (int, int) { return l, col }, size, each)
 }
 
-// open opens a CSV file named in the model.
-func (r *reader) open(name string) (*os.File, *complaint) {
-	if strings.ContainsAny(name, "\x00") || name == "" || len(name) > 1000 {
-		return nil, &complaint{fmt.Sprintf("%q is not the name of a file", clip(name)), ""}
+// open opens a CSV file named in the model and tells its size.
+func (r *reader) open(name string) (io.ReadCloser, int64, *complaint) {
+	bad := func(message, hint string) (io.ReadCloser, int64, *complaint) {
+		return nil, 0, &complaint{message, hint}
 	}
-	cannot := func(err error) *complaint {
+	failed := func(err error) (io.ReadCloser, int64, *complaint) {
 		var pe *os.PathError
 		if errors.As(err, &pe) {
 			err = pe.Err
 		}
 		if errors.Is(err, os.ErrNotExist) {
-			return &complaint{fmt.Sprintf("there is no file %q in the model's folder", clip(name)), r.similarFile(name)}
+			return bad(fmt.Sprintf("there is no file %q in the model's folder", clip(name)), r.similarFile(name))
 		}
-		return &complaint{fmt.Sprintf("cannot open %q: %v", clip(name), err), ""}
+		return bad(fmt.Sprintf("cannot open %q: %v", clip(name), err), "")
 	}
-	local := filepath.FromSlash(name)
+	if strings.ContainsAny(name, "\x00") || name == "" || len(name) > 1000 {
+		return bad(fmt.Sprintf("%q is not the name of a file", clip(name)), "")
+	}
+	var (
+		stat func() (os.FileInfo, error)
+		open func() (*os.File, error)
+	)
 	if r.options.AnyFolder {
+		local := filepath.FromSlash(name)
 		if !filepath.IsAbs(local) {
 			local = filepath.Join(r.folder, local)
 		}
-		// A pipe would keep Open waiting.
-		if st, err := os.Stat(local); err == nil && !st.Mode().IsRegular() {
-			return nil, &complaint{fmt.Sprintf("%q is not a file", clip(name)), "name a CSV file"}
+		stat = func() (os.FileInfo, error) { return os.Stat(local) }
+		open = func() (*os.File, error) { return os.Open(local) }
+	} else {
+		if !filepath.IsLocal(filepath.FromSlash(name)) || strings.ContainsAny(name, `\:`) {
+			return bad(fmt.Sprintf("%q is outside the model's folder", clip(name)), "put the CSV file beside the model file, or below it, and name it relative to that")
 		}
-		f, err := os.Open(local)
+		root, err := os.OpenRoot(r.folder)
 		if err != nil {
-			return nil, cannot(err)
+			return failed(err)
 		}
-		return f, nil
+		defer root.Close()
+		stat = func() (os.FileInfo, error) { return root.Stat(path.Clean(name)) }
+		open = func() (*os.File, error) { return root.Open(path.Clean(name)) }
 	}
-	if !filepath.IsLocal(local) || strings.Contains(name, `\`) || strings.Contains(name, ":") {
-		return nil, &complaint{fmt.Sprintf("%q is outside the model's folder", clip(name)), "put the CSV file beside the model file, or below it, and name it relative to that"}
-	}
-	root, err := os.OpenRoot(r.folder)
+	// Looked at before it is opened: a pipe would keep Open waiting.
+	st, err := stat()
 	if err != nil {
-		return nil, cannot(err)
+		return failed(err)
 	}
-	defer root.Close()
-	if st, err := root.Stat(path.Clean(name)); err != nil {
-		return nil, cannot(err)
-	} else if !st.Mode().IsRegular() {
-		return nil, &complaint{fmt.Sprintf("%q is not a file", clip(name)), "name a CSV file beside the model file"}
+	if !st.Mode().IsRegular() {
+		return bad(fmt.Sprintf("%q is not a file", clip(name)), "name a CSV file beside the model file")
 	}
-	f, err := root.Open(path.Clean(name))
+	f, err := open()
 	if err != nil {
-		return nil, cannot(err)
+		return failed(err)
 	}
-	return f, nil
+	return f, st.Size(), nil
 }
 
 // similarFile suggests a file that was meant.
