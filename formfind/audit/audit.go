@@ -104,7 +104,7 @@ func Run(ctx context.Context, s *canopy.Structure, f *canopy.Form, o Options) (c
 		return a, fmt.Errorf("audit: %w", err)
 	}
 	if where := notFinite(s, f); where != "" {
-		a.Reasons = []string{fmt.Sprintf("the form holds a value that is not a finite number (%s)", where)}
+		a.Reasons = []string{fmt.Sprintf("the form holds a value that is not a finite number, or absurdly large (%s)", where)}
 		nan := math.NaN()
 		a.ResidualRMS, a.ResidualWorst, a.ResidualLargest = nan, nan, nan
 		a.ForceBalance, a.MomentBalance, a.Virial, a.ReactionMismatch, a.ForceMismatch = nan, nan, nan, nan, nan
@@ -163,15 +163,21 @@ func fits(s *canopy.Structure, f *canopy.Form) error {
 	return nil
 }
 
+// beyond is the size of metres and newtons from which products of them leave
+// the numbers; nothing that is built comes near.
+const beyond = 1e60
+
+// notFinite names the first place whose values cannot be computed with, ""
+// when there is none.
 func notFinite(s *canopy.Structure, f *canopy.Form) string {
-	bad := func(v r3.Vec) bool { d := v.X + v.Y + v.Z; return math.IsNaN(d) || math.IsInf(d, 0) }
+	bad := func(v r3.Vec) bool { return !(math.Abs(v.X)+math.Abs(v.Y)+math.Abs(v.Z) < beyond) }
 	for i := range f.Position {
 		if bad(f.Position[i]) || bad(f.Reaction[i]) {
 			return "node " + s.NodeName.At(i)
 		}
 	}
 	for k, t := range f.Force {
-		if math.IsNaN(t) || math.IsInf(t, 0) {
+		if !(math.Abs(t) < beyond) {
 			return "member " + s.MemberName.At(k)
 		}
 	}

@@ -78,11 +78,11 @@ func (c *audited) residuals(a *canopy.Audit, o Options, why *reasons) {
 	switch {
 	case ss == 0 && most == 0:
 		why.add("nothing in the form carries any force")
-	case a.ResidualRMS > max(o.Residual, math.Sqrt(tt/max(ss, math.SmallestNonzeroFloat64))):
+	case !(a.ResidualRMS <= max(o.Residual, math.Sqrt(tt/max(ss, math.SmallestNonzeroFloat64)))):
 		why.add("the forces do not balance: the mean residual is %.2g of the forces that meet at a node, allowed is %.2g; the largest is at node %s", a.ResidualRMS, o.Residual, c.s.NodeName.At(int(largestNode)))
-	case a.ResidualWorst > max(o.Worst, worstRound/max(most, math.SmallestNonzeroFloat64)):
+	case !(a.ResidualWorst <= max(o.Worst, worstRound/max(most, math.SmallestNonzeroFloat64))):
 		why.add("the forces do not balance: the largest residual is %.2g of the largest forces, allowed is %.2g; see node %s", a.ResidualWorst, o.Worst, c.s.NodeName.At(int(largestNode)))
-	case largestOver > 1:
+	case !(largestOver <= 1):
 		why.add("the forces do not balance at node %s: %.2g of what meets there is left over, allowed is %.2g", c.s.NodeName.At(int(largestNode)), a.ResidualLargest, o.Largest)
 	}
 }
@@ -108,7 +108,7 @@ func (c *audited) reactions(a *canopy.Audit, o Options, why *reasons) {
 		}
 		scale := max(meet[i], 1e-6*most)
 		a.ReactionMismatch = max(a.ReactionMismatch, d/scale)
-		if v := d / (scale * max(o.Reaction, round[i]/scale)); v > over {
+		if v := d / (scale * max(o.Reaction, round[i]/scale)); !(v <= over) {
 			over, bad = v, int32(i)
 		}
 	}
@@ -125,7 +125,7 @@ func (c *audited) reactions(a *canopy.Audit, o Options, why *reasons) {
 		}
 		scale = max(scale, 1e-6*most*c.size)
 		a.ReactionMismatch = max(a.ReactionMismatch, d/scale)
-		if d > max(o.Reaction*scale, rnd) {
+		if !(d <= max(o.Reaction*scale, rnd)) {
 			why.add("the reported couple of ring %s, %.4g kNm, is not what its forces ask for, %.4g kNm", c.s.Rings[r].Name, norm(c.f.Couple[r])/1e3, norm(want)/1e3)
 		}
 	}
@@ -191,10 +191,10 @@ func (c *audited) balance(a *canopy.Audit, o Options, why *reasons) {
 	a.ForceBalance = norm(f) / size
 	a.MomentBalance = norm(m) / (size * c.size)
 	allowed := max(o.Balance, c.globalRounding())
-	if a.ForceBalance > allowed {
+	if !(a.ForceBalance <= allowed) {
 		why.add("the reported reactions do not balance the loads: %.3g kN is left over (%.2g of all reactions)", norm(f)/1e3, a.ForceBalance)
 	}
-	if a.MomentBalance > allowed {
+	if !(a.MomentBalance <= allowed) {
 		why.add("the moments of the reported reactions do not balance those of the loads: %.3g kNm is left over", norm(m)/1e3)
 	}
 }
@@ -220,7 +220,7 @@ func (c *audited) virial(a *canopy.Audit, o Options, why *reasons) {
 		return
 	}
 	a.Virial = math.Abs(left-right) / size
-	if a.Virial > max(o.Balance, c.globalRounding()) {
+	if !(a.Virial <= max(o.Balance, c.globalRounding())) {
 		why.add("the reported stresses do not belong to the reported reactions: the virial identity is off by %.2g", a.Virial)
 	}
 }

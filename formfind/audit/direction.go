@@ -139,8 +139,10 @@ func (c *audited) findFreedoms(ctx context.Context) (*freedoms, error) {
 		switch {
 		case master[i] || flag[i]&elasticFabric != 0:
 			want = append(want, axes...)
-		case len(here) == 0:
+		case len(here) == 0 && normals != nil && normals[i] != (r3.Vec{}):
 			want = append(want, normals[i])
+		case len(here) == 0: // nothing but elements without size
+			want = append(want, axes...)
 		default:
 			line, ok := smooth(here, c.fabric[i])
 			if !ok {

@@ -91,9 +91,9 @@ func (c *audited) laws(a *canopy.Audit, o Options, why *reasons) {
 		} else {
 			a.ForceMismatch = max(a.ForceMismatch, max(d-noise, 0)/ref)
 		}
-		if v := d / (tol*ref + noise); v > 1 {
+		if v := d / (tol*ref + noise); !(v <= 1) {
 			count++
-			if v > over {
+			if !(v <= over) {
 				over, worstName, worstHave, worstWant = v, name(), have, want
 			}
 		}
@@ -221,9 +221,9 @@ func (c *audited) fabricLaws(a *canopy.Audit, o Options, why *reasons) {
 		}
 		noise *= 4 * ulp * c.reach
 		a.ForceMismatch = max(a.ForceMismatch, max(d-noise, 0)/scale)
-		if v := d / (o.Law*scale + noise); v > 1 {
+		if v := d / (o.Law*scale + noise); !(v <= 1) {
 			count++
-			if v > worst {
+			if !(v <= worst) {
 				worst, bad = v, t
 			}
 		}

@@ -100,7 +100,11 @@ func (sp *spectrum) factor(ctx context.Context, s float64) (f *sparse.Factor, ne
 			return sp.chol, 0, true, nil
 		}
 		var pivot *sparse.PivotError
-		if !errors.As(err, &pivot) {
+		var value *sparse.ValueError
+		switch {
+		case errors.As(err, &value):
+			return nil, 0, false, nil
+		case !errors.As(err, &pivot):
 			return nil, 0, false, err
 		}
 	}
@@ -110,6 +114,10 @@ func (sp *spectrum) factor(ctx context.Context, s float64) (f *sparse.Factor, ne
 		}
 	}
 	if err = sp.ldl.Refactor(ctx, sp.values); err != nil {
+		var value *sparse.ValueError
+		if errors.As(err, &value) { // overflow of the shift or of a border
+			return nil, 0, false, nil
+		}
 		return nil, 0, false, err
 	}
 	neg, _, _, ok = sp.ldl.Inertia()
@@ -205,6 +213,10 @@ func (sp *spectrum) lanczos(ctx context.Context, f *sparse.Factor) (theta float6
 		}
 		clear(work[n:])
 		if err := f.Solve(work, 1); err != nil {
+			var value *sparse.ValueError
+			if errors.As(err, &value) {
+				return 0, nil, false, nil
+			}
 			return 0, nil, false, err
 		}
 		w := append([]float64(nil), work[:n]...)

@@ -132,6 +132,11 @@ func stability(ctx context.Context, c *audited, o Options) (StabilityResult, err
 	if err := ctx.Err(); err != nil {
 		return res, err
 	}
+	if !k.finite() {
+		res.Known = false
+		res.Note = "not judged: the tangent is not finite"
+		return res, nil
+	}
 	res.Loose = k.loosen(d)
 	sol, err := newSpectrum(ctx, k, o)
 	var budget *sparse.BudgetError
@@ -328,6 +333,24 @@ func (k *tangent) loosen(d *freedoms) []int32 {
 		}
 	}
 	return out
+}
+
+// finite reports whether the tangent can be factorised at all.
+func (k *tangent) finite() bool {
+	sum := 0.0 // of products with zero: zero, or not a number
+	for i, v := range k.diag {
+		sum += 0*v + 0*k.mass[i]
+	}
+	for _, v := range k.off {
+		sum += 0 * v
+	}
+	for _, cb := range k.cables {
+		sum += 0 * cb.compliance
+		for _, g := range cb.g {
+			sum += 0 * g.value
+		}
+	}
+	return sum == 0
 }
 
 // meanStiffness is the mean of the diagonal over the mean mass, 1/m².
