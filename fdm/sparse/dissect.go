@@ -283,10 +283,13 @@ func skewCost(size, below, total float64) float64 {
 }
 
 // estimate looks at the cuts of one direction whose smaller side has at least
-// the share of the total.
+// the share of the total, and returns those nearly as cheap as the cheapest
+// among them.
 func estimate(mass []int32, lo, reach int32, step, total, share float64) window {
 	w := window{cost: -1}
+	scale := step / float64(reach)
 	var below, near int32
+	best := 0
 	for x, m := range mass {
 		below += m
 		near += m
@@ -294,23 +297,22 @@ func estimate(mass []int32, lo, reach int32, step, total, share float64) window 
 			near -= mass[x-int(reach)]
 		}
 		b := float64(below)
-		if b < share*total || m == 0 {
+		if m == 0 || b < share*total {
 			continue
 		}
 		if b > (1-share)*total {
 			if w.cost < 0 && below < int32(total) && b <= 0.8*total {
 				// One place holds more than the window: cut there if at all.
-				w = window{lo: lo + int32(x), hi: lo + int32(x), cost: skewCost(float64(near)*step/float64(reach), b, total)}
+				w.cost, best = skewCost(float64(near)*scale, b, total), x
 			}
 			break
 		}
-		c := skewCost(float64(near)*step/float64(reach), b, total)
-		if w.cost < 0 {
-			w = window{lo: lo + int32(x), cost: c}
+		if c := skewCost(float64(near)*scale, b, total); w.cost < 0 || c < w.cost {
+			w.cost, best = c, x
 		}
-		w.hi = lo + int32(x)
-		w.cost = min(w.cost, c)
 	}
+	w.lo, w.hi = lo+int32(best)-reach, lo+int32(best)+reach
+	w.lo, w.hi = max(w.lo, lo), min(w.hi, lo+int32(len(mass))-1)
 	return w
 }
 
