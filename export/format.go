@@ -18,6 +18,8 @@ type Options struct {
 	Force bool
 	// Width of the summary in columns; 0 = 80.
 	Width int
+	// PictureWidth is the width of pictures in pixels; 0 = 1600.
+	PictureWidth int
 	// Colour allows terminal colours in the summary.
 	Colour bool
 }
@@ -44,6 +46,8 @@ func Formats() []Format {
 		{"triangles", "triangles.csv", ".csv", "table of fabric triangles with stresses", writeTriangles},
 		{"reactions", "reactions.csv", ".csv", "table of reactions and actions on foundations", writeReactions},
 		{"summary", "summary.txt", ".txt", "what was found, to read in ten seconds", writeSummary},
+		{"svg", "drawings.svg", ".svg", "plan, elevations and axonometric with dimensions and forces", writeSVG},
+		{"png", "picture.png", ".png", "axonometric picture with values in colour", writePNG},
 		{"handover", "handover.zip", ".zip", "everything an analysis engineer needs to rebuild the structure", writeHandover},
 		{"dxf", "form.dxf", ".dxf", "CAD drawing with layers, names and forces (DXF release 12)", writeDXF},
 		{"obj", "form.obj", ".obj", "mesh and cables for modelling programs", writeOBJ},

@@ -30,6 +30,7 @@ func found(t *testing.T, name string) *canopy.Result {
 // From the folder alone an independent program finds the same residual, the
 // same reactions, and nodes that do not move.
 func TestHandoverIsEnoughToRebuildTheEquilibrium(t *testing.T) {
+	t.Parallel()
 	py := python(t, "numpy", "scipy.sparse")
 	for _, name := range []string{"four-point-sail", "cone", "cable-net"} {
 		dir := filepath.Join(t.TempDir(), "handover")

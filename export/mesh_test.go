@@ -71,6 +71,7 @@ func corners(r *canopy.Result) (p []r3.Vec) {
 }
 
 func TestOBJReadsBack(t *testing.T) {
+	t.Parallel()
 	all := []*canopy.Result{sail(9), cone(12), grid(5)}
 	for i, m := range measure(t, "vtk", "obj", all...) {
 		r := all[i]
@@ -86,6 +87,7 @@ func TestOBJReadsBack(t *testing.T) {
 }
 
 func TestSTLReadsBack(t *testing.T) {
+	t.Parallel()
 	r := sail(9)
 	area, _ := total(r)
 	for _, reader := range []string{"vtk", "meshio"} {
@@ -108,6 +110,7 @@ func TestSTLReadsBack(t *testing.T) {
 }
 
 func TestPLYReadsBack(t *testing.T) {
+	t.Parallel()
 	r := sail(9)
 	area, _ := total(r)
 	for reader, within := range map[string]float64{"vtk": 1e-6, "meshio": 1e-12} {
@@ -120,6 +123,7 @@ func TestPLYReadsBack(t *testing.T) {
 }
 
 func TestMeshesOpenElsewhere(t *testing.T) {
+	t.Parallel()
 	assimp := tool(t, "assimp")
 	r := sail(9)
 	for _, format := range []string{"glb", "obj", "stl", "ply"} {
@@ -135,6 +139,7 @@ func TestMeshesOpenElsewhere(t *testing.T) {
 }
 
 func TestDXFReadsBack(t *testing.T) {
+	t.Parallel()
 	r := sail(9)
 	r.Structure.Cables[0].Name = "Süd 1"
 	read := measure(t, "ezdxf", "dxf", r, cone(12), grid(5))
@@ -164,6 +169,7 @@ func TestDXFReadsBack(t *testing.T) {
 
 // Values are read back by two readers and compared with the form's.
 func TestVTUReadsBack(t *testing.T) {
+	t.Parallel()
 	for _, reader := range []string{"vtk", "meshio"} {
 		all := []*canopy.Result{sail(9), cone(12), grid(5)}
 		for i, m := range measure(t, reader, "vtu", all...) {

@@ -5,6 +5,7 @@ import (
 	"os/exec"
 	"path/filepath"
 	"strings"
+	"sync"
 	"testing"
 
 	"anticlast/formfind/canopy"
@@ -40,6 +41,8 @@ func tool(t *testing.T, name string) string {
 func python(t *testing.T, modules ...string) string {
 	t.Helper()
 	list := strings.Join(modules, ", ")
+	pythonsLock.Lock()
+	defer pythonsLock.Unlock()
 	if path, ok := pythons[list]; ok {
 		return path
 	}
@@ -54,7 +57,10 @@ func python(t *testing.T, modules ...string) string {
 }
 
 // pythons remembers what python found.
-var pythons = map[string]string{}
+var (
+	pythons     = map[string]string{}
+	pythonsLock sync.Mutex
+)
 
 // saved writes r in a format to a file.
 func saved(t *testing.T, name string, r *canopy.Result) string {
