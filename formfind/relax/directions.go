@@ -33,7 +33,10 @@ type lineEnds struct {
 // all directions.
 func (p *problem) chooseDirections(x []r3.Vec, all bool) {
 	p.mode = make([]mode, p.n)
-	sides := p.sides()
+	var sides [][]int32
+	if !all {
+		sides = p.sides()
+	}
 	for i := range p.n {
 		switch {
 		case p.tied[i] >= 0 || p.free[i] == 0:
@@ -115,7 +118,7 @@ func (p *problem) sides() [][]int32 {
 	var near []int32
 	for i := range p.n {
 		cs := p.around[p.cornerAt[i]:p.cornerAt[i+1]]
-		if len(cs) == 0 || p.mode != nil && p.free[i] == 0 {
+		if len(cs) == 0 || p.free[i] == 0 {
 			continue
 		}
 		near = near[:0]

@@ -260,3 +260,100 @@ func TestShearedStripWrinkles(t *testing.T) {
 		assert.InEpsilon(t, 3700, st.Shear, 0.03)
 	}
 }
+
+// Patch test: uniform prestress on a flat patch with a fixed edge is in balance
+// as it stands.
+func TestFlatPrestressedPatchStaysWhereItIs(t *testing.T) {
+	for _, elastic := range []bool{true, false} {
+		f := sheet
+		f.Elastic = elastic
+		s := disc(5, 6, f, 2000)
+		form := relaxed(t, relax.New(), s, nil, engine.Settings{Residual: 1e-13, Worst: 1e-13})
+		assert.Less(t, farthest(s.Position, form.Position), 1e-12)
+	}
+}
+
+// Closed elastic sphere under follower pressure, R₀ = 5 m, Eh = 300 kN/m,
+// ν = 0.3, p = 1 kPa: with Green strain S = Eh/(1−ν)·(λ²−1)/2 and N = S =
+// p·λ·R₀/2 give λ = 1.00585034707754, N = 2.51462586771591 kN/m (linear:
+// 1.00583333, 2.5).
+func TestClosedElasticSphereUnderPressure(t *testing.T) {
+	var last float64
+	for _, n := range []int{6, 12} {
+		s := octasphere(5, n)
+		s.Fabrics = []canopy.Fabric{sheet}
+		s.Fabrics[0].Pressure = 1000
+		form := relaxed(t, relax.New(), s, nil, engine.Settings{})
+		swollen, stress := 0.0, 0.0
+		for i := range s.Position {
+			swollen += r3.Norm(form.Position[i]) / 5
+		}
+		swollen /= float64(len(s.Position))
+		area := 0.0
+		for k, c := range s.Corners {
+			a := r3.Norm(r3.Cross(r3.Sub(s.Position[c[1]], s.Position[c[0]]), r3.Sub(s.Position[c[2]], s.Position[c[0]])))
+			stress += a * (form.Stress[k].Warp + form.Stress[k].Weft) / 2
+			area += a
+		}
+		off := math.Abs(swollen-1.00585034707754) / 0.00585034707754
+		if last > 0 {
+			assert.Greater(t, math.Log2(last/off), 1.7)
+			assert.Less(t, off, 2e-2)
+			assert.InEpsilon(t, 2514.62586771591, stress/area, 1e-2)
+		}
+		last = off
+	}
+}
+
+// octasphere is a sphere of radius r from an octahedron whose sides are divided
+// in n, its six corners free along their own axis only.
+func octasphere(r float64, n int) *canopy.Structure {
+	s := &canopy.Structure{}
+	index := map[[3]int]int32{}
+	node := func(a, b, c int) int32 {
+		key := [3]int{a, b, c}
+		if i, ok := index[key]; ok {
+			return i
+		}
+		i := int32(len(s.Position))
+		index[key] = i
+		// Equal angles instead of equal lengths keep the triangles alike.
+		even := func(k int) float64 {
+			return math.Copysign(math.Tan(math.Abs(float64(k))/float64(n)*math.Pi/4), float64(k))
+		}
+		s.Position = append(s.Position, r3.Scale(r, r3.Unit(r3.Vec{X: even(a), Y: even(b), Z: even(c)})))
+		fixed := canopy.Freedom(0)
+		switch {
+		case b == 0 && c == 0:
+			fixed = canopy.DirY | canopy.DirZ
+		case a == 0 && c == 0:
+			fixed = canopy.DirX | canopy.DirZ
+		case a == 0 && b == 0:
+			fixed = canopy.DirX | canopy.DirY
+		}
+		s.Fixed = append(s.Fixed, fixed)
+		return i
+	}
+	for oct := range 8 {
+		sx, sy, sz := 1-2*(oct&1), 1-(oct&2), 1-(oct&4)/2
+		at := func(i, j int) int32 { return node(sx*i, sy*j, sz*(n-i-j)) }
+		add := func(a, b, c int32) {
+			if sx*sy*sz < 0 {
+				b, c = c, b
+			}
+			s.Corners = append(s.Corners, [3]int32{a, b, c})
+			s.FabricOf = append(s.FabricOf, 0)
+			s.Warp = append(s.Warp, r3.Sub(s.Position[b], s.Position[a]))
+			s.Stress = append(s.Stress, [2]float64{})
+		}
+		for i := range n {
+			for j := range n - i {
+				add(at(i, j), at(i+1, j), at(i, j+1))
+				if i+j+2 <= n {
+					add(at(i+1, j), at(i+1, j+1), at(i, j+1))
+				}
+			}
+		}
+	}
+	return s
+}

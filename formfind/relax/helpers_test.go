@@ -3,7 +3,6 @@ package relax_test
 import (
 	"context"
 	"encoding/json"
-	"math"
 	"os"
 	"testing"
 
@@ -115,5 +114,3 @@ func sumOf(v []r3.Vec) (s r3.Vec) {
 	}
 	return s
 }
-
-func hypot3(v r3.Vec) float64 { return math.Sqrt(v.X*v.X + v.Y*v.Y + v.Z*v.Z) }
