@@ -451,3 +451,37 @@ func TestFreeMastHeadElastic(t *testing.T) {
 	assert.InDelta(t, 0, r3.Norm(r3.Add(f.Reaction[3], r3.Scale(f.Force[3], r3.Unit(r3.Sub(f.Position[4], f.Position[3]))))), 1e-6)
 	t.Log(out.Iterations, "steps")
 }
+
+// A rigid ring on a net of no symmetry: the reactions of anchors and ring and
+// the couple that keeps the ring from turning balance in forces and moments.
+func TestRingReactionsBalance(t *testing.T) {
+	s := &canopy.Structure{
+		Position: []r3.Vec{{X: 5, Y: 1}, {X: -1, Y: 6, Z: 1}, {X: -4, Y: -2}, {X: 2, Y: -5, Z: -1}, {Z: 2}},
+		Fixed:    []canopy.Freedom{7, 7, 7, 7, canopy.DirX | canopy.DirY},
+		Master:   []int32{-1, -1, -1, -1, -1},
+		Load:     make([]r3.Vec, 9),
+	}
+	ring := canopy.Ring{Name: "R", Centre: 4, Rigid: true, Free: canopy.DirZ, Cable: -1}
+	for k := range int32(4) {
+		sin, cos := math.Sincos(0.3 + math.Pi/2*float64(k))
+		s.Position = append(s.Position, r3.Vec{X: cos, Y: sin, Z: 2})
+		s.Fixed = append(s.Fixed, 0)
+		s.Master = append(s.Master, 4)
+		ring.Nodes = append(ring.Nodes, 5+k)
+		s.Ends = append(s.Ends, [2]int32{k, 5 + k}, [2]int32{5 + k, (k + 1) % 4})
+		s.Given = append(s.Given, 100*float64(k+1), 500)
+	}
+	s.Rings = []canopy.Ring{ring}
+	s.Load[4] = r3.Vec{X: 30, Y: -20, Z: 900}
+	for range s.Ends {
+		s.Kind, s.Law = append(s.Kind, canopy.KindCable), append(s.Law, canopy.LawForce)
+	}
+	f, _ := find(t, s, nil)
+	force, moment := s.Load[4], r3.Add(r3.Cross(f.Position[4], s.Load[4]), f.Couple[0])
+	for i, r := range f.Reaction {
+		force, moment = r3.Add(force, r), r3.Add(moment, r3.Cross(f.Position[i], r))
+	}
+	assert.Less(t, r3.Norm(force), 1e-5)
+	assert.Less(t, r3.Norm(moment), 1e-5)
+	assert.Greater(t, r3.Norm(f.Couple[0]), 10.0)
+}
