@@ -71,6 +71,9 @@ func (d *drawn) roles() {
 		if d.edgeHas[i] == "seam" && users[i] < 2 {
 			d.r.fail(d.edgeAt[i].n, d.edgeAt[i].p, fmt.Sprintf("edge %q is a seam but bounds %d fabric%s", e.Name, users[i], plural(users[i])), "a seam joins two fabrics; a free edge needs a cable")
 		}
+		if d.edgeHas[i] == "fixed" && users[i] == 0 {
+			d.r.fail(d.edgeAt[i].n, d.edgeAt[i].p, fmt.Sprintf("edge %q is fixed but bounds nothing", e.Name), "name it in the boundary of a fabric or net, or remove it")
+		}
 	}
 }
 

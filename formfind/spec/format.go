@@ -150,7 +150,7 @@ func fabricMaterialKeys() []*key {
 		{name: "stiffness", shape: in(fabricStiffnessSection), example: "{warp: 600 kN/m, weft: 500 kN/m, shear: 30 kN/m, poisson: 0.3}",
 			doc: "Elastic moduli, handed on to analysis and used for the cutting sizes."},
 		{name: "pressure", shape: quantity(Pressure), deflt: "0", example: "300 Pa",
-			doc: "Internal pressure on the fabric, normal to it; positive pushes towards the side from which its boundary runs counter-clockwise."},
+			doc: "Internal pressure on the fabric, normal to it wherever it moves; positive pushes up, or an upright fabric towards x."},
 	}
 }
 
