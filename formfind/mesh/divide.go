@@ -61,21 +61,94 @@ func (d *division) atLeast(e, n int) {
 	d.least[r] = max(d.least[r], n)
 }
 
-// divide decides the number of segments of every edge.
-func (b *builder) divide() {
-	m := b.m
-	b.chooseSize()
-	d := newDivision(len(m.Edges))
-	for _, l := range b.loop {
-		l.patch.relate(d, l)
+// stretch is how far the number of segments of an edge may be from what its
+// length asks for, as a factor, before a patch that needs it so is meshed freely;
+// twice that where the number is that of another edge with its own.
+const stretch = 2.5
+
+// relations relates the edges around all patches. A structured patch is meshed
+// freely instead where it would divide an edge otherwise than its own number of
+// segments says or much otherwise than its length asks for.
+func (b *builder) relations() *division {
+	for {
+		d := newDivision(len(b.m.Edges))
+		for _, l := range b.loop {
+			l.patch.relate(d, l)
+		}
+		l := b.misfit(d)
+		if l == nil {
+			return d
+		}
+		l.patch = freePatch{}
 	}
-	given := make([]int, len(m.Edges)) // per class: edge that gives the number, −1
-	byNet := make([]float64, len(m.Edges))
-	sum := make([]float64, len(m.Edges))
-	num := make([]int, len(m.Edges))
-	for i := range given {
-		given[i] = -1
+}
+
+// misfit returns the first loop that is better meshed freely, nil when none is.
+func (b *builder) misfit(d *division) *loop {
+	n := len(b.m.Edges)
+	given := make([]int, n) // per class
+	wish := make([]float64, n)
+	sum, num := make([]float64, n), make([]float64, n)
+	byNet := b.netNumbers(d)
+	bound := func(e int) *loop {
+		for _, u := range b.users[e] {
+			l := b.loop[u]
+			switch l.patch.(type) {
+			case radialPatch, freePatch:
+			default:
+				if !l.net {
+					return l
+				}
+			}
+		}
+		return nil
 	}
+	for i, e := range b.m.Edges {
+		r := d.root(i)
+		for _, u := range b.users[i] {
+			if l := b.loop[u]; !l.net {
+				wish[i] = max(wish[i], b.curve[i].length/b.meshSize(l))
+			}
+		}
+		if wish[i] > 0 {
+			sum[r] += wish[i]
+			num[r]++
+		}
+		switch s := e.Segments; {
+		case s == 0:
+		case given[r] > 0 && given[r] != s, d.even[r] && s%2 != 0:
+			if l := bound(i); l != nil {
+				return l
+			}
+		default:
+			given[r] = s
+		}
+	}
+	for i, e := range b.m.Edges {
+		r := d.root(i)
+		if e.Segments > 0 || wish[i] == 0 || num[r] < 2 {
+			continue
+		}
+		count, most := sum[r]/num[r], stretch
+		if byNet[r] > 0 {
+			count = byNet[r]
+		}
+		if given[r] > 0 {
+			count, most = float64(given[r]), 2*stretch
+		}
+		// An edge gets four segments in any case.
+		if w := max(wish[i], 4); max(count, 4) > most*w || w > most*max(count, 4) {
+			if l := bound(i); l != nil {
+				return l
+			}
+		}
+	}
+	return nil
+}
+
+// netNumbers returns, per class, how many segments the spacing of nets asks for.
+func (b *builder) netNumbers(d *division) []float64 {
+	byNet := make([]float64, len(b.m.Edges))
 	for _, l := range b.loop {
 		if !l.net {
 			continue
@@ -87,6 +160,21 @@ func (b *builder) divide() {
 				byNet[r] = max(byNet[r], b.curve[e].length/b.netSpacing(l, k))
 			}
 		}
+	}
+	return byNet
+}
+
+// divide decides the number of segments of every edge.
+func (b *builder) divide() {
+	m := b.m
+	b.chooseSize()
+	d := b.relations()
+	given := make([]int, len(m.Edges)) // per class: edge that gives the number, −1
+	byNet := b.netNumbers(d)
+	sum := make([]float64, len(m.Edges))
+	num := make([]int, len(m.Edges))
+	for i := range given {
+		given[i] = -1
 	}
 	for i, e := range m.Edges {
 		r := d.root(i)

@@ -23,8 +23,9 @@
 //   - around a ring, any number of sides, divided as they like: radial lines
 //     with layers whose depth grows with the distance from the ring.
 //
-// Any other outline, with a ring in it or without, is triangulated in the plane
-// of its vector area: constrained Delaunay (Lawson 1977; Sloan 1993) with exact
+// Any other outline, with a ring in it or without, and any boundary whose edges
+// must be divided otherwise than the patch asks for, is triangulated in the
+// plane of its vector area: constrained Delaunay (Lawson 1977; Sloan 1993) with exact
 // predicates (after Shewchuk 1997), refined by circumcentres (Chew 1989;
 // Ruppert 1995), smoothed, and lifted into space by mean value coordinates
 // (Floater 2003). Its sides may be divided in any way.

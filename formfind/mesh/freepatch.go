@@ -80,8 +80,8 @@ type flat struct {
 	size              []float64 // per point of the triangulation: length of the sides there
 }
 
-// newFlat lays lines of nodes, the outline first, into the plane of the outline;
-// nil when that has no area.
+// newFlat lays lines of nodes, the outline first, into the plane of the outline,
+// or of the ring in it; nil when the outline has no area there.
 func newFlat(p *plot, lines [][]int32) *flat {
 	f := &flat{}
 	var pts []r3.Vec
@@ -95,6 +95,11 @@ func newFlat(p *plot, lines [][]int32) *flat {
 		f.origin = r3.Add(f.origin, r3.Scale(1/float64(len(f.node)), p.at(i)))
 	}
 	area := newell(pts[:len(lines[0])])
+	if p.l.ring >= 0 {
+		// Along the axis of the ring, as the ring is known to lie inside so.
+		axis := p.b.ringAxis(p.l.ring)
+		area = r3.Scale(r3.Dot(area, axis), axis)
+	}
 	around := 0.0
 	for i := range lines[0] {
 		around += dist(pts[i], pts[(i+1)%len(lines[0])])
@@ -289,8 +294,9 @@ func (r *refinement) run(budget int) {
 	r.mark()
 }
 
-// crowds reports whether o lies in the circle over a side of the outline near
-// triangle t, or closer to a point than half the wanted side.
+// crowds reports whether o lies so near a side of the outline at triangle t that
+// it sees it under more than 120° (Chew 1993), or closer to a point than half the
+// wanted side.
 func (r *refinement) crowds(o xy, t int32) bool {
 	d := r.d
 	near := []int32{t}
@@ -302,7 +308,11 @@ func (r *refinement) crowds(o xy, t int32) bool {
 	for _, t := range near {
 		for i := range 3 {
 			a, b := d.p[d.v[t][(i+1)%3]], d.p[d.v[t][(i+2)%3]]
-			if d.held[t][i] && (a.x-o.x)*(b.x-o.x)+(a.y-o.y)*(b.y-o.y) < 0 {
+			if !d.held[t][i] {
+				continue
+			}
+			la, lb := math.Hypot(a.x-o.x, a.y-o.y), math.Hypot(b.x-o.x, b.y-o.y)
+			if (a.x-o.x)*(b.x-o.x)+(a.y-o.y)*(b.y-o.y) < -0.5*la*lb {
 				return true
 			}
 		}

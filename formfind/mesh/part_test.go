@@ -262,6 +262,42 @@ func TestSegmentsAreRespected(t *testing.T) {
 	require.Len(t, cableNamed(t, build(t, m), "tie").Members, 5)
 }
 
+// Sides that a structured patch cannot have are meshed freely.
+func TestAnyNumbersOfSegmentsAreMeshed(t *testing.T) {
+	for name, c := range map[string]struct {
+		model    *canopy.Model
+		segments []int
+	}{
+		"opposite sides":        {polygon(4), []int{8, 12, 10, 9}},
+		"odd sides of a star":   {polygon(5), []int{7, 8, 8, 8, 8}},
+		"sides of a triangle":   {polygon(3), []int{10, 20, 15}},
+		"halves of a lens":      {lens(), []int{13, 20}},
+		"a coarse side":         {polygon(4), []int{8, 24, 24, 24}},
+		"seven sides, one fine": {polygon(7), []int{40, 0, 0, 0, 0, 0, 0}},
+	} {
+		t.Run(name, func(t *testing.T) {
+			for i, n := range c.segments {
+				c.model.Edges[i].Segments = n
+			}
+			s := build(t, c.model)
+			for i, n := range c.segments {
+				last := 0
+				for k := range s.Position {
+					if s.NodeName.At(k) == c.model.Edges[i].Name+":"+itoa(last+1) {
+						last++
+					}
+				}
+				if n > 0 {
+					require.Equal(t, n, last+1, "edge %d", i)
+				}
+			}
+			v, e, f := topology(t, s)
+			require.Equal(t, 1, v-e+f)
+			require.Greater(t, angles(s), 12*math.Pi/180)
+		})
+	}
+}
+
 func TestRefusals(t *testing.T) {
 	for name, c := range map[string]struct {
 		model  func() *canopy.Model
@@ -270,22 +306,16 @@ func TestRefusals(t *testing.T) {
 		name   string
 		text   string
 	}{
-		"opposite sides in conflict": {func() *canopy.Model {
-			m := polygon(4)
+		"opposite sides of a net in conflict": {func() *canopy.Model {
+			m := net(4)
 			m.Edges[0].Segments, m.Edges[2].Segments, m.Edges[2].Line = 8, 10, 17
 			return m
-		}, mesh.Conflict, "edge", "e2", "line 17: edge e2: it has 10 segments but must be divided like edge e0 with 8 for the sake of fabric sail"},
-		"odd side of a star": {func() *canopy.Model {
-			m := polygon(5)
-			m.Edges[3].Segments = 7
+		}, mesh.Conflict, "edge", "e2", "line 17: edge e2: it has 10 segments but must be divided like edge e0 with 8 for the sake of net roof"},
+		"single-segment arc": {func() *canopy.Model {
+			m := vault()
+			m.Edges[0].Segments, m.Edges[1].Segments, m.Edges[2].Segments = 1, 1, 1
 			return m
-		}, mesh.Conflict, "edge", "e3", "needs an even number"},
-		"odd side of a star that starts elsewhere": {func() *canopy.Model {
-			m := polygon(5)
-			m.Edges[3].Segments = 7
-			m.Fabrics[0].Boundary = []string{"e2", "e3", "e4", "e0", "e1"}
-			return m
-		}, mesh.Conflict, "edge", "e3", "needs an even number"},
+		}, mesh.Conflict, "edge", "a0", "an arc cannot be a single straight segment"},
 		"too fine": {func() *canopy.Model {
 			m := polygon(4)
 			m.MeshSize = 0.002

@@ -130,6 +130,7 @@ func TestRefineEqualsDrawingFinerOnEdges(t *testing.T) {
 
 func TestRefinedCablesAreNumberedAlongTheirEdges(t *testing.T) {
 	coarse, fine := polygon(4), polygon(4)
+	coarse.MeshSize, fine.MeshSize = 2, 1
 	coarse.Edges[0].Segments, fine.Edges[0].Segments = 6, 12
 	coarse.Edges[1].Segments, fine.Edges[1].Segments = 1, 2
 	r, err := mesh.Refine(build(t, coarse))
