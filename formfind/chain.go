@@ -134,7 +134,7 @@ func (c *chain) linear(ctx context.Context, q []float64) (*canopy.Form, error) {
 	for k, e := range s.Ends {
 		f.Force[k] = q[k] * r3.Norm(r3.Sub(f.Position[e[1]], f.Position[e[0]]))
 	}
-	c.used("fdm")
+	c.used("force density")
 	c.say("force density, linear: a first shape from the boundary and the prestress alone")
 	return f, nil
 }
@@ -300,7 +300,7 @@ func (c *chain) relax(ctx context.Context, set engine.Settings) error {
 	if err != nil {
 		return fmt.Errorf("relaxation: %w", err)
 	}
-	c.used("relax")
+	c.used(relax.New().Name())
 	c.say("dynamic relaxation %s after %d iterations, residual %.1e", out.Status, out.Iterations, out.Residual)
 	f.Converged = out.Status == engine.Converged
 	f.Why = out.Why

@@ -36,7 +36,7 @@ func crossCheck(ctx context.Context, s *canopy.Structure, found found, o Options
 		}
 		return g, out, nil
 	}
-	f.Engines = appendNew(f.Engines, "relax")
+	f.Engines = appendNew(f.Engines, relax.New().Name())
 	if len(s.Corners) == 0 {
 		g, out, err := second(&relax.Engine{}, relax.Disturb(s, f, 1, 0.01*size), set)
 		if err != nil {
