@@ -33,9 +33,13 @@ func (a *app) watch(ctx context.Context, path string, f formFlags) error {
 			if ctx.Err() != nil {
 				return nil
 			}
-			a.exit(ctx, err)
+			code := a.exit(ctx, err)
 			if !a.quiet && !a.json {
-				fmt.Fprintf(a.Err, "formed in %d ms; watching %s, Ctrl-C ends\n", time.Since(start).Milliseconds(), path)
+				said := fmt.Sprintf("formed in %d ms", time.Since(start).Milliseconds())
+				if code != exitFine && code != exitNotTrusted {
+					said = "not formed"
+				}
+				fmt.Fprintf(a.Err, "%s; watching %s, Ctrl-C ends\n", said, path)
 			}
 			continue
 		}
