@@ -48,7 +48,7 @@ func TestSurfacesConvergeSecondOrder(t *testing.T) {
 				c := k.make(n)
 				start := c.Form(c.S.Position)
 				if c.Exact != nil {
-					start = c.Form(c.Disturbed(c.Exact, k.shake, 0))
+					start = c.Form(c.Disturbed(c.Exact, k.shake*16/float64(n), 0)) // the same share of the mesh size
 				}
 				f, out := find(t, c.S, start)
 				area = append(area, math.Abs(cases.Area(c.S, f.Position)/c.Area-1))
