@@ -40,7 +40,7 @@ func writeSVG(ctx context.Context, w io.Writer, r *canopy.Result, _ Options) err
 			return err
 		}
 		d := draw(r, v)
-		fmt.Fprintf(&body, "<g transform=\"translate(0 %s)\">\n%s</g>\n", px(y), d.body())
+		fmt.Fprintf(&body, "<g transform=\"translate(0 %s)\">\n<text class=\"ink\" x=\"24\" y=\"24\" font-size=\"17\">%s</text>\n%s</g>\n", px(y), v.title, d.body())
 		y += d.frame.height + 30
 	}
 	t := newText(ctx, w)
@@ -498,7 +498,6 @@ func (d *drawing) dimensions() {
 		left, right = min(left, q.x), max(right, q.x)
 		top, bottom = min(top, q.y), max(bottom, q.y)
 	}
-	d.printf("<text class=\"ink\" x=\"24\" y=\"24\" font-size=\"17\">%s</text>\n", f.title)
 	if f.name != "axonometric" && right > left {
 		y, x := f.height-38, 36.0
 		tick := func(x, y float64) {

@@ -46,6 +46,7 @@ func Formats() []Format {
 		{"triangles", "triangles.csv", ".csv", "table of fabric triangles with stresses", writeTriangles},
 		{"reactions", "reactions.csv", ".csv", "table of reactions and actions on foundations", writeReactions},
 		{"summary", "summary.txt", ".txt", "what was found, to read in ten seconds", writeSummary},
+		{"report", "report.html", ".html", "the whole story on one page, with a live 3D view", writeReport},
 		{"svg", "drawings.svg", ".svg", "plan, elevations and axonometric with dimensions and forces", writeSVG},
 		{"png", "picture.png", ".png", "axonometric picture with values in colour", writePNG},
 		{"handover", "handover.zip", ".zip", "everything an analysis engineer needs to rebuild the structure", writeHandover},

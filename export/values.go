@@ -44,14 +44,14 @@ func unstressedLength(r *canopy.Result, i int) float64 {
 	return 0
 }
 
-// memberUtilisation is γ·T/(F/γM) under prestress only, 0 when strength or
+// memberUtilisation is γ·|T|/(F/γM) under prestress only, 0 when strength or
 // factors are not given.
 func memberUtilisation(r *canopy.Result, i int) float64 {
 	strength := optional(r.Structure.Strength, i)
 	if strength == 0 || r.Factors.Load == 0 || r.Factors.Cable == 0 {
 		return 0
 	}
-	return r.Factors.Load * r.Form.Force[i] * r.Factors.Cable / strength
+	return r.Factors.Load * math.Abs(r.Form.Force[i]) * r.Factors.Cable / strength
 }
 
 // triangleNormal returns the unit normal (zero for a triangle without area)
