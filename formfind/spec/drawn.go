@@ -330,11 +330,17 @@ func (d *drawn) placeOrPoint(n *yaml.Node, p *place) (r3.Vec, bool) {
 // cableRule reads what decides the force of a cable.
 func (d *drawn) cableRule(g *fields, c *canopy.ModelCable, label string) {
 	rules := g.present(cableRules)
+	keep := "keep one of them"
+	for _, k := range rules {
+		if g.keyNode(k).Line < 0 {
+			keep = fmt.Sprintf("set them together: %s={%s: …}", g.p, k)
+		}
+	}
 	switch {
 	case len(rules) == 0 && g.ok:
 		d.r.fail(g.node, g.p, fmt.Sprintf("the cable of %s has nothing that decides its force", label), "give force, force density, sag, length, or stiffness and unstressed")
 	case len(rules) > 1:
-		d.r.fail(g.keyNode(rules[1]), g.p.down(rules[1]), fmt.Sprintf("the force of the cable of %s is decided twice, by %s", label, list(rules, "and")), "keep one of them")
+		d.r.fail(g.keyNode(rules[1]), g.p.down(rules[1]), fmt.Sprintf("the force of the cable of %s is decided twice, by %s", label, list(rules, "and")), keep)
 	}
 	c.Force = g.number("force")
 	c.ForceDensity = g.number("force density")

@@ -223,6 +223,7 @@ func TestSetErrorsPointAtTheSet(t *testing.T) {
 		"title=[":                           `--set title=[: "[" is not a value; write it as in the model file, for example points.M1.z=7.5`,
 		"mesh=*edge":                        `--set mesh=*edge: "*edge" is not a value; write it as in the model file, for example points.M1.z=7.5`,
 		"edges.AB.from=E":                   `--set edges.AB.from=E: point "E" is not defined; the points are A, B, C and D`,
+		"edges.AB.cable.sag=8 %":            `--set edges.AB.cable.sag=8 %: the force of the cable of edge "AB" is decided twice, by force and sag; set them together: edges.AB.cable={sag: …}`,
 		"limits.headroom.0.height=3":        `--set limits.headroom.0.height=3: there is no "0" in limits.headroom`,
 		"fabrics.main.prestress.warp=1kN/m": `--set fabrics.main.prestress.warp=1kN/m: fabrics.main.prestress is a single value and has no "warp"; set it as a whole`,
 	} {
