@@ -256,7 +256,9 @@ func TestFunicularIsTrusted(t *testing.T) {
 		require.Zero(t, s.Load[i].X)
 		require.Negative(t, s.Load[i].Z)
 	}
-	trusted(t, run(t, s, solveForm(t, s, q)))
+	a := run(t, s, solveForm(t, s, q))
+	trusted(t, a)
+	require.Empty(t, a.StabilityNote)
 }
 
 // A cable ring on three radial cables, all of given force: it balances at any
