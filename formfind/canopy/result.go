@@ -134,7 +134,9 @@ type CableReport struct {
 	Utilisation                   float64 // demand over design resistance, 0 = not computed
 }
 
-// LineReport is the load along a fixed line, N/m.
+// LineReport is the load along a fixed line, N/m, from the reactions of its
+// nodes. The two ends of an open line belong to what else meets there and are
+// left out.
 type LineReport struct {
 	Length         float64 // m
 	Min, Mean, Max float64 // N/m along the line, size of the reaction

@@ -4,6 +4,8 @@ import (
 	"fmt"
 	"math"
 
+	"gonum.org/v1/gonum/spatial/r3"
+
 	"anticlast/formfind/canopy"
 	"anticlast/formfind/surface"
 )
@@ -140,4 +142,9 @@ func (c *check) slack() {
 			Text:   fmt.Sprintf("Fabric is slack or wrinkled in one direction under prestress, over %s of its area.", percent(fabric.area/total)),
 			Places: fabric.places(c.triangle)})
 	}
+}
+
+func (c *check) length(k int32) float64 {
+	e := c.s.Ends[k]
+	return r3.Norm(r3.Sub(c.f.Position[e[1]], c.f.Position[e[0]]))
 }
