@@ -89,9 +89,9 @@ type FitResult struct {
 // the relative differences, damped after Levenberg (1944) and Marquardt (1963)
 // with a damping that fades with the differences. With fewer targets than force
 // densities it takes the smallest change that serves. The derivatives come
-// through the factorised system, D·dx = Σ dq (x_j − x_i): row by row where
-// targets or variables are few, and as products inside conjugate gradients on
-// the least squares problem (Paige & Saunders 1982) where both are many.
+// through the factorised system, D·dx = Σ dq (x_j − x_i), row by row, where
+// targets or variables are few; where both are many, displacements, force
+// densities and multipliers are solved for together in one sparse system.
 //
 // Targets that contradict each other or statics are no error: the result then
 // says what was reached. Panels act as in [Solver.Shape]. Errors: [InputError],
@@ -151,7 +151,7 @@ type fit struct {
 
 	force, move []r3.Vec
 	change      []float64 // of force densities
-	factored    bool      // the solver's systems belong to q
+	factored    bool      // the solver's systems and weights belong to q
 }
 
 func (s *Solver) newFit(q []float64, g *goals, set FitSettings) (*fit, error) {

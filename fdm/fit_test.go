@@ -134,6 +134,50 @@ func TestNetWithGivenForces(t *testing.T) {
 	}
 }
 
+// Equal forces in all members make the shortest net on its boundary: the
+// balance of equal forces is the condition for the least total length, which is
+// a convex problem (the principle behind Plateau's laws for networks). All
+// members are targets; every changed net is longer.
+func TestEqualForcesMakeTheShortestNet(t *testing.T) {
+	cells := sweep(12, 24, 71)
+	n := saddle(cells, cells, 10, 3)
+	s := newSolver(t, n, nil)
+	var targets []fdm.Target
+	free := func(k int) bool { return n.Fixed[n.Ends[k][0]] == 0 || n.Fixed[n.Ends[k][1]] == 0 }
+	for k := range n.Ends {
+		if free(k) {
+			targets = append(targets, fdm.Target{Quantity: fdm.Force, Members: []int32{int32(k)}, Value: 1000})
+		}
+	}
+	r := fit(t, s, uniform(len(n.Ends), 1), targets, fdm.FitSettings{})
+	t.Logf("%d force targets met in %d iterations", len(targets), r.Iterations)
+	met(t, n, r)
+	if r.Iterations > 20 {
+		t.Errorf("%d iterations", r.Iterations)
+	}
+	total := func(x []r3.Vec) (sum float64) {
+		for k, l := range lengths(n, x) {
+			if free(k) {
+				sum += l
+			}
+		}
+		return sum
+	}
+	shortest := total(r.Position)
+	random := rand.New(rand.NewPCG(8, 8))
+	for range 20 {
+		x := append([]r3.Vec(nil), r.Position...)
+		for i := range x {
+			if n.Fixed[i] == 0 {
+				x[i] = r3.Add(x[i], r3.Scale(0.01, vec(random.NormFloat64(), random.NormFloat64(), random.NormFloat64())))
+			}
+		}
+		if d := total(x) - shortest; !(d > 0) {
+			t.Errorf("a changed net is shorter by %g", -d)
+		}
+	}
+}
+
 // All free lengths of a net given.
 func TestNetWithGivenLengths(t *testing.T) {
 	r := rand.New(rand.NewPCG(5, 3))

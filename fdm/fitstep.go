@@ -2,7 +2,6 @@ package fdm
 
 import (
 	"context"
-	"math"
 
 	"gonum.org/v1/gonum/mat"
 	"gonum.org/v1/gonum/spatial/r3"
@@ -87,11 +86,11 @@ type stepper interface {
 	step(ctx context.Context, p []float64, mu float64) (float64, error)
 }
 
-// few is the number of rows or columns up to which J is formed, room its
-// largest number of entries.
+// few is the number of rows or columns up to which J is formed: about where the
+// sparse step becomes faster on nets. room is the largest number of its entries.
 const (
-	few  = 1200
-	room = 1 << 23
+	few  = 128
+	room = 1 << 24
 )
 
 func (f *fit) newStepper() stepper {
@@ -99,7 +98,7 @@ func (f *fit) newStepper() stepper {
 	if narrow := min(rows, columns); narrow > 0 && narrow <= few && rows*columns <= room {
 		return &denseStep{f: f}
 	}
-	return &gradientStep{f: f}
+	return &sparseStep{f: f}
 }
 
 // denseStep forms J, row by row or column by column, and solves the smaller of
@@ -201,74 +200,6 @@ func (d *denseStep) step(_ context.Context, p []float64, mu float64) (float64, e
 		}
 	}
 	return norm2(out), nil
-}
-
-// gradientStep solves the damped least squares problem by conjugate gradients
-// on the normal equations in the form that keeps residuals of both spaces
-// (CGLS; Björck 1996, Paige & Saunders 1982 compare it with LSQR).
-type gradientStep struct {
-	f                *fit
-	r, jd, s, d, sum []float64
-}
-
-func (g *gradientStep) linearise(context.Context) error { return nil }
-
-func (g *gradientStep) step(ctx context.Context, p []float64, mu float64) (float64, error) {
-	f := g.f
-	rows, columns := len(f.off), f.count
-	if g.r == nil {
-		g.r, g.jd, g.sum = make([]float64, rows), make([]float64, rows), make([]float64, rows)
-		g.s, g.d = make([]float64, columns), make([]float64, columns)
-	}
-	// A rejected step has left another matrix in the solver.
-	if err := f.refactor(ctx); err != nil {
-		return 0, err
-	}
-	clear(p)
-	clear(g.sum)
-	for t, o := range f.off {
-		g.r[t] = -o
-	}
-	if err := f.backward(g.s, g.r); err != nil {
-		return 0, err
-	}
-	copy(g.d, g.s)
-	gamma := dotFlat(g.s, g.s)
-	first := gamma
-	// The nearer the end the more exact: that keeps the convergence of the
-	// outer steps fast without early waste.
-	exact := math.Max(1e-8, math.Min(0.05, norm2(f.off)/math.Sqrt(float64(rows))))
-	const most = 400
-	for range most {
-		if gamma <= exact*exact*first {
-			break
-		}
-		if err := ctx.Err(); err != nil {
-			return 0, err
-		}
-		if err := f.forward(g.jd, g.d); err != nil {
-			return 0, err
-		}
-		curve := dotFlat(g.jd, g.jd) + mu*dotFlat(g.d, g.d)
-		if !(curve > 0) {
-			break
-		}
-		alpha := gamma / curve
-		addFlat(p, alpha, g.d)
-		addFlat(g.sum, alpha, g.jd)
-		addFlat(g.r, -alpha, g.jd)
-		if err := f.backward(g.s, g.r); err != nil {
-			return 0, err
-		}
-		addFlat(g.s, -mu, p)
-		next := dotFlat(g.s, g.s)
-		beta := next / gamma
-		gamma = next
-		for i := range g.d {
-			g.d[i] = g.s[i] + beta*g.d[i]
-		}
-	}
-	return norm2(g.sum), nil
 }
 
 func dotFlat(a, b []float64) (sum float64) {

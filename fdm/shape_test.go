@@ -252,6 +252,14 @@ func TestAgreesWithDenseSolver(t *testing.T) {
 // direction, over the largest size of what was added up there (q times
 // coordinates, so that rounding of positions is no failure).
 func imbalance(n fdm.Network, x []r3.Vec, q []float64) float64 {
+	worst, most := outOfBalance(n, x, q)
+	if worst == 0 {
+		return 0
+	}
+	return worst / most
+}
+
+func outOfBalance(n fdm.Network, x []r3.Vec, q []float64) (worst, most float64) {
 	sum := make([]r3.Vec, len(x))
 	size := make([]float64, len(x))
 	if n.Load != nil {
@@ -263,7 +271,6 @@ func imbalance(n fdm.Network, x []r3.Vec, q []float64) float64 {
 		sum[e[0]], size[e[0]] = r3.Add(sum[e[0]], f), size[e[0]]+s
 		sum[e[1]], size[e[1]] = r3.Sub(sum[e[1]], f), size[e[1]]+s
 	}
-	var worst, most float64
 	for i, f := range sum {
 		for axis, v := range [3]float64{f.X, f.Y, f.Z} {
 			if !n.Fixed[i].Has(axis) {
@@ -272,10 +279,7 @@ func imbalance(n fdm.Network, x []r3.Vec, q []float64) float64 {
 		}
 		most = max(most, size[i])
 	}
-	if worst == 0 {
-		return 0
-	}
-	return worst / most
+	return worst, most
 }
 
 // For positive force densities without loads the shape makes Σ q L² least
