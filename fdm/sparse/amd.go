@@ -14,12 +14,12 @@ import "math"
 //
 // P. R. Amestoy, T. A. Davis & I. S. Duff: An approximate minimum degree
 // ordering algorithm. SIAM J. Matrix Anal. Appl. 17 (1996), 886-905.
-func minimumDegree(g graph, order []int32) []int32 {
+func minimumDegree(g graph, weight, order []int32) []int32 {
 	n := g.n
 	if n == 0 {
 		return order
 	}
-	q := newQuotient(g)
+	q := newQuotient(g, weight)
 	for q.left > 0 {
 		me := q.popLeast()
 		q.eliminate(me)
@@ -34,7 +34,8 @@ func minimumDegree(g graph, order []int32) []int32 {
 // element all are variables.
 type quotient struct {
 	n       int
-	left    int // weight not yet eliminated
+	left    int   // weight not yet eliminated
+	total   int32 // weight altogether
 	list    []int32
 	free    int32
 	start   []int32
@@ -57,9 +58,9 @@ type quotient struct {
 
 const none = int32(-1)
 
-func newQuotient(g graph) *quotient {
+func newQuotient(g graph, weight []int32) *quotient {
 	n := g.n
-	slab := make([]int32, 11*n)
+	slab := make([]int32, 10*n)
 	cut := func() []int32 {
 		s := slab[:n:n]
 		slab = slab[n:]
@@ -68,7 +69,7 @@ func newQuotient(g graph) *quotient {
 	q := &quotient{
 		n: n, list: make([]int32, len(g.adj)+len(g.adj)/5+n),
 		start: cut(), size: cut(), elems: cut(), weight: cut(), degree: cut(), mark: cut(),
-		head: cut(), next: cut(), prev: cut(), member: cut(), last: cut(),
+		next: cut(), prev: cut(), member: cut(), last: cut(),
 		bucket: make([]int32, n),
 		epoch:  2,
 	}
@@ -76,7 +77,7 @@ func newQuotient(g graph) *quotient {
 	q.free = int32(len(g.adj))
 	q.pivots = make([]int32, 0, n)
 	for i := range n {
-		q.head[i], q.bucket[i], q.member[i] = none, none, none
+		q.bucket[i], q.member[i] = none, none
 		q.last[i] = int32(i)
 		q.start[i] = g.ptr[i]
 		q.size[i] = g.ptr[i+1] - g.ptr[i]
@@ -84,18 +85,36 @@ func newQuotient(g graph) *quotient {
 		q.weight[i] = 1
 		q.mark[i] = 1
 	}
+	q.total = int32(n)
+	if weight != nil {
+		copy(q.weight, weight)
+		q.total = 0
+		for _, w := range weight {
+			q.total += w
+		}
+		for i := range int32(n) {
+			q.degree[i] = 0
+			for _, j := range g.row(i) {
+				q.degree[i] += weight[j]
+			}
+		}
+	}
+	q.head = make([]int32, q.total+1)
+	for d := range q.head {
+		q.head[d] = none
+	}
 	// A node tied to very many others would be touched at every step and is
 	// last in any good order: take it out (threshold as in the paper's codes,
 	// common practice).
 	dense := int32(max(16, 10*math.Sqrt(float64(n))))
 	for i := int32(n) - 1; i >= 0; i-- {
-		if q.degree[i] > dense && q.degree[i] > 0 {
+		if q.size[i] > dense {
 			q.delayed = append(q.delayed, i)
 			q.weight[i], q.mark[i], q.size[i] = 0, 0, 0
 			continue
 		}
 		q.insert(i, q.degree[i])
-		q.left++
+		q.left += int(q.weight[i])
 	}
 	return q
 }
@@ -245,7 +264,7 @@ func (q *quotient) eliminate(me int32) {
 	clique := list[from:to]
 
 	// mark[e] - epoch becomes the weight of e's clique outside the new one.
-	if q.epoch > math.MaxInt32-2*int32(q.n)-2 {
+	if q.epoch > math.MaxInt32-2*q.total-2 {
 		for i := range mark {
 			if mark[i] != 0 {
 				mark[i] = 1

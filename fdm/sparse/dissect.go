@@ -2,6 +2,7 @@ package sparse
 
 import (
 	"context"
+	"math"
 	"math/bits"
 	"slices"
 )
@@ -22,6 +23,10 @@ const (
 	// dissectFrom is the number of nodes below which approximate minimum
 	// degree is as good and quicker.
 	dissectFrom = 400
+	// surfaceSeparator times the square root of a part is what a separator may
+	// have for a graph to count as a surface: nets and meshes with some order
+	// need 0.5 to 1.2 (measured), a triangulation of random points 1.6.
+	surfaceSeparator = 1.3
 )
 
 // point is the place of a node in the layout.
@@ -54,6 +59,10 @@ type dissector struct {
 	mass [4][]int32
 	open [2][]int32
 	leaf leafOrder
+	// Parts of at least judged nodes are looked at for whether the graph is
+	// like a surface at all; rough says that it is not.
+	judged int
+	rough  bool
 }
 
 func newDissector(g graph, weight []int32) *dissector {
@@ -203,7 +212,8 @@ func (d *dissector) weightOf(i int32) int32 {
 type cut struct {
 	dir, side int
 	at        int32
-	size      int32
+	size      int32   // unknowns in the separator
+	count     float64 // nodes in it
 	cost      float64
 }
 
@@ -364,7 +374,7 @@ func (d *dissector) sweep(best *cut, k int, win window, nodes []int32, pts []poi
 		}
 		for side, sep := range [2]int32{sepLow, sepHigh} {
 			if cost := skewCost(float64(sep), float64(below), float64(total)); best.cost < 0 || cost < best.cost {
-				*best = cut{dir: k, side: side, at: win.lo + x, cost: cost, size: sep}
+				*best = cut{dir: k, side: side, at: win.lo + x, cost: cost, size: sep, count: float64(sep) * float64(len(nodes)) / float64(total)}
 			}
 		}
 	}
@@ -391,7 +401,13 @@ func (d *dissector) split(ctx context.Context, from, to int) {
 			return
 		}
 		c, ok := d.bestCut(nodes, pts, int32(from))
-		if !ok || int(c.size) > len(nodes)/3 && d.weight == nil {
+		if d.judged > 0 && len(nodes) >= d.judged && (!ok || float64(c.count) > surfaceSeparator*math.Sqrt(float64(len(nodes)))) {
+			d.rough = true
+		}
+		if d.rough {
+			return
+		}
+		if !ok || int(c.count) > len(nodes)/3 {
 			d.orderRest(nodes)
 			return
 		}
@@ -473,7 +489,14 @@ func (d *dissector) orderRest(nodes []int32) {
 		}
 		sub.ptr[k+1] = int32(len(sub.adj))
 	}
-	order := minimumDegree(sub, make([]int32, 0, sub.n))
+	var weight []int32
+	if d.weight != nil {
+		weight = make([]int32, sub.n)
+		for k, i := range nodes {
+			weight[k] = d.weight[i]
+		}
+	}
+	order := minimumDegree(sub, weight, make([]int32, 0, sub.n))
 	for k, i := range order {
 		order[k] = nodes[i]
 	}
@@ -594,27 +617,25 @@ func (l *leafOrder) order(d *dissector, part []int32) {
 	}
 }
 
-// dissect orders all nodes of g. Components too small to be worth cutting are
-// left to minimum degree together.
-func dissect(ctx context.Context, g graph, weight []int32, order []int32) []int32 {
+// dissect orders all nodes of g. If picky, it gives up on graphs whose
+// separators are not as small as those of a surface.
+func dissect(ctx context.Context, g graph, weight []int32, picky bool) ([]int32, bool) {
 	d := newDissector(g, weight)
+	const unmet = -4
 	for i := range d.region {
-		d.region[i] = -4 // not met
+		d.region[i] = unmet
 	}
-	d.nodes = make([]int32, g.n)
+	all, pts := make([]int32, g.n), make([]point, g.n)
 	done := 0
-	all := d.nodes
-	pts := make([]point, g.n)
 	for root := range int32(g.n) {
-		if d.region[root] != -4 {
+		if d.region[root] != unmet {
 			continue
 		}
-		part := all[done:done]
-		part = append(part, root)
+		part := append(all[done:done], root)
 		d.region[root] = int32(done)
 		for k := 0; k < len(part); k++ {
 			for _, j := range g.row(part[k]) {
-				if d.region[j] == -4 {
+				if d.region[j] == unmet {
 					d.region[j] = int32(done)
 					part = append(part, j)
 				}
@@ -625,8 +646,14 @@ func dissect(ctx context.Context, g graph, weight []int32, order []int32) []int3
 			d.layout()
 		}
 		d.nodes, d.pts = all, pts
+		if picky {
+			d.judged = max(dissectFrom, len(part)/8)
+		}
 		d.split(ctx, done, done+len(part))
+		if d.rough {
+			return nil, false
+		}
 		done += len(part)
 	}
-	return append(order, all...)
+	return all, true
 }

@@ -5,21 +5,32 @@ import "context"
 // orderGraph numbers the nodes of g for elimination and says which ordering
 // was taken.
 func orderGraph(ctx context.Context, g graph, o Ordering) ([]int32, Ordering, error) {
-	order := make([]int32, 0, g.n)
-	switch o {
-	case OrderNatural:
-		for i := range int32(g.n) {
-			order = append(order, i)
+	if o == OrderNatural {
+		order := make([]int32, g.n)
+		for i := range order {
+			order[i] = int32(i)
 		}
-	case OrderMinimumDegree:
-		order = minimumDegree(g, order)
-	case OrderDissection:
-		order = dissect(ctx, g, nil, order)
-	default:
-		if g.n >= dissectFrom {
-			return dissect(ctx, g, nil, order), OrderDissection, ctx.Err()
-		}
-		return minimumDegree(g, order), OrderMinimumDegree, ctx.Err()
+		return order, o, ctx.Err()
 	}
-	return order, o, ctx.Err()
+	if g.n > 100 && compressible(g) {
+		c := compress(g)
+		order, chosen := orderNodes(ctx, c.g, c.weight, o)
+		return c.expand(order), chosen, ctx.Err()
+	}
+	order, chosen := orderNodes(ctx, g, nil, o)
+	return order, chosen, ctx.Err()
+}
+
+// orderNodes does it for nodes that stand for weight unknowns each (nil: one).
+func orderNodes(ctx context.Context, g graph, weight []int32, o Ordering) ([]int32, Ordering) {
+	switch {
+	case o == OrderDissection:
+		order, _ := dissect(ctx, g, weight, false)
+		return order, o
+	case o == OrderAuto && g.n >= dissectFrom:
+		if order, ok := dissect(ctx, g, weight, true); ok {
+			return order, OrderDissection
+		}
+	}
+	return minimumDegree(g, weight, make([]int32, 0, g.n)), OrderMinimumDegree
 }
