@@ -212,6 +212,9 @@ func (f *fit) run(ctx context.Context) (FitResult, error) {
 		if worst <= f.set.Tolerance {
 			return f.result(FitMet, "", iteration), nil
 		}
+		if f.count == 0 {
+			return f.result(FitNearest, "no force density may change", iteration), nil
+		}
 		if iteration >= f.set.MaxIterations {
 			return f.result(FitStopped, fmt.Sprintf("%d iterations did not suffice", iteration), iteration), nil
 		}
