@@ -348,13 +348,7 @@ func (d *drawing) members() {
 
 func (d *drawing) supports() {
 	s, f := d.r.Structure, d.r.Form
-	inner := make([]bool, len(s.Position))
-	for i := range s.Lines {
-		l := &s.Lines[i]
-		for k := 1; k < len(l.Nodes)-1; k++ {
-			inner[l.Nodes[k]] = true
-		}
-	}
+	inner := innerNodes(s)
 	drawn := 0
 	for i, fixed := range s.Fixed {
 		held := s.FixedAt(i) != fixed

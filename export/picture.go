@@ -154,12 +154,7 @@ func (p *picture) draw() {
 			p.line(p.places(c.Nodes), thick(f.Force[c.Members[0]]), dark)
 		}
 	}
-	inner := make([]bool, len(s.Position))
-	for i := range s.Lines {
-		for k := 1; k < len(s.Lines[i].Nodes)-1; k++ {
-			inner[s.Lines[i].Nodes[k]] = true
-		}
-	}
+	inner := innerNodes(s)
 	for i, fixed := range s.Fixed {
 		if fixed != 0 && !inner[i] {
 			q := p.f.at(f.Position[i])

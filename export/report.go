@@ -248,6 +248,7 @@ func (p *report) script() {
 	}
 	type namedPoint struct {
 		Node int32  `json:"node"`
+		Foot bool   `json:"foot,omitempty"`
 		Text string `json:"text"`
 	}
 	data := struct {
@@ -346,6 +347,7 @@ func (p *report) script() {
 			data.Parts = append(data.Parts, part{append(slices.Clone(g.Nodes), g.Nodes[0]), 4, "ring", false, label("ring", oneLine(g.Name))})
 		}
 	}
+	inner := innerNodes(s)
 	for i := range s.Position {
 		name := oneLine(string(s.NodeName.Bytes(i)))
 		fixed := s.Fixed[i]
@@ -358,7 +360,7 @@ func (p *report) script() {
 			v := f.Reaction[i]
 			t += fmt.Sprintf("\nreaction %s kN\n(%s, %s, %s)", kN(r3.Norm(v)), kN(v.X), kN(v.Y), kN(v.Z))
 		}
-		data.Points = append(data.Points, namedPoint{int32(i), t})
+		data.Points = append(data.Points, namedPoint{int32(i), fixed != 0 && !inner[i], t})
 	}
 	const shades = 64
 	for k := range shades {

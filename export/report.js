@@ -40,6 +40,10 @@ const stroke = program(
   "vec4 q=k.x<.5?A:B; q.xy+=(vec2(-d.y,d.x)*k.y+d*(k.x*2.-1.)*abs(k.y)*.5)/px*q.w*2.*k.z; q.z-=.0006*q.w; gl_Position=q; }",
   "in vec3 v; out vec4 o; void main(){ o=vec4(v,1.); }");
 
+const foot = program(
+  "in vec3 p; uniform mat4 m; uniform vec2 px; uniform float size; void main(){ vec4 q=m*vec4(p,1.); q.y-=size*q.w/px.y; q.z-=.0006*q.w; gl_Position=q; gl_PointSize=size; }",
+  "uniform vec3 c; out vec4 o; void main(){ if(abs(gl_PointCoord.x-.5)>gl_PointCoord.y*.5) discard; o=vec4(c,1.); }");
+
 const buffer = (list) => { const b = gl.createBuffer(); gl.bindBuffer(gl.ARRAY_BUFFER, b); gl.bufferData(gl.ARRAY_BUFFER, list, gl.STATIC_DRAW); return b; };
 const attribute = (p, name, b, size, stride = 0, at = 0) => {
   const l = gl.getAttribLocation(p, name);
@@ -100,10 +104,13 @@ const lines = () => {
   gl.bindVertexArray(lineArray);
   attribute(stroke, "a", b, 3, 52, 0); attribute(stroke, "b", b, 3, 52, 12); attribute(stroke, "k", b, 4, 52, 24); attribute(stroke, "c", b, 3, 52, 40);
 };
+const feet = data.points.filter((p) => p.foot), footArray = gl.createVertexArray();
+gl.bindVertexArray(footArray);
+attribute(foot, "p", buffer(new Float32Array(feet.flatMap((p) => [0, 1, 2].map((k) => P[3 * p.node + k])))), 3);
 dark.addEventListener("change", () => { lines(); draw(); });
 
 // --- the camera ----------------------------------------------------------
-const home = { az: -60, el: 26, zoom: 1.3, x: 0, y: 0 };
+const home = { az: -60, el: 26, zoom: innerWidth < 600 ? 1.05 : 1.3, x: 0, y: 0 };
 const cam = { ...home };
 let M = new Float32Array(16), eye = [0, 0, 0], axes = null;
 const sub = (a, b) => [a[0] - b[0], a[1] - b[1], a[2] - b[2]], dot = (a, b) => a[0] * b[0] + a[1] * b[1] + a[2] * b[2];
@@ -151,6 +158,12 @@ const paint = () => {
   gl.uniformMatrix4fv(gl.getUniformLocation(stroke, "m"), false, M);
   gl.uniform2f(gl.getUniformLocation(stroke, "px"), w, h);
   gl.drawArrays(gl.TRIANGLES, 0, lineCount);
+  gl.useProgram(foot); gl.bindVertexArray(footArray);
+  gl.uniformMatrix4fv(gl.getUniformLocation(foot, "m"), false, M);
+  gl.uniform2f(gl.getUniformLocation(foot, "px"), canvas.width, canvas.height);
+  gl.uniform1f(gl.getUniformLocation(foot, "size"), 11 * scale);
+  gl.uniform3f(gl.getUniformLocation(foot, "c"), 0.62, 0.48, 0.18);
+  gl.drawArrays(gl.POINTS, 0, feet.length);
 };
 
 // --- what is under the pointer -------------------------------------------

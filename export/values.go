@@ -100,3 +100,15 @@ func lineOf(s *canopy.Structure) map[int32]int {
 	}
 	return m
 }
+
+// innerNodes are the nodes between the ends of fixed lines and seams.
+func innerNodes(s *canopy.Structure) []bool {
+	inner := make([]bool, len(s.Position))
+	for i := range s.Lines {
+		l := &s.Lines[i]
+		for k := 1; k < len(l.Nodes)-1; k++ {
+			inner[l.Nodes[k]] = true
+		}
+	}
+	return inner
+}

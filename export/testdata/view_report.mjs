@@ -76,7 +76,7 @@ if (shots) {
 await page.close();
 for (const scheme of ["light", "dark"]) {
   const phone = await open({ viewport: { width: 390, height: 844 }, colorScheme: scheme, hasTouch: true, isMobile: true });
-  seen.phoneWide = await phone.evaluate(() => document.documentElement.scrollWidth > innerWidth + 1);
+  seen.phoneWide ||= await phone.evaluate(() => document.documentElement.scrollWidth > 391);
   if (shots) await phone.screenshot({ path: join(shots, `phone-${scheme}.png`), fullPage: true });
   await phone.close();
 }
