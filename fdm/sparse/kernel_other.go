@@ -2,7 +2,7 @@
 
 package sparse
 
-const haveStrips = false
+var haveStrips = false
 
 func mulSubStrip(c, a, b *float64, ldc, lda, ldb, m, n, k, step, fresh int) {
 	panic("sparse: no strip kernel on this machine")

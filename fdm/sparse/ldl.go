@@ -58,22 +58,11 @@ func (f *Factor) rowSizes(values []float64) {
 	for k, i := range a.order {
 		f.size[k] = math.Abs(values[i])
 	}
-	entries := values[a.n:]
-	for s := range int32(a.fronts()) {
-		cols, ld := a.shape(s)
-		rows := a.rows[a.rowPtr[s]:a.rowPtr[s+1]]
-		for k := a.sourcePtr[s]; k < a.sourcePtr[s+1]; k++ {
-			v := math.Abs(entries[a.source[k]])
-			c := int(a.target[k]) / ld
-			r := int(a.target[k]) - c*ld
-			i, j := int(a.first[s])+c, int(a.first[s])+r
-			if r >= cols {
-				j = int(rows[r-cols])
-			}
-			f.size[i] = max(f.size[i], v)
-			f.size[j] = max(f.size[j], v)
-		}
-	}
+	a.entry(values, func(i, j int32, v float64) {
+		v = math.Abs(v)
+		p, q := a.place[i], a.place[j]
+		f.size[p], f.size[q] = max(f.size[p], v), max(f.size[q], v)
+	})
 	// Rounding leaves about this much of a row that cancels (measured on
 	// singular nets).
 	eps := 0x1p-52 * (50 + 10*math.Sqrt(float64(a.n)))

@@ -1,0 +1,243 @@
+package sparse
+
+import (
+	"fmt"
+	"math"
+	"math/rand/v2"
+	"testing"
+)
+
+// bothPaths runs f with the portable kernels and, where there are any, with
+// those in assembly.
+func bothPaths(t *testing.T, f func(t *testing.T)) {
+	t.Run("portable", func(t *testing.T) {
+		defer func(old bool) { haveStrips = old }(haveStrips)
+		haveStrips = false
+		f(t)
+	})
+	if haveStrips {
+		t.Run("assembly", f)
+	}
+}
+
+// naive is C − A·Bᵀ entry by entry.
+func naive(c []float64, ldc int, a []float64, lda int, b []float64, ldb, i, j, k int, fresh bool) float64 {
+	s := 0.0
+	if !fresh {
+		s = c[j*ldc+i]
+	}
+	for l := range k {
+		s -= a[l*lda+i] * b[l*ldb+j]
+	}
+	return s
+}
+
+func TestProductKernelsOnEverySize(t *testing.T) {
+	var sizes [][3]int
+	for m := 1; m <= 21; m++ {
+		for n := 1; n <= 9; n++ {
+			for _, k := range []int{1, 2, 3, 4, 5, 8, 13} {
+				sizes = append(sizes, [3]int{m, n, k})
+			}
+		}
+	}
+	sizes = append(sizes, [][3]int{{100, 70, 130}, {523, 9, 300}, {97, 97, 24}, {0, 3, 2}, {5, 3, 0}}...)
+	bothPaths(t, func(t *testing.T) {
+		rng := rand.New(rand.NewPCG(1, 1))
+		for _, size := range sizes {
+			m, n, k := size[0], size[1], size[2]
+			for mode := range 4 {
+				fresh, lower := mode&1 != 0, mode&2 != 0
+				if lower && n > m {
+					continue
+				}
+				ldc, lda, ldb := m+rng.IntN(3), m+rng.IntN(3), n+rng.IntN(3)
+				const guard = 1e30
+				c := make([]float64, ldc*n+slack)
+				a := randomVector(rng, lda*k+slack)
+				b := randomVector(rng, ldb*k+slack)
+				for i := range c {
+					c[i] = guard
+				}
+				for j := range n {
+					for i := range m {
+						c[j*ldc+i] = rng.NormFloat64()
+					}
+				}
+				was := append([]float64(nil), c...)
+				mulSub(c, ldc, a, lda, b, ldb, m, n, k, fresh, lower)
+				for x, v := range c {
+					i, j := x%max(ldc, 1), x/max(ldc, 1)
+					if i >= m || j >= n {
+						if v != guard {
+							t.Fatalf("%d×%d×%d: wrote outside at row %d, column %d", m, n, k, i, j)
+						}
+						continue
+					}
+					if lower && i < j {
+						continue
+					}
+					if w := naive(was, ldc, a, lda, b, ldb, i, j, k, fresh); math.Abs(v-w) > 1e-12 {
+						t.Fatalf("%d×%d×%d fresh %v lower %v: (%d, %d) is %g, want %g", m, n, k, fresh, lower, i, j, v, w)
+					}
+				}
+			}
+		}
+	})
+}
+
+func TestSolveKernelsOnEverySize(t *testing.T) {
+	bothPaths(t, func(t *testing.T) {
+		rng := rand.New(rand.NewPCG(2, 2))
+		for m := 1; m <= 20; m++ {
+			for n := 1; n <= 4; n++ {
+				ldc := m + rng.IntN(3)
+				// T with its diagonal inverted.
+				tri := randomVector(rng, 16)
+				for j := range n {
+					tri[5*j] = 1 / (2 + rng.Float64())
+				}
+				c := randomVector(rng, ldc*n+slack)
+				was := append([]float64(nil), c...)
+				scaleRows(c, ldc, m, n, tri, 4)
+				for i := range m {
+					for j := range n {
+						// Row i of X·Tᵀ must give back row i of C.
+						s := c[j*ldc+i] / tri[5*j]
+						for l := range j {
+							s += c[l*ldc+i] * tri[4*l+j]
+						}
+						if math.Abs(s-was[j*ldc+i]) > 1e-12 {
+							t.Fatalf("rows %d, columns %d: (%d, %d) gives %g, want %g", m, n, i, j, s, was[j*ldc+i])
+						}
+					}
+				}
+				for nb := 1; nb <= 3; nb++ {
+					lda, ldb := m+rng.IntN(3), m+rng.IntN(3)
+					a, b := randomVector(rng, 4*lda+slack), randomVector(rng, 3*ldb+slack)
+					// What lies beyond the rows must not matter.
+					for j := range 4 {
+						for i := m; i < lda; i++ {
+							a[j*lda+i] = math.NaN()
+						}
+					}
+					var out [12]float64
+					mulTrans(&out, a, lda, b, ldb, m, n, nb)
+					for r := range nb {
+						for j := range n {
+							s := 0.0
+							for i := range m {
+								s += a[j*lda+i] * b[r*ldb+i]
+							}
+							if !(math.Abs(s-out[4*r+j]) <= 1e-12) {
+								t.Fatalf("m %d, n %d, nb %d: product (%d, %d) is %g, want %g", m, n, nb, j, r, out[4*r+j], s)
+							}
+						}
+					}
+				}
+			}
+		}
+	})
+}
+
+func TestExtendAddOnRandomRows(t *testing.T) {
+	bothPaths(t, func(t *testing.T) {
+		rng := rand.New(rand.NewPCG(3, 3))
+		for range 400 {
+			rows := 1 + rng.IntN(40)
+			cols := rng.IntN(rows + 1)
+			var rel []int32
+			for i := range rows {
+				if rng.IntN(3) > 0 {
+					rel = append(rel, int32(i))
+				}
+			}
+			n := len(rel)
+			if n == 0 {
+				continue
+			}
+			u := randomVector(rng, n*n+slack)
+			panel, update := make([]float64, rows*rows+slack), make([]float64, rows*rows+slack)
+			runs := appendRuns(nil, rel, int32(cols))
+			extendAdd(panel, rows, 0, u, n, runs, 0, cols)
+			nu := rows - cols
+			extendAdd(update[:nu*nu], nu, cols, u, n, runs, cols, rows)
+			for j, c := range rel {
+				for i := j; i < n; i++ {
+					r := int(rel[i])
+					at := &panel[int(c)*rows+r]
+					if int(c) >= cols {
+						at = &update[(int(c)-cols)*nu+r-cols]
+					}
+					if *at != u[j*n+i] {
+						t.Fatalf("rows %v, cols %d: entry (%d, %d) went astray", rel, cols, r, c)
+					}
+					*at = 0
+				}
+			}
+			for i := range panel {
+				if panel[i] != 0 || update[i] != 0 {
+					t.Fatalf("rows %v, cols %d: something was added elsewhere", rel, cols)
+				}
+			}
+		}
+	})
+}
+
+func TestPackedProducts(t *testing.T) {
+	bothPaths(t, func(t *testing.T) {
+		rng := rand.New(rand.NewPCG(4, 4))
+		for _, s := range [][3]int{{96, 96, 24}, {101, 37, 130}, {203, 203, 300}, {130, 129, 64}} {
+			m, n, k := s[0], s[1], s[2]
+			for _, fresh := range []bool{false, true} {
+				a, c := randomVector(rng, m*k+slack), randomVector(rng, m*n+slack)
+				was := append([]float64(nil), c...)
+				w := &worker{alone: true, scratch: make([]float64, (m+packRows)*packDepth)}
+				w.lowerProduct(c, m, a, m, m, n, k, fresh)
+				for j := range n {
+					for i := j; i < m; i++ {
+						if want := naive(was, m, a, m, a, m, i, j, k, fresh); math.Abs(c[j*m+i]-want) > 1e-11 {
+							t.Fatalf("%v: (%d, %d) is %g, want %g", s, i, j, c[j*m+i], want)
+						}
+					}
+				}
+			}
+		}
+	})
+}
+
+// The same systems solved by both paths agree to rounding.
+func TestPathsAgreeOnSystems(t *testing.T) {
+	if !haveStrips {
+		t.Skip("one path only")
+	}
+	for _, p := range patterns() {
+		for _, kind := range []Kind{Cholesky, LDL} {
+			s := laplacian(rand.New(rand.NewPCG(5, 5)), p.n, p.pairs)
+			want := bitsOf(t, s, kind, 1)
+			haveStrips = false
+			got := bitsOf(t, s, kind, 1)
+			haveStrips = true
+			for i := range got {
+				if math.Abs(got[i]-want[i]) > 1e-9*(1+math.Abs(want[i])) {
+					t.Fatalf("%s, %v: x[%d] is %g portable, %g in assembly", p.name, kind, i, got[i], want[i])
+				}
+			}
+		}
+	}
+}
+
+func BenchmarkProduct(b *testing.B) {
+	for _, c := range [][3]int{{16, 16, 8}, {32, 32, 12}, {64, 64, 16}, {128, 128, 32}, {256, 256, 64}, {1000, 1000, 256}} {
+		b.Run(fmt.Sprint(c), func(b *testing.B) {
+			m, n, k := c[0], c[1], c[2]
+			a := randomVector(rand.New(rand.NewPCG(1, 1)), m*k+slack)
+			u := make([]float64, m*n+slack)
+			w := &worker{alone: true, scratch: make([]float64, (m+packRows)*packDepth)}
+			for b.Loop() {
+				w.lowerProduct(u, m, a, m, m, n, k, true)
+			}
+			b.ReportMetric(float64(m)*float64(n)*float64(k)*float64(b.N)/b.Elapsed().Seconds()/1e9, "GF/s")
+		})
+	}
+}
