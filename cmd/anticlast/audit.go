@@ -46,6 +46,9 @@ func writeAudit(w io.Writer, r *canopy.Result) error {
 		fmt.Fprintf(b, "  stable (%s)\n", u.StabilityNote)
 	default:
 		fmt.Fprintf(b, "  stable; firmness %.3g, softest at node %s\n", u.Softest, s.NodeName.At(int(u.SoftestNode)))
+		if u.StabilityNote != "" {
+			fmt.Fprintf(b, "  %s\n", u.StabilityNote)
+		}
 	}
 
 	fmt.Fprintln(b, "\nTension and mesh")
