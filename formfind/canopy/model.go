@@ -113,9 +113,18 @@ const (
 
 // ModelFabric is one piece of fabric.
 type ModelFabric struct {
-	Name       string
-	Boundary   []string // edges in order around it, in either direction each
-	Ring       string   // the ring inside it, "" = none
+	Name     string
+	Boundary []string // edges in order around it, in either direction each
+	Ring     string   // the ring inside it, "" = none
+	// Holes are openings inside it, each the edges in order around one, in
+	// either direction each.
+	Holes [][]string
+	// Lines are edges inside it, other than those of its boundary and holes:
+	// ridges, valleys, arches, seams. They end at points of the boundary, of
+	// holes or of each other, or freely inside.
+	Lines []string
+	// Inside are points inside it at which a node of the mesh must lie.
+	Inside     []string
 	WarpRule   WarpRule
 	WarpDir    r3.Vec  // for WarpAlong; zero = along the first edge
 	Warp, Weft float64 // prestress, N/m
