@@ -4,6 +4,7 @@ import (
 	"fmt"
 	"math"
 	"math/big"
+	"math/rand/v2"
 	"testing"
 
 	"github.com/stretchr/testify/require"
@@ -32,6 +33,25 @@ func TestPredicatesAreExact(t *testing.T) {
 		// Stolfi (1985) in rational numbers.
 		require.Equal(t, lifted(a, b, c, d), exactInCircle(a, b, c, d))
 	})
+}
+
+// Points as nearly on a line or circle as rounding allows: here the plain
+// floating-point determinant has the wrong sign every so often.
+func TestPredicatesOnRoundedLinesAndCircles(t *testing.T) {
+	rnd := rand.New(rand.NewPCG(1, 2))
+	for range 2000 {
+		v := func() float64 { return 200*rnd.Float64() - 100 }
+		a, b, s := xy{v(), v()}, xy{v(), v()}, 4*rnd.Float64()-2
+		c := xy{a.x + s*(b.x-a.x), a.y + s*(b.y-a.y)}
+		require.Equal(t, exactOrient(a, b, c), sign(orient(a, b, c)))
+		o, r := xy{v(), v()}, 100*rnd.Float64()
+		on := func() xy {
+			sin, cos := math.Sincos(7 * rnd.Float64())
+			return xy{o.x + r*cos, o.y + r*sin}
+		}
+		p, q, u, w := on(), on(), on(), on()
+		require.Equal(t, exactInCircle(p, q, u, w), sign(inCircle(p, q, u, w)))
+	}
 }
 
 func sign(v float64) int {

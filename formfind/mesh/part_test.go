@@ -268,11 +268,16 @@ func TestAnyNumbersOfSegmentsAreMeshed(t *testing.T) {
 		model    *canopy.Model
 		segments []int
 	}{
-		"opposite sides":        {polygon(4), []int{8, 12, 10, 9}},
-		"odd sides of a star":   {polygon(5), []int{7, 8, 8, 8, 8}},
-		"sides of a triangle":   {polygon(3), []int{10, 20, 15}},
-		"halves of a lens":      {lens(), []int{13, 20}},
-		"a coarse side":         {polygon(4), []int{8, 24, 24, 24}},
+		"opposite sides":      {polygon(4), []int{8, 12, 10, 9}},
+		"odd sides of a star": {polygon(5), []int{7, 8, 8, 8, 8}},
+		"sides of a triangle": {polygon(3), []int{10, 20, 15}},
+		"halves of a lens":    {lens(), []int{13, 20}},
+		"a coarse side":       {polygon(4), []int{8, 24, 24, 24}},
+		"a star from elsewhere": {func() *canopy.Model {
+			m := polygon(5)
+			m.Fabrics[0].Boundary = []string{"e2", "e3", "e4", "e0", "e1"}
+			return m
+		}(), []int{0, 0, 0, 7, 0}},
 		"seven sides, one fine": {polygon(7), []int{40, 0, 0, 0, 0, 0, 0}},
 	} {
 		t.Run(name, func(t *testing.T) {
