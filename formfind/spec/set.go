@@ -110,9 +110,7 @@ func (r *reader) step(n *yaml.Node, sh *shape, part string, last bool, value *ya
 				n.Content = append(n.Content, kn, v)
 				return v, k.shape, nil
 			}
-			for _, k := range sec.names() {
-				have = append(have, k)
-			}
+			have = append(have, sec.names()...)
 		}
 		hint := ""
 		if near := nearest(part, have); near != "" {
