@@ -2,6 +2,7 @@ package fdm_test
 
 import (
 	"math"
+	"runtime"
 	"slices"
 	"testing"
 
@@ -218,4 +219,32 @@ func TestNaturalMovesWithTheCanopy(t *testing.T) {
 			}
 		}
 	})
+}
+
+// The same bits whatever the number of processors.
+func TestSameBitsOnAnyNumberOfProcessors(t *testing.T) {
+	run := func(procs int) ([]r3.Vec, fdm.NaturalResult, fdm.FitResult) {
+		defer runtime.GOMAXPROCS(runtime.GOMAXPROCS(procs))
+		n := saddle(60, 60, 10, 3)
+		q := uniform(len(n.Ends), 1)
+		for k := range q {
+			q[k] += 0.3 * float64(k%7)
+		}
+		s := newSolver(t, n, nil)
+		x := shape(t, s, q)
+		small := saddle(14, 14, 10, 3)
+		var targets []fdm.Target
+		for k := 100; k < 300; k++ {
+			targets = append(targets, fdm.Target{Quantity: fdm.Force, Members: []int32{int32(k)}, Value: 1})
+		}
+		f := fit(t, newSolver(t, small, nil), uniform(len(small.Ends), 1), targets, fdm.FitSettings{})
+		c, panels, force := sail(40, 8)
+		canopy := newSolver(t, c, panels)
+		return x, natural(t, canopy, shape(t, canopy, uniform(len(force), 1e5)), fdm.Given{Force: force}, 3), f
+	}
+	x1, n1, f1 := run(1)
+	x2, n2, f2 := run(3)
+	if !slices.Equal(x1, x2) || !slices.Equal(n1.Position, n2.Position) || !slices.Equal(n1.Stress, n2.Stress) || !slices.Equal(f1.Q, f2.Q) {
+		t.Error("results depend on GOMAXPROCS")
+	}
 }

@@ -490,3 +490,25 @@ func TestCancelled(t *testing.T) {
 		t.Errorf("Natural: %v", err)
 	}
 }
+
+// In Shape a panel is three links of the force density of an equilateral
+// triangle's edges under the mean stress σ: half the cotangent of 60° times σ
+// (the weights of the linear triangle, Pinkall & Polthier 1993).
+func TestPanelsAreEquilateralInShape(t *testing.T) {
+	n, panels, force := sail(6, 8)
+	for k := range panels {
+		panels[k].WarpStress, panels[k].WeftStress = 1000, 3000
+	}
+	q := uniform(len(force), 5e3)
+	x := shape(t, newSolver(t, n, panels), q)
+	links := n
+	for _, p := range panels {
+		for i := range 3 {
+			links.Ends = append(links.Ends, [2]int32{p.Corners[i], p.Corners[(i+1)%3]})
+			q = append(q, 2000/(2*math.Tan(math.Pi/3)))
+		}
+	}
+	if d := maxDistance(shape(t, newSolver(t, links, nil), q), x); d > 1e-13 {
+		t.Errorf("off by %g", d)
+	}
+}
