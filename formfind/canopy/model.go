@@ -133,22 +133,53 @@ type ModelFabric struct {
 	Line       int
 }
 
-// Net is a cable net of two families of lines on a patch of three or four sides.
+// NetPattern says how the lines of a net are laid.
+type NetPattern uint8
+
+// Patterns of net lines.
+const (
+	// NetAuto: radial when all that is given asks for it, along the sides
+	// where the boundary is a fair patch of three or four sides and nothing
+	// asks for straight lines, else straight.
+	NetAuto     NetPattern = iota
+	NetSides               // two families along the sides of a patch of three or four
+	NetStraight            // families of parallel lines in plan, clipped by any outline
+	NetRadial              // lines from a hole to the boundary, and rings around it
+)
+
+// Net is a cable net inside a closed loop of edges.
 type Net struct {
 	Name     string
 	Boundary []string
-	Families [2]Family
-	Line     int
+	// Holes are closed loops of edges inside the boundary, in which there is
+	// no net.
+	Holes     [][]string
+	Pattern   NetPattern
+	Direction r3.Vec // of straight lines, laid into the plan of the net; zero = along the first edge
+	Families  []Family
+	// MeshLength makes it an equal-mesh net: every link between two crossings
+	// has this length in m, without stress, or at the tension MarkTension in
+	// N where that is given. Links that end at the boundary are cut to fit and
+	// carry the force of their family. Stiffness of the families is needed.
+	MeshLength, MarkTension float64
+	Line                    int
 }
 
-// Family is one family of net lines. The first family runs from the second to
-// the fourth side of the boundary, that is along the first; the second family
-// along the second.
+// Family is one family of net lines.
+//
+// Along the sides of a patch the first family runs along the first side and the
+// second along the second. Straight lines of two families cross at right angles
+// unless Angle says otherwise; a third family joins the crossings of the other
+// two along the shorter diagonals. In a radial net the first family are the
+// radial lines, the second the rings.
 type Family struct {
 	Name         string
-	Spacing      float64 // m
+	Spacing      float64 // m, between lines at right angles to them; of radial lines along the boundary
+	Angle        float64 // rad, of straight lines from the net's direction, counter-clockwise
+	HasAngle     bool
 	Force        float64 // N, or
-	ForceDensity float64 // N/m
+	ForceDensity float64 // N/m, or
+	MeanForce    float64 // N, turned into the force density that gives it to a link of mean length
 	Stiffness    float64 // EA, N; with it the found force also fixes the unstressed length
 	Weight       float64 // N/m
 	Strength     float64 // N

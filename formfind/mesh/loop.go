@@ -10,15 +10,18 @@ import (
 
 // loop is the boundary of a fabric or net: a closed walk along edges.
 type loop struct {
-	net   bool
-	index int // into Model.Fabrics or Model.Nets
-	name  string
-	line  int
-	edges []int   // in order of the walk
-	rev   []bool  // walked from its second point to its first
-	sides [][]int // positions in edges, grouped into sides by corners
-	ring  int     // ring inside, −1 = none
-	patch patcher
+	net    bool
+	index  int // into Model.Fabrics or Model.Nets
+	name   string
+	line   int
+	edges  []int   // in order of the walk
+	rev    []bool  // walked from its second point to its first
+	sides  [][]int // positions in edges, grouped into sides by corners
+	holes  []*loop // openings inside, each with its own walk
+	lines  []int   // edges inside
+	points []int   // points inside that are nodes
+	ring   int     // ring inside, −1 = none
+	patch  patcher
 }
 
 func (l *loop) part() string {
@@ -48,6 +51,7 @@ func (b *builder) loops() {
 			}
 			b.ringUse[l.ring] = len(b.loop)
 		}
+		b.inside(l, f)
 		b.addLoop(l)
 	}
 	for i, n := range b.m.Nets {
@@ -64,6 +68,10 @@ func (b *builder) loops() {
 			b.fail("net", n.Name, n.Line, Mismatch, "divide it into nets of three or four sides that share edges", "its boundary has %d corners", len(l.sides))
 			continue
 		}
+		if len(n.Families) < 2 {
+			b.fail("net", n.Name, n.Line, Missing, "give it two", "it has %d families of lines", len(n.Families))
+			continue
+		}
 		for k, f := range n.Families {
 			if !(f.Spacing > 0) {
 				b.fail("net", n.Name, n.Line, Missing, "give it in m or mm", "family %d has no spacing", k+1)
@@ -78,9 +86,48 @@ func (b *builder) loops() {
 	b.edgeUse()
 }
 
+// inside notes the holes, lines and points inside a fabric.
+func (b *builder) inside(l *loop, f canopy.ModelFabric) {
+	for _, names := range f.Holes {
+		if h := b.chain(&loop{index: l.index, name: f.Name, line: f.Line, ring: -1}, names); h != nil {
+			l.holes = append(l.holes, h)
+		}
+	}
+	for _, n := range f.Lines {
+		e, ok := b.edge[n]
+		if !ok {
+			b.fail("fabric", f.Name, f.Line, Missing, "add it under edges", "its line %q is not defined", n)
+			continue
+		}
+		if slices.Contains(l.lines, e) || slices.Contains(l.edges, e) || slices.ContainsFunc(l.holes, func(h *loop) bool { return slices.Contains(h.edges, e) }) {
+			b.fail("fabric", f.Name, f.Line, Mismatch, "list it once", "its line %s is listed twice or bounds it", n)
+			continue
+		}
+		l.lines = append(l.lines, e)
+	}
+	for _, n := range f.Inside {
+		p, ok := b.point[n]
+		if !ok {
+			b.fail("fabric", f.Name, f.Line, Missing, "add it under points", "its point %q is not defined", n)
+			continue
+		}
+		l.points = append(l.points, p)
+	}
+}
+
 func (b *builder) addLoop(l *loop) {
+	at := int32(len(b.loop))
 	for _, e := range l.edges {
-		b.users[e] = append(b.users[e], int32(len(b.loop)))
+		b.users[e] = append(b.users[e], at)
+	}
+	for _, h := range l.holes {
+		for _, e := range h.edges {
+			b.users[e] = append(b.users[e], at)
+		}
+	}
+	for _, e := range l.lines {
+		// The fabric lies on both sides.
+		b.users[e] = append(b.users[e], at, at)
 	}
 	l.sides = b.corners(l)
 	b.loop = append(b.loop, l)
@@ -292,6 +339,13 @@ func (b *builder) orient() {
 		for k, e := range b.loop[i].edges {
 			dir[[2]int{i, e}] = b.loop[i].rev[k]
 		}
+		for _, h := range b.loop[i].holes {
+			// Walked the other way round than the outline.
+			same := r3.Dot(newell(b.sample(h)), area[i]) > 0
+			for k, e := range h.edges {
+				dir[[2]int{i, e}] = h.rev[k] != same
+			}
+		}
 	}
 	flip := make([]int8, n) // 0 = not seen, ±1
 	for seed := range n {
@@ -302,14 +356,18 @@ func (b *builder) orient() {
 		queue := []int{seed}
 		for h := 0; h < len(queue); h++ {
 			i := queue[h]
-			for _, e := range b.loop[i].edges {
+			edges := slices.Clone(b.loop[i].edges)
+			for _, h := range b.loop[i].holes {
+				edges = append(edges, h.edges...)
+			}
+			for _, e := range edges {
 				fabrics := b.users[e][:0:0]
 				for _, u := range b.users[e] {
 					if !b.loop[u].net {
 						fabrics = append(fabrics, u)
 					}
 				}
-				if len(fabrics) != 2 {
+				if len(fabrics) != 2 || fabrics[0] == fabrics[1] {
 					continue
 				}
 				j := int(fabrics[0] + fabrics[1] - int32(i))

@@ -91,7 +91,7 @@ func net(sides int) *canopy.Model {
 	m := polygon(sides)
 	b := m.Fabrics[0].Boundary
 	m.Fabrics = nil
-	m.Nets = []canopy.Net{{Name: "roof", Boundary: b, Families: [2]canopy.Family{{Spacing: 1, Force: 5e3}, {Spacing: 1.25, ForceDensity: 4e3, Stiffness: 1e7}}}}
+	m.Nets = []canopy.Net{{Name: "roof", Boundary: b, Families: []canopy.Family{{Spacing: 1, Force: 5e3}, {Spacing: 1.25, ForceDensity: 4e3, Stiffness: 1e7}}}}
 	return m
 }
 

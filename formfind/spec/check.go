@@ -36,12 +36,18 @@ func (d *drawn) edgesHaveKinds() {
 // users counts the fabrics and nets along each edge.
 func (d *drawn) users() []int {
 	n := make([]int, len(d.m.Edges))
-	for _, refs := range d.boundaryRefs {
+	count := func(refs []ref) {
 		for _, q := range refs {
 			if i, ok := d.edge[q.name]; ok {
 				n[i]++
 			}
 		}
+	}
+	for _, refs := range d.boundaryRefs {
+		count(refs)
+	}
+	for _, h := range d.holeRefs {
+		count(h.refs)
 	}
 	return n
 }
@@ -80,12 +86,16 @@ func (d *drawn) roles() {
 // boundaries checks the boundary of every fabric and net.
 func (d *drawn) boundaries() {
 	count := map[int]int{}
-	for k, refs := range d.boundaryRefs {
+	for k := range len(d.boundaryRefs) + len(d.holeRefs) {
+		var refs []ref
 		what := ""
-		if k < len(d.m.Fabrics) {
-			what = fmt.Sprintf("fabric %q", d.m.Fabrics[k].Name)
-		} else {
-			what = fmt.Sprintf("net %q", d.m.Nets[k-len(d.m.Fabrics)].Name)
+		switch f, n := len(d.m.Fabrics), len(d.boundaryRefs); {
+		case k < f:
+			refs, what = d.boundaryRefs[k], fmt.Sprintf("fabric %q", d.m.Fabrics[k].Name)
+		case k < n:
+			refs, what = d.boundaryRefs[k], fmt.Sprintf("net %q", d.m.Nets[k-f].Name)
+		default:
+			refs, what = d.holeRefs[k-n].refs, d.holeRefs[k-n].what
 		}
 		edges, good := make([]int, 0, len(refs)), len(refs) > 1
 		seen := map[int]bool{}

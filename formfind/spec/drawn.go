@@ -27,6 +27,7 @@ type drawn struct {
 	edgeRole                 []string
 	ringUsers                [][]ref
 	boundaryRefs             [][]ref // of fabrics, then of nets
+	holeRefs                 []holeRefs
 	pointsKey                *yaml.Node
 }
 
@@ -706,56 +707,6 @@ func (d *drawn) warp(g *fields, fab *canopy.ModelFabric, name string) {
 			d.r.fail(n, p, fmt.Sprintf("the warp of fabric %q is %s but it has no ring", name, n.Value), "name its ring, or give a direction such as [1, 0, 0]")
 		}
 	}
-}
-
-func (d *drawn) nets(f *fields) {
-	for _, e := range f.named("nets") {
-		p := f.p.down("nets").down(e.name)
-		if d.r.mapping(e.n, p, netSection) == nil {
-			continue
-		}
-		g := d.r.section(e.n, netSection, p)
-		net := canopy.Net{Name: e.name, Line: line(e.kn)}
-		if n := g.get("families"); n != nil {
-			fp := p.down("families")
-			if n.Kind != yaml.SequenceNode || len(n.Content) != 2 {
-				got := what(n)
-				if n.Kind == yaml.SequenceNode {
-					got = fmt.Sprint(len(n.Content))
-				}
-				d.r.fail(n, fp, fmt.Sprintf("net %q needs a list of two families, not %s", e.name, got), "for example families: "+netSection.get("families").example)
-			} else {
-				for i, c := range n.Content {
-					cp := fp.item(i)
-					if c = d.r.mapping(c, cp, familySection); c != nil {
-						net.Families[i] = d.family(c, cp, e.name)
-					}
-				}
-			}
-		}
-		refs, _ := g.refs("boundary")
-		for _, q := range refs {
-			net.Boundary = append(net.Boundary, q.name)
-		}
-		d.boundaryRefs = append(d.boundaryRefs, refs)
-		d.m.Nets = append(d.m.Nets, net)
-		d.netAt = append(d.netAt, ref{e.name, e.kn, p})
-	}
-}
-
-func (d *drawn) family(n *yaml.Node, p *place, net string) canopy.Family {
-	g := d.r.section(n, familySection, p)
-	fam := canopy.Family{
-		Name: g.text("name"), Spacing: g.number("spacing"), Force: g.number("force"), ForceDensity: g.number("force density"),
-		Stiffness: g.number("stiffness"), Weight: g.number("weight"), Strength: g.number("strength"),
-	}
-	switch rules := g.present([]string{"force", "force density"}); {
-	case len(rules) == 0 && g.ok:
-		d.r.fail(n, p, fmt.Sprintf("a family of net %q has nothing that decides its force", net), "give force or force density")
-	case len(rules) == 2:
-		d.r.fail(g.keyNode(rules[1]), p.down(rules[1]), fmt.Sprintf("the force of a family of net %q is decided twice", net), "keep force or force density")
-	}
-	return fam
 }
 
 func (r *reader) limits(f *fields, m *canopy.Model) {

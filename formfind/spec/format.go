@@ -30,7 +30,7 @@ var modelSection = &section{id: "model", doc: "A model says what the designer wa
 	{name: "fabrics", shape: named("fabric", in(fabricSection)), example: "{sail: {boundary: [AB, BC, CD, DA], prestress: 2.5 kN/m}}",
 		doc: "Pieces of fabric, each inside a closed loop of edges."},
 	{name: "nets", shape: named("net", in(netSection)), example: "{roof: {boundary: [AB, BC, CD, DA], families: [{spacing: 1 m, force: 5 kN}, {spacing: 1 m, force: 5 kN}]}}",
-		doc: "Cable nets of two families of lines, each inside a closed loop of edges."},
+		doc: "Cable nets of two or three families of lines, each inside a closed loop of edges."},
 	{name: "rings", shape: named("ring", in(ringSection)), example: "{top: {at: P, radius: 600 mm}}",
 		doc: "Rings of high and low points."},
 	{name: "masts", shape: named("mast", in(mastSection)), example: "{M: {foot: F, head: P}}",
@@ -167,21 +167,36 @@ var fabricSection = &section{id: "fabric", doc: "One piece of fabric inside a cl
 		doc: "Wanted length of a mesh side in this fabric."},
 }, fabricMaterialKeys()...)}
 
-var familySection = &section{id: "net-family", doc: "One family of net lines. Exactly one of force and force density is given.",
-	oneOf: []string{"force", "force density"}, keys: []*key{
+// familyRules are the ways to say what force the links of a family have.
+var familyRules = []string{"force", "force density", "mean force"}
+
+var familySection = &section{id: "net-family", doc: "One family of net lines. Exactly one of force, force density and mean force is given.",
+	oneOf: familyRules, keys: []*key{
 		{name: "name", shape: text(), deflt: "its number", example: "hanging", doc: "What the lines of the family are called."},
-		{name: "spacing", shape: quantity(Length).above(0), required: true, example: "1 m", doc: "Distance between lines, measured along the boundary they start from."},
+		{name: "spacing", shape: quantity(Length).above(0), deflt: "the mesh length of an equal-mesh net", example: "1 m", doc: "Distance between lines: along the sides, measured along the boundary they start from; of straight lines, at right angles to them in plan; of radial lines, along the boundary. Needed, except in the third family and in an equal-mesh net."},
+		{name: "angle", shape: quantity(Angle), deflt: "0 for the first family, 90 deg for the second, or 60 deg where there is a third", example: "60 deg", doc: "Direction of straight lines: turned from the direction of the net, counter-clockwise in plan."},
 		{name: "force", shape: quantity(Force).above(0), example: "5 kN", doc: "Tension of every link."},
 		{name: "force density", shape: quantity(ForcePerLength).above(0), example: "4 kN/m", doc: "Force over length of every link."},
+		{name: "mean force", shape: quantity(Force).above(0), example: "5 kN", doc: "Wanted force of a link of mean length: the force density that gives it is the same in every link of the family. The safe choice for a net without sharp demands."},
 		{name: "stiffness", shape: quantity(Force).above(0), example: "8 MN", doc: "Axial stiffness EA, for the cutting lengths."},
 		{name: "weight", shape: quantity(WeightPerLength).from(0), example: "0.6 kg/m", doc: "Self weight per length."},
 		{name: "strength", shape: quantity(Force).above(0), example: "60 kN", doc: "Characteristic breaking force."},
 	}}
 
+var equalMeshSection = &section{id: "equal-mesh", doc: "What all meshes of an equal-mesh net have in common.", keys: []*key{
+	{name: "length", shape: quantity(Length).above(0), required: true, example: "600 mm", doc: "Length of every link between two crossings."},
+	{name: "at tension", shape: quantity(Force).above(0), deflt: "none: the length is without stress", example: "5 kN", doc: "Tension at which the crossings are marked on the cables."},
+}}
+
 var netSection = &section{id: "net", doc: "A cable net inside a closed loop of edges.", keys: []*key{
 	{name: "boundary", shape: names("edge", 3), required: true, example: "[AB, BC, CD, DA]", doc: "The edges in order around it, each in either direction."},
-	{name: "families", shape: listOf(in(familySection), 2), required: true, example: "[{spacing: 1 m, force: 5 kN}, {spacing: 1 m, force: 5 kN}]",
-		doc: "Two families of lines. The first runs along the first side of the boundary, the second along the second."},
+	{name: "holes", shape: listOf(names("edge", 2), 1), example: "[[PQ, QR, RP]]", doc: "Closed loops of edges inside the boundary, in which there is no net. A radial net has one."},
+	{name: "pattern", shape: word("along sides", "straight", "radial"), deflt: "along sides where the boundary is a fair patch of three or four sides without holes and no direction, angle, third family or equal mesh is given; else straight", example: "straight",
+		doc: "How the lines are laid. along sides: two families along the sides of a patch of three or four. straight: parallel lines in plan on any outline. radial: lines from the one hole to the boundary, and rings."},
+	{name: "direction", shape: either(&shape{form: formDirection}, in(warpBetweenSection)), deflt: "along the first edge of the boundary", example: "[1, 0, 0]", doc: "Direction of straight lines in plan, from which angles are turned: [x, y, z] or {from, to} of two points."},
+	{name: "families", shape: listOf(in(familySection), 2).atMost(3), required: true, example: "[{spacing: 1 m, force: 5 kN}, {spacing: 1 m, force: 5 kN}]",
+		doc: "Two or three families of lines. Along the sides, the first runs along the first side of the boundary, the second along the second. A third family joins the crossings of straight lines along the shorter diagonals. In a radial net the first are the radial lines, the second the rings."},
+	{name: "equal mesh", shape: either(quantity(Length).above(0), in(equalMeshSection)), example: "{length: 600 mm, at tension: 5 kN}", doc: "Makes every link between two crossings equally long, without stress or at the tension at which they are marked, so that the net comes out of one length of cable. Only links at the boundary are cut to fit; they carry the force of their family. Families need stiffness. Two families of straight lines."},
 }}
 
 var ringSection = &section{id: "ring", doc: "The ring of a high or low point.", keys: []*key{
@@ -312,8 +327,7 @@ func sections() []*section {
 	var out []*section
 	seen := map[string]bool{}
 	var walkShape func(s *shape)
-	var walk func(s *section)
-	walk = func(s *section) {
+	walk := func(s *section) {
 		if seen[s.id] {
 			return
 		}

@@ -62,6 +62,7 @@ type shape struct {
 	elem   *shape
 	of     []*shape
 	least  int // entries of a list
+	most   int // entries of a list, 0 = any number
 }
 
 // bound is one end of the permitted values, in SI units.
@@ -89,6 +90,7 @@ func names(thing string, least int) *shape {
 	return &shape{form: formNames, thing: thing, least: least}
 }
 func listOf(e *shape, least int) *shape { return &shape{form: formList, elem: e, least: least} }
+func (s *shape) atMost(n int) *shape    { s.most = n; return s }
 func wordList(w ...string) *shape       { return &shape{form: formWords, words: w, least: 1} }
 
 func (s *shape) above(v float64) *shape { s.lo = bound{true, v, true}; return s }

@@ -158,7 +158,7 @@ func TestNetAndCableRing(t *testing.T) {
 fabrics:
 `, 1)+`    # two patches may share edges
 `, "fabrics.main.warp=[0, 2, 0]")
-	require.Equal(t, []canopy.Net{{Name: "roof", Boundary: []string{"DA", "CD", "BC", "AB"}, Line: 13, Families: [2]canopy.Family{
+	require.Equal(t, []canopy.Net{{Name: "roof", Boundary: []string{"DA", "CD", "BC", "AB"}, Line: 13, Families: []canopy.Family{
 		{Name: "bearing", Spacing: 0.9, Force: 5000},
 		{Spacing: 1.2, ForceDensity: 4000, Stiffness: 8e6, Weight: 6, Strength: 60e3},
 	}}}, m.Nets)

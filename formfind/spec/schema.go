@@ -216,11 +216,7 @@ func (s *shape) schema() object {
 	case formNamed:
 		return object{{"type", "object"}, {"propertyNames", object{{"pattern", namePattern}}}, {"additionalProperties", s.elem.schema()}}
 	case formList:
-		hi := 0
-		if s.elem.sec == familySection {
-			hi = s.least
-		}
-		return items(s.elem.schema(), s.least, hi)
+		return items(s.elem.schema(), s.least, s.most)
 	case formTable:
 		return object{{"anyOf", []object{{{"type", "string"}}, items(ref(s.sec.id), 0, 0)}}}
 	case formEither:

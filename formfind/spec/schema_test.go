@@ -61,7 +61,7 @@ func TestSchemaRefusesBrokenStructure(t *testing.T) {
 		neither-points-nor-listed list-for-mapping unknown-unit unit-case wrong-dimension imperial comma-decimal
 		word-for-number two-coordinates scalar-point missing-coordinate zero-mesh mapping-for-number number-list
 		fractional-segments edge-without-end edge-says-nothing bent-word arc-without-place unknown-role support-word
-		support-twice cable-two-rules cable-no-rule unstressed-alone no-prestress half-prestress net-no-spacing
+		support-twice cable-two-rules cable-no-rule unstressed-alone no-prestress half-prestress
 		net-one-family net-two-rules net-no-rule listed-no-nodes listed-rows`) {
 		b, err := os.ReadFile("testdata/broken/" + name + ".yaml")
 		require.NoError(t, err)

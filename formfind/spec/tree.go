@@ -268,7 +268,7 @@ func (s *section) label(p *place) string {
 		return "the model"
 	case limitsSection, factorsSection, listedSection:
 		return s.id
-	case edgeCableSection, fixedSection, fabricStiffnessSection, warpBetweenSection:
+	case edgeCableSection, fixedSection, fabricStiffnessSection, warpBetweenSection, equalMeshSection:
 		return p.String()
 	case pointSection, edgeSection, cableSection, fabricSection, netSection, ringSection, mastSection, guySection, listedFabricSection:
 		id := s.id
