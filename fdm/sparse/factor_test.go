@@ -28,13 +28,13 @@ func bitsOf(t *testing.T, s *system, kind Kind, workers int) []float64 {
 }
 
 func TestSameBitsWhateverTheNumberOfWorkers(t *testing.T) {
-	for _, shape := range [][2]int{{130, 130}, {400, 50}} {
+	for _, shape := range [][2]int{{100, 100}, {400, 30}} {
 		n, pairs := gridPairs(shape[0], shape[1], true)
 		s := laplacian(rand.New(rand.NewPCG(1, 2)), n, pairs)
 		for _, kind := range []Kind{Cholesky, LDL} {
 			want := bitsOf(t, s, kind, 1)
 			for _, workers := range []int{2, 3, 8} {
-				for range 3 {
+				for range 2 {
 					if !slices.Equal(bitsOf(t, s, kind, workers), want) {
 						t.Errorf("%v of %v: %d workers give other bits than one", kind, shape, workers)
 					}

@@ -88,7 +88,7 @@ func TestInertiaAgreesWithDenseEigenvalues(t *testing.T) {
 			continue
 		}
 		for _, zeros := range []float64{0, 0.3, 0.9} {
-			for seed := range uint64(4) {
+			for seed := range uint64(2) {
 				rng := rand.New(rand.NewPCG(seed, 17))
 				s := indefinite(rng, p.n, p.pairs, zeros)
 				for _, o := range []Ordering{OrderMinimumDegree, OrderDissection, OrderNatural} {
