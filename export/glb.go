@@ -6,6 +6,7 @@ import (
 	"fmt"
 	"io"
 	"math"
+	"slices"
 
 	"anticlast/formfind/canopy"
 	"anticlast/formfind/surface"
@@ -38,15 +39,27 @@ func writeGLB(ctx context.Context, w io.Writer, r *canopy.Result, _ Options) err
 			return err
 		}
 	}
+	plain := -1
 	for _, l := range layers {
 		roots := append([]int{l.root}, structure...)
 		if l.name != "plain" {
-			roots = append(roots, contours...)
+			roots = append(append(roots, contours...), l.legend...)
+		} else {
+			plain = l.root
+			roots = append(roots, g.yarns()...)
 		}
 		g.doc.Scenes = append(g.doc.Scenes, &gltf.Scene{Name: l.name, Nodes: roots, Extras: l.extras})
 	}
 	if len(layers) == 0 {
 		g.doc.Scenes = []*gltf.Scene{{Name: "structure", Nodes: structure}}
+	}
+	if arrows := g.reactions(); len(arrows) > 0 {
+		roots := append(slices.Clone(structure), arrows...)
+		if plain >= 0 {
+			roots = append(roots, plain)
+		}
+		g.doc.Scenes = append(g.doc.Scenes, &gltf.Scene{Name: "reactions", Nodes: roots,
+			Extras: map[string]any{"layer": "reactions: forces of the supports on the structure", "caution": canopy.Caution}})
 	}
 	if len(g.bin) > 0 {
 		g.doc.Buffers = []*gltf.Buffer{{ByteLength: len(g.bin), Data: g.bin}}
@@ -85,6 +98,7 @@ func (s *stickyWriter) Write(p []byte) (int, error) {
 type glbLayer struct {
 	name   string
 	root   int
+	legend []int
 	extras map[string]any
 }
 
@@ -185,12 +199,16 @@ func (g *scene) normals(n int, at func(i int) r3.Vec) int {
 	view := g.view(gltf.TargetArrayBuffer, 0, func(b []byte) []byte {
 		for i := range n {
 			for _, c := range upY(at(i)) {
-				b = binary.LittleEndian.AppendUint32(b, math.Float32bits(float32(c)))
+				b = appendFloat32(b, c)
 			}
 		}
 		return b
 	})
 	return g.accessor(&gltf.Accessor{BufferView: gltf.Index(view), ComponentType: gltf.ComponentFloat, Type: gltf.AccessorVec3, Count: n})
+}
+
+func appendFloat32(b []byte, v float64) []byte {
+	return binary.LittleEndian.AppendUint32(b, math.Float32bits(float32(v)))
 }
 
 // colours appends an accessor of linear colours in 16 bits, in which dark
@@ -326,7 +344,15 @@ func (g *scene) lines(name string, position []r3.Vec, pairs [][2]int32, material
 func (g *scene) fabric() []glbLayer {
 	r := g.r
 	meshes := sheets(r)
-	type shared struct{ position, normal, index int }
+	type shared struct{ position, normal, index, warp, weft int }
+	stress := func(k int) []float64 {
+		v := make([]float64, len(r.Form.Stress))
+		for i, s := range r.Form.Stress {
+			v[i] = [2]float64{s.Warp, s.Weft}[k]
+		}
+		return v
+	}
+	warp, weft := stress(0), stress(1)
 	geometry := make([]shared, len(meshes))
 	empty := true
 	for i := range meshes {
@@ -339,6 +365,7 @@ func (g *scene) fabric() []glbLayer {
 			g.positions(len(m.node), func(k int) r3.Vec { return r.Form.Position[m.node[k]] }),
 			g.normals(len(m.node), func(k int) r3.Vec { return m.normal[k] }),
 			g.indices(3*len(m.corners), len(m.node), func(k int) int32 { return m.corners[k/3][k%3] }),
+			g.valuesOf(m, warp), g.valuesOf(m, weft),
 		}
 	}
 	if empty {
@@ -353,8 +380,9 @@ func (g *scene) fabric() []glbLayer {
 				continue
 			}
 			p := &gltf.Primitive{
-				Attributes: gltf.PrimitiveAttributes{gltf.POSITION: geometry[i].position, gltf.NORMAL: geometry[i].normal},
-				Indices:    gltf.Index(geometry[i].index), Material: gltf.Index(material),
+				Attributes: gltf.PrimitiveAttributes{gltf.POSITION: geometry[i].position, gltf.NORMAL: geometry[i].normal,
+					"_WARP_STRESS": geometry[i].warp, "_WEFT_STRESS": geometry[i].weft},
+				Indices: gltf.Index(geometry[i].index), Material: gltf.Index(material),
 			}
 			if colour != nil {
 				p.Attributes[gltf.COLOR_0] = colour(m)
@@ -364,7 +392,7 @@ func (g *scene) fabric() []glbLayer {
 			n.Extras = g.fabricExtras(i, m)
 			children = append(children, g.node(n))
 		}
-		out = append(out, glbLayer{name, g.root("fabric, "+name, children)[0], extras})
+		out = append(out, glbLayer{name: name, root: g.root("fabric, "+name, children)[0], extras: extras})
 	}
 	white := rgb{1, 1, 1}
 	for _, l := range layers(r) {
@@ -378,10 +406,17 @@ func (g *scene) fabric() []glbLayer {
 			v := m.atVertices(r, l.values)
 			return g.colours(len(v), func(k int) rgb { return l.colour(v[k]) })
 		})
+		out[len(out)-1].legend = g.legend(&l)
 	}
 	show("plain", map[string]any{"layer": "fabric in light, without values", "caution": canopy.Caution},
 		g.material("fabric", fromScreen(245, 242, 235), 0.85, false), nil)
 	return out
+}
+
+// valuesOf appends an accessor of values of triangles at the vertices of a sheet.
+func (g *scene) valuesOf(m *sheetMesh, ofTriangle []float64) int {
+	v := m.atVertices(g.r, ofTriangle)
+	return g.scalars(len(v), func(i int) float64 { return v[i] })
 }
 
 func (g *scene) fabricExtras(i int, m *sheetMesh) map[string]any {

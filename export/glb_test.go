@@ -118,7 +118,7 @@ func TestGLBHoldsTheFabric(t *testing.T) {
 
 func TestGLBNamesItsParts(t *testing.T) {
 	doc := open(t, sail(6))
-	for _, name := range []string{"cables", "masts", "supports", "edge cable AB", "guy G1", "mast M1", "support A", "support G2 anchor", "held point C", "contours"} {
+	for _, name := range []string{"cables", "masts", "supports", "edge cable AB", "guy G1", "mast M1", "support A", "support G2 anchor", "held point C", "contours", "reactions", "reaction at A", "yarns", "legend, achieved"} {
 		nodeNamed(t, doc, name)
 	}
 	n, _ := nodeNamed(t, doc, "edge cable AB")
@@ -131,7 +131,7 @@ func TestGLBNamesItsParts(t *testing.T) {
 	for _, s := range doc.Scenes {
 		names = append(names, s.Name)
 	}
-	require.Equal(t, []string{"achieved", "warp", "weft", "ratio", "utilisation", "slope", "plain"}, names)
+	require.Equal(t, []string{"achieved", "warp", "weft", "ratio", "utilisation", "slope", "plain", "reactions"}, names)
 	doc = open(t, cone(16))
 	nodeNamed(t, doc, "ring top")
 	nodeNamed(t, doc, "fixed edge base")
@@ -165,7 +165,7 @@ func TestGLBIsSmall(t *testing.T) {
 	n, _ := nodeNamed(t, doc, "fabric sail")
 	p := doc.Meshes[*n.Mesh].Primitives[0]
 	bytes := 0
-	for _, a := range []int{p.Attributes[gltf.POSITION], p.Attributes[gltf.NORMAL], p.Attributes[gltf.COLOR_0], *p.Indices} {
+	for _, a := range []int{p.Attributes[gltf.POSITION], p.Attributes[gltf.NORMAL], p.Attributes[gltf.COLOR_0], p.Attributes["_WARP_STRESS"], p.Attributes["_WEFT_STRESS"], *p.Indices} {
 		bytes += doc.BufferViews[*doc.Accessors[a].BufferView].ByteLength
 	}
 	require.Less(t, float64(bytes)/float64(len(r.Structure.Corners)), 40.0)

@@ -63,13 +63,6 @@ func requireBox(t *testing.T, m measured, r *canopy.Result, used []r3.Vec, withi
 	require.InDeltaSlice(t, []float64{hi.X, hi.Y, hi.Z}, m.Hi, within)
 }
 
-func corners(r *canopy.Result) (p []r3.Vec) {
-	for _, c := range r.Structure.Corners {
-		p = append(p, r.Form.Position[c[0]], r.Form.Position[c[1]], r.Form.Position[c[2]])
-	}
-	return p
-}
-
 func TestOBJReadsBack(t *testing.T) {
 	t.Parallel()
 	all := []*canopy.Result{sail(9), cone(12), grid(5)}
@@ -94,7 +87,7 @@ func TestSTLReadsBack(t *testing.T) {
 		m := measure(t, reader, "stl", r)[0]
 		require.Equal(t, len(r.Structure.Corners), m.Triangles)
 		require.InEpsilon(t, area, m.Area, 1e-6)
-		requireBox(t, m, r, corners(r), 1e-6)
+		requireBox(t, m, r, fabricPoints(r), 1e-6)
 	}
 	// Far from the origin the shape is kept relative to the origin in the header.
 	r = cone(32)
