@@ -13,6 +13,8 @@ func (b *builder) choosePatch(l *loop) patcher {
 	var p patcher
 	n := len(l.sides)
 	switch {
+	case len(l.holes)+len(l.lines)+len(l.points) > 0:
+		return freePatch{}
 	case l.ring >= 0:
 		if !b.seesOutline(l) {
 			return freePatch{}

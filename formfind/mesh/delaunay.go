@@ -403,3 +403,15 @@ func (d *delaunay) inside() []bool {
 	}
 	return in
 }
+
+// around calls visit for each triangle at point a, with the corners that follow
+// a in it. Points inside the triangulation only, not the far corners.
+func (d *delaunay) around(a int32, visit func(t, next, after int32)) {
+	for start, t := d.at[a], d.at[a]; ; {
+		k := d.corner(t, a)
+		visit(t, d.v[t][(k+1)%3], d.v[t][(k+2)%3])
+		if t = d.n[t][(k+1)%3]; t == start || t < 0 {
+			return
+		}
+	}
+}

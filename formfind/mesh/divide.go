@@ -198,9 +198,17 @@ func (b *builder) divide() {
 		}
 	}
 	b.count = make([]int, len(m.Edges))
+	least := make([]int, len(m.Edges)) // per class, for numbers chosen here
+	for i, e := range m.Edges {
+		r := d.root(i)
+		if least[r] = max(least[r], 2); e.Kind == canopy.EdgeCable || b.curve[i].Arc {
+			least[r] = 4 // it will be curved
+		}
+	}
 	for i := range m.Edges {
 		r := d.root(i)
 		if r == i {
+			d.atLeast(i, least[i])
 			b.count[i] = b.classCount(d, i, given[i], byNet[i], sum[i], num[i])
 		} else {
 			b.count[i] = b.count[r]
@@ -238,7 +246,7 @@ func (b *builder) classCount(d *division, class, given int, byNet, sum float64, 
 		return e.Segments
 	}
 	if byNet > 0 {
-		n := max(2, int(math.Round(min(byNet, 1e6))), d.least[class])
+		n := max(2, int(math.Round(min(byNet, 1e6))))
 		if even {
 			n += n % 2
 		}
@@ -248,7 +256,7 @@ func (b *builder) classCount(d *division, class, given int, byNet, sum float64, 
 		return 1 // a cable in space
 	}
 	n := 2 * int(math.Round(min(sum/float64(num), 1e6)/2))
-	return max(4, n, d.least[class]+d.least[class]%2)
+	return max(n, d.least[class]+d.least[class]%2)
 }
 
 // chooseSize sets the length of a mesh side where nothing else is said.

@@ -2,14 +2,14 @@ package mesh
 
 import (
 	"container/heap"
-	"errors"
+	"fmt"
 	"math"
 	"slices"
 
 	"gonum.org/v1/gonum/spatial/r3"
 )
 
-// freePatch fills any outline, with or without a ring in it, by constrained
+// freePatch fills any outline, with a ring, holes, lines and points in it, by constrained
 // Delaunay triangulation in the plane of the outline and refinement by
 // circumcentres (Chew 1989, Ruppert 1995). The sides stay as they are divided,
 // since neighbours share their nodes; inside, the size of triangles follows that
@@ -29,29 +29,39 @@ func (freePatch) triangles(b *builder, l *loop) float64 {
 }
 
 func (freePatch) fill(p *plot) {
-	lines := [][]int32{p.b.outerNodes(p.l)}
-	if p.l.ring >= 0 {
-		lines = append(lines, p.b.ringNode[p.l.ring])
+	l := p.l
+	rims := [][]int32{p.b.outerNodes(l)}
+	if l.ring >= 0 {
+		rims = append(rims, p.b.ringNode[l.ring])
 	}
-	f := newFlat(p, lines)
+	for _, h := range l.holes {
+		rims = append(rims, p.b.outerNodes(h))
+	}
+	var chains [][]int32
+	for _, e := range l.lines {
+		chains = append(chains, p.b.edgeNode[e])
+	}
+	var points []int32
+	for _, q := range l.points {
+		points = append(points, p.b.node[q])
+	}
+	f := newFlat(p, rims, chains, points)
 	if f == nil {
-		p.b.fail(p.l.part(), p.l.name, p.l.line, Degenerate, "move its points apart", "its boundary encloses no area: a mesh without area would come of it")
+		p.b.fail(l.part(), l.name, l.line, Degenerate, "move its points apart", "its boundary encloses no area: a mesh without area would come of it")
 		return
 	}
-	d, err := f.outline()
+	d, in, err := f.outline()
 	if err != nil {
-		p.b.foldedOutline(p.l, f, err)
+		p.b.foldedOutline(l, f, err)
 		return
 	}
-	mean := 0.0
-	for _, h := range f.size[3:] {
-		mean += h / float64(len(f.size)-3)
+	if !p.allInside(f, d, in) {
+		return
 	}
-	r := refinement{d: d, size: f.size, most: max(mean, p.b.meshSize(p.l)), in: d.inside(), rim: len(d.p)}
+	r := refinement{d: d, size: f.size, most: max(f.mean, p.b.meshSize(l)), in: in, rim: len(d.p)}
 	r.run(MaxTriangles)
 	r.smooth(4)
-	// Nodes and triangles in space: offsets from the plane by mean value
-	// coordinates (Floater 2003; Hormann and Floater 2006).
+	height := f.heights(&r)
 	node := make([]int32, len(d.p))
 	for i := range node {
 		node[i] = -1
@@ -59,7 +69,7 @@ func (freePatch) fill(p *plot) {
 	copy(node[3:], f.node)
 	for i := r.rim; i < len(d.p); i++ {
 		if r.used[i] {
-			node[i] = p.node(f.lift(d.p[i]))
+			node[i] = p.node(f.lift(d.p[i], height[i]))
 		}
 	}
 	for t, in := range r.in {
@@ -70,39 +80,121 @@ func (freePatch) fill(p *plot) {
 	}
 }
 
-// flat is the outline of a patch seen along its normal.
+// allInside checks that holes, lines and points lie inside the outline.
+func (p *plot) allInside(f *flat, d *delaunay, in []bool) bool {
+	l := p.l
+	ok := true
+	outside := func(part, name string, line int, what string) {
+		ok = false
+		p.b.fail(part, name, line, Mismatch, "move it inside, or leave it out of the fabric", "it does not lie inside fabric %s, seen along (%.2f, %.2f, %.2f)%s", l.name, f.n.X, f.n.Y, f.n.Z, what)
+	}
+	beside := func(i, j int) (left, right bool) {
+		t, side, _ := d.edge(int32(i+3), int32(j+3))
+		left, right = in[t], in[d.n[t][side]]
+		if d.v[t][(side+1)%3] != int32(i+3) {
+			left, right = right, left
+		}
+		return left, right
+	}
+	for k, rim := range f.rims[1:] {
+		k -= len(f.rims) - 1 - len(l.holes)
+		if k < 0 {
+			continue // a ring is known to lie inside
+		}
+		inner, outer := beside(rim[0], rim[1])
+		if f.turn(rim) < 0 {
+			inner, outer = outer, inner
+		}
+		if inner || !outer {
+			e := p.b.m.Edges[l.holes[k].edges[0]]
+			outside("edge", e.Name, e.Line, ": its hole has no fabric around it")
+		}
+	}
+	for k, chain := range f.chains {
+		for j := 1; j < len(chain); j++ {
+			if a, b := beside(chain[j-1], chain[j]); !a || !b {
+				e := p.b.m.Edges[l.lines[k]]
+				outside("edge", e.Name, e.Line, "")
+				break
+			}
+		}
+	}
+	for k, i := range f.points {
+		if !in[d.at[i+3]] {
+			q := p.b.m.Points[l.points[k]]
+			outside("point", q.Name, q.Line, "")
+		}
+	}
+	return ok
+}
+
+// turn returns the area within a closed line, positive when it runs
+// counter-clockwise.
+func (f *flat) turn(rim []int) float64 {
+	a := 0.0
+	o := f.p[rim[0]]
+	for k, i := range rim {
+		p, q := f.p[i], f.p[rim[(k+1)%len(rim)]]
+		a += ((p.x-o.x)*(q.y-o.y) - (p.y-o.y)*(q.x-o.x)) / 2
+	}
+	return a
+}
+
+// flat is the outline of a patch, and what lies in it, seen along its normal.
 type flat struct {
 	origin, e1, e2, n r3.Vec
-	node              []int32 // of all lines, one after the other
+	node              []int32 // of all that follows, each once
 	p                 []xy
 	h                 []float64 // offsets from the plane
-	lines             [][2]int  // from, to in node
+	rims              [][]int   // closed lines, the outline first: indices into node
+	chains            [][]int   // open lines inside
+	points            []int     // single points inside
 	size              []float64 // per point of the triangulation: length of the sides there
+	mean              float64   // mean side
+	lone              float64   // wanted side at single points
 }
 
 // newFlat lays lines of nodes, the outline first, into the plane of the outline,
 // or of the ring in it; nil when the outline has no area there.
-func newFlat(p *plot, lines [][]int32) *flat {
-	f := &flat{}
+func newFlat(p *plot, rims, chains [][]int32, points []int32) *flat {
+	f := &flat{lone: p.b.meshSize(p.l)}
+	local := map[int32]int{}
 	var pts []r3.Vec
-	for _, l := range lines {
-		from := len(f.node)
-		f.node = append(f.node, l...)
-		f.lines = append(f.lines, [2]int{from, len(f.node)})
+	index := func(list []int32) []int {
+		out := make([]int, len(list))
+		for k, i := range list {
+			j, ok := local[i]
+			if !ok {
+				j = len(f.node)
+				local[i] = j
+				f.node = append(f.node, i)
+				pts = append(pts, p.at(i))
+			}
+			out[k] = j
+		}
+		return out
 	}
-	for _, i := range f.node {
-		pts = append(pts, p.at(i))
-		f.origin = r3.Add(f.origin, r3.Scale(1/float64(len(f.node)), p.at(i)))
+	for _, l := range rims {
+		f.rims = append(f.rims, index(l))
 	}
-	area := newell(pts[:len(lines[0])])
+	for _, l := range chains {
+		f.chains = append(f.chains, index(l))
+	}
+	f.points = index(points)
+	for _, v := range pts {
+		f.origin = r3.Add(f.origin, r3.Scale(1/float64(len(pts)), v))
+	}
+	// The nodes of the outline come first.
+	outer := pts[:len(rims[0])]
+	area := newell(outer)
 	if p.l.ring >= 0 {
 		// Along the axis of the ring, as the ring is known to lie inside so.
 		axis := p.b.ringAxis(p.l.ring)
 		area = r3.Scale(r3.Dot(area, axis), axis)
 	}
 	around := 0.0
-	for i := range lines[0] {
-		around += dist(pts[i], pts[(i+1)%len(lines[0])])
+	for i := range outer {
+		around += dist(outer[i], outer[(i+1)%len(outer)])
 	}
 	if !(r3.Norm(area) > 1e-9*around*around) {
 		return nil
@@ -128,65 +220,165 @@ func (f *flat) drop(v r3.Vec) (xy, float64) {
 	return xy{r3.Dot(d, f.e1), r3.Dot(d, f.e2)}, r3.Dot(d, f.n)
 }
 
-// outline triangulates the nodes of the lines and holds their sides.
-func (f *flat) outline() (*delaunay, error) {
+// lift returns the place in space at height h over q.
+func (f *flat) lift(q xy, h float64) r3.Vec {
+	return r3.Add(f.origin, r3.Add(r3.Scale(q.x, f.e1), r3.Add(r3.Scale(q.y, f.e2), r3.Scale(h, f.n))))
+}
+
+// outline triangulates all nodes and holds the sides of all lines. in says which
+// triangles lie between the rims.
+func (f *flat) outline() (d *delaunay, in []bool, fault *flatError) {
 	lo, hi := f.p[0], f.p[0]
 	for _, q := range f.p {
 		lo = xy{min(lo.x, q.x), min(lo.y, q.y)}
 		hi = xy{max(hi.x, q.x), max(hi.y, q.y)}
 	}
-	d := newDelaunay(lo, hi)
-	f.size = []float64{0, 0, 0}
-	for _, q := range f.p {
+	d = newDelaunay(lo, hi)
+	for i, q := range f.p {
 		if _, err := d.add(q); err != nil {
-			return nil, err
+			return nil, nil, f.owner(i, err)
 		}
 	}
-	for _, l := range f.lines {
-		n := l[1] - l[0]
-		for k := range n {
-			i, j, before := l[0]+k, l[0]+(k+1)%n, l[0]+(k+n-1)%n
-			if err := d.hold(int32(i+3), int32(j+3)); err != nil {
-				return nil, err
+	sum, num := make([]float64, len(f.p)), make([]float64, len(f.p))
+	total, sides := 0.0, 0.0
+	hold := func(i, j int) error {
+		s := math.Hypot(f.p[i].x-f.p[j].x, f.p[i].y-f.p[j].y)
+		for _, k := range [2]int{i, j} {
+			sum[k] += s
+			num[k]++
+		}
+		total += s
+		sides++
+		return d.hold(int32(i+3), int32(j+3))
+	}
+	for r, rim := range f.rims {
+		for k, i := range rim {
+			if err := hold(i, rim[(k+1)%len(rim)]); err != nil {
+				return nil, nil, &flatError{err: err, rim: r, chain: -1}
 			}
-			a := math.Hypot(f.p[i].x-f.p[j].x, f.p[i].y-f.p[j].y)
-			b := math.Hypot(f.p[i].x-f.p[before].x, f.p[i].y-f.p[before].y)
-			f.size = append(f.size, (a+b)/2)
+		}
+	}
+	// Lines inside part nothing: what is inside is known before they are held,
+	// and flips do not lead out of it.
+	in = d.inside()
+	for c, chain := range f.chains {
+		for k := 1; k < len(chain); k++ {
+			if err := hold(chain[k-1], chain[k]); err != nil {
+				return nil, nil, &flatError{err: err, rim: -1, chain: c}
+			}
+		}
+	}
+	f.mean = total / sides
+	f.size = []float64{0, 0, 0}
+	for i := range f.p {
+		if num[i] > 0 {
+			f.size = append(f.size, sum[i]/num[i])
+		} else {
+			f.size = append(f.size, f.lone)
 		}
 	}
 	d.settle()
-	return d, nil
+	return d, in, nil
 }
 
-// lift returns the place in space over q.
-func (f *flat) lift(q xy) r3.Vec {
-	var sum, h float64
-	at := func(w, height float64) r3.Vec {
-		return r3.Add(f.origin, r3.Add(r3.Scale(q.x, f.e1), r3.Add(r3.Scale(q.y, f.e2), r3.Scale(height/w, f.n))))
+// heights returns the height over the plane of every point of r. Between rims
+// alone they follow from mean value coordinates (Floater 2003; Hormann and
+// Floater 2006), with lines and points inside, or very many points, each inner
+// height is the mean of its neighbours'.
+func (f *flat) heights(r *refinement) []float64 {
+	h := make([]float64, len(r.d.p))
+	copy(h[3:], f.h)
+	inner := len(r.d.p) - r.rim
+	if len(f.chains)+len(f.points) > 0 || inner*len(f.p) > 2e8 {
+		r.relaxHeights(h)
+		return h
 	}
-	for _, l := range f.lines {
-		n := l[1] - l[0]
-		dx := func(k int) (float64, float64, float64) {
-			p := f.p[l[0]+k%n]
+	for i := r.rim; i < len(r.d.p); i++ {
+		h[i] = f.meanValue(r.d.p[i])
+	}
+	return h
+}
+
+// relaxHeights makes each height from r.rim on the mean of its neighbours', by
+// conjugate gradients.
+func (r *refinement) relaxHeights(h []float64) {
+	n := len(h) - r.rim
+	if n == 0 {
+		return
+	}
+	start := make([]int32, n+1)
+	var near []int32
+	for i := range n {
+		if p := int32(r.rim + i); r.used[p] {
+			r.d.around(p, func(_, q, _ int32) { near = append(near, q) })
+		}
+		start[i+1] = int32(len(near))
+	}
+	apply := func(out, x []float64) (dot float64) {
+		for i := range n {
+			s := float64(start[i+1]-start[i]) * x[i]
+			for _, q := range near[start[i]:start[i+1]] {
+				if int(q) >= r.rim {
+					s -= x[int(q)-r.rim]
+				}
+			}
+			out[i] = s
+			dot += s * x[i]
+		}
+		return dot
+	}
+	x, res, dir, tmp := h[r.rim:], make([]float64, n), make([]float64, n), make([]float64, n)
+	rr := 0.0
+	for i := range n {
+		for _, q := range near[start[i]:start[i+1]] {
+			if int(q) < r.rim {
+				res[i] += h[q]
+			}
+		}
+		dir[i] = res[i]
+		rr += res[i] * res[i]
+	}
+	for first, step := rr, 0; step < 20*int(math.Sqrt(float64(n)))+50 && rr > 1e-16*first; step++ {
+		alpha := rr / apply(tmp, dir)
+		next := 0.0
+		for i := range n {
+			x[i] += alpha * dir[i]
+			res[i] -= alpha * tmp[i]
+			next += res[i] * res[i]
+		}
+		for i := range n {
+			dir[i] = res[i] + next/rr*dir[i]
+		}
+		rr = next
+	}
+}
+
+// meanValue returns the height over q.
+func (f *flat) meanValue(q xy) float64 {
+	var sum, h float64
+	for _, rim := range f.rims {
+		n := len(rim)
+		at := func(k int) (float64, float64, float64) {
+			p := f.p[rim[k%n]]
 			x, y := p.x-q.x, p.y-q.y
 			return x, y, math.Hypot(x, y)
 		}
-		x0, y0, r0 := dx(n - 1)
-		x1, y1, r1 := dx(0)
+		x0, y0, r0 := at(n - 1)
+		x1, y1, r1 := at(0)
 		t0 := halfTan(x0, y0, r0, x1, y1, r1)
 		for k := range n {
-			x2, y2, r2 := dx(k + 1)
+			x2, y2, r2 := at(k + 1)
 			if r1 == 0 {
-				return at(1, f.h[l[0]+k])
+				return f.h[rim[k]]
 			}
 			t1 := halfTan(x1, y1, r1, x2, y2, r2)
 			w := (t0 + t1) / r1
 			sum += w
-			h += w * f.h[l[0]+k]
+			h += w * f.h[rim[k]]
 			x1, y1, r1, t0 = x2, y2, r2, t1
 		}
 	}
-	return at(sum, h)
+	return h / sum
 }
 
 // halfTan returns the tangent of half the signed angle from one vector to
@@ -407,12 +599,50 @@ func (r *refinement) least(i int32, q xy) float64 {
 	return worst
 }
 
-// foldedOutline says why an outline cannot be triangulated.
-func (b *builder) foldedOutline(l *loop, f *flat, err error) {
-	what := "crosses itself"
-	if errors.Is(err, errTouch) || errors.Is(err, errTwice) {
-		what = "touches itself"
+// flatError is a fault of an outline with the line it was found at.
+type flatError struct {
+	err        error
+	rim, chain int // index, −1 = none
+}
+
+func (e *flatError) Error() string { return e.err.Error() }
+
+// owner returns err as the fault of the line that has node i.
+func (f *flat) owner(i int, err error) *flatError {
+	for k, rim := range f.rims {
+		if slices.Contains(rim, i) {
+			return &flatError{err: err, rim: k, chain: -1}
+		}
 	}
-	b.fail(l.part(), l.name, l.line, Degenerate, "divide it with a seam or cable into parts that are seen whole from one side",
-		"its boundary %s when seen along its normal (%.2f, %.2f, %.2f)", what, f.n.X, f.n.Y, f.n.Z)
+	for k, chain := range f.chains {
+		if slices.Contains(chain, i) {
+			return &flatError{err: err, rim: -1, chain: k}
+		}
+	}
+	return &flatError{err: err, rim: -1, chain: -1}
+}
+
+// foldedOutline says why an outline cannot be triangulated.
+func (b *builder) foldedOutline(l *loop, f *flat, err *flatError) {
+	what := "crosses"
+	if err.err == errTouch || err.err == errTwice {
+		what = "touches"
+	}
+	seen := fmt.Sprintf("when seen along (%.2f, %.2f, %.2f)", f.n.X, f.n.Y, f.n.Z)
+	hole := err.rim - (len(f.rims) - len(l.holes))
+	switch {
+	case err.chain >= 0:
+		e := b.m.Edges[l.lines[err.chain]]
+		b.fail("edge", e.Name, e.Line, Degenerate, "let lines inside a fabric meet at points only",
+			"it %s another line or the rim of fabric %s %s", what, l.name, seen)
+	case hole >= 0:
+		e := b.m.Edges[l.holes[hole].edges[0]]
+		b.fail("edge", e.Name, e.Line, Degenerate, "move the hole inside, or let it bound the fabric",
+			"its hole %s the rim of fabric %s or another hole %s", what, l.name, seen)
+	case err.rim < 0:
+		b.fail(l.part(), l.name, l.line, Degenerate, "remove the point or let the line end there", "a point inside it lies on a line or on another point %s", seen)
+	default:
+		b.fail(l.part(), l.name, l.line, Degenerate, "divide it with a seam or cable into parts that are seen whole from one side",
+			"its boundary %s itself %s", what, seen)
+	}
 }

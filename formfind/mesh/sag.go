@@ -2,6 +2,7 @@ package mesh
 
 import (
 	"math"
+	"slices"
 
 	"anticlast/formfind/canopy"
 	"gonum.org/v1/gonum/spatial/r3"
@@ -25,6 +26,17 @@ func (b *builder) sagVector(i int) r3.Vec {
 		middle = r3.Add(middle, r3.Scale(1/float64(len(pts)), p))
 	}
 	in := r3.Sub(middle, b.curve[i].at(0.5))
+	for _, h := range l.holes {
+		if slices.Contains(h.edges, i) {
+			// Away from the hole.
+			hole := b.sample(h)
+			middle = r3.Vec{}
+			for _, p := range hole {
+				middle = r3.Add(middle, r3.Scale(1/float64(len(hole)), p))
+			}
+			in = r3.Sub(b.curve[i].at(0.5), middle)
+		}
+	}
 	in = r3.Sub(in, r3.Scale(r3.Dot(in, chord)/(c*c), chord))
 	if r3.Norm(in) < 1e-3*c {
 		return r3.Vec{}
@@ -42,9 +54,15 @@ func (b *builder) sagVector(i int) r3.Vec {
 
 // expectedSag estimates the sag of a rim cable over its chord c.
 func (b *builder) expectedSag(i int, l *loop, c float64) float64 {
-	cable := b.m.Cables[b.cable[b.m.Edges[i].Cable]]
 	f := b.m.Fabrics[l.index]
-	stress := (f.Warp + f.Weft) / 2
+	return b.cableSag(i, (f.Warp+f.Weft)/2, c/float64(b.count[i]))
+}
+
+// cableSag estimates the sag over its chord of the cable along edge i where it
+// is pulled by a stress in N/m across; link is the length of its sides.
+func (b *builder) cableSag(i int, stress, link float64) float64 {
+	cable := b.m.Cables[b.cable[b.m.Edges[i].Cable]]
+	c := r3.Norm(r3.Sub(b.curve[i].End, b.curve[i].Start))
 	arc := func(force float64) float64 {
 		// A uniform pull bends the cable to an arc of radius force/stress.
 		r := force / stress
@@ -58,7 +76,7 @@ func (b *builder) expectedSag(i int, l *loop, c float64) float64 {
 	case cable.Force > 0 && stress > 0:
 		return arc(cable.Force)
 	case cable.ForceDensity > 0 && stress > 0:
-		return arc(cable.ForceDensity * c / float64(b.count[i]))
+		return arc(cable.ForceDensity * link)
 	case cable.Sag > 0:
 		return cable.Sag
 	case cable.Length > 0 || cable.Unstressed > 0:

@@ -133,6 +133,11 @@ func (b *builder) pointNodes() {
 	for _, r := range m.Rings {
 		used[b.point[r.At]] = true
 	}
+	for _, l := range b.loop {
+		for _, p := range l.points {
+			used[p] = true
+		}
+	}
 	b.node = make([]int32, len(m.Points))
 	for i, p := range m.Points {
 		b.node[i] = -1
