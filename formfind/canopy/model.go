@@ -138,9 +138,9 @@ type NetPattern uint8
 
 // Patterns of net lines.
 const (
-	// NetAuto: radial when all that is given asks for it, along the sides
-	// where the boundary is a fair patch of three or four sides and nothing
-	// asks for straight lines, else straight.
+	// NetAuto: along the sides where the boundary is a fair patch of three or
+	// four sides without holes, and no direction, angle, third family or equal
+	// mesh asks for straight lines; else straight.
 	NetAuto     NetPattern = iota
 	NetSides               // two families along the sides of a patch of three or four
 	NetStraight            // families of parallel lines in plan, clipped by any outline
