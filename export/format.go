@@ -51,6 +51,7 @@ func Formats() []Format {
 		{"png", "picture.png", ".png", "axonometric picture with values in colour", writePNG},
 		{"handover", "handover.zip", ".zip", "everything an analysis engineer needs to rebuild the structure", writeHandover},
 		{"dxf", "form.dxf", ".dxf", "CAD drawing with layers, names and forces (DXF release 12)", writeDXF},
+		{"ifc", "form.ifc", ".ifc", "structural model with prestress and supports (IFC4), experimental", writeIFC},
 		{"obj", "form.obj", ".obj", "mesh and cables for modelling programs", writeOBJ},
 		{"stl", "form.stl", ".stl", "fabric for printers and mesh tools", writeSTL},
 		{"ply", "form.ply", ".ply", "fabric with nodes in double precision and values in colour", writePLY},
