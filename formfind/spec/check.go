@@ -13,6 +13,7 @@ import (
 func (d *drawn) check() {
 	d.edgesHaveKinds()
 	d.boundaries()
+	d.inside()
 	d.roles()
 	d.ringUse()
 	d.holds()
@@ -49,11 +50,18 @@ func (d *drawn) users() []int {
 	for _, h := range d.holeRefs {
 		count(h.refs)
 	}
+	for _, l := range d.lineRefs { // fabric on both sides
+		count([]ref{l.ref, l.ref})
+	}
 	return n
 }
 
 func (d *drawn) roles() {
 	users := d.users()
+	within := map[string]bool{}
+	for _, l := range d.lineRefs {
+		within[l.name] = true
+	}
 	for i := range d.m.Edges {
 		e := &d.m.Edges[i]
 		if e.Kind != canopy.EdgeCable {
@@ -68,7 +76,7 @@ func (d *drawn) roles() {
 			e.Role = canopy.KindValleyCable
 		default:
 			e.Role = canopy.KindCable
-			if users[i] > 0 {
+			if users[i] > 0 && !within[e.Name] {
 				e.Role = canopy.KindEdgeCable
 			}
 		}
@@ -562,6 +570,11 @@ func (d *drawn) holds() {
 			d.r.fail(at.n, at.p.down("free"), fmt.Sprintf("ring %q may move but its point %q is held", r.Name, r.At), "leave out free, or do not hold the point")
 		}
 	}
+	for _, q := range d.insideRefs {
+		if i, ok := d.point[q.name]; ok {
+			attached[i] = true
+		}
+	}
 	for k, e := range d.m.Edges {
 		for _, name := range [2]string{e.From, e.To} {
 			i, ok := d.point[name]
@@ -686,6 +699,7 @@ func (d *drawn) supported() {
 			set.join(d.point[d.m.Rings[ri].At], d.point[d.m.Edges[d.edge[f.Boundary[0]]].From])
 		}
 	}
+	d.joinInside(set)
 	good := make([]bool, n)
 	for i := range n {
 		if anchored[i] {

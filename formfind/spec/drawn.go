@@ -28,6 +28,8 @@ type drawn struct {
 	ringUsers                [][]ref
 	boundaryRefs             [][]ref // of fabrics, then of nets
 	holeRefs                 []holeRefs
+	lineRefs                 []insideRef // edges inside fabrics
+	insideRefs               []insideRef // points inside fabrics
 	pointsKey                *yaml.Node
 }
 
@@ -663,6 +665,17 @@ func (d *drawn) fabrics(f *fields) {
 			fab.Boundary = append(fab.Boundary, q.name)
 		}
 		d.boundaryRefs = append(d.boundaryRefs, refs)
+		fab.Holes = d.holes(g, fmt.Sprintf("fabric %q", e.name))
+		lines, _ := g.refs("lines")
+		for _, q := range lines {
+			fab.Lines = append(fab.Lines, q.name)
+			d.lineRefs = append(d.lineRefs, insideRef{q, len(d.m.Fabrics)})
+		}
+		points, _ := g.refs("inside")
+		for _, q := range points {
+			fab.Inside = append(fab.Inside, q.name)
+			d.insideRefs = append(d.insideRefs, insideRef{q, len(d.m.Fabrics)})
+		}
 		d.m.Fabrics = append(d.m.Fabrics, fab)
 		d.fabricAt = append(d.fabricAt, ref{e.name, e.kn, p})
 	}

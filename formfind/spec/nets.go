@@ -42,7 +42,7 @@ func (d *drawn) net(e entry, g *fields) {
 		net.Boundary = append(net.Boundary, q.name)
 	}
 	d.boundaryRefs = append(d.boundaryRefs, refs)
-	d.holes(g, &net)
+	net.Holes = d.holes(g, fmt.Sprintf("net %q", net.Name))
 	d.netFits(g, &net)
 	d.m.Nets = append(d.m.Nets, net)
 	d.netAt = append(d.netAt, ref{e.name, e.kn, p})
@@ -128,11 +128,11 @@ func (d *drawn) family(n *yaml.Node, p *place, i int, net *canopy.Net) canopy.Fa
 	return fam
 }
 
-// holes reads the loops of edges inside a net.
-func (d *drawn) holes(g *fields, net *canopy.Net) {
+// holes reads the loops of edges inside a net or fabric.
+func (d *drawn) holes(g *fields, of string) (holes [][]string) {
 	n := g.get("holes")
 	if n == nil {
-		return
+		return nil
 	}
 	p := g.p.down("holes")
 	bad := func(n *yaml.Node, p *place) {
@@ -140,7 +140,7 @@ func (d *drawn) holes(g *fields, net *canopy.Net) {
 	}
 	if n.Kind != yaml.SequenceNode || len(n.Content) == 0 {
 		bad(n, p)
-		return
+		return nil
 	}
 	for i, c := range n.Content {
 		cp := p.item(i)
@@ -151,7 +151,7 @@ func (d *drawn) holes(g *fields, net *canopy.Net) {
 			bad(c, cp)
 			continue
 		}
-		h := holeRefs{what: fmt.Sprintf("hole %d of net %q", i+1, net.Name)}
+		h := holeRefs{what: fmt.Sprintf("hole %d of %s", i+1, of)}
 		var names []string
 		for j, q := range c.Content {
 			if q, ok := d.r.ref(q, cp.item(j)); ok {
@@ -159,9 +159,10 @@ func (d *drawn) holes(g *fields, net *canopy.Net) {
 				names = append(names, q.name)
 			}
 		}
-		net.Holes = append(net.Holes, names)
+		holes = append(holes, names)
 		d.holeRefs = append(d.holeRefs, h)
 	}
+	return holes
 }
 
 // holeRefs are the edges around a hole.
