@@ -1,12 +1,18 @@
 package export
 
 import (
+	"bytes"
+	"fmt"
 	"math"
+	"os"
+	"os/exec"
+	"path/filepath"
 	"strings"
 	"testing"
 
 	"anticlast/formfind/canopy"
 
+	"github.com/qmuntal/gltf"
 	"github.com/stretchr/testify/require"
 )
 
@@ -61,4 +67,48 @@ func TestAFormDoesNotDifferFromItself(t *testing.T) {
 			}
 		}
 	}
+}
+
+func TestCompareGLBValidates(t *testing.T) {
+	t.Parallel()
+	node := tool(t, "node")
+	if _, err := os.Stat(filepath.Join(os.Getenv("ANTICLAST_NODE_MODULES"), "node_modules", "gltf-validator")); err != nil {
+		absent(t, "npm package gltf-validator (ANTICLAST_NODE_MODULES names the folder it was installed in)")
+	}
+	b := sail(8)
+	for i := range b.Form.Position {
+		b.Form.Position[i].Z *= 1.1
+	}
+	far := cone(16)
+	for i := range far.Form.Position {
+		far.Form.Position[i].Z += 1
+	}
+	dir := t.TempDir()
+	args := []string{"testdata/validate_glb.mjs"}
+	for i, pair := range [][2]*canopy.Result{{sail(8), b}, {sail(6), sail(8)}, {grid(5), sail(5)}, {cone(16), far}} {
+		var buf bytes.Buffer
+		require.NoError(t, CompareGLB(background, &buf, pair[0], pair[1], Options{}))
+		name := filepath.Join(dir, fmt.Sprint(i, ".glb"))
+		require.NoError(t, os.WriteFile(name, buf.Bytes(), 0o644))
+		args = append(args, name)
+	}
+	out, err := exec.Command(node, args...).CombinedOutput()
+	require.NoError(t, err, string(out))
+}
+
+// The morph target of a form against a moved one is the move, in y-up axes.
+func TestCompareGLBMorphsFromOneToTheOther(t *testing.T) {
+	a, b := sail(6), sail(6)
+	for i := range b.Form.Position {
+		b.Form.Position[i].Z += 0.5
+	}
+	var buf bytes.Buffer
+	require.NoError(t, CompareGLB(background, &buf, a, b, Options{}))
+	var doc gltf.Document
+	require.NoError(t, gltf.NewDecoder(&buf).Decode(&doc))
+	require.Len(t, doc.Animations, 1)
+	n, _ := nodeNamed(t, &doc, "A to B: fabric sail")
+	target := doc.Accessors[doc.Meshes[*n.Mesh].Primitives[0].Targets[0][gltf.POSITION]]
+	require.InDeltaSlice(t, []float64{0, 0.5, 0}, target.Min, 1e-6)
+	require.InDeltaSlice(t, []float64{0, 0.5, 0}, target.Max, 1e-6)
 }

@@ -12,6 +12,7 @@ import (
 
 	"github.com/stretchr/testify/require"
 	"gonum.org/v1/gonum/spatial/r3"
+	"pgregory.net/rapid"
 )
 
 // sheet reads a table back with the standard library's reader.
@@ -150,6 +151,21 @@ func TestAppendNumber(t *testing.T) {
 		{0.1 + 0.2, "0.3"}, {99999999999.9, "100000000000"}, {12345.678901234, "12345.6789"}, {1e-7, "1e-07"}, {9.99999999999, "10"}, {2.0 / 3, "0.6666666667"}} {
 		require.Equal(t, c.want, string(appendNumber(nil, c.v, 10)))
 	}
+}
+
+// Read back, a number is the one that was written to the last digit kept.
+func TestAppendNumberReadsBack(t *testing.T) {
+	rapid.Check(t, func(t *rapid.T) {
+		v := rapid.Float64().Draw(t, "v")
+		digits := rapid.IntRange(1, 17).Draw(t, "digits")
+		s := string(appendNumber(nil, v, digits))
+		got, err := strconv.ParseFloat(s, 64)
+		require.NoError(t, err, s)
+		want, err := strconv.ParseFloat(strconv.FormatFloat(v, 'e', digits-1, 64), 64)
+		if err == nil {
+			require.Equal(t, want, got, s)
+		}
+	})
 }
 
 func BenchmarkTables(b *testing.B) {

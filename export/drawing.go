@@ -145,12 +145,7 @@ func (d *drawing) underlay() {
 			m.Pix[i] = uint8(1 + max(0, min(steps-1, int(math.Floor((v-bottom)/(top-bottom)*steps)))))
 		}
 	}
-	var b bytes.Buffer
-	if png.Encode(&b, m) != nil {
-		return // a picture in memory cannot fail
-	}
-	d.printf("<image width=\"%s\" height=\"%s\" href=\"data:image/png;base64,%s\"/>\n", px(float64(d.z.w)/d.fine), px(float64(d.z.h)/d.fine),
-		base64.StdEncoding.EncodeToString(b.Bytes()))
+	d.picture(m)
 }
 
 // path draws a line in space, its visible parts solid and the others dashed or,
@@ -315,7 +310,10 @@ func (d *drawing) members() {
 		most = max(most, math.Abs(t))
 	}
 	chains, loose := chainsAndMembers(s)
-	if len(loose) > 200 {
+	if len(loose) > mostDrawn {
+		d.haze(loose)
+		loose = nil
+	} else if len(loose) > 200 {
 		// Too many to tell apart: one thin path.
 		d.b.WriteString("<path class=\"l cable\" stroke-width=\".8\" d=\"")
 		for _, i := range loose {
@@ -344,6 +342,38 @@ func (d *drawing) members() {
 		}
 		d.path(points, class, width, false)
 	}
+}
+
+// mostDrawn is the number of members up to which they are lines of a drawing;
+// more are a picture, so that the file stays small.
+const mostDrawn = 20000
+
+// haze puts a great many members into the drawing as a picture of thin lines.
+func (d *drawing) haze(members []int) {
+	f := d.frame.zoomed(d.fine)
+	m := image.NewPaletted(image.Rect(0, 0, int(f.width)+1, int(f.height)+1), color.Palette{color.NRGBA{}, color.NRGBA{70, 78, 86, 255}})
+	for _, i := range members {
+		e := d.r.Structure.Ends[i]
+		a, b := f.at(d.r.Form.Position[e[0]]), f.at(d.r.Form.Position[e[1]])
+		n := max(1, int(math.Ceil(max(math.Abs(b.x-a.x), math.Abs(b.y-a.y)))))
+		for k := range n + 1 {
+			t := float64(k) / float64(n)
+			if x, y := int(a.x+t*(b.x-a.x)), int(a.y+t*(b.y-a.y)); (image.Point{X: x, Y: y}).In(m.Rect) {
+				m.Pix[y*m.Stride+x] = 1
+			}
+		}
+	}
+	d.picture(m)
+}
+
+// picture embeds an image of the drawing's fine pixels.
+func (d *drawing) picture(m *image.Paletted) {
+	var b bytes.Buffer
+	if png.Encode(&b, m) != nil {
+		return // a picture in memory cannot fail
+	}
+	d.printf("<image width=\"%s\" height=\"%s\" href=\"data:image/png;base64,%s\"/>\n", px(float64(m.Rect.Dx())/d.fine), px(float64(m.Rect.Dy())/d.fine),
+		base64.StdEncoding.EncodeToString(b.Bytes()))
 }
 
 func (d *drawing) supports() {

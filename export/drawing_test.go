@@ -48,7 +48,7 @@ func TestDrawingsShowDimensionsForcesAndNames(t *testing.T) {
 
 func TestDrawingsOfOtherForms(t *testing.T) {
 	all := scenes()
-	all["large sail"] = sail(150)
+	all["large sail"], all["large net"] = sail(150), grid(150)
 	for name, r := range all {
 		s := svgOf(t, r)
 		plain := regexp.MustCompile(`base64,[^"]*`).ReplaceAllString(s, "")

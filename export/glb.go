@@ -61,6 +61,11 @@ func writeGLB(ctx context.Context, w io.Writer, r *canopy.Result, _ Options) err
 		g.doc.Scenes = append(g.doc.Scenes, &gltf.Scene{Name: "reactions", Nodes: roots,
 			Extras: map[string]any{"layer": "reactions: forces of the supports on the structure", "caution": canopy.Caution}})
 	}
+	return g.write(ctx, w)
+}
+
+// write writes the document and its buffer.
+func (g *scene) write(ctx context.Context, w io.Writer) error {
 	if len(g.bin) > 0 {
 		g.doc.Buffers = []*gltf.Buffer{{ByteLength: len(g.bin), Data: g.bin}}
 	}

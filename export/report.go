@@ -23,8 +23,13 @@ var reportStyle string
 //go:embed report.js
 var reportScript string
 
-// mostLive is the number of triangles up to which the report has a live view.
-const mostLive = 200000
+// Numbers of triangles and of members up to which the report has a live view,
+// and of rows up to which it has a table.
+const (
+	mostLive        = 200000
+	mostLiveMembers = 20000
+	mostRows        = 400
+)
 
 // writeReport writes one page of HTML that needs nothing else: what was asked
 // and found, drawings, a live view, tables, findings and the audit in words.
@@ -122,7 +127,10 @@ func (p *report) folded(most int, header []string, rows [][]string, left ...int)
 	p.table(header, rows[:min(most, len(rows))], left...)
 	if len(rows) > most {
 		p.printf("<details><summary>%d more</summary>\n", len(rows)-most)
-		p.table(header, rows[most:], left...)
+		p.table(header, rows[most:min(len(rows), mostRows)], left...)
+		if len(rows) > mostRows {
+			p.printf("<p>%d more are in form.json.</p>\n", len(rows)-mostRows)
+		}
 		p.str("</details>\n")
 	}
 }
@@ -177,7 +185,7 @@ func (p *report) found() {
 // and the elevations. It reports whether there is a live view.
 func (p *report) drawings() bool {
 	r := p.r
-	live := len(r.Structure.Corners) <= mostLive && len(r.Structure.Ends) <= mostLive && len(r.Form.Position) > 0
+	live := len(r.Structure.Corners) <= mostLive && len(r.Structure.Ends) <= mostLiveMembers && len(r.Form.Position) > 0
 	figures := map[string]string{
 		"plan":        "Contours with heights in m; arrows show which way water runs. Numbers in red are findings.",
 		"axonometric": "Dashed: hidden by fabric.",
@@ -494,7 +502,7 @@ func (p *report) reactions() {
 		if fixed == 0 {
 			continue
 		}
-		if len(rows) == 400 {
+		if len(rows) == mostRows {
 			left++
 			continue
 		}

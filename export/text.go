@@ -1,6 +1,7 @@
 package export
 
 import (
+	"bytes"
 	"context"
 	"fmt"
 	"io"
@@ -84,7 +85,7 @@ func appendNumber(b []byte, v float64, digits int) []byte {
 		return append(b, '0') // -0 too
 	}
 	a := math.Abs(v)
-	if a < 1e-4 || a >= 1e15 || math.IsNaN(v) || math.IsInf(v, 0) {
+	if a < 1e-4 || a >= 1e15 || v-v != 0 {
 		if digits > 0 {
 			return strconv.AppendFloat(b, v, 'g', digits, 64)
 		}
@@ -93,14 +94,43 @@ func appendNumber(b []byte, v float64, digits int) []byte {
 	if digits < 0 {
 		return strconv.AppendFloat(b, v, 'f', -1, 64)
 	}
-	places := max(0, digits-1-int(math.Floor(math.Log10(a))))
-	b = strconv.AppendFloat(b, v, 'f', places, 64)
-	if places > 0 {
-		for b[len(b)-1] == '0' {
-			b = b[:len(b)-1]
+	// The library is quick at a given number of digits with an exponent, not
+	// without: d.ddde±xx is turned into plain digits here.
+	var buf [40]byte
+	e := strconv.AppendFloat(buf[:0], a, 'e', digits-1, 64)
+	if v < 0 {
+		b = append(b, '-')
+	}
+	k := bytes.IndexByte(e, 'e')
+	exponent := 0
+	for _, c := range e[k+2:] {
+		exponent = 10*exponent + int(c-'0')
+	}
+	if e[k+1] == '-' {
+		exponent = -exponent
+	}
+	d := e[:k]
+	if k > 1 {
+		d = append(d[:1], d[2:]...) // without the point
+	}
+	for len(d) > 1 && d[len(d)-1] == '0' {
+		d = d[:len(d)-1]
+	}
+	if exponent < 0 {
+		b = append(b, "0."...)
+		for ; exponent < -1; exponent++ {
+			b = append(b, '0')
 		}
-		if b[len(b)-1] == '.' {
-			b = b[:len(b)-1]
+		return append(b, d...)
+	}
+	for i := 0; i <= exponent || i < len(d); i++ {
+		if i == exponent+1 {
+			b = append(b, '.')
+		}
+		if i < len(d) {
+			b = append(b, d[i])
+		} else {
+			b = append(b, '0')
 		}
 	}
 	return b
