@@ -279,7 +279,7 @@ func (d *dissector) bestCut(nodes []int32, pts []point, label int32) (cut, bool)
 		return best, false
 	}
 	for k := range 4 {
-		if win[k].cost >= 0 && win[k].cost <= 1.5*least {
+		if win[k].cost >= 0 && win[k].cost <= least {
 			d.sweep(&best, k, win[k], nodes, pts, label, d.mass[k], lo[k], total)
 		}
 	}
@@ -515,7 +515,8 @@ type leafOrder struct {
 	nodes []int32 // members: the part, then its neighbours
 	bits  []uint64
 	deg   []int32
-	w     []int32
+	// Members of each degree; the last holds all larger ones.
+	ofDegree [256][(leafSize + 63) / 64]uint64
 }
 
 func (l *leafOrder) order(d *dissector, part []int32) {
@@ -583,15 +584,31 @@ func (l *leafOrder) order(d *dissector, part []int32) {
 	for x := range k {
 		deg[x] = degree(set[x*words:][:words])
 	}
+	// The uneliminated members of each degree, as sets of bits.
+	const places = (leafSize + 63) / 64
+	top := len(l.ofDegree) - 1
+	bucket := func(v int32) *[places]uint64 { return &l.ofDegree[min(int(v), top)] }
+	clear(l.ofDegree[:])
+	least := top
+	for x, v := range deg {
+		bucket(v)[x>>6] |= 1 << (x & 63)
+		least = min(least, int(v))
+	}
 	l.out = l.out[:0]
 	for range k {
-		best, least := 0, int32(1)<<30
-		for x, v := range deg {
-			if v < least {
-				best, least = x, v
+		best := -1
+		for best < 0 {
+			for w, b := range l.ofDegree[least] {
+				if b != 0 {
+					best = w<<6 + bits.TrailingZeros64(b)
+					break
+				}
+			}
+			if best < 0 {
+				least++
 			}
 		}
-		deg[best] = 1 << 30
+		l.ofDegree[least][best>>6] &^= 1 << (best & 63)
 		l.out = append(l.out, part[best])
 		pivot := set[best*words:][:words]
 		// The neighbours become a clique.
@@ -607,7 +624,12 @@ func (l *leafOrder) order(d *dissector, part []int32) {
 				}
 				row[y>>6] &^= 1 << (y & 63)
 				row[best>>6] &^= 1 << (best & 63)
-				deg[y] = degree(row)
+				if v := degree(row); v != deg[y] {
+					bucket(deg[y])[y>>6] &^= 1 << (y & 63)
+					bucket(v)[y>>6] |= 1 << (y & 63)
+					deg[y] = v
+					least = min(least, int(v), top)
+				}
 			}
 		}
 	}
