@@ -1,7 +1,6 @@
 package export
 
 import (
-	"fmt"
 	"io"
 	"math"
 	"strings"
@@ -220,21 +219,7 @@ func Compare(w io.Writer, a, b *canopy.Result, o Options) error {
 			flush()
 			group = g
 		}
-		change := "–"
-		if d.A != 0 && !math.IsNaN(d.A) && !math.IsNaN(d.B) {
-			change = fmt.Sprintf("%+.1f %%", 100*(d.B-d.A)/math.Abs(d.A))
-		}
-		diff := "–"
-		if !math.IsNaN(d.A) && !math.IsNaN(d.B) {
-			diff = fmt.Sprintf("%+.3f", d.B-d.A)
-		}
-		digits := func(v float64) string {
-			if math.IsNaN(v) {
-				return "–"
-			}
-			return fmt.Sprintf("%.3f", v)
-		}
-		rows = append(rows, []string{oneLine(d.Name), digits(d.A), digits(d.B), diff, change})
+		rows = append(rows, append([]string{oneLine(d.Name)}, differenceCells(d)...))
 	}
 	flush()
 	p.blank()

@@ -14,6 +14,7 @@ import (
 
 	"github.com/qmuntal/gltf"
 	"github.com/stretchr/testify/require"
+	"gonum.org/v1/gonum/spatial/r3"
 )
 
 func difference(t *testing.T, list []Difference, group, name string) Difference {
@@ -111,4 +112,22 @@ func TestCompareGLBMorphsFromOneToTheOther(t *testing.T) {
 	target := doc.Accessors[doc.Meshes[*n.Mesh].Primitives[0].Targets[0][gltf.POSITION]]
 	require.InDeltaSlice(t, []float64{0, 0.5, 0}, target.Min, 1e-6)
 	require.InDeltaSlice(t, []float64{0, 0.5, 0}, target.Max, 1e-6)
+}
+
+func TestCompareReport(t *testing.T) {
+	a, b := sail(6), sail(6)
+	b.Title = "Sail <raised>"
+	for i := range b.Form.Position {
+		b.Form.Position[i] = r3.Scale(1.5, b.Form.Position[i])
+	}
+	var s strings.Builder
+	require.NoError(t, CompareReport(background, &s, a, b, Options{}))
+	for _, want := range []string{"Sail &lt;raised&gt;", "highest point, m", "+50.0 %", canopy.Caution} {
+		require.Contains(t, s.String(), want)
+	}
+	require.Equal(t, 8, strings.Count(s.String(), "<svg"))
+	// Both are drawn to one scale.
+	large, small := draw(b, views()[0]).frame.scale, draw(a, views()[0]).frame.scale
+	require.Greater(t, small, large)
+	require.Equal(t, large, drawAt(a, views()[0], large).frame.scale)
 }

@@ -91,9 +91,19 @@ type drawing struct {
 	boxes [][4]float64 // places taken by labels
 }
 
-// draw draws a view of r.
-func draw(r *canopy.Result, v view) *drawing {
+// draw draws a view of r as large as the paper allows.
+func draw(r *canopy.Result, v view) *drawing { return drawAt(r, v, 0) }
+
+// drawAt draws a view of r at a scale that is not larger than the paper allows,
+// in units of the paper to a metre; 0 = as large as it allows.
+func drawAt(r *canopy.Result, v view, scale float64) *drawing {
 	d := &drawing{r: r, frame: fit(r, v, paperWidth, 900, paperMargin), fine: 1.6}
+	if scale > 0 && scale < d.frame.scale {
+		// About the middle of the paper.
+		f, k := d.frame, scale/d.frame.scale
+		f.x, f.y = f.width/2+k*(f.x-f.width/2), f.height/2+k*(f.y-f.height/2)
+		f.scale = scale
+	}
 	lo, hi := canopy.Bounds(r.Form.Position)
 	d.size = max(r3.Norm(r3.Sub(hi, lo)), 1e-9)
 	if all := layers(r); len(all) > 0 {

@@ -18,6 +18,9 @@ type Options struct {
 	Force bool
 	// Width of the summary in columns; 0 = 80.
 	Width int
+	// Ground adds to GLB scenes a ground plane under the structure and a
+	// levelling staff beside it, banded in metres.
+	Ground bool
 	// PictureWidth is the width of pictures in pixels; 0 = 1600.
 	PictureWidth int
 	// Colour allows terminal colours in the summary.

@@ -25,9 +25,12 @@ import (
 // fabric is unlit (KHR_materials_unlit) and contour lines give it relief. Each
 // layer of colour is a scene of its own over the same buffers; one more scene
 // shows plain fabric in light.
-func writeGLB(ctx context.Context, w io.Writer, r *canopy.Result, _ Options) error {
+func writeGLB(ctx context.Context, w io.Writer, r *canopy.Result, o Options) error {
 	g := newScene(r)
 	structure := g.structure()
+	if o.Ground {
+		structure = append(structure, g.ground()...)
+	}
 	if err := ctx.Err(); err != nil {
 		return err
 	}

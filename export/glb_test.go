@@ -55,6 +55,11 @@ func TestGLBValidates(t *testing.T) {
 	for _, name := range names {
 		args = append(args, saved(t, "glb", all[name]))
 	}
+	f, err := Lookup("glb")
+	require.NoError(t, err)
+	names = append(names, "with ground")
+	args = append(args, filepath.Join(t.TempDir(), "ground.glb"))
+	require.NoError(t, File(background, args[len(args)-1], sail(6), f, Options{Ground: true}))
 	out, err := exec.Command(node, args...).CombinedOutput()
 	require.NoError(t, err, string(out))
 	dec := json.NewDecoder(bytes.NewReader(out))

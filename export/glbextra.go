@@ -149,6 +149,35 @@ func (g *scene) legend(l *layer) []int {
 	return g.root("legend, "+l.name, []int{g.node(&gltf.Node{Name: fmt.Sprintf("%s: %s to %s", l.title, appendNumber(nil, low, 4), appendNumber(nil, high, 4)), Mesh: gltf.Index(mesh)})})
 }
 
+// ground appends a plane at the height of the lowest node and a staff at its
+// front right corner with bands of one metre, light and dark, as a root node.
+func (g *scene) ground() []int {
+	lo, hi := canopy.Bounds(g.r.Form.Position)
+	m := 0.12 * g.size
+	level := lo.Z - 0.001*g.size
+	var plane solid
+	c := [4]r3.Vec{{X: lo.X - m, Y: lo.Y - m, Z: level}, {X: hi.X + m, Y: lo.Y - m, Z: level}, {X: hi.X + m, Y: hi.Y + m, Z: level}, {X: lo.X - m, Y: hi.Y + m, Z: level}}
+	plane.facets([3]r3.Vec{c[0], c[1], c[2]}, [3]r3.Vec{c[0], c[2], c[3]})
+	var children []int
+	if mesh, ok := g.solid("ground", &plane, g.material("ground", fromScreen(196, 200, 192), 1, false)); ok {
+		children = append(children, g.node(&gltf.Node{Name: "ground", Mesh: gltf.Index(mesh)}))
+	}
+	foot := r3.Vec{X: hi.X + m/2, Y: lo.Y - m/2, Z: level}
+	bands := int(math.Ceil(hi.Z - level))
+	if bands >= 1 && bands <= 200 {
+		for k, paint := range []int{g.material("staff, odd metres", fromScreen(190, 60, 45), 0.8, false), g.material("staff, even metres", fromScreen(245, 245, 240), 0.8, false)} {
+			var staff solid
+			for i := k; i < bands; i += 2 {
+				staff.tube([]r3.Vec{r3.Add(foot, r3.Vec{Z: float64(i)}), r3.Add(foot, r3.Vec{Z: float64(i + 1)})}, 0.05, 12)
+			}
+			if mesh, ok := g.solid("levelling staff", &staff, paint); ok {
+				children = append(children, g.node(&gltf.Node{Name: fmt.Sprintf("levelling staff, metres from %d", k+1), Mesh: gltf.Index(mesh)}))
+			}
+		}
+	}
+	return g.root("ground and staff", children)
+}
+
 // fabricPoints are the corners of all triangles.
 func fabricPoints(r *canopy.Result) []r3.Vec {
 	p := make([]r3.Vec, 0, 3*len(r.Structure.Corners))
