@@ -14,7 +14,7 @@ import (
 )
 
 // expectation is what one broken model must be told: the first lines of each
-// file in testdata/broken say
+// file in testdata/broken at the top say
 //
 //	# expect: LINE:COLUMN part of the message … another part
 //	# set: path=value
@@ -49,7 +49,7 @@ func expectations(t *testing.T, path string) (want []expectation, sets []string)
 }
 
 func TestBrokenModelsAreToldWhatIsWrongAndWhere(t *testing.T) {
-	files, err := filepath.Glob("testdata/broken/*.yaml")
+	files, err := filepath.Glob("../../testdata/broken/*.yaml")
 	require.NoError(t, err)
 	require.Greater(t, len(files), 60)
 	for _, path := range files {
@@ -69,7 +69,7 @@ func TestBrokenModelsAreToldWhatIsWrongAndWhere(t *testing.T) {
 				case w.place == "?":
 					require.True(t, strings.HasPrefix(got, path+":"), "%s", got)
 				case strings.Contains(w.place, ".csv"):
-					require.True(t, strings.HasPrefix(got, "testdata/broken/"+w.place+": "), "%s", got)
+					require.True(t, strings.HasPrefix(got, "../../testdata/broken/"+w.place+": "), "%s", got)
 				default:
 					require.True(t, strings.HasPrefix(got, path+":"+w.place+": "), "want %s, got %s", w.place, got)
 				}

@@ -69,7 +69,7 @@ func FuzzRead(f *testing.F) {
 		f.Add([]byte(s.Text), "")
 		f.Add([]byte(s.Text), "points.A.z=7.5")
 	}
-	files, _ := filepath.Glob("testdata/broken/*.yaml")
+	files, _ := filepath.Glob("../../testdata/broken/*.yaml")
 	for _, path := range files {
 		b, err := os.ReadFile(path)
 		if err != nil {

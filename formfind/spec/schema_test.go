@@ -63,7 +63,7 @@ func TestSchemaRefusesBrokenStructure(t *testing.T) {
 		fractional-segments edge-without-end edge-says-nothing bent-word arc-without-place unknown-role support-word
 		support-twice cable-two-rules cable-no-rule unstressed-alone no-prestress half-prestress
 		net-one-family net-two-rules net-no-rule listed-no-nodes listed-rows`) {
-		b, err := os.ReadFile("testdata/broken/" + name + ".yaml")
+		b, err := os.ReadFile("../../testdata/broken/" + name + ".yaml")
 		require.NoError(t, err)
 		require.Error(t, s.Validate(plain(t, b)), name)
 	}
