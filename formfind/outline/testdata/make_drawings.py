@@ -1,0 +1,96 @@
+"""Writes the DXF drawings of this folder with an independent library.
+
+Needs Debian's python3-ezdxf (tried with 0.18.1):
+
+    /usr/bin/python3 make_drawings.py
+
+The places and shapes are invented.
+"""
+
+import math
+import re
+
+import ezdxf
+
+
+def save(doc, name):
+    """Saves a drawing without what changes from run to run."""
+    doc.saveas(name)
+    with open(name, encoding="utf-8") as f:
+        text = f.read()
+    # Times, GUIDs and the name of the writer.
+    text = re.sub(r"\{[0-9A-F]{8}(-[0-9A-F]{4}){3}-[0-9A-F]{12}\}", "{00000000-0000-0000-0000-000000000000}", text)
+    text = re.sub(r"(\$TD(?:U?CREATE|U?UPDATE)\n 40\n)[^\n]*", r"\g<1>0.0", text)
+    text = re.sub(r"\d+\.\d+(\.\d+)? @ \d{4}-\d\d-\d\dT[^\n]*", "0", text)
+    with open(name, "w", encoding="utf-8", newline="\n") as f:
+        f.write(text)
+
+
+def entities(version, name):
+    """One entity of each kind that is read, and some that are not."""
+    doc = ezdxf.new(version)
+    if version != "R12":
+        doc.header["$INSUNITS"] = 4
+    m = doc.modelspace()
+    for layer in ("LINES", "LIGHT", "HEAVY", "SPACE", "ROUND", "DOTS", "TURNED", "REST"):
+        doc.layers.new(layer)
+    m.add_line((0, 0, 100), (3000, 0, 200), dxfattribs={"layer": "LINES"})
+    if version != "R12":
+        m.add_lwpolyline(
+            [(0, 0, 0.5), (2000, 0, 0), (2000, 1000, 0)],
+            format="xyb",
+            close=True,
+            dxfattribs={"layer": "LIGHT", "elevation": 4500},
+        )
+    m.add_polyline2d(
+        [(0, 0, 0), (1000, 0, -1), (1000, 2000, 0)],
+        format="xyb",
+        dxfattribs={"layer": "HEAVY", "elevation": (0, 0, 250)},
+    )
+    m.add_polyline3d([(0, 0, 0), (1000, 0, 500), (1000, 1000, 1500)], dxfattribs={"layer": "SPACE"})
+    m.add_arc((1000, 1000, 30), 500, 30, 120, dxfattribs={"layer": "ROUND"})
+    m.add_circle((5000, 0, 60), 800, dxfattribs={"layer": "ROUND"})
+    m.add_point((7, 8, 9), dxfattribs={"layer": "DOTS"})
+    # An arch: a half circle in the plane x–z from (0, 0, 0) to (4000, 0, 0).
+    # In its own plane with normal −y, its x axis is the world's x.
+    m.add_arc((2000, 0, 0), 2000, 0, 180, dxfattribs={"layer": "TURNED", "extrusion": (0, -1, 0)})
+    m.add_circle((-1000, 2000, -300), 100, dxfattribs={"layer": "TURNED", "extrusion": (0, 0, -1)})
+    if version != "R12":
+        m.add_lwpolyline([(0, 0, 1), (1000, 0, 0)], format="xyb", dxfattribs={"layer": "TURNED", "extrusion": (0, 0, -1)})
+    block = doc.blocks.new("TREE")
+    block.add_line((0, 0), (1, 1))
+    m.add_blockref("TREE", (10, 10), dxfattribs={"layer": "REST"})
+    m.add_text("label", dxfattribs={"layer": "REST"})
+    if version != "R12":
+        m.add_ellipse((0, 0), (3, 0), 0.5, dxfattribs={"layer": "REST"})
+        m.add_spline([(0, 0), (1, 1), (2, 0)], dxfattribs={"layer": "REST"})
+        doc.layout("Layout1").add_line((0, 0), (99, 99), dxfattribs={"layer": "LINES"})
+    save(doc, name)
+
+
+def yard():
+    """A yard with a wall, five cables, a tree, a ridge and two masts, in mm."""
+    doc = ezdxf.new("R2010")
+    doc.header["$INSUNITS"] = 4
+    m = doc.modelspace()
+    for layer in ("RIM", "WALL", "TREE", "RIDGE", "MAST", "PAVING"):
+        doc.layers.new(layer)
+    m.add_lwpolyline([(0, 0), (7000, -1500), (14000, 0), (15500, 6000)], dxfattribs={"layer": "RIM"})
+    # The wall is drawn from the other end and misses the rim by 3 mm.
+    m.add_line((15502, 6002), (13000, 11000), dxfattribs={"layer": "WALL"})
+    m.add_line((13000, 11000), (1000, 10500), dxfattribs={"layer": "WALL"})
+    m.add_line((1000, 10500), (0, 0), dxfattribs={"layer": "RIM"})
+    m.add_circle((9500, 7200), 900, dxfattribs={"layer": "TREE"})
+    m.add_line((4000, 4500), (7000, 4000), dxfattribs={"layer": "RIDGE"})
+    m.add_line((7000, 4000), (10500, 3800), dxfattribs={"layer": "RIDGE"})
+    m.add_point((4000, 4500), dxfattribs={"layer": "MAST"})
+    m.add_point((10500, 3800), dxfattribs={"layer": "MAST"})
+    for k in range(5):
+        m.add_line((-2000, 2000 * k), (17000, 2000 * k), dxfattribs={"layer": "PAVING"})
+    save(doc, "yard.dxf")
+
+
+entities("R12", "entities-r12.dxf")
+entities("R2000", "entities-r2000.dxf")
+entities("R2018", "entities-r2018.dxf")
+yard()
