@@ -5,6 +5,7 @@ import (
 	"fmt"
 	"io"
 	"math"
+	"strings"
 
 	"anticlast/formfind/canopy"
 )
@@ -83,10 +84,20 @@ func differenceCells(d Difference) []string {
 	}
 	diff, change := "–", "–"
 	if !math.IsNaN(d.A) && !math.IsNaN(d.B) {
-		diff = fmt.Sprintf("%+.3f", d.B-d.A)
+		diff = signed(d.B-d.A, 3)
 		if d.A != 0 {
-			change = fmt.Sprintf("%+.1f %%", 100*(d.B-d.A)/math.Abs(d.A))
+			change = signed(100*(d.B-d.A)/math.Abs(d.A), 1) + " %"
 		}
 	}
 	return []string{value(d.A), value(d.B), diff, change}
+}
+
+// signed writes v with its sign and the given decimals, and what rounds to
+// nothing without.
+func signed(v float64, decimals int) string {
+	s := fmt.Sprintf("%+.*f", decimals, v)
+	if strings.Trim(s, "+-0.") == "" {
+		return s[1:]
+	}
+	return s
 }

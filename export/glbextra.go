@@ -149,12 +149,12 @@ func (g *scene) legend(l *layer) []int {
 	return g.root("legend, "+l.name, []int{g.node(&gltf.Node{Name: fmt.Sprintf("%s: %s to %s", l.title, appendNumber(nil, low, 4), appendNumber(nil, high, 4)), Mesh: gltf.Index(mesh)})})
 }
 
-// ground appends a plane at the height of the lowest node and a staff at its
+// ground appends a plane just under the lowest node and a staff at its
 // front right corner with bands of one metre, light and dark, as a root node.
 func (g *scene) ground() []int {
 	lo, hi := canopy.Bounds(g.r.Form.Position)
 	m := 0.12 * g.size
-	level := lo.Z - 0.001*g.size
+	level := lo.Z - 0.017*g.size // under the signs of supports
 	var plane solid
 	c := [4]r3.Vec{{X: lo.X - m, Y: lo.Y - m, Z: level}, {X: hi.X + m, Y: lo.Y - m, Z: level}, {X: hi.X + m, Y: hi.Y + m, Z: level}, {X: lo.X - m, Y: hi.Y + m, Z: level}}
 	plane.facets([3]r3.Vec{c[0], c[1], c[2]}, [3]r3.Vec{c[0], c[2], c[3]})

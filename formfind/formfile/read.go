@@ -57,13 +57,26 @@ func (d *reader) once(f *fields, bit uint) error {
 	return nil
 }
 
-// record reads an object whose keys are listed in keys, the first required of
-// which must be there, and calls field with each; keys not listed are skipped.
-func (d *reader) record(keys []string, required int, field func(key string) error) (fields, error) {
+// A key of a record.
+type key struct {
+	name     string
+	required bool
+}
+
+// record reads an object whose keys are listed in keys and calls field with
+// each; keys not listed are skipped, and required ones must be there. It is
+// quick when they come in the order of the list.
+func (d *reader) record(keys []key, field func(key string) error) (fields, error) {
 	var seen fields
+	next := 0
 	err := d.object(func(key []byte) error {
-		for i, k := range keys {
-			if string(key) == k {
+		for j := range keys {
+			i := next + j
+			if i >= len(keys) {
+				i -= len(keys)
+			}
+			if k := keys[i].name; string(key) == k {
+				next = i + 1
 				if err := d.once(&seen, uint(i)); err != nil {
 					return err
 				}
@@ -75,7 +88,13 @@ func (d *reader) record(keys []string, required int, field func(key string) erro
 	if err != nil {
 		return seen, err
 	}
-	return seen, d.want(seen, keys[:required]...)
+	for i, k := range keys {
+		if k.required && seen>>uint(i)&1 == 0 {
+			d.key = d.key[:0]
+			return seen, d.errorf("%q is missing", k.name)
+		}
+	}
+	return seen, nil
 }
 
 // want checks that the keys with the given names, numbered from bit 0, are there.
@@ -377,11 +396,24 @@ func (d *reader) readCounts() error {
 	})
 }
 
-// Keys of the long lists, those that must be there first.
+// Keys of the long lists in the order they are written. Those that are written
+// for the convenience of others are listed too, so that they cost little.
 var (
-	nodeKeys     = []string{"id", "name", "position", "fixed", "reaction", "load", "held", "master", "reference"}
-	memberKeys   = []string{"id", "name", "kind", "nodes", "force", "specified", "law", "stiffness", "unstressed_length", "weight", "strength", "group", "cable", "unstressed_derived"}
-	triangleKeys = []string{"id", "fabric", "nodes", "warp", "stress", "specified", "warp_wanted"}
+	nodeKeys = []key{
+		{"id", true}, {"name", true}, {"position", true}, {"fixed", true}, {"load", true}, {"reaction", true}, {"held", false}, {"master", false}, {"reference", false},
+	}
+	memberKeys = []key{
+		{"id", true}, {"name", true}, {"kind", true}, {"group", false}, {"nodes", true}, {"length", false}, {"unstressed_length", false}, {"force", true}, {"force_density", false}, {"specified", true}, {"stiffness", false}, {"weight", false}, {"resistance", false}, {"law", true}, {"strength", false}, {"cable", false}, {"unstressed_derived", false},
+	}
+	triangleKeys = []key{
+		{"id", true}, {"fabric", true}, {"nodes", true}, {"area", false}, {"warp", true}, {"stress", true}, {"principal", false}, {"specified", true}, {"moduli", false}, {"resistance", false}, {"warp_wanted", false},
+	}
+)
+
+// referenceKey and wantedKey are the bits of two keys that may be absent.
+const (
+	referenceKey = 8
+	wantedKey    = 10
 )
 
 func (d *reader) nodes() error {
@@ -396,7 +428,7 @@ func (d *reader) nodes() error {
 			fixed, held                       canopy.Freedom
 			master                            = int32(-1)
 		)
-		seen, err := d.record(nodeKeys, 6, func(key string) error {
+		seen, err := d.record(nodeKeys, func(key string) error {
 			switch key {
 			case "id":
 				return d.checkID(i)
@@ -417,7 +449,7 @@ func (d *reader) nodes() error {
 			case "reference":
 				return d.setVec(&unbuilt)
 			}
-			return nil
+			return d.skip()
 		})
 		if err != nil {
 			return err
@@ -431,7 +463,7 @@ func (d *reader) nodes() error {
 		s.Load = sparse(s.Load, i, load, r3.Vec{})
 		s.Held = sparse(s.Held, i, held, 0)
 		s.Master = sparse(s.Master, i, master, -1)
-		if seen>>8&1 != 0 {
+		if seen>>referenceKey&1 != 0 {
 			if len(s.Reference) != i {
 				return d.errorf("has a reference, others have none")
 			}
@@ -488,7 +520,7 @@ func (d *reader) members() error {
 			force, given, stiffness, unstressed, weight, strength float64
 			derived                                               bool
 		)
-		_, err := d.record(memberKeys, 7, func(key string) (err error) {
+		_, err := d.record(memberKeys, func(key string) (err error) {
 			switch key {
 			case "id":
 				return d.checkID(i)
@@ -532,7 +564,7 @@ func (d *reader) members() error {
 			case "unstressed_derived":
 				return d.setBool(&derived)
 			}
-			return nil
+			return d.skip()
 		})
 		if err != nil {
 			return err
@@ -587,7 +619,7 @@ func (d *reader) triangles() error {
 			stress       canopy.Stress
 			specified    [2]float64
 		)
-		seen, err := d.record(triangleKeys, 6, func(key string) error {
+		seen, err := d.record(triangleKeys, func(key string) error {
 			switch key {
 			case "id":
 				return d.checkID(i)
@@ -622,12 +654,12 @@ func (d *reader) triangles() error {
 			case "warp_wanted":
 				return d.setVec(&wanted)
 			}
-			return nil
+			return d.skip()
 		})
 		if err != nil {
 			return err
 		}
-		if seen>>6&1 == 0 {
+		if seen>>wantedKey&1 == 0 {
 			wanted = warp
 		}
 		s.Corners = append(s.Corners, corners)

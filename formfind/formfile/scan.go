@@ -473,7 +473,14 @@ func (s *scanner) skipDeep(depth int) error {
 		_, err := s.boolean()
 		return err
 	default:
-		_, err := s.number()
-		return err
+		d, err := s.digits()
+		if err != nil {
+			return err
+		}
+		if !isNumber(d) {
+			return s.errorf("%.40q is not a number", d)
+		}
+		s.pos += len(d)
+		return nil
 	}
 }
