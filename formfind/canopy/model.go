@@ -92,6 +92,7 @@ type ModelCable struct {
 	// One of these decides its force.
 	Force        float64 // N
 	ForceDensity float64 // N/m
+	MeanForce    float64 // N, turned into force densities that give it to each side where it starts
 	Sag          float64 // sag/chord
 	Unstressed   float64 // m, with Stiffness
 	Stiffness    float64 // EA, N
@@ -179,7 +180,7 @@ type Family struct {
 	HasAngle     bool
 	Force        float64 // N, or
 	ForceDensity float64 // N/m, or
-	MeanForce    float64 // N, turned into the force density that gives it to a link of mean length
+	MeanForce    float64 // N, turned into force densities that give it to each link where it starts
 	Stiffness    float64 // EA, N; with it the found force also fixes the unstressed length
 	Weight       float64 // N/m
 	Strength     float64 // N

@@ -24,10 +24,19 @@ func Build(ctx context.Context, m *canopy.Model) (*canopy.Structure, error) {
 		}
 		return m.Listed, nil
 	}
-	b := &builder{ctx: ctx, m: m, s: &canopy.Structure{SelfWeight: m.SelfWeight}}
+	return newBuilder(ctx, m).build()
+}
+
+func newBuilder(ctx context.Context, m *canopy.Model) *builder {
+	return &builder{ctx: ctx, m: m, s: &canopy.Structure{SelfWeight: m.SelfWeight}}
+}
+
+// build runs all stages.
+func (b *builder) build() (*canopy.Structure, error) {
+	ctx := b.ctx
 	// Each stage needs the ones before it to be without fault.
 	for _, stage := range []func(){
-		b.index, b.curves, b.loops, b.orient, b.divide, b.supports,
+		b.index, b.curves, b.loops, b.orient, b.divide, b.layNets, b.supports,
 		b.pointNodes, b.edgeNodes, b.ringNodes, b.fill, b.cables, b.stays,
 		b.finish, b.verify,
 	} {
@@ -51,12 +60,17 @@ type builder struct {
 
 	point, edge, cable, ring map[string]int
 
-	ends    [][2]int  // per edge: model indices of its points
-	curve   []curve   // per edge
-	loop    []*loop   // fabrics first, then nets
-	users   [][]int32 // per edge: loops that it bounds
-	count   []int     // per edge: number of segments
-	ringUse []int     // per ring: loop that surrounds it, −1 = none
+	ends    [][2]int    // per edge: model indices of its points
+	curve   []curve     // per edge
+	loop    []*loop     // fabrics first, then nets
+	users   [][]int32   // per edge: loops that it bounds
+	count   []int       // per edge: number of segments
+	param   [][]float64 // per edge: where its nodes are, by length; nil = evenly
+	laid    []*laidNet  // per loop: the lines of a net laid in its plane
+	arrival []arrival   // where such lines end on edges
+	found   *foundShape // an earlier shape in which nets are laid anew
+	soft    bool        // end links of given force start with the force density that gives it
+	ringUse []int       // per ring: loop that surrounds it, −1 = none
 
 	fixed []canopy.Freedom // per point
 	held  []canopy.Freedom
@@ -191,12 +205,16 @@ type member struct {
 	kind                  canopy.Kind
 	law                   canopy.Law
 	given                 float64
+	mean                  float64 // N: the force density that gives this force where the member starts
 	stiffness, unstressed float64
 	weight, strength      float64
 }
 
 func (b *builder) addMember(m member) int32 {
 	s := b.s
+	if m.mean != 0 {
+		m.given = m.mean / dist(s.Position[m.a], s.Position[m.b])
+	}
 	s.Ends = append(s.Ends, [2]int32{m.a, m.b})
 	s.Kind = append(s.Kind, m.kind)
 	s.Law = append(s.Law, m.law)

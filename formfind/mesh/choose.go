@@ -8,11 +8,13 @@ import (
 
 // choosePatch decides how a boundary is meshed: by a structured patch, whose
 // lines follow the yarn and mirror as the model does, where its shape allows
-// that without thin triangles, and freely otherwise. Nets are always structured.
+// that without thin triangles, and freely otherwise.
 func (b *builder) choosePatch(l *loop) patcher {
 	var p patcher
 	n := len(l.sides)
 	switch {
+	case l.net && !b.alongSides(l):
+		return lineNet{}
 	case len(l.holes)+len(l.lines)+len(l.points) > 0:
 		return freePatch{}
 	case l.ring >= 0:
@@ -29,9 +31,16 @@ func (b *builder) choosePatch(l *loop) patcher {
 	default:
 		p = starPatch{}
 	}
-	if l.net {
-		return p
+	if !l.net && !b.fairSides(l) {
+		return freePatch{}
 	}
+	return p
+}
+
+// fairSides reports whether a structured patch between the sides of l has no
+// thin triangles.
+func (b *builder) fairSides(l *loop) bool {
+	n := len(l.sides)
 	c, m := b.sideEnds(l)
 	var centre xy
 	for _, q := range m {
@@ -50,10 +59,7 @@ func (b *builder) choosePatch(l *loop) patcher {
 			good = good && alike(2.5, c[k], c[(k+1)%n], c[before], c[k])
 		}
 	}
-	if !good {
-		return freePatch{}
-	}
-	return p
+	return good
 }
 
 // sideEnds returns the corner at which each side starts and its middle, seen

@@ -150,7 +150,7 @@ func (b *builder) misfit(d *division) *loop {
 func (b *builder) netNumbers(d *division) []float64 {
 	byNet := make([]float64, len(b.m.Edges))
 	for _, l := range b.loop {
-		if !l.net {
+		if _, lines := l.patch.(lineNet); !l.net || lines {
 			continue
 		}
 		for k, side := range l.sides {
@@ -213,7 +213,7 @@ func (b *builder) divide() {
 		} else {
 			b.count[i] = b.count[r]
 		}
-		if b.curve[i].Arc && len(b.users[i]) > 0 && b.count[i] < 2 {
+		if b.curve[i].Arc && len(b.users[i]) > 0 && b.count[i] < 2 && !b.freeEdge(i) {
 			e := m.Edges[i]
 			b.fail("edge", e.Name, e.Line, Conflict, "give at least 2 segments", "an arc cannot be a single straight segment")
 		}
@@ -322,8 +322,11 @@ func (b *builder) edgeNodes() {
 		}
 		sag := b.sagVector(i)
 		for k := 1; k < n; k++ {
-			t := float64(k) / float64(n)
+			t := b.nodeAt(i, k)
 			at := r3.Add(b.curve[i].at(t), r3.Scale(4*t*(1-t), sag))
+			if b.found != nil && e.Kind == canopy.EdgeCable {
+				at = b.found.at(i, t)
+			}
 			v := b.addNode(at, numbered(e.Name, k))
 			if on >= 0 {
 				s.Fixed[v], s.OnCurve[v], s.Param[v] = canopy.DirAll, on, t

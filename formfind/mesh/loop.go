@@ -59,24 +59,10 @@ func (b *builder) loops() {
 		if l == nil {
 			continue
 		}
-		if len(l.edges) < 3 {
-			b.fail("net", n.Name, n.Line, Mismatch, "give it three or four sides", "it has %d sides", len(l.edges))
+		if !b.netGiven(l, n) {
 			continue
 		}
 		b.addLoop(l)
-		if len(l.sides) != 3 && len(l.sides) != 4 {
-			b.fail("net", n.Name, n.Line, Mismatch, "divide it into nets of three or four sides that share edges", "its boundary has %d corners", len(l.sides))
-			continue
-		}
-		if len(n.Families) < 2 {
-			b.fail("net", n.Name, n.Line, Missing, "give it two", "it has %d families of lines", len(n.Families))
-			continue
-		}
-		for k, f := range n.Families {
-			if !(f.Spacing > 0) {
-				b.fail("net", n.Name, n.Line, Missing, "give it in m or mm", "family %d has no spacing", k+1)
-			}
-		}
 	}
 	for i, r := range b.m.Rings {
 		if b.ringUse[i] < 0 {

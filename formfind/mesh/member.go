@@ -125,6 +125,8 @@ func (b *builder) cablePiece(c *canopy.ModelCable, name string, edges []int, rev
 		mem.law, mem.given = canopy.LawForce, c.Force
 	case c.ForceDensity != 0:
 		mem.law, mem.given = canopy.LawForceDensity, c.ForceDensity
+	case c.MeanForce != 0:
+		mem.law, mem.mean = canopy.LawForceDensity, c.MeanForce
 	case c.Sag != 0:
 		mem.law = canopy.LawCable
 		cable.Law, cable.Value = canopy.CableSag, c.Sag
@@ -135,7 +137,7 @@ func (b *builder) cablePiece(c *canopy.ModelCable, name string, edges []int, rev
 		mem.law = canopy.LawCable
 		cable.Law, cable.Value = canopy.CableLength, c.Length*share
 	default:
-		b.fail("cable", c.Name, c.Line, Missing, "give a force, force density, sag, length, or stiffness and unstressed length", "nothing says what force it has")
+		b.fail("cable", c.Name, c.Line, Missing, "give a force, force density, mean force, sag, length, or stiffness and unstressed length", "nothing says what force it has")
 		return
 	}
 	for k, e := range edges {

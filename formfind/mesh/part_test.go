@@ -429,7 +429,11 @@ func TestRefusals(t *testing.T) {
 			fixedEdge(m, "x", "P0", "P2")
 			return m
 		}, mesh.Mismatch, "edge", "x", "bounds nothing"},
-		"net of five": {func() *canopy.Model { return net(5) }, mesh.Mismatch, "net", "roof", "5 corners"},
+		"net of five along its sides": {func() *canopy.Model {
+			m := net(5)
+			m.Nets[0].Pattern = canopy.NetSides
+			return m
+		}, mesh.Mismatch, "net", "roof", "5 corners"},
 		"clamped outside": {func() *canopy.Model {
 			m := polygon(4)
 			m.Cables[0].Clamped = []string{"P2"}

@@ -344,7 +344,11 @@ func (b *builder) fill() {
 			return
 		}
 		if l.net {
-			b.fillNet(l)
+			if b.laid[li] != nil {
+				b.fillLines(l, b.laid[li])
+			} else {
+				b.fillSides(l)
+			}
 			continue
 		}
 		f := b.m.Fabrics[l.index]

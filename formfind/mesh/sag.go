@@ -14,6 +14,9 @@ import (
 // start; zero for any other edge.
 func (b *builder) sagVector(i int) r3.Vec {
 	e := b.m.Edges[i]
+	if e.Kind == canopy.EdgeCable && len(b.users[i]) == 1 && b.laid[b.users[i][0]] != nil {
+		return b.laid[b.users[i][0]].sag[i]
+	}
 	if e.Kind != canopy.EdgeCable || len(b.users[i]) != 1 || b.loop[b.users[i][0]].net {
 		return r3.Vec{}
 	}
@@ -75,6 +78,8 @@ func (b *builder) cableSag(i int, stress, link float64) float64 {
 	switch {
 	case cable.Force > 0 && stress > 0:
 		return arc(cable.Force)
+	case cable.MeanForce > 0 && stress > 0:
+		return arc(cable.MeanForce)
 	case cable.ForceDensity > 0 && stress > 0:
 		return arc(cable.ForceDensity * link)
 	case cable.Sag > 0:

@@ -341,12 +341,13 @@ func (d *drawn) cableRule(g *fields, c *canopy.ModelCable, label string) {
 	}
 	switch {
 	case len(rules) == 0 && g.ok:
-		d.r.fail(g.node, g.p, fmt.Sprintf("the cable of %s has nothing that decides its force", label), "give force, force density, sag, length, or stiffness and unstressed")
+		d.r.fail(g.node, g.p, fmt.Sprintf("the cable of %s has nothing that decides its force", label), "give force, force density, mean force, sag, length, or stiffness and unstressed")
 	case len(rules) > 1:
 		d.r.fail(g.keyNode(rules[1]), g.p.down(rules[1]), fmt.Sprintf("the force of the cable of %s is decided twice, by %s", label, list(rules, "and")), keep)
 	}
 	c.Force = g.number("force")
 	c.ForceDensity = g.number("force density")
+	c.MeanForce = g.number("mean force")
 	c.Sag = g.number("sag")
 	c.Length = g.number("length")
 	c.Unstressed = g.number("unstressed")

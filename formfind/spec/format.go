@@ -60,7 +60,7 @@ var pointSection = &section{id: "point", doc: "A named place.", keys: []*key{
 }}
 
 // ruleKeys are the ways to say what force a cable has.
-var cableRules = []string{"force", "force density", "sag", "length", "unstressed"}
+var cableRules = []string{"force", "force density", "mean force", "sag", "length", "unstressed"}
 
 func cableKeys() []*key {
 	return []*key{
@@ -68,6 +68,8 @@ func cableKeys() []*key {
 			doc: "The tension, the same all along (in the mean where fabric shears along the cable)."},
 		{name: "force density", shape: quantity(ForcePerLength).from(0), example: "4 kN/m",
 			doc: "Force over length of each of its mesh sides."},
+		{name: "mean force", shape: quantity(Force).above(0), example: "25 kN",
+			doc: "About the tension, for a cable to which the lines of a net are clamped, however oblique: each of its sides has the force density that gives it this force where it starts. A cable of one force lets such lines slide along it."},
 		{name: "sag", shape: quantity(Ratio).above(0).upTo(0.5), example: "10 %",
 			doc: "Rise over chord; the force is found that gives it."},
 		{name: "length", shape: quantity(Length).above(0), example: "9.86 m",
@@ -83,7 +85,7 @@ func cableKeys() []*key {
 	}
 }
 
-var edgeCableSection = &section{id: "edge-cable", doc: "A cable along one edge. Exactly one of force, force density, sag, length and unstressed (with stiffness) is given.",
+var edgeCableSection = &section{id: "edge-cable", doc: "A cable along one edge. Exactly one of force, force density, mean force, sag, length and unstressed (with stiffness) is given.",
 	oneOf: cableRules, keys: cableKeys()}
 
 var fixedSection = &section{id: "fixed-arc", doc: "A circular arc.", keys: []*key{
@@ -109,7 +111,7 @@ var edgeSection = &section{id: "edge", doc: "A line from one point to another: a
 			doc: "Number of mesh sides along it."},
 	}}
 
-var cableSection = &section{id: "cable", doc: "A cable along several edges in a row. Exactly one of force, force density, sag, length and unstressed (with stiffness) is given.",
+var cableSection = &section{id: "cable", doc: "A cable along several edges in a row. Exactly one of force, force density, mean force, sag, length and unstressed (with stiffness) is given.",
 	oneOf: cableRules, keys: append([]*key{
 		{name: "edges", shape: names("edge", 1), required: true, example: "[AB, BC]",
 			doc: "The edges in order from one end to the other."},
@@ -189,7 +191,7 @@ var familySection = &section{id: "net-family", doc: "One family of net lines. Ex
 		{name: "angle", shape: quantity(Angle), deflt: "0 for the first family, 90 deg for the second, or 60 deg where there is a third", example: "60 deg", doc: "Direction of straight lines: turned from the direction of the net, counter-clockwise in plan."},
 		{name: "force", shape: quantity(Force).above(0), example: "5 kN", doc: "Tension of every link."},
 		{name: "force density", shape: quantity(ForcePerLength).above(0), example: "4 kN/m", doc: "Force over length of every link."},
-		{name: "mean force", shape: quantity(Force).above(0), example: "5 kN", doc: "Wanted force of a link of mean length: the force density that gives it is the same in every link of the family. The safe choice for a net without sharp demands."},
+		{name: "mean force", shape: quantity(Force).above(0), example: "5 kN", doc: "About the tension of every link: it has the force density that gives it this force where it starts. The safe choice where nothing else is wanted."},
 		{name: "stiffness", shape: quantity(Force).above(0), example: "8 MN", doc: "Axial stiffness EA, for the cutting lengths."},
 		{name: "weight", shape: quantity(WeightPerLength).from(0), example: "0.6 kg/m", doc: "Self weight per length."},
 		{name: "strength", shape: quantity(Force).above(0), example: "60 kN", doc: "Characteristic breaking force."},

@@ -1,0 +1,553 @@
+package mesh
+
+import (
+	"math"
+	"slices"
+
+	"anticlast/formfind/canopy"
+	"gonum.org/v1/gonum/spatial/r3"
+)
+
+// lineNet is a net of straight or radial lines: nothing is asked of its edges,
+// which are divided where lines end.
+type lineNet struct{}
+
+func (lineNet) relate(*division, *loop)           {}
+func (lineNet) triangles(*builder, *loop) float64 { return 0 }
+func (lineNet) fill(*plot)                        {}
+
+// least is the length of the shortest link of a net of lines, and of the
+// shortest side of an edge that it divides, over the spacing. A crossing nearer
+// to the boundary than that is put on it; line ends nearer to each other, or to a
+// corner, are put together.
+const least = 1.0 / 3
+
+// laidNet is a net whose lines have been laid in its plane.
+type laidNet struct {
+	lat    *lattice
+	rim    *rim
+	keep   []bool         // per crossing of the lattice: a node
+	chains []chainOfStops // the lines, cut at the boundary
+	least  float64        // m
+	sag    map[int]r3.Vec // per edge: where its middle is expected off its chord
+	radial *radialNet
+	node   []int32 // per crossing, −1 = none
+}
+
+// chainOfStops is a stretch of a line: crossings of the lattice (≥ 0), and
+// arrivals on edges as −1 − index.
+type chainOfStops struct {
+	family int
+	stops  []int32
+	long   []bool // per link: spans a crossing that was left out
+}
+
+// arrival is where a line ends on an edge.
+type arrival struct {
+	edge  int
+	t     float64
+	least float64 // m
+	node  int     // number of the node along the edge, once that is divided
+}
+
+func (b *builder) arrive(on onRim, l *laidNet) int32 {
+	b.arrival = append(b.arrival, arrival{edge: on.edge, t: min(1, max(0, on.t)), least: l.least})
+	return -int32(len(b.arrival))
+}
+
+// freeEdge reports whether edge i bounds only nets that end where they like, so
+// that it is divided where their lines end.
+func (b *builder) freeEdge(i int) bool {
+	if b.m.Edges[i].Segments > 0 {
+		return false
+	}
+	for _, u := range b.users[i] {
+		if _, lines := b.loop[u].patch.(lineNet); !lines {
+			return false
+		}
+	}
+	return len(b.users[i]) > 0
+}
+
+// nodeAt returns where node k of edge i is, by length.
+func (b *builder) nodeAt(i, k int) float64 {
+	if p := b.param[i]; p != nil {
+		return p[k]
+	}
+	return float64(k) / float64(b.count[i])
+}
+
+// layNets lays the lines of nets that do not run along the sides of a patch, and
+// divides edges where they end.
+func (b *builder) layNets() {
+	b.laid = make([]*laidNet, len(b.loop))
+	b.param = make([][]float64, len(b.m.Edges))
+	for i, l := range b.loop {
+		if _, lines := l.patch.(lineNet); !lines {
+			continue
+		}
+		if b.ctx.Err() != nil {
+			return
+		}
+		n := &b.m.Nets[l.index]
+		r := b.newRim(l)
+		if r == nil {
+			b.fail("net", l.name, l.line, Degenerate, "move its points apart", "its boundary encloses no area")
+			continue
+		}
+		net := &laidNet{rim: r, sag: map[int]r3.Vec{}}
+		for k, e := range l.edges {
+			if b.sags(l, e) {
+				net.sag[e] = b.netSagVector(l, r, e, (b.walkArea(l, r) > 0) != l.rev[k])
+			}
+		}
+		b.laid[i] = net
+		if n.Pattern == canopy.NetRadial {
+			b.layRadial(l, net)
+		} else {
+			b.layStraight(l, net)
+		}
+	}
+	if len(b.errs) > 0 {
+		return
+	}
+	b.settle()
+	for i, net := range b.laid {
+		if net == nil {
+			continue
+		}
+		if net.radial == nil {
+			b.tidy(net)
+		}
+		if len(net.chains) == 0 && net.radial == nil {
+			l := b.loop[i]
+			h := netSpacings(&b.m.Nets[l.index])
+			b.fail("net", l.name, l.line, Mismatch, "give a smaller spacing", "no line of it fits into its boundary with lines %.3g m apart", max(h[0], h[1]))
+		}
+	}
+}
+
+// walkArea is the area within the walk along l, seen in the plane of r.
+func (b *builder) walkArea(l *loop, r *rim) float64 {
+	pts := b.sample(l)
+	area := 0.0
+	for i, p := range pts {
+		a, c := r.drop(p), r.drop(pts[(i+1)%len(pts)])
+		area += (a.x*c.y - a.y*c.x) / 2
+	}
+	return area
+}
+
+// layStraight cuts the lines of a lattice at the rim.
+func (b *builder) layStraight(l *loop, net *laidNet) {
+	n := &b.m.Nets[l.index]
+	if b.found != nil {
+		net.lat = b.found.lattice(l, net.rim)
+	}
+	if net.lat == nil {
+		net.lat = newLattice(n, net.rim)
+	}
+	if net.lat == nil {
+		b.fail("net", l.name, l.line, Mismatch, "let families cross at 10° or more, and give a spacing that suits the size", "its families run the same way, or it would have more than %d million crossings", maxLattice/1_000_000)
+		return
+	}
+	net.least = least * net.lat.h
+	net.cut(b)
+}
+
+// states of a crossing.
+const (
+	outside int8 = iota
+	kept         // a node of the net
+	onEdge       // put on the boundary
+)
+
+// cut finds which crossings are nodes and where lines end.
+func (net *laidNet) cut(b *builder) {
+	lat, r := net.lat, net.rim
+	r.sort(lat.link)
+	state := make([]int8, len(lat.at))
+	far := make([]float64, len(lat.at)) // distance from the boundary, up to a link
+	stop := make([]int32, len(lat.at))
+	net.keep = make([]bool, len(lat.at))
+	for p, q := range lat.at {
+		stop[p] = int32(p)
+		if !lat.has(int32(p)) {
+			continue
+		}
+		on, near := r.nearest(q)
+		far[p] = lat.link
+		if near {
+			far[p] = on.d
+		}
+		switch {
+		case !r.inside(q):
+		case near && on.d < net.least:
+			state[p] = onEdge
+			stop[p] = b.arrive(on, net)
+		default:
+			state[p] = kept
+			net.keep[p] = true
+		}
+	}
+	var cross []onRim
+	var way []int32
+	lat.walk(func(family int, line []int32) {
+		var cur []int32
+		end := func() {
+			if len(cur) > 1 {
+				net.chains = append(net.chains, chainOfStops{family: family, stops: cur})
+			}
+			cur = nil
+		}
+		for k := 1; k < len(line); k++ {
+			p, q := line[k-1], line[k]
+			if !lat.has(p) || !lat.has(q) {
+				end()
+				continue
+			}
+			a, c := lat.at[p], lat.at[q]
+			cross = cross[:0]
+			if min(far[p], far[q]) < math.Hypot(c.x-a.x, c.y-a.y) {
+				cross = r.crossings(a, c, cross)
+			}
+			in, out := state[p] != outside, state[q] != outside
+			if (in != out) != (len(cross)%2 == 1) {
+				// Within rounding of the boundary.
+				if len(cross) > 0 {
+					cross = cross[:len(cross)-1]
+				} else if on, near := r.nearest(a); near && in {
+					cross = append(cross, on)
+				} else if on, near := r.nearest(c); near && out {
+					cross = append(cross, on)
+				} else {
+					end()
+					continue
+				}
+			}
+			// Every other stretch of the way lies inside.
+			way = way[:0]
+			if in {
+				way = append(way, stop[p])
+			}
+			for _, x := range cross {
+				way = append(way, b.arrive(x, net))
+			}
+			if out {
+				way = append(way, stop[q])
+			}
+			for i := 0; i+1 < len(way); i += 2 {
+				if i > 0 || !in || len(cur) == 0 {
+					end()
+					cur = append(cur, way[i])
+				}
+				cur = append(cur, way[i+1])
+			}
+			if !out {
+				end()
+			}
+		}
+		end()
+	})
+}
+
+// settle divides edges where lines arrive, and puts arrivals that are close
+// together on one node.
+func (b *builder) settle() {
+	byEdge := make([][]int, len(b.m.Edges))
+	for i := range b.arrival {
+		byEdge[b.arrival[i].edge] = append(byEdge[b.arrival[i].edge], i)
+	}
+	for e, list := range byEdge {
+		if b.users[e] == nil {
+			continue
+		}
+		if !b.freeEdge(e) {
+			for _, i := range list {
+				b.arrival[i].node = int(math.Round(b.arrival[i].t * float64(b.count[e])))
+			}
+			continue
+		}
+		slices.SortStableFunc(list, func(i, j int) int {
+			switch d := b.arrival[i].t - b.arrival[j].t; {
+			case d < 0:
+				return -1
+			case d > 0:
+				return 1
+			}
+			return 0
+		})
+		b.divideAt(e, list)
+	}
+}
+
+// divideAt divides edge e at the arrivals in list, which are in order.
+func (b *builder) divideAt(e int, list []int) {
+	length := b.curve[e].length
+	gap := 0.0
+	for _, i := range list {
+		gap = max(gap, b.arrival[i].least)
+	}
+	gap /= length
+	type cluster struct {
+		t           float64
+		first, last int // in list
+	}
+	c := []cluster{{0, 0, 0}}
+	for k, i := range list {
+		c = append(c, cluster{b.arrival[i].t, k, k + 1})
+	}
+	c = append(c, cluster{1, len(list), len(list)})
+	// The closest two first, until all are a gap apart; ends stay.
+	for {
+		at, d := -1, gap*(1-1e-9)
+		for k := 1; k < len(c); k++ {
+			if x := c[k].t - c[k-1].t; x < d && len(c) > 2 {
+				at, d = k, x
+			}
+		}
+		if at < 0 {
+			break
+		}
+		p, q := c[at-1], c[at]
+		np, nq := float64(p.last-p.first), float64(q.last-q.first)
+		t := (p.t*np + q.t*nq) / max(1, np+nq)
+		if at == 1 {
+			t = 0
+		}
+		if at == len(c)-1 {
+			t = 1
+		}
+		c[at-1] = cluster{t, p.first, q.last}
+		c = slices.Delete(c, at, at+1)
+	}
+	par := make([]float64, 0, len(c))
+	for k, x := range c {
+		if k > 0 && b.curve[e].Arc {
+			// An arc is never a single straight side.
+			before := par[len(par)-1]
+			n := int(math.Ceil((x.t-before)*b.curve[e].sweep/arcStep - 1e-9))
+			if len(c) == 2 {
+				n = max(n, 2)
+			}
+			for i := 1; i < n; i++ {
+				par = append(par, before+(x.t-before)*float64(i)/float64(n))
+			}
+		}
+		for _, i := range list[x.first:x.last] {
+			b.arrival[i].node = len(par)
+		}
+		par = append(par, x.t)
+	}
+	b.param[e] = par
+	b.count[e] = len(par) - 1
+}
+
+// arcStep is the largest angle of a side of an arc between the ends of lines.
+const arcStep = math.Pi / 12
+
+// rimKey numbers the nodes on edges: points first, then those along each edge.
+func (b *builder) rimKey(a arrival, base []int) int {
+	switch a.node {
+	case 0:
+		return b.ends[a.edge][0]
+	case b.count[a.edge]:
+		return b.ends[a.edge][1]
+	}
+	return len(b.m.Points) + base[a.edge] + a.node
+}
+
+// tidy removes from the lines of a net what merging has made useless: links that
+// have shrunk, that double another, run along the boundary or leave the net; and
+// crossings with fewer than three links.
+func (b *builder) tidy(net *laidNet) {
+	lat, r := net.lat, net.rim
+	base := make([]int, len(b.m.Edges))
+	total := 0
+	for e := range base {
+		base[e] = total
+		total += b.count[e]
+	}
+	keys := len(b.m.Points) + total
+	key := func(s int32) int {
+		if s >= 0 {
+			return keys + int(s)
+		}
+		return b.rimKey(b.arrival[-1-s], base)
+	}
+	place := func(s int32) xy {
+		if s >= 0 {
+			return lat.at[s]
+		}
+		a := b.arrival[-1-s]
+		return r.drop(b.onEdge(a.edge, b.nodeAt(a.edge, a.node), net))
+	}
+	var cross []onRim
+	good := func(s, t int32) bool {
+		if s >= 0 && t >= 0 {
+			return true
+		}
+		p, q := place(s), place(t)
+		length := math.Hypot(q.x-p.x, q.y-p.y)
+		if s < 0 && t < 0 {
+			// From one place of the boundary to another: not beside it.
+			m := xy{(p.x + q.x) / 2, (p.y + q.y) / 2}
+			if length < net.least || !r.inside(m) {
+				return false
+			}
+			if on, near := r.nearest(m); near && on.d < 0.2*length {
+				return false
+			}
+		}
+		const touch = 0.02
+		cross = r.crossings(p, q, cross)
+		for _, c := range cross {
+			if (s >= 0 || c.d > touch) && (t >= 0 || c.d < 1-touch) {
+				return false
+			}
+		}
+		return true
+	}
+	for {
+		// Links that are of no use part their lines.
+		seen := map[[2]int]bool{}
+		links := make([]int8, len(lat.at))
+		var chains []chainOfStops
+		for _, c := range net.chains {
+			cur := chainOfStops{family: c.family, stops: []int32{c.stops[0]}}
+			for k := 1; k < len(c.stops); k++ {
+				s, t := c.stops[k-1], c.stops[k]
+				a, z := key(s), key(t)
+				pair := [2]int{min(a, z), max(a, z)}
+				if a == z || seen[pair] || !good(s, t) {
+					chains = appendChain(chains, cur)
+					cur = chainOfStops{family: c.family, stops: []int32{t}}
+					continue
+				}
+				seen[pair] = true
+				cur.stops = append(cur.stops, t)
+				cur.long = append(cur.long, c.long != nil && c.long[k-1])
+				for _, x := range [2]int32{s, t} {
+					if x >= 0 {
+						links[x]++
+					}
+				}
+			}
+			chains = appendChain(chains, cur)
+		}
+		// Crossings with fewer than three links are none: a line goes straight
+		// on there, or ends before.
+		changed := false
+		net.chains = nil
+		for _, c := range chains {
+			cur := chainOfStops{family: c.family}
+			for k, s := range c.stops {
+				weak := s >= 0 && links[s] < 3
+				if !weak {
+					if len(cur.stops) > 0 {
+						cur.long = append(cur.long, c.long[k-1] || c.stops[k-1] >= 0 && links[c.stops[k-1]] < 3)
+					}
+					cur.stops = append(cur.stops, s)
+					continue
+				}
+				changed = true
+				if k > 0 && k < len(c.stops)-1 && links[s] == 2 {
+					continue
+				}
+				net.chains = appendChain(net.chains, cur)
+				cur = chainOfStops{family: c.family}
+			}
+			net.chains = appendChain(net.chains, cur)
+		}
+		for p := range net.keep {
+			net.keep[p] = links[p] > 2
+		}
+		if !changed {
+			return
+		}
+	}
+}
+
+func appendChain(list []chainOfStops, c chainOfStops) []chainOfStops {
+	if len(c.stops) > 1 {
+		list = append(list, c)
+	}
+	return list
+}
+
+// onEdge returns the place at t of an edge at the rim of a net.
+func (b *builder) onEdge(e int, t float64, net *laidNet) r3.Vec {
+	if b.found != nil {
+		return b.found.at(e, t)
+	}
+	return r3.Add(b.curve[e].at(t), r3.Scale(4*t*(1-t), net.sag[e]))
+}
+
+// fillLines makes the nodes and links of a net that has been laid.
+func (b *builder) fillLines(l *loop, net *laidNet) {
+	p := &plot{b: b, l: l}
+	if net.radial != nil {
+		b.fillRadial(p, net)
+		return
+	}
+	n := &b.m.Nets[l.index]
+	net.node = make([]int32, len(net.keep))
+	for i, k := range net.keep {
+		net.node[i] = -1
+		if k {
+			net.node[i] = p.node(net.rise(i))
+		}
+	}
+	at := func(s int32) int32 {
+		if s >= 0 {
+			return net.node[s]
+		}
+		a := b.arrival[-1-s]
+		return b.edgeNode[a.edge][a.node]
+	}
+	lines := make([][][]int32, len(n.Families))
+	inner := make([][][]bool, len(n.Families)) // per link: one mesh of an equal-mesh net
+	for _, c := range net.chains {
+		nodes := make([]int32, len(c.stops))
+		mesh := make([]bool, len(c.stops)-1)
+		for k, s := range c.stops {
+			nodes[k] = at(s)
+			if k > 0 {
+				mesh[k-1] = n.MeshLength > 0 && s >= 0 && c.stops[k-1] >= 0 && !c.long[k-1]
+			}
+		}
+		lines[c.family] = append(lines[c.family], nodes)
+		inner[c.family] = append(inner[c.family], mesh)
+	}
+	for k := range lines {
+		mem := b.netMember(l, k)
+		equal := mem
+		if n.MeshLength > 0 {
+			equal.law, equal.given, equal.mean = canopy.LawElastic, 0, 0
+			equal.unstressed = n.MeshLength / (1 + n.MarkTension/mem.stiffness)
+		}
+		for i, nodes := range lines[k] {
+			c := canopy.Cable{Name: numbered(mem.group, i+1), Kind: canopy.KindNetCable, Nodes: nodes}
+			for j := 1; j < len(nodes); j++ {
+				link := mem
+				if inner[k][i][j-1] {
+					link = equal
+				} else if b.soft && link.law == canopy.LawForce {
+					link.law, link.mean = canopy.LawForceDensity, link.given
+				}
+				link.a, link.b, link.name = nodes[j-1], nodes[j], numbered(c.Name, j)
+				c.Members = append(c.Members, b.addMember(link))
+			}
+			b.addCable(c)
+		}
+	}
+}
+
+// rise returns the place in space of crossing i.
+func (net *laidNet) rise(i int) r3.Vec {
+	if net.lat.space != nil {
+		return net.lat.space[i]
+	}
+	q, r := net.lat.at[i], net.rim
+	return r3.Add(r.origin, r3.Add(r3.Scale(q.x, r.e1), r3.Add(r3.Scale(q.y, r.e2), r3.Scale(r.up.meanValue(q), r.n))))
+}
