@@ -421,20 +421,18 @@ func naturalForm(s *canopy.Structure, r fdm.NaturalResult) *canopy.Form {
 // stress and forces of that solution.
 func (c *chain) finish(ctx context.Context) error {
 	s := c.s
+	if lawful(s) {
+		if done, err := c.settle(ctx); done || err != nil {
+			return err
+		}
+	}
 	found := c.f
 	c.stage("natural force density", "final pass")
 	ref := c.f.Position
-	masts := thrusts{s: s, masts: freeMasts(s)}
-	thrust := masts.of(found)
-	steady := steadyLoads(s) && len(thrust) == 0
+	steady := steadyLoads(s)
 	members := given(s, found.Force)
-	for _, k := range masts.masts {
-		members.Force[k] = 0
-	}
 	for pass := 1; ; pass++ {
-		loads := load.Nodal(s, c.f.Position)
-		masts.load(loads, thrust)
-		net, panels := network(s, loads)
+		net, panels := network(s, load.Nodal(s, c.f.Position))
 		for t := range panels {
 			// Of unequal warp and weft only the ratio is what was asked for;
 			// the magnitude is what Newton fitted.
@@ -454,13 +452,9 @@ func (c *chain) finish(ctx context.Context) error {
 		}
 		c.f = naturalForm(s, r)
 		c.f.Converged = true
-		off := 0.0
-		if len(thrust) > 0 {
-			thrust, off = masts.correct(c.f, thrust)
-		}
 		// Loads that follow the shape are those of the last pass: repeat until
 		// that no longer matters.
-		if steady || move <= 1e-13*s.Size() && off <= 1e-12 || pass == maxPasses {
+		if steady || move <= 1e-13*s.Size() || pass == maxPasses {
 			c.used("natural force density")
 			c.say("fixed-reference pass: exact balance in all directions, residual %.1e", r.Residual)
 			return nil
