@@ -27,6 +27,8 @@ type chain struct {
 	smooth *canopy.Form
 	did    []string
 	use    []string
+	// unstable is how many unstable directions Newton's last shape has.
+	unstable int
 }
 
 func (c *chain) say(format string, a ...any) { c.did = append(c.did, fmt.Sprintf(format, a...)) }
@@ -219,6 +221,7 @@ func (c *chain) newton(ctx context.Context, all bool) (why string, err error) {
 		return out.Why, nil
 	}
 	c.f, c.f.Converged = f, true
+	c.unstable = out.NegativePivots
 	c.used("newton")
 	c.say("Newton%s: %d iterations to a residual of %.1e", directions(all), out.Iterations, out.Residual)
 	return "", nil
@@ -228,6 +231,7 @@ func (c *chain) newton(ctx context.Context, all bool) (why string, err error) {
 // Newton does not get there.
 func (c *chain) iterate(ctx context.Context, all bool, starts ...func(context.Context) error) error {
 	first := ""
+	var best candidate
 	for _, start := range starts {
 		err := start(ctx)
 		var collapsed *fdm.ReferenceError
@@ -242,12 +246,29 @@ func (c *chain) iterate(ctx context.Context, all bool, starts ...func(context.Co
 			break
 		}
 		why, err := c.newton(ctx, all)
-		if err != nil || why == "" {
+		if err != nil {
 			return err
+		}
+		if why == "" {
+			got := candidate{c.f, smallestAngle(c.f.Position, c.s.Corners), c.unstable > 0}
+			if len(c.s.Corners) == 0 || got.sound() {
+				return nil
+			}
+			if best.form == nil || got.better(best) {
+				best = got
+			}
+			continue
 		}
 		if first == "" {
 			first = why + "; "
 		}
+	}
+	if best.form != nil {
+		c.f = best.form
+		if len(starts) > 1 {
+			c.say("kept the best of these")
+		}
+		return nil
 	}
 	var limit *NoEquilibriumError
 	if len(c.s.Corners) > 0 && c.o.Method == MethodAuto {
@@ -320,10 +341,9 @@ func (c *chain) fabric(ctx context.Context) error {
 	if c.o.Warm != nil && len(c.o.Warm.Position) == len(s.Position) {
 		starts = append(starts, func(context.Context) error { c.f = c.warmStart(); return nil })
 	}
-	if soundMesh(s) {
-		starts = append(starts, func(ctx context.Context) error { return c.natural(ctx, force, true) })
+	for _, n := range c.naturalStarts() {
+		starts = append(starts, func(ctx context.Context) error { return c.natural(ctx, force, n.drawn, n.even) })
 	}
-	starts = append(starts, func(ctx context.Context) error { return c.natural(ctx, force, false) })
 	if elastic {
 		// Newton's tangent is that of prescribed stress.
 		if err := starts[0](ctx); err != nil {
@@ -345,7 +365,11 @@ func (c *chain) fabric(ctx context.Context) error {
 		// The ratio could not be held everywhere. The shape of the natural
 		// updates is in balance with the stress it reports; the report says
 		// how far that is from what was asked.
-		if err := c.natural(ctx, force, soundMesh(s)); err != nil {
+		if err := c.natural(ctx, force, soundMesh(s), false); err != nil {
+			var collapsed *fdm.ReferenceError
+			if errors.As(err, &collapsed) {
+				return none
+			}
 			return err
 		}
 		for t, w := range s.Stress {
@@ -363,9 +387,31 @@ func (c *chain) fabric(ctx context.Context) error {
 	return c.finish(ctx)
 }
 
+type naturalStart struct{ drawn, even bool }
+
+// naturalStarts lists the starts by natural force densities that suit the
+// structure, the best first.
+func (c *chain) naturalStarts() []naturalStart {
+	var list []naturalStart
+	sound, equal := soundMesh(c.s), equalStress(c.s)
+	if sound && !equal {
+		list = append(list, naturalStart{drawn: true, even: true})
+	}
+	if sound {
+		list = append(list, naturalStart{drawn: true})
+	}
+	if !equal {
+		list = append(list, naturalStart{even: true})
+	}
+	return append(list, naturalStart{})
+}
+
 // natural is a fixed few updates from the nodes as drawn, or from the linear
-// step, which does not depend on them.
-func (c *chain) natural(ctx context.Context, force []float64, drawn bool) error {
+// step, which does not depend on them. Unequal warp and weft of constant
+// magnitude are in balance in their plane only by chance, and updates would slide
+// nodes until triangles collapse: with even set, their geometric mean acts both
+// ways instead, which leaves the turn to the wanted ratio to Newton.
+func (c *chain) natural(ctx context.Context, force []float64, drawn, even bool) error {
 	s := c.s
 	ref := s.Position
 	if !drawn {
@@ -377,19 +423,68 @@ func (c *chain) natural(ctx context.Context, force []float64, drawn bool) error 
 	}
 	c.stage("natural force density", "")
 	net, panels := startNetwork(s, startLoads(s))
+	if even {
+		for t, p := range panels {
+			mean := math.Sqrt(p.WarpStress * p.WeftStress)
+			panels[t].WarpStress, panels[t].WeftStress = mean, mean
+		}
+	}
 	solver, err := fdm.New(ctx, net, panels)
 	if err != nil {
 		return c.unsupported(err)
 	}
-	r, err := solver.Natural(ctx, ref, given(s, force), naturalUpdates)
-	if err != nil {
-		return c.unsupported(err)
+	var best fdm.NaturalResult
+	done, widest := 0, 0.0
+	for done < naturalUpdates {
+		r, err := solver.Natural(ctx, ref, given(s, force), 1)
+		var collapsed *fdm.ReferenceError
+		if done > 0 && errors.As(err, &collapsed) {
+			break
+		}
+		if err != nil {
+			return c.unsupported(err)
+		}
+		angle := smallestAngle(r.Position, s.Corners)
+		if done > 0 && angle < thinning && angle < widest/2 {
+			break
+		}
+		best, ref, widest = r, r.Position, max(widest, angle)
+		done++
 	}
-	c.f = naturalForm(s, r)
+	c.f = naturalForm(s, best)
 	c.used("natural force density")
-	c.say("natural force density: %d updates", naturalUpdates)
+	with := ""
+	if even {
+		with = " with the mean of warp and weft both ways"
+	}
+	c.say("natural force density%s: %d updates", with, done)
 	return nil
 }
+
+// nearCollapse is the angle of a triangle (rad) below which other starts are
+// tried for a better mesh.
+const nearCollapse = 3 * math.Pi / 180
+
+// candidate is a shape in balance that is perhaps not the last word: unstable,
+// or on a mesh close to collapse.
+type candidate struct {
+	form     *canopy.Form
+	angle    float64 // smallest, rad
+	unstable bool
+}
+
+func (a candidate) sound() bool { return !a.unstable && a.angle > nearCollapse }
+
+func (a candidate) better(b candidate) bool {
+	if a.unstable != b.unstable {
+		return b.unstable
+	}
+	return a.angle > b.angle
+}
+
+// thinning is the angle of a triangle (rad) below which updates end that have
+// halved it.
+const thinning = 8 * math.Pi / 180
 
 // given splits what members carry into forces and force densities.
 func given(s *canopy.Structure, force []float64) fdm.Given {

@@ -36,6 +36,26 @@ func soundMesh(s *canopy.Structure) bool {
 	return true
 }
 
+// smallestAngle is the smallest angle of any triangle, rad; π without triangles.
+func smallestAngle(x []r3.Vec, corners [][3]int32) float64 {
+	cot := math.Inf(-1)
+	for _, c := range corners {
+		area := 0.0
+		for k := range c {
+			p := x[c[k]]
+			u, v := r3.Sub(x[c[(k+1)%3]], p), r3.Sub(x[c[(k+2)%3]], p)
+			if k == 0 {
+				area = r3.Norm(r3.Cross(u, v))
+			}
+			if area == 0 {
+				return 0
+			}
+			cot = max(cot, r3.Dot(u, v)/area)
+		}
+	}
+	return math.Pi/2 - math.Atan(cot)
+}
+
 // network hands a structure's supports, ties and members to the force density
 // solver. Members whose force is found afterwards from balance stay in it with
 // no force.

@@ -102,11 +102,8 @@ func (c *chain) along(ctx context.Context, w way) (bool, *NoEquilibriumError, er
 // atOnce tries the ordinary starts, without relaxation and without walking.
 func (c *chain) atOnce(ctx context.Context) (bool, error) {
 	force := guessForces(c.s, c.s.Position)
-	for _, drawn := range []bool{true, false} {
-		if drawn && !soundMesh(c.s) {
-			continue
-		}
-		if err := c.natural(ctx, force, drawn); err != nil {
+	for _, n := range c.naturalStarts() {
+		if err := c.natural(ctx, force, n.drawn, n.even); err != nil {
 			if ctx.Err() != nil {
 				return false, err
 			}
