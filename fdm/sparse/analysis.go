@@ -73,13 +73,14 @@ func Analyze(ctx context.Context, n int, pairs [][2]int32, o Options) (*Analysis
 		return nil, err
 	}
 	g := newGraph(n, pairs)
-	order, chosen, err := orderGraph(ctx, g, o.Ordering)
+	mem := &pool{}
+	order, chosen, err := orderGraph(ctx, g, o.Ordering, mem)
 	if err != nil {
 		return nil, err
 	}
 	a := &Analysis{n: n, entries: len(pairs), opts: o, order: order, place: make([]int32, n)}
 	a.cost.Ordering = chosen
-	if err := a.symbolic(ctx, g); err != nil {
+	if err := a.symbolic(ctx, g, mem); err != nil {
 		return nil, err
 	}
 	a.plan = a.newPlan()
@@ -87,7 +88,7 @@ func Analyze(ctx context.Context, n int, pairs [][2]int32, o Options) (*Analysis
 	if o.MemoryBudget > 0 && a.cost.Bytes > o.MemoryBudget {
 		return nil, &BudgetError{Need: a.cost.Bytes, Budget: o.MemoryBudget}
 	}
-	if err := a.assembly(pairs); err != nil {
+	if err := a.assembly(pairs, mem); err != nil {
 		return nil, err
 	}
 	return a, nil
@@ -118,30 +119,33 @@ func invert(place, order []int32) {
 }
 
 // symbolic finds the fronts and their rows.
-func (a *Analysis) symbolic(ctx context.Context, g graph) error {
+func (a *Analysis) symbolic(ctx context.Context, g graph, mem *pool) error {
 	invert(a.place, a.order)
-	parent := eliminationTree(g, a.order, a.place)
-	post := postorder(parent)
-	renumber(parent, post)
+	parent := eliminationTree(g, a.order, a.place, mem)
+	post := postorder(parent, mem)
+	renumber(parent, post, mem)
 	for k, j := range post {
 		post[k] = a.order[j]
 	}
+	mem.put(a.order)
 	a.order = post
 	invert(a.place, a.order)
-	count := columnCounts(g, a.order, a.place, parent)
+	count := columnCounts(g, a.order, a.place, parent, mem)
 	if err := ctx.Err(); err != nil {
 		return err
 	}
-	a.joinColumns(parent, count)
-	a.frontRows(g)
+	a.joinColumns(parent, count, mem)
+	mem.put(parent, count)
+	a.frontRows(g, mem)
 	return ctx.Err()
 }
 
 // renumber rewrites parent for nodes numbered by post.
-func renumber(parent, post []int32) {
-	place := make([]int32, len(post))
+func renumber(parent, post []int32, mem *pool) {
+	place, old := mem.get(len(post)), mem.get(len(post))
+	defer mem.put(place, old)
 	invert(place, post)
-	old := slices.Clone(parent)
+	copy(old, parent)
 	for k, j := range post {
 		if p := old[j]; p != none {
 			parent[k] = place[p]
@@ -163,10 +167,10 @@ func frontCost(cols, below int32) float64 {
 // joinColumns finds the supernodes: runs of columns with one structure, and
 // relaxed ones that accept a few zeros. It renumbers the columns so that each
 // supernode is a run and the supernodes are in postorder.
-func (a *Analysis) joinColumns(parent, count []int32) {
+func (a *Analysis) joinColumns(parent, count []int32, mem *pool) {
 	n := int32(a.n)
-	var first []int32 // first column of each run
-	super := make([]int32, n)
+	first := mem.get(a.n + 1)[:0] // first column of each run
+	super := mem.get(a.n)
 	for j := range n {
 		if j == 0 || parent[j-1] != j || count[j-1] != count[j]+1 {
 			first = append(first, j)
@@ -175,14 +179,16 @@ func (a *Analysis) joinColumns(parent, count []int32) {
 	}
 	ns := int32(len(first))
 	first = append(first, n)
-	up := make([]int32, ns)
-	cols := make([]int32, ns)
-	below := make([]int32, ns)
+	size := int(ns)
+	up := mem.get(size)
+	cols := mem.get(size)
+	below := mem.get(size)
 	zeros := make([]int64, ns)
-	into := make([]int32, ns)    // itself, or the supernode it was joined into
-	child := make([]int32, ns)   // children, as chains
-	tail := make([]int32, ns)    // last child
-	sibling := make([]int32, ns) // next child of the same parent
+	into := mem.get(size)    // itself, or the supernode it was joined into
+	child := mem.get(size)   // children, as chains
+	tail := mem.get(size)    // last child
+	sibling := mem.get(size) // next child of the same parent
+	defer mem.put(first, super, up, cols, below, into, child, tail, sibling)
 	for s := range ns {
 		last := first[s+1] - 1
 		up[s] = none
@@ -268,7 +274,7 @@ func (a *Analysis) joinColumns(parent, count []int32) {
 		}
 	}
 	at := slices.Clone(a.first[:m])
-	order := make([]int32, n)
+	order := mem.get(a.n)
 	for s := range ns {
 		k := newNum[into[s]]
 		for j := first[s]; j < first[s+1]; j++ {
@@ -276,6 +282,7 @@ func (a *Analysis) joinColumns(parent, count []int32) {
 			at[k]++
 		}
 	}
+	mem.put(a.order)
 	a.order = order
 	invert(a.place, a.order)
 	a.childPtr, a.children = childLists(a.parent)
@@ -360,14 +367,12 @@ func (a *Analysis) orderFronts(tree, into, cols, below []int32) []int32 {
 }
 
 // frontRows fills rows, runs and panel.
-func (a *Analysis) frontRows(g graph) {
+func (a *Analysis) frontRows(g graph, mem *pool) {
 	m := int32(a.fronts())
 	a.rows = make([]int32, a.rowPtr[m])
 	a.panel = make([]int64, m+1)
-	stamp := make([]int32, a.n)
-	for i := range stamp {
-		stamp[i] = none
-	}
+	stamp := mem.filled(a.n, none)
+	defer mem.put(stamp)
 	for s := range m {
 		last := a.first[s+1] - 1
 		out := a.rows[a.rowPtr[s]:a.rowPtr[s]:a.rowPtr[s+1]]
@@ -443,14 +448,15 @@ func (a *Analysis) frontRows(g graph) {
 func (a *Analysis) runsOf(c int32) []run { return a.runs[a.runPtr[c]:a.runPtr[c+1]] }
 
 // assembly lists for each front where its values go.
-func (a *Analysis) assembly(pairs [][2]int32) error {
+func (a *Analysis) assembly(pairs [][2]int32, mem *pool) error {
 	m := a.fronts()
 	for s := range int32(m) {
 		if a.panel[s+1]-a.panel[s] > math.MaxInt32 {
 			return ErrTooLarge
 		}
 	}
-	super := make([]int32, a.n)
+	super := mem.get(a.n)
+	defer mem.put(super)
 	for s := range int32(m) {
 		for j := a.first[s]; j < a.first[s+1]; j++ {
 			super[j] = s

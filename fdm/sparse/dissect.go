@@ -48,8 +48,8 @@ type dissector struct {
 	region []int32 // part a node is in, by the place where the part starts; negative once numbered
 	nodes  []int32 // the order being made
 	queue  []int32
-	pts    []point // of nodes, in the same order
-	store  []point
+	pts    []point    // of nodes, in the same order
+	lend   [3][]int32 // distances while laying out; afterwards the high side while dividing, and leaf.local
 	sep    []int32
 	// How far a key changes along an edge: at most, and at most per node on
 	// average.
@@ -65,10 +65,13 @@ type dissector struct {
 	rough  bool
 }
 
-func newDissector(g graph, weight []int32) *dissector {
+func newDissector(g graph, weight []int32, mem *pool) *dissector {
 	n := g.n
-	d := &dissector{g: g, weight: weight, at: make([]point, n), region: make([]int32, n), queue: make([]int32, n), store: make([]point, n)}
-	d.leaf.local = make([]int32, n)
+	d := &dissector{g: g, weight: weight, at: make([]point, n), region: mem.get(n), queue: mem.get(n)}
+	for k := range d.lend {
+		d.lend[k] = mem.get(n)
+	}
+	d.leaf.local = d.lend[2]
 	return d
 }
 
@@ -101,9 +104,7 @@ func (d *dissector) bfs(root int32, dist []int32) []int32 {
 // s give the second coordinate likewise. On a square grid this gives multiples
 // of its diagonals, on a triangulated one its skew axes.
 func (d *dissector) layout() {
-	n := d.g.n
-	slab := make([]int32, 3*n)
-	dp, dq, dr := slab[:n], slab[n:2*n], slab[2*n:]
+	dp, dq, dr := d.lend[0], d.lend[1], d.lend[2]
 	// A node of least degree among the farthest is likely a corner (George &
 	// Liu 1979, "An implementation of a pseudoperipheral node finder").
 	farthest := func(root int32, dist []int32) (int32, int32) {
@@ -428,7 +429,8 @@ func (d *dissector) split(ctx context.Context, from, to int) {
 func (d *dissector) divide(c cut, nodes []int32, pts []point, label int32) (a, b int) {
 	reach := d.reach[c.dir]
 	cu, cv := direction[c.dir][0], direction[c.dir][1]
-	high, highPts := d.queue[:0], d.store[:0]
+	high, highU, highV := d.queue, d.lend[0], d.lend[1]
+	nh := 0
 	sep := d.sep[:0]
 	for x, p := range pts {
 		i := nodes[x]
@@ -454,12 +456,15 @@ func (d *dissector) divide(c cut, nodes []int32, pts []point, label int32) (a, b
 			nodes[a], pts[a] = i, p
 			a++
 		} else {
-			high, highPts = append(high, i), append(highPts, p)
+			high[nh], highU[nh], highV[nh] = i, p.u, p.v
+			nh++
 		}
 	}
-	copy(nodes[a:], high)
-	copy(pts[a:], highPts)
-	b = a + len(high)
+	b = a + nh
+	copy(nodes[a:], high[:nh])
+	for k := range nh {
+		pts[a+k] = point{highU[k], highV[k]}
+	}
 	au, av := direction[across[c.dir]][0], direction[across[c.dir]][1]
 	slices.SortFunc(sep, func(x, y int32) int {
 		p, q := d.at[x], d.at[y]
@@ -641,8 +646,9 @@ func (l *leafOrder) order(d *dissector, part []int32) {
 
 // dissect orders all nodes of g. If picky, it gives up on graphs whose
 // separators are not as small as those of a surface.
-func dissect(ctx context.Context, g graph, weight []int32, picky bool) ([]int32, bool) {
-	d := newDissector(g, weight)
+func dissect(ctx context.Context, g graph, weight []int32, picky bool, mem *pool) ([]int32, bool) {
+	d := newDissector(g, weight, mem)
+	defer mem.put(d.region, d.queue, d.lend[0], d.lend[1], d.lend[2])
 	const unmet = -4
 	for i := range d.region {
 		d.region[i] = unmet

@@ -6,9 +6,9 @@ package sparse
 //
 // J. W. H. Liu: The role of elimination trees in sparse factorization. SIAM J.
 // Matrix Anal. Appl. 11 (1990), 134-172.
-func eliminationTree(g graph, order, place []int32) []int32 {
-	parent := make([]int32, g.n)
-	ancestor := make([]int32, g.n)
+func eliminationTree(g graph, order, place []int32, mem *pool) []int32 {
+	parent, ancestor := mem.get(g.n), mem.get(g.n)
+	defer mem.put(ancestor)
 	for j := range int32(g.n) {
 		parent[j], ancestor[j] = none, none
 		for _, i := range g.row(order[j]) {
@@ -28,13 +28,10 @@ func eliminationTree(g graph, order, place []int32) []int32 {
 
 // postorder returns the nodes of a forest with children before parents and
 // each subtree contiguous; children keep their order.
-func postorder(parent []int32) []int32 {
+func postorder(parent []int32, mem *pool) []int32 {
 	n := len(parent)
-	child := make([]int32, n)
-	sibling := make([]int32, n)
-	for i := range child {
-		child[i] = none
-	}
+	child, sibling := mem.filled(n, none), mem.get(n)
+	defer mem.put(child, sibling)
 	roots := none
 	for i := int32(n) - 1; i >= 0; i-- {
 		if p := parent[i]; p != none {
@@ -76,15 +73,16 @@ func postorder(parent []int32) []int32 {
 // J. R. Gilbert, E. G. Ng & B. W. Peyton: An efficient algorithm to compute row
 // and column counts for sparse Cholesky factorization. SIAM J. Matrix Anal.
 // Appl. 15 (1994), 1075-1091.
-func columnCounts(g graph, order, place, parent []int32) []int32 {
+func columnCounts(g graph, order, place, parent []int32, mem *pool) []int32 {
 	n := int32(g.n)
-	count := make([]int32, n)
-	first := make([]int32, n) // least descendant
-	reach := make([]int32, n) // greatest first descendant met so far in a row's subtree
-	leaf := make([]int32, n)  // last leaf met in a row's subtree
-	set := make([]int32, n)   // disjoint sets towards the tree's ancestors
+	size := int(n)
+	count := mem.filled(size, 0)
+	first := mem.filled(size, none) // least descendant
+	reach := mem.filled(size, none) // greatest first descendant met so far in a row's subtree
+	leaf := mem.filled(size, none)  // last leaf met in a row's subtree
+	set := mem.get(size)            // disjoint sets towards the tree's ancestors
+	defer mem.put(first, reach, leaf, set)
 	for j := range n {
-		first[j], reach[j], leaf[j] = none, none, none
 		set[j] = j
 	}
 	for j := range n {
