@@ -295,12 +295,39 @@ func TestEverySampleForms(t *testing.T) {
 }
 
 func TestHelpShowsARealExampleForEveryCommand(t *testing.T) {
-	for _, c := range []string{"form", "check", "export", "sample", "schema", "version"} {
+	for _, c := range []string{"form", "check", "export", "compare", "sample", "schema", "version"} {
 		r := run(t, "", c, "--help")
 		require.Equal(t, exitFine, r.code)
 		require.Contains(t, r.out, "anticlast "+c, c)
 	}
 	require.Contains(t, run(t, "", "--help").out, "preliminary design")
+}
+
+func TestCompareSaysWhatChanged(t *testing.T) {
+	dir := t.TempDir()
+	m := write(t, dir, "sail.yaml", small)
+	a, b := filepath.Join(dir, "a"), filepath.Join(dir, "b")
+	require.Equal(t, exitFine, run(t, "", "form", m, "-o", a).code)
+	require.Equal(t, exitFine, run(t, "", "form", m, "-o", b, "--set", "points.A.z=5").code)
+	r := run(t, "", "compare", a, b, "--glb", filepath.Join(dir, "both.glb"), "--report", filepath.Join(dir, "both.html"))
+	require.Equal(t, exitFine, r.code, r.err)
+	require.Contains(t, r.out, "highest point")
+	require.Contains(t, r.out, "preliminary design")
+	require.FileExists(t, filepath.Join(dir, "both.glb"))
+	require.FileExists(t, filepath.Join(dir, "both.html"))
+	j := run(t, "", "compare", a, b, "--json")
+	var got struct {
+		Rows []struct {
+			Group string
+			A, B  *float64
+		}
+	}
+	require.NoError(t, json.Unmarshal([]byte(j.out), &got))
+	require.Equal(t, "highest point", got.Rows[0].Group)
+	require.InDelta(t, 4, *got.Rows[0].A, 1e-9)
+	require.InDelta(t, 5, *got.Rows[0].B, 1e-9)
+	require.Equal(t, exitBadInput, run(t, "", "compare", a).code)
+	require.Equal(t, exitBadInput, run(t, "", "compare", a, filepath.Join(dir, "none")).code)
 }
 
 func TestExitCodesOfTheBuiltProgram(t *testing.T) {

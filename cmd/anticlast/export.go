@@ -20,6 +20,9 @@ type exportFlags struct {
 	out   string
 	list  bool
 	force bool
+	// how a format is written
+	ground bool
+	width  int
 }
 
 func (a *app) exportCommand() *cobra.Command {
@@ -57,6 +60,8 @@ form.json. Several formats go into the folder that -o names.
 	fl.StringVarP(&f.out, "out", "o", "", "file, folder, or - for standard output")
 	fl.BoolVar(&f.list, "list", false, "list the formats and what each is for")
 	fl.BoolVar(&f.force, "force", false, "replace a folder this program did not write (it is kept under another name)")
+	fl.BoolVar(&f.ground, "ground", false, "GLB: add a ground plane and a levelling staff banded in metres")
+	fl.IntVar(&f.width, "picture-width", 0, "PNG: `PIXELS` across (default 1600)")
 	_ = c.RegisterFlagCompletionFunc("to", func(*cobra.Command, []string, string) ([]string, cobra.ShellCompDirective) {
 		var names []string
 		for _, f := range export.Formats() {
@@ -112,7 +117,10 @@ func (a *app) export(ctx context.Context, path string, f exportFlags) error {
 	if err != nil {
 		return err
 	}
-	o := export.Options{Force: f.force}
+	if f.width < 0 || f.width > 20000 {
+		return usageError{fmt.Errorf("a picture %d pixels across cannot be made; give 100 to 20000", f.width)}
+	}
+	o := export.Options{Force: f.force, Ground: f.ground, PictureWidth: f.width}
 	var wrote []string
 	switch {
 	case len(formats) > 1:
