@@ -201,9 +201,16 @@ func measure(net *net, n int, name string, reps int, o sparse.Options, kind spar
 	return r, nil
 }
 
-// residual is ‖b−Ax‖∞/‖b‖∞ and ‖b−Ax‖∞/(‖A‖∞‖x‖∞+‖b‖∞).
+// residual is ‖b−Ax‖∞/‖b‖∞ and ‖b−Ax‖∞/(‖A‖∞‖x‖∞+‖b‖∞). It overwrites b.
 func (t *net) residual(values, x, b []float64) (resid, backward float64) {
-	res := slices.Clone(b)
+	top := func(v []float64) (m float64) {
+		for _, a := range v {
+			m = max(m, math.Abs(a))
+		}
+		return m
+	}
+	nb := top(b)
+	res := b
 	norm := make([]float64, t.n)
 	for i := range t.n {
 		norm[i] = math.Abs(values[i])
@@ -221,12 +228,6 @@ func (t *net) residual(values, x, b []float64) (resid, backward float64) {
 			res[3*j+r] -= v * x[3*i+r]
 		}
 	}
-	top := func(v []float64) (m float64) {
-		for _, a := range v {
-			m = max(m, math.Abs(a))
-		}
-		return m
-	}
-	nr, nb := top(res), top(b)
+	nr := top(res)
 	return nr / nb, nr / (top(norm)*top(x) + nb)
 }
