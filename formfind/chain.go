@@ -384,7 +384,10 @@ func (c *chain) fabric(ctx context.Context) error {
 	if c.o.surface {
 		return nil
 	}
-	return c.finish(ctx)
+	if err := c.finish(ctx); err != nil || equal || c.o.eased {
+		return err
+	}
+	return c.ease(ctx)
 }
 
 type naturalStart struct{ drawn, even bool }
@@ -463,7 +466,7 @@ func (c *chain) natural(ctx context.Context, force []float64, drawn, even bool) 
 
 // nearCollapse is the angle of a triangle (rad) below which other starts are
 // tried for a better mesh.
-const nearCollapse = 3 * math.Pi / 180
+const nearCollapse = 5 * math.Pi / 180
 
 // candidate is a shape in balance that is perhaps not the last word: unstable,
 // or on a mesh close to collapse.

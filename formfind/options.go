@@ -53,6 +53,7 @@ type Options struct {
 
 	below   *canopy.Form // the surface found on the mesh half as fine
 	level   string       // which of several levels this is
+	eased   bool         // the ratio of warp to weft has been eased
 	surface bool         // leave out the pass that balances in all directions
 }
 
