@@ -18,6 +18,14 @@ import (
 // Find meshes the model, solves it and holds its limits against what was
 // found. See the package comment for errors.
 func Find(ctx context.Context, m *canopy.Model, o Options) (*canopy.Result, error) {
+	if mesh.HasEqualMesh(m) {
+		s, warm, err := layEqualMesh(ctx, m, o)
+		if err != nil {
+			return nil, err
+		}
+		o.Warm = warm
+		return solve(ctx, s, m, o)
+	}
 	s, err := mesh.Build(ctx, m)
 	if err != nil {
 		return nil, err
