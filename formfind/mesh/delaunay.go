@@ -70,6 +70,9 @@ func (d *delaunay) locate(q xy, from int32, stop bool) (t int32, side int, block
 			break
 		}
 		prev, t = t, next
+		if step == 2*len(d.v)+7 {
+			t = d.search(q) // no walk is that long
+		}
 	}
 	zero := 0
 	for i := range 3 {
@@ -82,6 +85,16 @@ func (d *delaunay) locate(q xy, from int32, stop bool) (t int32, side int, block
 		return t, 3, false
 	}
 	return t, side, false
+}
+
+// search looks for q in every triangle.
+func (d *delaunay) search(q xy) int32 {
+	for t, v := range d.v {
+		if orient(d.p[v[0]], d.p[v[1]], q) >= 0 && orient(d.p[v[1]], d.p[v[2]], q) >= 0 && orient(d.p[v[2]], d.p[v[0]], q) >= 0 {
+			return int32(t)
+		}
+	}
+	return 0
 }
 
 // insert adds q, which locate has found in t on side, and returns its number.
@@ -355,19 +368,22 @@ func (d *delaunay) mark(t int32, side int) {
 
 // settle flips until every side that is not held is Delaunay.
 func (d *delaunay) settle() {
-	for changed := true; changed; {
-		changed = false
-		for t := range d.v {
+	for t := range d.v {
+		d.todo = append(d.todo[:0], int32(t))
+		for len(d.todo) > 0 {
+			t := d.todo[len(d.todo)-1]
+			d.todo = d.todo[:len(d.todo)-1]
 			for i := range 3 {
 				o := d.n[t][i]
-				if o < int32(t) || d.held[t][i] {
+				if o < 0 || d.held[t][i] {
 					continue
 				}
 				q, a, b := d.v[t][i], d.v[t][(i+1)%3], d.v[t][(i+2)%3]
 				e := d.v[o][d.sideTo(o, a, b)]
 				if inCircle(d.p[q], d.p[a], d.p[b], d.p[e]) > 0 {
-					d.flip(int32(t), i)
-					changed = true
+					d.flip(t, i)
+					d.todo = append(d.todo, t, o)
+					break
 				}
 			}
 		}

@@ -15,8 +15,8 @@ import (
 // make it zero or nearly so, near the origin and far from it.
 func TestPredicatesAreExact(t *testing.T) {
 	rapid.Check(t, func(rt *rapid.T) {
-		far := rapid.SampledFrom([]float64{0, 1, 1e7, 1e12}).Draw(rt, "far")
-		grid := rapid.SampledFrom([]float64{1, 0.1, 1.0 / 3, 1e-9}).Draw(rt, "grid")
+		far := rapid.SampledFrom([]float64{0, 1, 1e7, 1e12, 1e60}).Draw(rt, "far")
+		grid := rapid.SampledFrom([]float64{1, 0.1, 1.0 / 3, 1e-9, 1e-90, 1e-200}).Draw(rt, "grid")
 		point := func(name string) xy {
 			v := func(d string) float64 { return far + grid*float64(rapid.IntRange(-4, 4).Draw(rt, name+d)) }
 			p := xy{v("x"), v("y")}
@@ -29,6 +29,10 @@ func TestPredicatesAreExact(t *testing.T) {
 		require.Equal(t, exactOrient(a, b, c), sign(orient(a, b, c)))
 		require.Equal(t, -exactOrient(a, b, c), sign(orient(b, a, c)))
 		require.Equal(t, exactInCircle(a, b, c, d), sign(inCircle(a, b, c, d)))
+		if expandable(a, b, c, d) {
+			require.Equal(t, exactOrient(a, b, c), expandedOrient(a, b, c))
+			require.Equal(t, exactInCircle(a, b, c, d), expandedInCircle(a, b, c, d))
+		}
 		// The exact value once more, by the 4×4 determinant of Guibas and
 		// Stolfi (1985) in rational numbers.
 		require.Equal(t, lifted(a, b, c, d), exactInCircle(a, b, c, d))
@@ -44,6 +48,7 @@ func TestPredicatesOnRoundedLinesAndCircles(t *testing.T) {
 		a, b, s := xy{v(), v()}, xy{v(), v()}, 4*rnd.Float64()-2
 		c := xy{a.x + s*(b.x-a.x), a.y + s*(b.y-a.y)}
 		require.Equal(t, exactOrient(a, b, c), sign(orient(a, b, c)))
+		require.Equal(t, exactOrient(a, b, c), expandedOrient(a, b, c))
 		o, r := xy{v(), v()}, 100*rnd.Float64()
 		on := func() xy {
 			sin, cos := math.Sincos(7 * rnd.Float64())
@@ -51,6 +56,7 @@ func TestPredicatesOnRoundedLinesAndCircles(t *testing.T) {
 		}
 		p, q, u, w := on(), on(), on(), on()
 		require.Equal(t, exactInCircle(p, q, u, w), sign(inCircle(p, q, u, w)))
+		require.Equal(t, exactInCircle(p, q, u, w), expandedInCircle(p, q, u, w))
 	}
 }
 

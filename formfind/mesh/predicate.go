@@ -11,23 +11,40 @@ type xy struct{ x, y float64 }
 // Half of the spacing of float64 numbers at 1.
 const unit = 0x1p-53
 
-// Error bounds of the two predicates below relative to the sum of the sizes of
-// their products, in the manner of Shewchuk (Adaptive Precision Floating-Point
-// Arithmetic and Fast Robust Geometric Predicates, 1997). Each subtraction of
-// coordinates, product and sum has a relative error of at most ε = 2⁻⁵³.
+// Error bounds of the two predicates below, in the manner of Shewchuk (Adaptive
+// Precision Floating-Point Arithmetic and Fast Robust Geometric Predicates, 1997).
+// Each difference, product and sum is rounded with a relative error of at most
+// ε = 2⁻⁵³; hats mark what is computed, so that x̂ = x(1+δ), |δ| ≤ ε.
 //
-// orient: det = a·b − c·d with a…d differences of coordinates. Each product is
-// of two rounded factors and is rounded itself, (1+ε)³; the last difference
-// rounds once more: |error| ≤ ((1+ε)⁴ − 1)(|ab| + |cd|) < (4ε + 7ε²)(…), and
-// the sum of the sizes is itself computed with (1+ε)⁴: 4.1ε would do, 8ε is
-// used.
+// orient: det = l − r with l = (ax−cx)(by−cy) and r alike. A product is of two
+// rounded differences and is rounded itself: l̂ = l(1+δ)³, and so
+// |l| ≤ |l̂|/(1−ε)³. Therefore
 //
-// inCircle: each of three terms is a lifted length (a sum of two squares,
-// (1+ε)⁴) times a 2×2 determinant (1+ε)⁴, rounded, and two more sums: fewer
-// than 12 roundings in a row, and as many in the bound: 24ε is used.
+//	|l̂ − r̂ − det| ≤ ((1+ε)³ − 1)(|l| + |r|) ≤ (3ε + 7ε²)(|l̂| + |r̂|);
+//
+// the last difference adds ε·|l̂ − r̂| ≤ ε(|l̂| + |r̂|), and the sum of sizes is
+// computed with one rounding: (4ε + 12ε²)(1+ε)² < 4.01ε bounds the error
+// relative to what is computed. 6ε is used.
+//
+// inCircle: det = Σ lift·minor over three terms.
+//
+//	lift = x² + y²: (1+δ)³ for each square of a difference and one for the sum: (1+δ)⁴
+//	minor = s − t:  (1+δ)³ for each product, one for the difference, relative to
+//	                |s| + |t|: (1+δ)⁴
+//	term:           (1+δ)⁹ with the product
+//	sum of three:   two more at most: (1+δ)¹¹
+//
+// all relative to size = Σ lift(|s| + |t|), which is computed with as many
+// roundings, all of positive numbers: |error| ≤ ((1+ε)¹¹ − 1)·size ≤
+// ((1+ε)¹¹ − 1)/(1−ε)¹¹·sizê < 11.01ε·sizê. 16ε is used.
+//
+// All this holds while nothing underflows: a product below 2⁻¹⁰²² has an
+// absolute error of up to 2⁻¹⁰⁷⁵, times a lifted length or not. tiny covers it
+// for coordinates up to 10⁵⁰.
 const (
-	orientBound   = 8 * unit
-	inCircleBound = 24 * unit
+	orientBound   = 6 * unit
+	inCircleBound = 16 * unit
+	tiny          = 0x1p-500
 )
 
 // orient is positive when a, b, c turn counter-clockwise, negative when
@@ -36,8 +53,11 @@ func orient(a, b, c xy) float64 {
 	l := float64((a.x - c.x) * (b.y - c.y))
 	r := float64((a.y - c.y) * (b.x - c.x))
 	det := l - r
-	if bound := orientBound * (math.Abs(l) + math.Abs(r)); det > bound || -det > bound {
+	if bound := orientBound*(math.Abs(l)+math.Abs(r)) + tiny; det > bound || -det > bound {
 		return det
+	}
+	if expandable(a, b, c) {
+		return float64(expandedOrient(a, b, c))
 	}
 	return float64(exactOrient(a, b, c))
 }
@@ -56,11 +76,17 @@ func inCircle(a, b, c, d xy) float64 {
 	cl := float64(cdx*cdx) + float64(cdy*cdy)
 	det := float64(al*(bc-cb)) + float64(bl*(ca-ac)) + float64(cl*(ab-ba))
 	size := float64(al*(math.Abs(bc)+math.Abs(cb))) + float64(bl*(math.Abs(ca)+math.Abs(ac))) + float64(cl*(math.Abs(ab)+math.Abs(ba)))
-	if bound := inCircleBound * size; det > bound || -det > bound {
+	if bound := inCircleBound*size + tiny; det > bound || -det > bound {
 		return det
+	}
+	if expandable(a, b, c, d) {
+		return float64(expandedInCircle(a, b, c, d))
 	}
 	return float64(exactInCircle(a, b, c, d))
 }
+
+// The same with rational numbers of any size, for coordinates out of the range of
+// expansions.
 
 func rat(v float64) *big.Rat { return new(big.Rat).SetFloat64(v) }
 

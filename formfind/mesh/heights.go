@@ -1,0 +1,113 @@
+package mesh
+
+import "math"
+
+// heights returns the height over the plane of every point of r. Between rims
+// alone they follow from mean value coordinates (Floater 2003; Hormann and
+// Floater 2006), with lines and points inside, or very many points, each inner
+// height is the mean of its neighbours'.
+func (f *flat) heights(r *refinement) []float64 {
+	h := make([]float64, len(r.d.p))
+	copy(h[3:], f.h)
+	inner := len(r.d.p) - r.rim
+	if len(f.chains)+len(f.points) > 0 || inner*len(f.p) > 2e8 {
+		r.relaxHeights(h)
+		return h
+	}
+	for i := r.rim; i < len(r.d.p); i++ {
+		h[i] = f.meanValue(r.d.p[i])
+	}
+	return h
+}
+
+// relaxHeights makes each height from r.rim on the mean of its neighbours', by
+// conjugate gradients.
+func (r *refinement) relaxHeights(h []float64) {
+	n := len(h) - r.rim
+	if n == 0 {
+		return
+	}
+	start := make([]int32, n+1)
+	var near []int32
+	for i := range n {
+		if p := int32(r.rim + i); r.used[p] {
+			r.d.around(p, func(_, q, _ int32) { near = append(near, q) })
+		}
+		start[i+1] = int32(len(near))
+	}
+	apply := func(out, x []float64) (dot float64) {
+		for i := range n {
+			s := float64(start[i+1]-start[i]) * x[i]
+			for _, q := range near[start[i]:start[i+1]] {
+				if int(q) >= r.rim {
+					s -= x[int(q)-r.rim]
+				}
+			}
+			out[i] = s
+			dot += s * x[i]
+		}
+		return dot
+	}
+	x, res, dir, tmp := h[r.rim:], make([]float64, n), make([]float64, n), make([]float64, n)
+	rr := 0.0
+	for i := range n {
+		for _, q := range near[start[i]:start[i+1]] {
+			if int(q) < r.rim {
+				res[i] += h[q]
+			}
+		}
+		dir[i] = res[i]
+		rr += res[i] * res[i]
+	}
+	for first, step := rr, 0; step < 20*int(math.Sqrt(float64(n)))+50 && rr > 1e-16*first; step++ {
+		alpha := rr / apply(tmp, dir)
+		next := 0.0
+		for i := range n {
+			x[i] += alpha * dir[i]
+			res[i] -= alpha * tmp[i]
+			next += res[i] * res[i]
+		}
+		for i := range n {
+			dir[i] = res[i] + next/rr*dir[i]
+		}
+		rr = next
+	}
+}
+
+// meanValue returns the height over q.
+func (f *flat) meanValue(q xy) float64 {
+	var sum, h float64
+	for _, rim := range f.rims {
+		n := len(rim)
+		at := func(k int) (float64, float64, float64) {
+			p := f.p[rim[k%n]]
+			x, y := p.x-q.x, p.y-q.y
+			return x, y, math.Hypot(x, y)
+		}
+		x0, y0, r0 := at(n - 1)
+		x1, y1, r1 := at(0)
+		t0 := halfTan(x0, y0, r0, x1, y1, r1)
+		for k := range n {
+			x2, y2, r2 := at(k + 1)
+			if r1 == 0 {
+				return f.h[rim[k]]
+			}
+			t1 := halfTan(x1, y1, r1, x2, y2, r2)
+			w := (t0 + t1) / r1
+			sum += w
+			h += w * f.h[rim[k]]
+			x1, y1, r1, t0 = x2, y2, r2, t1
+		}
+	}
+	return h / sum
+}
+
+// halfTan returns the tangent of half the signed angle from one vector to
+// another, given with their lengths.
+func halfTan(x0, y0, r0, x1, y1, r1 float64) float64 {
+	cross, dot := x0*y1-y0*x1, x0*x1+y0*y1
+	if cross == 0 {
+		return 0
+	}
+	return (r0*r1 - dot) / cross
+}
