@@ -2,6 +2,7 @@ package export
 
 import (
 	"bufio"
+	"cmp"
 	"context"
 	"errors"
 	"fmt"
@@ -9,8 +10,10 @@ import (
 	"io/fs"
 	"os"
 	"path/filepath"
+	"runtime"
 	"slices"
 	"strings"
+	"sync"
 
 	"anticlast/formfind/canopy"
 )
@@ -39,16 +42,37 @@ func Folder(ctx context.Context, dir string, r *canopy.Result, names []string, o
 		if err != nil {
 			return err
 		}
-		formats = append(formats, f)
+		if !slices.ContainsFunc(formats, func(g Format) bool { return g.Name == f.Name }) {
+			formats = append(formats, f)
+		}
 	}
 	return swapIn(dir, o, func(create func(name string, write func(io.Writer) error) error) error {
-		for _, f := range formats {
-			err := create(f.File, func(w io.Writer) error { return f.Write(ctx, w, r, o) })
-			if err != nil {
+		// The files are written side by side; which error is told does not
+		// depend on which comes first.
+		ctx, stop := context.WithCancel(ctx)
+		defer stop()
+		errs := make([]error, len(formats))
+		var all sync.WaitGroup
+		places := make(chan struct{}, max(1, runtime.GOMAXPROCS(0)))
+		for i, f := range formats {
+			places <- struct{}{}
+			all.Go(func() {
+				defer func() { <-places }()
+				errs[i] = create(f.File, func(w io.Writer) error { return f.Write(ctx, w, r, o) })
+				if errs[i] != nil {
+					stop()
+				}
+			})
+		}
+		all.Wait()
+		var canceled error
+		for _, err := range errs {
+			if err != nil && !errors.Is(err, context.Canceled) {
 				return err
 			}
+			canceled = cmp.Or(canceled, err)
 		}
-		return nil
+		return canceled
 	})
 }
 
@@ -144,13 +168,16 @@ func swapIn(dir string, o Options, fill func(create func(name string, write func
 		return fail(err)
 	}
 	defer os.RemoveAll(tmp) // nothing is left of it when all went well
-	names := []string{}
+	var names []string
+	var lock sync.Mutex
 	err = fill(func(name string, write func(io.Writer) error) error {
 		f, err := os.Create(filepath.Join(tmp, name))
 		if err != nil {
 			return err
 		}
+		lock.Lock()
 		names = append(names, name)
+		lock.Unlock()
 		if err := writeBuffered(f, write); err != nil {
 			return fmt.Errorf("%s: %w", name, err)
 		}
@@ -159,6 +186,7 @@ func swapIn(dir string, o Options, fill func(create func(name string, write func
 	if err != nil {
 		return fail(err)
 	}
+	slices.Sort(names)
 	list := markerHead + "\n" + strings.Join(names, "\n") + "\n"
 	if err := os.WriteFile(filepath.Join(tmp, marker), []byte(list), 0o666); err != nil {
 		return fail(err)

@@ -31,7 +31,7 @@ func files(t *testing.T, dir string) []string {
 
 func TestFolderHoldsOneRunOnly(t *testing.T) {
 	dir := filepath.Join(t.TempDir(), "deep", "sail")
-	require.NoError(t, Folder(background, dir, sail(3), []string{"json", "nodes", "summary"}, Options{}))
+	require.NoError(t, Folder(background, dir, sail(3), []string{"json", "nodes", "summary", "form.json"}, Options{}))
 	require.Equal(t, []string{marker, "form.json", "nodes.csv", "summary.txt"}, files(t, dir))
 	require.NoError(t, Folder(background, dir, sail(3), []string{"members"}, Options{}))
 	require.Equal(t, []string{marker, "members.csv"}, files(t, dir))

@@ -141,19 +141,17 @@ func (g *scene) loose(name string, list []int32, material int) (int, bool) {
 		}
 		return g.solid(name, &m, material)
 	}
-	vertex := make(map[int32]int32)
+	vertex := make([]int32, len(f.Position)) // 0 = none yet
 	var position []r3.Vec
 	pairs := make([][2]int32, 0, len(list))
 	for _, i := range list {
 		var pair [2]int32
 		for k, v := range s.Ends[i] {
-			at, ok := vertex[v]
-			if !ok {
-				at = int32(len(position))
-				vertex[v] = at
+			if vertex[v] == 0 {
 				position = append(position, f.Position[v])
+				vertex[v] = int32(len(position))
 			}
-			pair[k] = at
+			pair[k] = vertex[v] - 1
 		}
 		pairs = append(pairs, pair)
 	}
