@@ -139,21 +139,21 @@ func (d *drawn) boundaries() {
 	}
 }
 
-// outline is a closed boundary as a chain of places.
-type outline struct {
+// contour is a closed boundary as a chain of places.
+type contour struct {
 	at   []r3.Vec
 	edge []int // position in the boundary of the edge that starts at at[i]
 }
 
 // loop checks that the edges form one closed loop and returns it.
-func (d *drawn) loop(refs []ref, edges []int, what string) (outline, bool) {
+func (d *drawn) loop(refs []ref, edges []int, what string) (contour, bool) {
 	ends := func(i int) [2]string { return [2]string{d.m.Edges[i].From, d.m.Edges[i].To} }
 	if len(edges) == 2 {
 		// walk turns the first edge either way and both may do.
 		a, b := ends(edges[0]), ends(edges[1])
 		if !(a == b || a == [2]string{b[1], b[0]}) {
 			d.r.fail(refs[1].n, refs[1].p, fmt.Sprintf("the boundary of %s is not closed: edges %q and %q do not have both ends in common", what, refs[0].name, refs[1].name), "a boundary of two edges runs there and back")
-			return outline{}, false
+			return contour{}, false
 		}
 	}
 	nodes, broken := walk(ends, edges)
@@ -167,22 +167,22 @@ func (d *drawn) loop(refs []ref, edges []int, what string) (outline, bool) {
 			hint = fmt.Sprintf("in this order they do: [%s]", joinComma(names))
 		}
 		d.r.fail(refs[broken].n, refs[broken].p, fmt.Sprintf("the boundary of %s breaks: edge %q does not start or end at point %q, where it has got to along %q", what, refs[broken].name, nodes[len(nodes)-1], refs[broken-1].name), hint)
-		return outline{}, false
+		return contour{}, false
 	}
 	last := len(refs) - 1
 	if nodes[0] != nodes[len(nodes)-1] {
 		d.r.fail(refs[last].n, refs[last].p, fmt.Sprintf("the boundary of %s is not closed: it starts at point %q and ends at %q", what, nodes[0], nodes[len(nodes)-1]), fmt.Sprintf("add the edge from %q to %q", nodes[len(nodes)-1], nodes[0]))
-		return outline{}, false
+		return contour{}, false
 	}
 	seen := map[string]bool{}
 	for i, n := range nodes[:len(nodes)-1] {
 		if seen[n] {
 			d.r.fail(refs[i].n, refs[i].p, fmt.Sprintf("the boundary of %s passes point %q twice", what, n), "split it into two fabrics")
-			return outline{}, false
+			return contour{}, false
 		}
 		seen[n] = true
 	}
-	var o outline
+	var o contour
 	for k, i := range edges {
 		e := d.m.Edges[i]
 		a, b := d.m.Points[d.point[nodes[k]]].At, d.m.Points[d.point[nodes[k+1]]].At
@@ -278,7 +278,7 @@ const maxPairs = 50e6
 // crossings finds edges of a boundary that cross or touch each other, seen in
 // plan, or in the plane of a boundary that stands upright. Edges that pass
 // each other far above one another, as in a steep twisted panel, do not cross.
-func (d *drawn) crossings(refs []ref, edges []int, o outline, what string) bool {
+func (d *drawn) crossings(refs []ref, edges []int, o contour, what string) bool {
 	p := project(o.at)
 	n := len(p.xy)
 	if d.pairs += n * n; d.pairs > maxPairs {
@@ -423,7 +423,7 @@ func (p *plane) foldsBack(i, i1, j, j1 int) bool {
 }
 
 // ringInside checks that the ring of fabric k fits into its boundary.
-func (d *drawn) ringInside(k int, o outline, what string) {
+func (d *drawn) ringInside(k int, o contour, what string) {
 	i, ok := d.ring[d.m.Fabrics[k].Ring]
 	if !ok {
 		return

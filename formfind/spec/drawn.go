@@ -31,6 +31,7 @@ type drawn struct {
 	lineRefs                 []insideRef // edges inside fabrics
 	insideRefs               []insideRef // points inside fabrics
 	pointsKey                *yaml.Node
+	traced                   *traced // what an outline gave
 }
 
 // decode reads the root mapping.
@@ -53,7 +54,7 @@ func (r *reader) decode(root *yaml.Node) *canopy.Model {
 	r.limits(f, m)
 	r.factors(f, m)
 	if f.has("listed") {
-		for _, k := range []string{"points", "edges", "cables", "fabrics", "nets", "rings", "masts", "guys", "mesh"} {
+		for _, k := range []string{"points", "edges", "cables", "fabrics", "nets", "rings", "masts", "guys", "mesh", "outline"} {
 			if f.has(k) {
 				r.fail(f.keyNode(k), f.p.down(k), fmt.Sprintf("%q does not go with \"listed\"", k), "a model is either drawn or listed; remove one of them")
 			}
@@ -64,14 +65,27 @@ func (r *reader) decode(root *yaml.Node) *canopy.Model {
 		}
 		return m
 	}
-	if !f.has("points") {
+	var drawing *fields
+	if f.has("outline") {
+		n, p := f.get("outline"), f.p.down("outline")
+		if r.mapping(n, p, outlineSection) == nil {
+			return m
+		}
+		drawing = r.section(n, outlineSection, p)
+		if isMesh(drawing.text("file")) {
+			r.outlineMesh(f, drawing, m)
+			return m
+		}
+	}
+	if !f.has("points") && !f.has("outline") {
 		if len(f.got) > 0 || !r.diags.failed() {
-			r.fail(n, nil, "the model has neither \"points\" nor \"listed\"", "for example points: "+modelExample("points"))
+			r.fail(n, nil, "the model has neither \"points\" nor \"outline\" nor \"listed\"", "for example points: "+modelExample("points"))
 		}
 		return m
 	}
-	d := &drawn{r: r, m: m, stay: map[string]int{}, pointsKey: f.keyNode("points")}
+	d := &drawn{r: r, m: m, edge: map[string]int{}, cable: map[string]int{}, stay: map[string]int{}, pointsKey: f.keyNode("points")}
 	d.points(f)
+	d.outline(drawing)
 	d.edges(f)
 	d.cables(f)
 	d.rings(f)
@@ -212,8 +226,6 @@ func (d *drawn) ends(g *fields, what, a, b string) (from, to string, good bool) 
 
 func (d *drawn) edges(f *fields) {
 	entries := f.named("edges")
-	d.edge = make(map[string]int, len(entries))
-	d.cable = map[string]int{}
 	for _, e := range entries {
 		p := f.p.down("edges").down(e.name)
 		if d.r.mapping(e.n, p, edgeSection) == nil {
@@ -574,19 +586,7 @@ func (d *drawn) stays(f *fields, key string, sec *section, mast bool) {
 		label := fmt.Sprintf("%s %q", sec.id, e.name)
 		s := canopy.Stay{Name: e.name, Mast: mast, Line: line(e.kn)}
 		s.From, s.To, _ = d.ends(g, label, a, b)
-		rules := g.present([]string{"force", "length", "unstressed"})
-		if len(rules) > 1 {
-			d.r.fail(g.keyNode(rules[1]), p.down(rules[1]), fmt.Sprintf("the force of %s is decided twice, by %s", label, list(rules, "and")), "keep one of them")
-		}
-		s.Force, s.HasForce = g.quantity("force")
-		s.Length = g.number("length")
-		s.Unstressed = g.number("unstressed")
-		s.Stiffness = g.number("stiffness")
-		s.Weight = g.number("weight")
-		s.Strength = g.number("strength")
-		if g.has("unstressed") && !g.has("stiffness") {
-			d.r.fail(g.keyNode("unstressed"), p.down("unstressed"), fmt.Sprintf("%s has an unstressed length but no stiffness", label), "add stiffness, for example stiffness: 90 MN")
-		}
+		d.stayKeys(g, &s, label)
 		if i, twice := d.stay[e.name]; twice {
 			d.r.fail(e.kn, p, fmt.Sprintf("there are two masts or guys called %q", e.name), fmt.Sprintf("the other is in line %d; give one of them another name", d.stayAt[i].n.Line))
 		} else {
@@ -594,6 +594,23 @@ func (d *drawn) stays(f *fields, key string, sec *section, mast bool) {
 		}
 		d.m.Stays = append(d.m.Stays, s)
 		d.stayAt = append(d.stayAt, ref{e.name, e.kn, p})
+	}
+}
+
+// stayKeys reads what decides the force of a mast or guy.
+func (d *drawn) stayKeys(g *fields, s *canopy.Stay, label string) {
+	rules := g.present([]string{"force", "length", "unstressed"})
+	if len(rules) > 1 {
+		d.r.fail(g.keyNode(rules[1]), g.p.down(rules[1]), fmt.Sprintf("the force of %s is decided twice, by %s", label, list(rules, "and")), "keep one of them")
+	}
+	s.Force, s.HasForce = g.quantity("force")
+	s.Length = g.number("length")
+	s.Unstressed = g.number("unstressed")
+	s.Stiffness = g.number("stiffness")
+	s.Weight = g.number("weight")
+	s.Strength = g.number("strength")
+	if g.has("unstressed") && !g.has("stiffness") {
+		d.r.fail(g.keyNode("unstressed"), g.p.down("unstressed"), fmt.Sprintf("%s has an unstressed length but no stiffness", label), "add stiffness, for example stiffness: 90 MN")
 	}
 }
 
@@ -640,6 +657,7 @@ func (r *reader) material(g *fields, fab *canopy.Fabric) {
 }
 
 func (d *drawn) fabrics(f *fields) {
+	d.outlineFabrics()
 	for _, e := range f.named("fabrics") {
 		p := f.p.down("fabrics").down(e.name)
 		if d.r.mapping(e.n, p, fabricSection) == nil {

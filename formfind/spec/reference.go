@@ -89,6 +89,8 @@ func (s *shape) describe() string {
 		return "[x, y, z], bare numbers"
 	case formRange:
 		return "[least, greatest], each a " + s.dim.Name + s.boundText()
+	case formPair:
+		return "[x, y], each a " + s.dim.Name
 	case formRegion:
 		return "list of [x, y]"
 	case formSection:

@@ -69,6 +69,7 @@ func makeSchema() ([]byte, error) {
 	root = append(root, member{"anyOf", []object{
 		{{"required", []string{"points"}}},
 		{{"required", []string{"listed"}}},
+		{{"required", []string{"outline"}}},
 	}})
 	defs := object{}
 	for _, d := range dimensions {
@@ -209,6 +210,8 @@ func (s *shape) schema() object {
 		return items(ref(Ratio.id()), 3, 3)
 	case formRange:
 		return items(append(ref(s.dim.id()), s.bounds()...), 2, 2)
+	case formPair:
+		return items(ref(s.dim.id()), 2, 2)
 	case formRegion:
 		return items(items(ref(s.dim.id()), 2, 2), s.least, 0)
 	case formSection:

@@ -46,7 +46,9 @@ func TestKeysAreDocumented(t *testing.T) {
 			at = "#/$defs/" + s.id
 		}
 		require.NotEmpty(t, s.doc, s.id)
-		require.LessOrEqual(t, len(s.keys), 16, s.id)
+		if s.table {
+			require.LessOrEqual(t, len(s.keys), 16, s.id)
+		}
 		for _, k := range s.keys {
 			require.NotEmpty(t, k.doc, "%s %s", s.id, k.name)
 			require.NotEmpty(t, k.example, "%s %s", s.id, k.name)
