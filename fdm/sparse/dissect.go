@@ -22,7 +22,10 @@ const (
 	leafSize = 96
 	// dissectFrom is the number of nodes below which approximate minimum
 	// degree is as good and quicker.
-	dissectFrom = 400
+	dissectFrom = 2000
+	// judgeFrom is the number of nodes from which a separator tells whether a
+	// graph is like a surface.
+	judgeFrom = 400
 	// surfaceSeparator times the square root of a part is what a separator may
 	// have for a graph to count as a surface: nets and meshes with some order
 	// need 0.5 to 1.2 (measured), a triangulation of random points 1.6.
@@ -675,7 +678,7 @@ func dissect(ctx context.Context, g graph, weight []int32, picky bool, mem *pool
 		}
 		d.nodes, d.pts = all, pts
 		if picky {
-			d.judged = max(dissectFrom, len(part)/8)
+			d.judged = max(judgeFrom, len(part)/8)
 		}
 		d.split(ctx, done, done+len(part))
 		if d.rough {

@@ -191,8 +191,9 @@ func measure(net *net, n int, name string, reps int, o sparse.Options, kind spar
 		}
 		if rep+1 < reps {
 			net.refill(values, b, 1)
+			// As free() does in the reference programs: memory may be used again.
 			a, f = nil, nil
-			debug.FreeOSMemory()
+			runtime.GC()
 		}
 	}
 	r.PeakMB = peakMB()
