@@ -306,7 +306,11 @@ func (c *chain) iterate(ctx context.Context, all bool, starts ...func(context.Co
 }
 
 func (c *chain) settings(all bool) engine.Settings {
-	return engine.Settings{AllDirections: all, Progress: c.o.Progress, Recorder: c.o.Recorder}
+	set := engine.Settings{AllDirections: all, Progress: c.o.Progress, Recorder: c.o.Recorder}
+	if c.o.stiff {
+		set.Residual, set.Worst = 1e-11, 1e-10
+	}
+	return set
 }
 
 func directions(all bool) string {

@@ -54,6 +54,7 @@ type Options struct {
 	below   *canopy.Form // the surface found on the mesh half as fine
 	level   string       // which of several levels this is
 	eased   bool         // the ratio of warp to weft has been eased
+	stiff   bool         // links of a length make single nodes far worse than the mean
 	surface bool         // leave out the pass that balances in all directions
 }
 

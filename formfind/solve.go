@@ -23,7 +23,7 @@ func Find(ctx context.Context, m *canopy.Model, o Options) (*canopy.Result, erro
 		if err != nil {
 			return nil, err
 		}
-		o.Warm = warm
+		o.Warm, o.stiff = warm, true
 		return solve(ctx, s, m, o)
 	}
 	s, err := mesh.Build(ctx, m)

@@ -56,6 +56,7 @@ func Check(s *canopy.Structure, f *canopy.Form, q *canopy.Quantities, limits can
 	c.warpDirections()
 	c.cables()
 	c.slack()
+	c.equalMeshes()
 	c.drainage()
 	c.headroom()
 	c.reactions()
