@@ -32,7 +32,7 @@ func newSieve(p []piece, margin float64) *sieve {
 	lo = xy{lo.x - margin, lo.y - margin}
 	w, h := hi.x+margin-lo.x, hi.y+margin-lo.y
 	s := &sieve{lo: lo}
-	s.size = max(math.Sqrt(w*h/float64(len(p))), max(w, h)/float64(2*len(p)+8), 4*margin, 1e-9)
+	s.size = max(math.Sqrt(w*h/float64(len(p))), max(w, h)/512, 4*margin, 1e-9)
 	s.nx, s.ny = int(w/s.size)+1, int(h/s.size)+1
 	s.cell = make([][]int32, s.nx*s.ny)
 	for i, q := range p {
