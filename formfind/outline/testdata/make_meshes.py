@@ -23,5 +23,9 @@ for y in range(n):
             triangles += [[i, i + 1, j + 1], [i, j + 1, j]]
 mesh = meshio.Mesh(points, {"triangle": triangles})
 mesh.write("saddle.obj")
+with open("saddle.obj") as f:  # without its first line, which has the time
+    lines = f.readlines()[1:]
+with open("saddle.obj", "w") as f:
+    f.writelines(lines)
 mesh.write("saddle.stl", binary=False)
 mesh.write("saddle-binary.stl", binary=True)
