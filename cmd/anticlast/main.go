@@ -10,10 +10,29 @@ import (
 	"context"
 	"os"
 	"os/signal"
+	"runtime/debug"
 	"syscall"
 )
 
+// collectLazily lets the heap grow to five times what lives before it is
+// collected: a canopy of ordinary size then needs no collection at all. Models
+// with much to hold go back to the usual factor (see form), and whoever sets
+// GOGC decides.
+func collectLazily() {
+	if os.Getenv("GOGC") == "" {
+		debug.SetGCPercent(400)
+	}
+}
+
+// collectEagerly is for models of this many nodes and more.
+func collectEagerly(nodes int) {
+	if nodes > 200_000 && os.Getenv("GOGC") == "" {
+		debug.SetGCPercent(100)
+	}
+}
+
 func main() {
+	collectLazily()
 	ctx, stop := signal.NotifyContext(context.Background(), os.Interrupt, syscall.SIGTERM)
 	// After the first signal the default action is back, so that a second
 	// one ends a program that does not come to a stop.

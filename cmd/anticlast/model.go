@@ -37,6 +37,9 @@ func (a *app) readModel(ctx context.Context, path string, set []string) (*canopy
 		}
 		return nil, err
 	}
+	if m.Listed != nil {
+		collectEagerly(len(m.Listed.Position))
+	}
 	return m, nil
 }
 

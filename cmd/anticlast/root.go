@@ -73,7 +73,7 @@ not met, or shown to have no equilibrium; 130 interrupted.
 	})
 	root.SuggestionsMinimumDistance = 2
 	root.CompletionOptions.HiddenDefaultCmd = false
-	root.AddCommand(a.formCommand(), a.checkCommand(), a.exportCommand(), a.compareCommand(), a.sampleCommand(), a.schemaCommand(), a.versionCommand())
+	root.AddCommand(a.formCommand(), a.meshCommand(), a.checkCommand(), a.exportCommand(), a.compareCommand(), a.sampleCommand(), a.schemaCommand(), a.versionCommand())
 	return root
 }
 
