@@ -295,7 +295,7 @@ func TestEverySampleForms(t *testing.T) {
 }
 
 func TestHelpShowsARealExampleForEveryCommand(t *testing.T) {
-	for _, c := range []string{"form", "check", "export", "compare", "sample", "schema", "version"} {
+	for _, c := range []string{"form", "mesh", "check", "export", "compare", "sample", "schema", "version"} {
 		r := run(t, "", c, "--help")
 		require.Equal(t, exitFine, r.code)
 		require.Contains(t, r.out, "anticlast "+c, c)
