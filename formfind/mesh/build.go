@@ -15,16 +15,28 @@ const MaxTriangles = 2_000_000
 // by [Validate] and returned as it is. The error is an [Errors] with everything
 // found wrong, or that of ctx.
 func Build(ctx context.Context, m *canopy.Model) (*canopy.Structure, error) {
+	s, _, err := BuildMeasured(ctx, m)
+	return s, err
+}
+
+// BuildMeasured is Build and says of every fabric that was triangulated freely
+// how well that went. Fabrics with structured patches are not among them.
+func BuildMeasured(ctx context.Context, m *canopy.Model) (*canopy.Structure, []Quality, error) {
 	if err := ctx.Err(); err != nil {
-		return nil, err
+		return nil, nil, err
 	}
 	if m.Listed != nil {
 		if err := Validate(m.Listed); err != nil {
-			return nil, err
+			return nil, nil, err
 		}
-		return m.Listed, nil
+		return m.Listed, nil, nil
 	}
-	return newBuilder(ctx, m).build()
+	b := newBuilder(ctx, m)
+	s, err := b.build()
+	if err != nil {
+		return nil, nil, err
+	}
+	return s, b.quality, nil
 }
 
 func newBuilder(ctx context.Context, m *canopy.Model) *builder {
@@ -78,6 +90,7 @@ type builder struct {
 	node     []int32   // per point: node, −1 = none
 	edgeNode [][]int32 // per edge: nodes from its first point to its second
 	ringNode [][]int32 // per ring
+	quality  []Quality // of what was meshed freely
 	size     float64   // default length of a mesh side
 	group    map[string]int32
 }

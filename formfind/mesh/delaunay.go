@@ -244,18 +244,22 @@ func (d *delaunay) flip(t int32, i int) {
 // edge returns the triangle and side between points a and b, ok false when they
 // are not joined.
 func (d *delaunay) edge(a, b int32) (t int32, side int, ok bool) {
-	t = d.at[a]
-	for start, first := t, true; first || t != start; first = false {
-		i := d.corner(t, a)
-		if d.v[t][(i+1)%3] == b {
-			return t, (i + 2) % 3, true
-		}
-		if d.v[t][(i+2)%3] == b {
-			return t, (i + 1) % 3, true
-		}
-		// Turn around a; only far corners have an end to that.
-		if t = d.n[t][(i+1)%3]; t < 0 {
-			break
+	// Turn around a; around a far corner, which has an end to that, both ways.
+	for turn := 1; turn <= 2; turn++ {
+		for t = d.at[a]; ; {
+			i := d.corner(t, a)
+			if d.v[t][(i+1)%3] == b {
+				return t, (i + 2) % 3, true
+			}
+			if d.v[t][(i+2)%3] == b {
+				return t, (i + 1) % 3, true
+			}
+			if t = d.n[t][(i+turn)%3]; t == d.at[a] {
+				return -1, 0, false
+			}
+			if t < 0 {
+				break
+			}
 		}
 	}
 	return -1, 0, false

@@ -59,7 +59,6 @@ func (freePatch) fill(p *plot) {
 	}
 	r := refinement{d: d, size: f.size, most: max(f.mean, p.b.meshSize(l)), in: in, rim: len(d.p)}
 	r.run(MaxTriangles)
-	r.smooth(4)
 	height := f.heights(&r)
 	node := make([]int32, len(d.p))
 	for i := range node {
@@ -71,6 +70,17 @@ func (freePatch) fill(p *plot) {
 			node[i] = p.node(f.lift(d.p[i], height[i]))
 		}
 	}
+	q := r.inspect()
+	h := 0.0
+	for _, z := range f.h {
+		h += z / float64(len(f.h))
+	}
+	quality := Quality{Fabric: l.name, Triangles: q.triangles, Mean: q.mean, Worst: q.worst, LeastAngle: q.angle,
+		Met: q.met, At: f.lift(q.at, h), Why: q.why, Sharp: q.sharp, Corner: -1, CornerAngle: q.cornerAngle}
+	if q.corner >= 0 {
+		quality.Corner = node[q.corner]
+	}
+	p.b.quality = append(p.b.quality, quality)
 	for t, in := range r.in {
 		if in {
 			v := d.v[t]

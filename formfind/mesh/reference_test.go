@@ -96,7 +96,6 @@ func (d drawing) mesh(t testing.TB, f *flat) *refinement {
 	}
 	r := &refinement{d: tri, size: f.size, most: f.mean, in: in, rim: len(tri.p)}
 	r.run(MaxTriangles)
-	r.smooth(4)
 	return r
 }
 

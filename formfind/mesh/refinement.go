@@ -117,6 +117,7 @@ func finite(q xy) bool { return !math.IsNaN(q.x-q.x) && !math.IsNaN(q.y-q.y) }
 func (r *refinement) run(budget int) {
 	r.advance(budget)
 	r.improve(budget)
+	r.smooth(4)
 	r.mark()
 }
 
