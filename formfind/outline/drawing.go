@@ -43,7 +43,7 @@ type Drawing struct {
 	Unit     Unit
 	Segments []Segment
 	Points   []Mark
-	Ignored  []Ignored // in the order of their names
+	Ignored  []Ignored // in the order of their kinds, then layers
 	Faults   []Fault   // what could not be read
 }
 
@@ -65,9 +65,10 @@ type Mark struct {
 	Line  int
 }
 
-// Ignored counts entities of a kind that is not read.
+// Ignored counts entities of a kind on a layer that are not read.
 type Ignored struct {
 	Kind  string
+	Layer string
 	Count int
 	Line  int // of the first
 }

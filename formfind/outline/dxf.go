@@ -18,12 +18,18 @@ import (
 // ReadDXF reads an ASCII DXF drawing. What is wrong in the drawing is in
 // Drawing.Faults; the error is one of reading r.
 func ReadDXF(r io.Reader) (*Drawing, error) {
-	x := &dxf{in: bufio.NewReaderSize(r, 1<<16), d: &Drawing{}, ignored: map[string]*Ignored{}}
+	x := &dxf{in: bufio.NewReaderSize(r, 1<<16), d: &Drawing{}, ignored: map[[2]string]*Ignored{}}
 	err := x.read()
 	for _, g := range x.ignored {
 		x.d.Ignored = append(x.d.Ignored, *g)
 	}
-	sort.Slice(x.d.Ignored, func(i, j int) bool { return x.d.Ignored[i].Kind < x.d.Ignored[j].Kind })
+	sort.Slice(x.d.Ignored, func(i, j int) bool {
+		a, b := x.d.Ignored[i], x.d.Ignored[j]
+		if a.Kind != b.Kind {
+			return a.Kind < b.Kind
+		}
+		return a.Layer < b.Layer
+	})
 	return x.d, err
 }
 
@@ -40,7 +46,7 @@ type dxf struct {
 	d       *Drawing
 	line    int
 	back    *group // read once more
-	ignored map[string]*Ignored
+	ignored map[[2]string]*Ignored
 	count   int
 	path    int
 	stopped bool
@@ -280,11 +286,11 @@ func (x *dxf) entity(kind string, line int) error {
 	case p.bad:
 		return nil
 	case p.paper:
-		x.ignore("entities in paper space", line)
+		x.ignore("entities in paper space", "", line)
 		return nil
 	}
 	if kind == "POLYLINE" && p.flags&(16|64) != 0 {
-		x.ignore("POLYLINE that is a mesh", line)
+		x.ignore("POLYLINE that is a mesh", p.layer, line)
 		return nil
 	}
 	before := len(x.d.Segments)
@@ -311,7 +317,7 @@ func (x *dxf) entity(kind string, line int) error {
 		}
 		x.polyline(p, flat)
 	default:
-		x.ignore(kind, line)
+		x.ignore(kind, p.layer, line)
 	}
 	if len(x.d.Segments) > before {
 		x.path++
@@ -319,12 +325,12 @@ func (x *dxf) entity(kind string, line int) error {
 	return nil
 }
 
-func (x *dxf) ignore(kind string, line int) {
-	kind = short(kind)
-	if g := x.ignored[kind]; g != nil {
+func (x *dxf) ignore(kind, layer string, line int) {
+	k := [2]string{short(kind), layer}
+	if g := x.ignored[k]; g != nil {
 		g.Count++
-	} else if len(x.ignored) < 200 {
-		x.ignored[kind] = &Ignored{kind, 1, line}
+	} else if len(x.ignored) < 1000 {
+		x.ignored[k] = &Ignored{k[0], layer, 1, line}
 	}
 }
 
@@ -344,7 +350,7 @@ func (x *dxf) props(kind string, p *props) error {
 			x.back = &g
 			return nil
 		}
-		if !known {
+		if !known && g.code != 8 && g.code != 67 {
 			continue
 		}
 		number := func(to *float64) {

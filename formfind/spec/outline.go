@@ -213,7 +213,11 @@ func (t *traced) unlisted(dr *outline.Drawing) (out []outline.Fault) {
 		out = append(out, outline.Fault{Line: first, Warning: true, Message: fmt.Sprintf("layer %q (%d line%s and points) is not in the model: left out", clip(name), n, plural(n)), Hint: "say what it is under layers, or ignore"})
 	}
 	for _, i := range dr.Ignored {
-		out = append(out, outline.Fault{Line: i.Line, Warning: true, Message: fmt.Sprintf("%d %s left out, the first here: outlines are read from LINE, POLYLINE, LWPOLYLINE, ARC, CIRCLE and POINT", i.Count, i.Kind), Hint: ""})
+		for _, l := range t.layer {
+			if l.Class != outline.Unused && strings.EqualFold(l.Name, i.Layer) {
+				out = append(out, outline.Fault{Line: i.Line, Warning: true, Message: fmt.Sprintf("%d %s on layer %q left out, the first here", i.Count, clip(i.Kind), l.Name), Hint: "outlines are read from LINE, POLYLINE, LWPOLYLINE, ARC, CIRCLE and POINT: break up blocks, draw curves as polylines"})
+			}
+		}
 	}
 	return out
 }

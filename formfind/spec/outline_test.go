@@ -217,6 +217,14 @@ func TestWarningsOfOutlines(t *testing.T) {
 	require.Regexp(t, `^yard.dxf:\d+: layer "PAVING" \(5 lines`, warned[0])
 }
 
+func TestEntitiesThatAreNotReadAreTold(t *testing.T) {
+	text := "0\nSECTION\n2\nENTITIES\n0\nLWPOLYLINE\n8\nRIM\n70\n1\n10\n0\n20\n0\n10\n9\n20\n0\n10\n9\n20\n9\n0\nSPLINE\n8\nrim\n0\nINSERT\n8\nTREES\n0\nENDSEC\n0\nEOF\n"
+	_, warned, err := readBeside("anticlast: 1\noutline: {file: a.dxf, units: m, layers: {RIM: fixed}, fabric: {prestress: 2}}\n", map[string]string{"a.dxf": text})
+	require.NoError(t, err)
+	require.Len(t, warned, 1, "what is on layers that are not used does not matter")
+	require.Contains(t, warned[0], `a.dxf:24: 1 SPLINE on layer "RIM" left out`)
+}
+
 func TestDrawingsStayInTheModelsFolder(t *testing.T) {
 	dir := t.TempDir()
 	require.NoError(t, os.WriteFile(filepath.Join(dir, "plan.csv"), []byte(table), 0o644))

@@ -1,8 +1,9 @@
-"""Writes the DXF drawings of this folder with an independent library.
+"""Writes the DXF drawings of this folder, and that of an example, with an
+independent library.
 
 Needs Debian's python3-ezdxf (tried with 0.18.1):
 
-    /usr/bin/python3 make_drawings.py
+    PYTHONHASHSEED=0 /usr/bin/python3 make_drawings.py
 
 The places and shapes are invented.
 """
@@ -90,7 +91,30 @@ def yard():
     save(doc, "yard.dxf")
 
 
+def ropewalk():
+    """The drawing of the example ropewalk-yard: a plan in mm, drawn for a yard."""
+    doc = ezdxf.new("R2010")
+    doc.header["$INSUNITS"] = 4
+    m = doc.modelspace()
+    for layer in ("RIM", "WALL", "ARCH", "TREE", "PAVING", "NOTES"):
+        doc.layers.new(layer)
+    # Three sides of the yard are open; the rim goes round them.
+    m.add_lwpolyline([(0, 9000), (-600, 0), (7500, -1800), (15600, 0), (15000, 9000)], dxfattribs={"layer": "RIM"})
+    # The long wall of the ropewalk.
+    m.add_line((15000, 9000), (7500, 9000), dxfattribs={"layer": "WALL"})
+    m.add_line((7500, 9000), (0, 9000), dxfattribs={"layer": "WALL"})
+    # An arch across the yard, seen from above.
+    m.add_line((7500, -1800), (7500, 9000), dxfattribs={"layer": "ARCH"})
+    # The old lime tree.
+    m.add_circle((11400, 4200), 1100, dxfattribs={"layer": "TREE"})
+    for k in range(4):
+        m.add_line((-600, 2000 * k), (15600, 2000 * k), dxfattribs={"layer": "PAVING"})
+    m.add_text("ropewalk", dxfattribs={"layer": "NOTES", "height": 300}).set_pos((6000, 9300))
+    save(doc, "../../../examples/ropewalk-yard.dxf")
+
+
 entities("R12", "entities-r12.dxf")
 entities("R2000", "entities-r2000.dxf")
 entities("R2018", "entities-r2018.dxf")
 yard()
+ropewalk()
