@@ -164,7 +164,7 @@ func (v *frontView) forward(x []float64, w int, position []int32, scratch []floa
 			if position != nil {
 				k = int(position[k])
 			}
-			xi := x[3*k:][:3]
+			xi := x[3*k : 3*k+3 : 3*k+3]
 			xi[0] += t0[i]
 			xi[1] += t1[i]
 			xi[2] += t2[i]
@@ -196,7 +196,7 @@ func (v *frontView) backward(x []float64, w int, position []int32, scratch []flo
 				if position != nil {
 					k = int(position[k])
 				}
-				xi := x[3*k:][:3]
+				xi := x[3*k : 3*k+3 : 3*k+3]
 				t0[i], t1[i], t2[i] = xi[0], xi[1], xi[2]
 			}
 		} else {
@@ -213,6 +213,15 @@ func (v *frontView) backward(x []float64, w int, position []int32, scratch []flo
 		for j := 0; j < v.cols; j += 4 {
 			n := min(4, v.cols-j)
 			mulTrans(&dot, v.p[j*v.ld+v.cols:], v.ld, scratch, nu, nu, n, w)
+			if w == 3 {
+				o := own[3*j:][:3*n]
+				for c := 0; 3*c+2 < len(o); c++ {
+					o[3*c] -= dot[c]
+					o[3*c+1] -= dot[4+c]
+					o[3*c+2] -= dot[8+c]
+				}
+				continue
+			}
 			for c := range n {
 				for r := range w {
 					own[(j+c)*w+r] -= dot[4*r+c]
