@@ -50,6 +50,9 @@ type Options struct {
 	Progress func(engine.Step)
 	// Recorder, if set, records every iteration of every engine.
 	Recorder *engine.Recorder
+	// Stage, if set, is told when a stage begins: "mesh", "solve",
+	// "cross-check", "audit", "limits".
+	Stage func(name string)
 
 	below   *canopy.Form // the surface found on the mesh half as fine
 	level   string       // which of several levels this is
@@ -78,3 +81,9 @@ type NoEquilibriumError struct {
 }
 
 func (e *NoEquilibriumError) Error() string { return e.Text }
+
+func (o *Options) begin(stage string) {
+	if o.Stage != nil {
+		o.Stage(stage)
+	}
+}

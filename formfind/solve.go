@@ -26,6 +26,7 @@ func Find(ctx context.Context, m *canopy.Model, o Options) (*canopy.Result, erro
 		o.Warm, o.stiff = warm, true
 		return solve(ctx, s, m, o)
 	}
+	o.begin("mesh")
 	s, err := mesh.Build(ctx, m)
 	if err != nil {
 		return nil, err
@@ -40,6 +41,7 @@ func Find(ctx context.Context, m *canopy.Model, o Options) (*canopy.Result, erro
 			if err := check(coarse); err != nil {
 				return nil, err
 			}
+			o.begin("solve")
 			warm, below, err := climb(ctx, coarse, steps, o)
 			if err != nil {
 				return nil, err
@@ -63,6 +65,7 @@ func solve(ctx context.Context, s *canopy.Structure, m *canopy.Model, o Options)
 	if err := check(s); err != nil {
 		return nil, err
 	}
+	o.begin("solve")
 	local, origin := nearOrigin(s)
 	if o.Warm != nil && origin != (r3.Vec{}) {
 		warm := *o.Warm
@@ -84,6 +87,7 @@ func solve(ctx context.Context, s *canopy.Structure, m *canopy.Model, o Options)
 	}
 	var disagreement string
 	if o.CrossCheck {
+		o.begin("cross-check")
 		if disagreement, err = crossCheck(ctx, local, got, o); err != nil {
 			return nil, err
 		}
@@ -100,7 +104,7 @@ func solve(ctx context.Context, s *canopy.Structure, m *canopy.Model, o Options)
 		Structure: s, Form: f,
 	}
 	r.Program.Engines = f.Engines
-	if err := Judge(ctx, r); err != nil {
+	if err := judge(ctx, r, o); err != nil {
 		return nil, err
 	}
 	r.Audit.Discretisation = finer
@@ -125,7 +129,10 @@ func check(s *canopy.Structure) error {
 // Judge fills the audit, quantities and findings of a result from its
 // structure and form: what check does with a file and Solve with what it
 // found.
-func Judge(ctx context.Context, r *canopy.Result) error {
+func Judge(ctx context.Context, r *canopy.Result) error { return judge(ctx, r, Options{}) }
+
+func judge(ctx context.Context, r *canopy.Result, o Options) error {
+	o.begin("audit")
 	var err error
 	// How far a finer mesh would move the answer was seen while solving and
 	// cannot be recomputed from the shape.
@@ -141,6 +148,7 @@ func Judge(ctx context.Context, r *canopy.Result) error {
 		r.Audit.Trusted = false
 		r.Audit.Reasons = append(r.Audit.Reasons, "the engine did not converge: "+r.Form.Why)
 	}
+	o.begin("limits")
 	r.Summary = audit.Quantities(r.Structure, r.Form, r.Factors)
 	r.Findings = limit.Check(r.Structure, r.Form, &r.Summary, r.Limits, r.Factors)
 	return nil

@@ -27,6 +27,7 @@ type formFlags struct {
 	crossCheck bool
 	watch      bool
 	force      bool
+	times      bool
 }
 
 func (a *app) formCommand() *cobra.Command {
@@ -72,6 +73,7 @@ MODEL may be - for standard input; form.json then goes to standard output unless
 	fl.BoolVar(&f.crossCheck, "cross-check", false, "have a second, independent engine confirm the shape")
 	fl.StringVar(&f.method, "method", "auto", "auto, or relax for dynamic relaxation throughout")
 	fl.StringVar(&f.trace, "trace", "", "write residual against iteration and time to a CSV `FILE`")
+	fl.BoolVar(&f.times, "times", false, "print how long each stage took, on the error stream")
 	fl.BoolVar(&f.force, "force", false, "replace a folder this program did not write (it is kept under another name)")
 	return c
 }
@@ -85,6 +87,12 @@ func (a *app) form(ctx context.Context, path string, f formFlags) error {
 	if err != nil {
 		return usageError{err}
 	}
+	var watch *stopwatch
+	if f.times {
+		watch = newStopwatch()
+		defer watch.print(a.Err)
+	}
+	watch.begin("read")
 	m, err := a.readModel(ctx, path, f.set)
 	if err != nil {
 		return err
@@ -103,7 +111,7 @@ func (a *app) form(ctx context.Context, path string, f formFlags) error {
 	}
 	bar := newProgress(a.Streams, a.quiet)
 	r, err := formfind.Find(ctx, m, formfind.Options{
-		Method: method, CrossCheck: f.crossCheck, Progress: bar.step, Recorder: rec,
+		Method: method, CrossCheck: f.crossCheck, Progress: bar.step, Recorder: rec, Stage: watch.begin,
 	})
 	bar.done()
 	if rec != nil {
@@ -125,6 +133,7 @@ func (a *app) form(ctx context.Context, path string, f formFlags) error {
 	}
 	r.Program.Name, r.Program.Version = "anticlast", version
 
+	watch.begin("write")
 	if out == "-" {
 		if err := formfile.Write(ctx, a.Out, r); err != nil {
 			return err
