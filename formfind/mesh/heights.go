@@ -1,21 +1,32 @@
 package mesh
 
-import "math"
+import (
+	"math"
+	"slices"
+)
 
-// heights returns the height over the plane of every point of r. Between rims
+// heights returns the height over the plane of every point of r. Within a rim
 // alone they follow from mean value coordinates (Floater 2003; Hormann and
-// Floater 2006), with lines and points inside, or very many points, each inner
-// height is the mean of its neighbours'.
+// Floater 2006). With holes, lines or points inside, with very many points, or
+// where mean values would lead out of the range of the rim (an outline that is
+// not convex), each inner height is the mean of its neighbours'.
 func (f *flat) heights(r *refinement) []float64 {
 	h := make([]float64, len(r.d.p))
 	copy(h[3:], f.h)
 	inner := len(r.d.p) - r.rim
-	if len(f.chains)+len(f.points) > 0 || inner*len(f.p) > 2e8 {
+	if len(f.chains)+len(f.points) > 0 || len(f.rims) > 1 || inner*len(f.p) > 2e8 {
 		r.relaxHeights(h)
 		return h
 	}
+	// Weights may be negative where the outline is not convex.
+	lo, hi := slices.Min(f.h), slices.Max(f.h)
 	for i := r.rim; i < len(r.d.p); i++ {
 		h[i] = f.meanValue(r.d.p[i])
+		if r.used[i] && (h[i] < lo || h[i] > hi) {
+			clear(h[r.rim:])
+			r.relaxHeights(h)
+			return h
+		}
 	}
 	return h
 }
