@@ -250,8 +250,11 @@ func (c *chain) iterate(ctx context.Context, all bool, starts ...func(context.Co
 			return err
 		}
 		if why == "" {
-			got := candidate{c.f, smallestAngle(c.f.Position, c.s.Corners), c.unstable > 0}
-			if len(c.s.Corners) == 0 || got.sound() {
+			if len(c.s.Corners) == 0 {
+				return nil
+			}
+			got := candidate{c.f, smallestAngle(c.f.Position, c.s.Corners), c.unstable > 0, unreal(c.s, c.f)}
+			if got.sound() {
 				return nil
 			}
 			if best.form == nil || got.better(best) {
@@ -263,20 +266,28 @@ func (c *chain) iterate(ctx context.Context, all bool, starts ...func(context.Co
 			first = why + "; "
 		}
 	}
-	if best.form != nil {
+	keep := func() error {
 		c.f = best.form
 		if len(starts) > 1 {
 			c.say("kept the best of these")
 		}
 		return nil
 	}
-	var limit *NoEquilibriumError
+	if best.form != nil && !best.unreal {
+		return keep()
+	}
 	if len(c.s.Corners) > 0 && c.o.Method == MethodAuto {
-		done, met, err := c.walk(ctx)
+		done, limit, err := c.walk(ctx)
 		if err != nil || done {
 			return err
 		}
-		limit = met
+		if limit != nil {
+			limit.Tried = c.did
+			return limit
+		}
+	}
+	if best.form != nil {
+		return keep()
 	}
 	if c.f == nil {
 		var err error
@@ -288,10 +299,6 @@ func (c *chain) iterate(ctx context.Context, all bool, starts ...func(context.Co
 		return err
 	}
 	if !c.f.Converged {
-		if limit != nil {
-			limit.Tried = c.did
-			return limit
-		}
 		return &NoEquilibriumError{
 			Text:  fmt.Sprintf("no shape in equilibrium was found: %srelaxation: %s", first, c.f.Why),
 			Tried: c.did,
@@ -346,7 +353,7 @@ func (c *chain) fabric(ctx context.Context) error {
 		starts = append(starts, func(context.Context) error { c.f = c.warmStart(); return nil })
 	}
 	for _, n := range c.naturalStarts() {
-		starts = append(starts, func(ctx context.Context) error { return c.natural(ctx, force, n.drawn, n.even) })
+		starts = append(starts, func(ctx context.Context) error { return c.natural(ctx, force, n) })
 	}
 	if elastic {
 		// Newton's tangent is that of prescribed stress.
@@ -369,7 +376,7 @@ func (c *chain) fabric(ctx context.Context) error {
 		// The ratio could not be held everywhere. The shape of the natural
 		// updates is in balance with the stress it reports; the report says
 		// how far that is from what was asked.
-		if err := c.natural(ctx, force, soundMesh(s), false); err != nil {
+		if err := c.natural(ctx, force, naturalStart{drawn: soundMesh(s), whole: true}); err != nil {
 			var collapsed *fdm.ReferenceError
 			if errors.As(err, &collapsed) {
 				return none
@@ -394,23 +401,26 @@ func (c *chain) fabric(ctx context.Context) error {
 	return c.ease(ctx)
 }
 
-type naturalStart struct{ drawn, even bool }
+// naturalStart is one way to start by natural force densities.
+type naturalStart struct {
+	drawn bool // from the nodes as drawn, not from the linear step
+	even  bool // with the geometric mean of warp and weft both ways
+	whole bool // all updates, even where they draw out triangles
+}
 
 // naturalStarts lists the starts by natural force densities that suit the
 // structure, the best first.
 func (c *chain) naturalStarts() []naturalStart {
-	var list []naturalStart
-	sound, equal := soundMesh(c.s), equalStress(c.s)
-	if sound && !equal {
-		list = append(list, naturalStart{drawn: true, even: true})
+	sound := soundMesh(c.s)
+	switch equal := equalStress(c.s); {
+	case equal && sound:
+		return []naturalStart{{drawn: true}, {drawn: true, whole: true}, {whole: true}}
+	case equal:
+		return []naturalStart{{whole: true}, {drawn: true, whole: true}}
+	case sound:
+		return []naturalStart{{drawn: true, even: true}, {drawn: true}, {even: true}, {}}
 	}
-	if sound {
-		list = append(list, naturalStart{drawn: true})
-	}
-	if !equal {
-		list = append(list, naturalStart{even: true})
-	}
-	return append(list, naturalStart{})
+	return []naturalStart{{even: true}, {}, {drawn: true, even: true}}
 }
 
 // natural is a fixed few updates from the nodes as drawn, or from the linear
@@ -418,10 +428,10 @@ func (c *chain) naturalStarts() []naturalStart {
 // magnitude are in balance in their plane only by chance, and updates would slide
 // nodes until triangles collapse: with even set, their geometric mean acts both
 // ways instead, which leaves the turn to the wanted ratio to Newton.
-func (c *chain) natural(ctx context.Context, force []float64, drawn, even bool) error {
+func (c *chain) natural(ctx context.Context, force []float64, n naturalStart) error {
 	s := c.s
 	ref := s.Position
-	if !drawn {
+	if !n.drawn {
 		f, err := c.linear(ctx, guessDensities(s, s.Position, force))
 		if err != nil {
 			return err
@@ -430,7 +440,7 @@ func (c *chain) natural(ctx context.Context, force []float64, drawn, even bool) 
 	}
 	c.stage("natural force density", "")
 	net, panels := startNetwork(s, startLoads(s))
-	if even {
+	if n.even {
 		for t, p := range panels {
 			mean := math.Sqrt(p.WarpStress * p.WeftStress)
 			panels[t].WarpStress, panels[t].WeftStress = mean, mean
@@ -452,7 +462,7 @@ func (c *chain) natural(ctx context.Context, force []float64, drawn, even bool) 
 			return c.unsupported(err)
 		}
 		angle := smallestAngle(r.Position, s.Corners)
-		if done > 0 && angle < thinning && angle < widest/2 {
+		if !n.whole && done > 0 && angle < thinning && angle < widest/2 {
 			break
 		}
 		best, ref, widest = r, r.Position, max(widest, angle)
@@ -461,7 +471,7 @@ func (c *chain) natural(ctx context.Context, force []float64, drawn, even bool) 
 	c.f = naturalForm(s, best)
 	c.used("natural force density")
 	with := ""
-	if even {
+	if n.even {
 		with = " with the mean of warp and weft both ways"
 	}
 	c.say("natural force density%s: %d updates", with, done)
@@ -478,11 +488,15 @@ type candidate struct {
 	form     *canopy.Form
 	angle    float64 // smallest, rad
 	unstable bool
+	unreal   bool
 }
 
-func (a candidate) sound() bool { return !a.unstable && a.angle > nearCollapse }
+func (a candidate) sound() bool { return !a.unstable && !a.unreal && a.angle > nearCollapse }
 
 func (a candidate) better(b candidate) bool {
+	if a.unreal != b.unreal {
+		return b.unreal
+	}
 	if a.unstable != b.unstable {
 		return b.unstable
 	}

@@ -123,6 +123,9 @@ func check(s *canopy.Structure) error {
 	if len(s.Ends) == 0 && len(s.Corners) == 0 {
 		return ErrEmpty
 	}
+	if err := checkRingPull(s); err != nil {
+		return err
+	}
 	return checkStays(s)
 }
 

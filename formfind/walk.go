@@ -79,7 +79,7 @@ func (c *chain) along(ctx context.Context, w way) (bool, *NoEquilibriumError, er
 		if err != nil && ctx.Err() != nil {
 			return false, nil, err
 		}
-		if err == nil && out.Status == engine.Converged && out.NegativePivots == 0 {
+		if err == nil && out.Status == engine.Converged && out.NegativePivots == 0 && !unreal(s, f) {
 			at, form = t, f
 			if t == 1 {
 				c.f = form
@@ -102,8 +102,9 @@ func (c *chain) along(ctx context.Context, w way) (bool, *NoEquilibriumError, er
 // atOnce tries the ordinary starts, without relaxation and without walking.
 func (c *chain) atOnce(ctx context.Context) (bool, error) {
 	force := guessForces(c.s, c.s.Position)
+	var best candidate
 	for _, n := range c.naturalStarts() {
-		if err := c.natural(ctx, force, n.drawn, n.even); err != nil {
+		if err := c.natural(ctx, force, n); err != nil {
 			if ctx.Err() != nil {
 				return false, err
 			}
@@ -116,12 +117,21 @@ func (c *chain) atOnce(ctx context.Context) (bool, error) {
 			}
 			continue
 		}
-		if out.Status == engine.Converged && out.NegativePivots == 0 {
-			c.f = f
-			return true, nil
+		if out.Status != engine.Converged || out.NegativePivots != 0 || unreal(c.s, f) {
+			continue
+		}
+		got := candidate{form: f, angle: smallestAngle(f.Position, c.s.Corners)}
+		if best.form == nil || got.better(best) {
+			best = got
+		}
+		if got.sound() {
+			break
 		}
 	}
-	return false, nil
+	if best.form != nil {
+		c.f = best.form
+	}
+	return best.form != nil, nil
 }
 
 func copyForWalk(s *canopy.Structure) *canopy.Structure {

@@ -1,0 +1,46 @@
+package formfind
+
+import (
+	"math"
+
+	"gonum.org/v1/gonum/spatial/r3"
+
+	"anticlast/formfind/canopy"
+)
+
+// unreal reports whether a shape found on a mesh is none that a surface could
+// have.
+func unreal(s *canopy.Structure, f *canopy.Form) bool { return pinned(s, f) || closedCorner(s, f) }
+
+// How far from balance in all directions a shape may be that balances in the
+// shape-changing ones, as ‖r‖/‖s‖: a resolved surface of equal stress is within
+// 3e-4 from a hundred triangles on; of unequal stress, whose magnitude is fitted,
+// within 8e-3 (400 random canopies). Surfaces that only their mesh holds, cones
+// taller than any cone can be, show 0.03 and 0.01 upwards.
+const (
+	pinnedEqual   = 0.01
+	pinnedUnequal = 0.009
+)
+
+// pinned reports whether a shape in balance along its normals is far from balance
+// in its plane. Beyond the last real equilibrium a neck cannot close on a mesh
+// whose nodes move along their normals only: it draws out triangles until it
+// hangs on them. No smooth surface is near such a shape.
+func pinned(s *canopy.Structure, f *canopy.Form) bool {
+	sum, size := nodalForces(s, f)
+	sum = gather(s, sum)
+	rr, ss := 0.0, 0.0
+	for i, r := range sum {
+		free := canopy.DirAll &^ s.FixedAt(i)
+		if free == 0 || s.MasterOf(i) >= 0 {
+			continue
+		}
+		rr += r3.Norm2(only(r, free))
+		ss += size[i] * size[i]
+	}
+	most := pinnedEqual
+	if !equalStress(s) {
+		most = pinnedUnequal
+	}
+	return math.Sqrt(rr) > most*math.Sqrt(ss)
+}
