@@ -175,7 +175,7 @@ func (net *laidNet) cut(b *builder) {
 		if !lat.has(int32(p)) {
 			continue
 		}
-		on, near := r.nearest(q)
+		on, other, near := r.nearest(q)
 		far[p] = lat.link
 		if near {
 			far[p] = on.d
@@ -184,6 +184,9 @@ func (net *laidNet) cut(b *builder) {
 		case !r.inside(q):
 		case near && on.d < net.least:
 			state[p] = onEdge
+			if other.d < net.least {
+				on = b.cornerOf(on, other, q, net)
+			}
 			stop[p] = b.arrive(on, net)
 		default:
 			state[p] = kept
@@ -213,14 +216,21 @@ func (net *laidNet) cut(b *builder) {
 			}
 			in, out := state[p] != outside, state[q] != outside
 			if (in != out) != (len(cross)%2 == 1) {
-				// Within rounding of the boundary.
-				if len(cross) > 0 {
+				// One end is on the boundary, as nearly as rounding allows.
+				edge := p
+				if far[q] < far[p] {
+					edge = q
+				}
+				on, other, near := r.nearest(lat.at[edge])
+				switch {
+				case len(cross) > 0:
 					cross = cross[:len(cross)-1]
-				} else if on, near := r.nearest(a); near && in {
+				case near:
+					if other.d < net.least {
+						on = b.cornerOf(on, other, lat.at[edge], net)
+					}
 					cross = append(cross, on)
-				} else if on, near := r.nearest(c); near && out {
-					cross = append(cross, on)
-				} else {
+				default:
 					end()
 					continue
 				}
@@ -249,6 +259,21 @@ func (net *laidNet) cut(b *builder) {
 		}
 		end()
 	})
+}
+
+// cornerOf returns the corner between two edges that are both near to q, so that
+// neither is preferred; on itself when they do not meet nearby.
+func (b *builder) cornerOf(on, other onRim, q xy, net *laidNet) onRim {
+	for t, p := range b.ends[on.edge] {
+		if p != b.ends[other.edge][0] && p != b.ends[other.edge][1] {
+			continue
+		}
+		c := net.rim.drop(b.onEdge(on.edge, float64(t), net))
+		if math.Hypot(c.x-q.x, c.y-q.y) < 1.5*net.least/least {
+			return onRim{edge: on.edge, t: float64(t)}
+		}
+	}
+	return on
 }
 
 // settle divides edges where lines arrive, and puts arrivals that are close
@@ -395,7 +420,7 @@ func (b *builder) tidy(net *laidNet) {
 			if length < net.least || !r.inside(m) {
 				return false
 			}
-			if on, near := r.nearest(m); near && on.d < 0.2*length {
+			if on, _, near := r.nearest(m); near && on.d < 0.2*length {
 				return false
 			}
 		}

@@ -272,17 +272,25 @@ type onRim struct {
 	d    float64 // distance from where it was looked for, or part of the way to it
 }
 
-// nearest returns the place of the rim that is nearest to p, within one cell.
-func (r *rim) nearest(p xy) (on onRim, ok bool) {
-	on.d = math.Inf(1)
+// nearest returns the place of the rim that is nearest to p, within one cell,
+// and the nearest on any other edge.
+func (r *rim) nearest(p xy) (on, other onRim, ok bool) {
+	on.d, other.d = math.Inf(1), math.Inf(1)
 	r.near(p, p, r.cell, func(s *rimSide) {
 		dx, dy := s.b.x-s.a.x, s.b.y-s.a.y
 		u := min(1, max(0, ((p.x-s.a.x)*dx+(p.y-s.a.y)*dy)/(dx*dx+dy*dy)))
-		if d := math.Hypot(s.a.x+u*dx-p.x, s.a.y+u*dy-p.y); d < on.d {
-			on = onRim{s.edge, s.ta + u*(s.tb-s.ta), d}
+		c := onRim{s.edge, s.ta + u*(s.tb-s.ta), math.Hypot(s.a.x+u*dx-p.x, s.a.y+u*dy-p.y)}
+		switch {
+		case c.d < on.d:
+			if c.edge != on.edge {
+				other = on
+			}
+			on = c
+		case c.edge != on.edge && c.d < other.d:
+			other = c
 		}
 	})
-	return on, on.d <= r.cell
+	return on, other, on.d <= r.cell
 }
 
 // inside reports whether p is inside the outline and outside all holes.
