@@ -121,13 +121,13 @@ func TestCompareReport(t *testing.T) {
 		b.Form.Position[i] = r3.Scale(1.5, b.Form.Position[i])
 	}
 	var s strings.Builder
-	require.NoError(t, CompareReport(background, &s, a, b, Options{}))
+	require.NoError(t, CompareReport(background, &s, a, b, quick))
 	for _, want := range []string{"Sail &lt;raised&gt;", "highest point, m", "+50.0 %", canopy.Caution} {
 		require.Contains(t, s.String(), want)
 	}
 	require.Equal(t, 8, strings.Count(s.String(), "<svg"))
 	// Both are drawn to one scale.
-	large, small := draw(b, views()[0]).frame.scale, draw(a, views()[0]).frame.scale
+	large, small := draw(b, views()[0], quick).frame.scale, draw(a, views()[0], quick).frame.scale
 	require.Greater(t, small, large)
-	require.Equal(t, large, drawAt(a, views()[0], large).frame.scale)
+	require.Equal(t, large, drawAt(a, views()[0], large, quick).frame.scale)
 }

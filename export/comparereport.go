@@ -12,7 +12,7 @@ import (
 
 // CompareReport writes one page of HTML with two forms side by side: drawings of
 // both to one scale and the table of what changed.
-func CompareReport(ctx context.Context, w io.Writer, a, b *canopy.Result, _ Options) error {
+func CompareReport(ctx context.Context, w io.Writer, a, b *canopy.Result, o Options) error {
 	p := &report{newText(ctx, w), a}
 	other := &report{p.text, b}
 	title := p.title() + " and " + other.title()
@@ -41,7 +41,7 @@ func CompareReport(ctx context.Context, w io.Writer, a, b *canopy.Result, _ Opti
 			scale = min(scale, fit(r, v, paperWidth, 900, paperMargin).scale)
 		}
 		for k, r := range []*canopy.Result{a, b} {
-			d := drawAt(r, v, scale)
+			d := drawAt(r, v, scale, o)
 			p.printf("<figure><svg viewBox=\"0 0 %.0f %s\" role=\"img\" aria-label=\"%s of %c\">\n", paperWidth, px(d.frame.height), escape(v.title), 'A'+k)
 			p.str(d.body()).printf("</svg><figcaption>%c</figcaption></figure>\n", 'A'+k).more()
 		}

@@ -32,14 +32,14 @@ const (
 // elevations, axonometric. Lines and letters are vectors; the fabric's colours
 // are a picture beneath them, so that the size of the file does not grow with
 // the mesh.
-func writeSVG(ctx context.Context, w io.Writer, r *canopy.Result, _ Options) error {
+func writeSVG(ctx context.Context, w io.Writer, r *canopy.Result, o Options) error {
 	var body strings.Builder
 	y := 70.0
 	for _, v := range views() {
 		if err := ctx.Err(); err != nil {
 			return err
 		}
-		d := draw(r, v)
+		d := draw(r, v, o)
 		fmt.Fprintf(&body, "<g transform=\"translate(0 %s)\">\n<text class=\"ink\" x=\"24\" y=\"24\" font-size=\"17\">%s</text>\n%s</g>\n", px(y), v.title, d.body())
 		y += d.frame.height + 30
 	}
@@ -92,12 +92,12 @@ type drawing struct {
 }
 
 // draw draws a view of r as large as the paper allows.
-func draw(r *canopy.Result, v view) *drawing { return drawAt(r, v, 0) }
+func draw(r *canopy.Result, v view, o Options) *drawing { return drawAt(r, v, 0, o) }
 
 // drawAt draws a view of r at a scale that is not larger than the paper allows,
 // in units of the paper to a metre; 0 = as large as it allows.
-func drawAt(r *canopy.Result, v view, scale float64) *drawing {
-	d := &drawing{r: r, frame: fit(r, v, paperWidth, 900, paperMargin), fine: 1.6}
+func drawAt(r *canopy.Result, v view, scale float64, o Options) *drawing {
+	d := &drawing{r: r, frame: fit(r, v, paperWidth, 900, paperMargin), fine: o.pictureWidth() / paperWidth}
 	if scale > 0 && scale < d.frame.scale {
 		// About the middle of the paper.
 		f, k := d.frame, scale/d.frame.scale

@@ -17,10 +17,10 @@ import (
 	"gonum.org/v1/gonum/spatial/r3"
 )
 
-func svgOf(t *testing.T, r *canopy.Result) string {
+func svgOf(t *testing.T, r *canopy.Result, o Options) string {
 	t.Helper()
 	var b bytes.Buffer
-	require.NoError(t, writeSVG(background, &b, r, Options{}))
+	require.NoError(t, writeSVG(background, &b, r, o))
 	dec := xml.NewDecoder(bytes.NewReader(b.Bytes()))
 	for {
 		if _, err := dec.Token(); err == io.EOF {
@@ -35,7 +35,7 @@ func svgOf(t *testing.T, r *canopy.Result) string {
 func TestDrawingsShowDimensionsForcesAndNames(t *testing.T) {
 	r := sail(10)
 	r.Title = `Quay <"market"> & sail`
-	s := svgOf(t, r)
+	s := svgOf(t, r, Options{})
 	lo, hi := canopy.Bounds(r.Form.Position)
 	for _, want := range []string{">Plan<", ">Axonometric<", ">25.02 kN<", ">−58.40 kN<", ">G1 anchor<", "prestress achieved/specified", canopy.Caution,
 		"&lt;&#34;market&#34;&gt; &amp; sail"} {
@@ -48,9 +48,9 @@ func TestDrawingsShowDimensionsForcesAndNames(t *testing.T) {
 
 func TestDrawingsOfOtherForms(t *testing.T) {
 	all := scenes()
-	all["large sail"], all["large net"] = sail(150), grid(150)
+	all["large sail"], all["large net"] = sail(60), grid(110)
 	for name, r := range all {
-		s := svgOf(t, r)
+		s := svgOf(t, r, Options{PictureWidth: 400})
 		plain := regexp.MustCompile(`base64,[^"]*`).ReplaceAllString(s, "")
 		require.NotContains(t, plain, "NaN", name)
 		require.NotContains(t, plain, "Inf", name)
@@ -74,7 +74,7 @@ func TestHiddenLines(t *testing.T) {
 			r.Form.Reaction = append(r.Form.Reaction, r3.Vec{})
 		}
 		r.Form.Position = append([]r3.Vec(nil), s.Position...)
-		d := draw(r, views()[0])
+		d := draw(r, views()[0], quick)
 		d.b.Reset()
 		d.path([]r3.Vec{s.Position[at], s.Position[at+1]}, "cable", 1, false)
 		require.Equal(t, c.hidden, strings.Contains(d.body(), "hidden"))

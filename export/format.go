@@ -21,10 +21,18 @@ type Options struct {
 	// Ground adds to GLB scenes a ground plane under the structure and a
 	// levelling staff beside it, banded in metres.
 	Ground bool
-	// PictureWidth is the width of pictures in pixels; 0 = 1600.
+	// PictureWidth is the width of pictures in pixels, those beneath the lines
+	// of drawings and reports included; 0 = 1600.
 	PictureWidth int
 	// Colour allows terminal colours in the summary.
 	Colour bool
+}
+
+func (o Options) pictureWidth() float64 {
+	if o.PictureWidth == 0 {
+		return 1600
+	}
+	return float64(min(max(o.PictureWidth, 100), 8000))
 }
 
 // A Format is one kind of file.

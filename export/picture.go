@@ -27,10 +27,7 @@ func writePNG(ctx context.Context, w io.Writer, r *canopy.Result, o Options) err
 		return err
 	}
 	const finer = 2
-	width := 1600.0
-	if o.PictureWidth > 0 {
-		width = float64(min(max(o.PictureWidth, 100), 8000))
-	}
+	width := o.pictureWidth()
 	f := fit(r, axonometric(-60, 30), width, 0.75*width, 0.055*width)
 	// Lines keep their share of the picture.
 	p := newPicture(r, f.zoomed(finer), finer*width/1600)

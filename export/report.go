@@ -34,7 +34,7 @@ const (
 // writeReport writes one page of HTML that needs nothing else: what was asked
 // and found, drawings, a live view, tables, findings and the audit in words.
 // Without scripts a drawing stands in the place of the live view.
-func writeReport(ctx context.Context, w io.Writer, r *canopy.Result, _ Options) error {
+func writeReport(ctx context.Context, w io.Writer, r *canopy.Result, o Options) error {
 	p := &report{newText(ctx, w), r}
 	p.str("<!doctype html>\n<html lang=\"en\">\n<head>\n<meta charset=\"utf-8\">\n<meta name=\"viewport\" content=\"width=device-width, initial-scale=1\">\n")
 	// Nothing is loaded from anywhere.
@@ -45,7 +45,7 @@ func writeReport(ctx context.Context, w io.Writer, r *canopy.Result, _ Options) 
 	if err := ctx.Err(); err != nil {
 		return err
 	}
-	live := p.drawings()
+	live := p.drawings(o)
 	p.histogram()
 	p.cables()
 	p.stays()
@@ -183,7 +183,7 @@ func (p *report) found() {
 
 // drawings writes the plan, the live view with the axonometric in its place,
 // and the elevations. It reports whether there is a live view.
-func (p *report) drawings() bool {
+func (p *report) drawings(o Options) bool {
 	r := p.r
 	live := len(r.Structure.Corners) <= mostLive && len(r.Structure.Ends) <= mostLiveMembers && len(r.Form.Position) > 0
 	figures := map[string]string{
@@ -194,7 +194,7 @@ func (p *report) drawings() bool {
 	// The plan first, then what shows the shape, then the elevations.
 	order := []view{all[0], all[3], all[1], all[2]}
 	for _, v := range order {
-		d := draw(r, v)
+		d := draw(r, v, o)
 		if v.name == "axonometric" {
 			p.heading("The shape")
 		} else {

@@ -16,24 +16,24 @@ import (
 	"github.com/stretchr/testify/require"
 )
 
-func reportOf(t *testing.T, r *canopy.Result) string {
+func reportOf(t *testing.T, r *canopy.Result, o Options) string {
 	t.Helper()
 	var b bytes.Buffer
-	require.NoError(t, writeReport(background, &b, r, Options{}))
+	require.NoError(t, writeReport(background, &b, r, o))
 	return b.String()
 }
 
 func TestReportTellsTheStory(t *testing.T) {
 	r := sail(10)
 	r.Form.Steps = []string{"one linear solve"}
-	s := reportOf(t, r)
+	s := reportOf(t, r, quick)
 	for _, want := range []string{"Quay market sail", "the audit trusts it", canopy.Caution, ">Plan<", "Elevation", "Reactions and actions on foundations",
 		"G1 anchor", "58.40", "The flattest place slopes 4.1°", "common practice", "one linear solve", "virial", "1.001 (0.950 … 1.050)"} {
 		require.Contains(t, s, want)
 	}
 	require.Less(t, strings.Index(s, ">Plan<"), strings.Index(s, "Elevation"), "the plan first")
 	r.Audit.Trusted, r.Audit.Reasons = false, []string{"It moves <b>"}
-	s = reportOf(t, r)
+	s = reportOf(t, r, quick)
 	require.Contains(t, s, "Not trusted")
 	require.Contains(t, s, "It moves &lt;b&gt;")
 }
@@ -44,7 +44,7 @@ func TestReportIsSelfContainedAndEscapes(t *testing.T) {
 	evil := `</script><img src="http://x.example/" onerror="alert(1)">`
 	r.Title, r.Structure.Cables[0].Name, r.Structure.Fabrics[0].Name = evil, evil, evil
 	r.Findings[0].Text = evil
-	s := reportOf(t, r)
+	s := reportOf(t, r, quick)
 	require.NotContains(t, s, "<img src")
 	require.Equal(t, 2, strings.Count(s, "</script>"))
 	outside := regexp.MustCompile(`(?:src|href)="([^"]*)"`)
@@ -57,7 +57,7 @@ func TestReportIsSelfContainedAndEscapes(t *testing.T) {
 
 func TestReportsOfOtherForms(t *testing.T) {
 	for name, r := range scenes() {
-		s := regexp.MustCompile(`(base64,|":")[A-Za-z0-9+/=]{100,}`).ReplaceAllString(reportOf(t, r), "")
+		s := regexp.MustCompile(`(base64,|":")[A-Za-z0-9+/=]{100,}`).ReplaceAllString(reportOf(t, r, quick), "")
 		require.NotContains(t, strings.ReplaceAll(s, reportScript, ""), "NaN", name)
 	}
 }
@@ -66,7 +66,7 @@ func TestReportsOfOtherForms(t *testing.T) {
 func TestReportIsSmall(t *testing.T) {
 	r := sail(71)
 	require.Greater(t, len(r.Structure.Corners), 10000)
-	require.Less(t, len(reportOf(t, r)), 1<<20)
+	require.Less(t, len(reportOf(t, r, Options{})), 1<<20)
 }
 
 // In a browser: no error, no request, the canvas shows the shape, dragging turns
