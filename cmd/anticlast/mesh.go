@@ -118,7 +118,7 @@ type fabricMesh struct {
 	Longest    float64 `json:"longest_side_m"`
 	LeastAngle float64 `json:"least_angle_deg"`
 	MeanAngle  float64 `json:"mean_least_angle_deg"`
-	Free       bool    `json:"free"`
+	Mesh       string  `json:"mesh"` // free, structured or given
 	sides      float64
 }
 
@@ -154,10 +154,15 @@ func reportMesh(m *canopy.Model, s *canopy.Structure, free []mesh.Quality) *mesh
 		}
 	}
 	r.triangles(s)
+	for i := range r.Fabrics {
+		if r.Fabrics[i].Mesh = "structured"; m.Listed != nil {
+			r.Fabrics[i].Mesh = "given"
+		}
+	}
 	for _, q := range free {
 		for i := range r.Fabrics {
 			if r.Fabrics[i].Name == q.Fabric {
-				r.Fabrics[i].Free = true
+				r.Fabrics[i].Mesh = "free"
 			}
 		}
 		if !q.Met {
@@ -263,11 +268,7 @@ func (r *meshReport) write(w io.Writer, svg string) error {
 		}
 		fmt.Fprintf(b, "\n  %-*s  triangles   area m²  sides m: least   mean  longest  angles: least  mean  mesh\n", wide, "fabric")
 		for _, f := range r.Fabrics {
-			how := "structured"
-			if f.Free {
-				how = "free"
-			}
-			fmt.Fprintf(b, "  %-*s  %9d  %8.1f  %14.3f  %5.3f  %7.3f  %12.1f°  %4.1f  %s\n", wide, f.Name, f.Triangles, f.Area, f.Shortest, f.Mean, f.Longest, f.LeastAngle, f.MeanAngle, how)
+			fmt.Fprintf(b, "  %-*s  %9d  %8.1f  %14.3f  %5.3f  %7.3f  %12.1f°  %4.1f  %s\n", wide, f.Name, f.Triangles, f.Area, f.Shortest, f.Mean, f.Longest, f.LeastAngle, f.MeanAngle, f.Mesh)
 		}
 		most := 1
 		for _, c := range r.Angles {

@@ -93,7 +93,6 @@ func (d *drawn) roles() {
 
 // boundaries checks the boundary of every fabric and net.
 func (d *drawn) boundaries() {
-	count := map[int]int{}
 	for k := range len(d.boundaryRefs) + len(d.holeRefs) {
 		var refs []ref
 		what := ""
@@ -121,10 +120,6 @@ func (d *drawn) boundaries() {
 			seen[i] = true
 			edges = append(edges, i)
 			good = good && d.edgeGood[i]
-			count[i]++
-			if count[i] == 3 {
-				d.r.fail(q.n, q.p, fmt.Sprintf("edge %q bounds more than two fabrics or nets; %s is the third", q.name, what), "an edge serves one or two of them")
-			}
 		}
 		if !good {
 			continue

@@ -107,6 +107,23 @@ func FuzzListedCSV(f *testing.F) {
 	})
 }
 
+func FuzzOutline(f *testing.F) {
+	const layers = "  layers: {RIM: {cable: {sag: 9 %}, height: 3 m}, WALL: fixed, TREE: hole, RIDGE: {ridge: {force: 3 kN}}, MAST: point}\n"
+	const fabric = "  fabric: {prestress: 2 kN/m}\n"
+	f.Add([]byte("anticlast: 1\noutline:\n  file: a.csv\n"+layers+"  heights: [{point: RIM:1, z: 4}, {at: [9, 0], z: 2}]\n"+fabric), []byte("layer,x [m],y [m]\nRIM,0,0\nRIM,9,0\nRIM,9,8\nRIM,0,0\n\nTREE,6,2\nTREE,7,2\nTREE,7,3\nTREE,6,2\n\nMAST,8,1\n\nWALL,0,0\nWALL,9,8\n\nRIDGE,9,0\nRIDGE,9,8\n"))
+	f.Add([]byte("anticlast: 1\noutline:\n  file: a.dxf\n  units: mm\n"+layers+fabric), []byte("0\nSECTION\n2\nENTITIES\n0\nLWPOLYLINE\n8\nRIM\n70\n1\n10\n0\n20\n0\n42\n0.2\n10\n9000\n20\n0\n10\n9000\n20\n9000\n0\nCIRCLE\n8\nTREE\n10\n7000\n20\n3000\n40\n900\n0\nENDSEC\n0\nEOF\n"))
+	f.Add([]byte("anticlast: 1\noutline: {file: a.obj, units: m, edge: {force: 3 kN}, fabric: {prestress: 2}}\n"), []byte("v 0 0 0\nv 1 0 0\nv 1 1 0\nv 0 1 1\nf 1 2 3 4\n"))
+	f.Add([]byte("anticlast: 1\noutline: {file: a.stl, units: m, fabric: {prestress: 2, warp: [0, 1, 0]}}\n"), []byte("solid\nfacet\nouter loop\nvertex 0 0 0\nvertex 1 0 0\nvertex 0 1 0\nendloop\nendfacet\nendsolid\n"))
+	f.Fuzz(func(t *testing.T, text, file []byte) {
+		if len(text) > 1<<12 || len(file) > 1<<14 {
+			return
+		}
+		o := spec.WithTables(spec.Options{Warn: func(spec.Diagnostic) {}}, map[string][]byte{"a.csv": file, "a.dxf": file, "a.obj": file, "a.stl": file})
+		m, err := spec.Read(context.Background(), spec.Input(bytes.NewReader(text), "."), o)
+		checkOutcome(t, m, err)
+	})
+}
+
 func FuzzQuantity(f *testing.F) {
 	for _, s := range []string{"25 kN", "2.5kN/m", "600 mm", "8 %", "3°", "1e-3 m", "-0.5", "2 kN/m²", "1_000", "0x10", "1:30", ".5", "5.", "+7 t", "daN/5cm", "NaN", "9007199254740993 N", "0.1e-400 m"} {
 		for d := range 10 {

@@ -292,6 +292,8 @@ func TestAMeshIsTakenAsTheTopology(t *testing.T) {
 		"layers":       {strings.Replace(model, "units: mm", "units: mm, layers: {A: fixed}", 1), square(), "layers are for drawings"},
 		"bad face":     {model, square() + "f 1 2 99\n", `tent.obj:14: there is no vertex "99"`},
 		"three at one": {model, square() + "v 500 0 900\nf 1 2 10\nf 2 1 10\n", "triangles meet along the side from (0, 0, 0) mm to (1000, 0, 0) mm"},
+		"no sag":       {strings.Replace(model, "EDGE", "{sag: 8 %}", 1), "v 0 0 0\nv 1000 0 0\nv 1000 1000 0\nv 0 1000 0\nf 1 2 3 4\n", "cable edge:1 from (0, 0, 0) mm to (1000, 0, 0) mm is one side of the mesh and cannot sag"},
+		"closed":       {model, "v 0 0 0\nv 1000 0 0\nv 0 1000 0\nv 0 0 1000\nf 1 3 2\nf 1 2 4\nf 2 3 4\nf 3 1 4\n", "is closed: it has no edge"},
 		"two rules":    {strings.Replace(model, "EDGE", "{force: 3, sag: 0.1}", 1), square(), "the force of the cables is decided twice"},
 	} {
 		t.Run(name, func(t *testing.T) {

@@ -80,6 +80,13 @@ func (r *reader) outlineMesh(f, g *fields, m *canopy.Model) {
 			r.fail(g.keyNode("edge"), g.p.down("edge"), fmt.Sprintf("the edge of the mesh has no corner by which its cables could be held (round %s)", meshPlace(st.Position[loop[0]], u)), "lower corner, or make it fixed")
 		}
 	}
+	for _, c := range st.Cables {
+		if c.Law == canopy.CableSag && len(c.Members) == 1 {
+			a, z := st.Position[c.Nodes[0]], st.Position[c.Nodes[1]]
+			r.fail(g.keyNode("edge"), g.p.down("edge"), fmt.Sprintf("cable %s from %s to %s is one side of the mesh and cannot sag", c.Name, meshPlace(a, u), meshPlace(z, u)), "give the force, or use a finer mesh")
+			return
+		}
+	}
 	m.Listed = st
 }
 
