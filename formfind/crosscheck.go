@@ -47,7 +47,7 @@ func crossCheck(ctx context.Context, s *canopy.Structure, found found, o Options
 	if found.surface != nil && equalStress(s) {
 		smooth := found.surface
 		normals := surface.VertexNormals(smooth.Position, s.Corners)
-		start := alongNormals(smooth, relax.Disturb(s, smooth, 2, 3e-4*size), normals)
+		start := alongNormals(smooth, relax.Disturb(s, smooth, 2, 3e-4*size), shapeNormals(s, smooth, normals))
 		set := set
 		set.AllDirections = false
 		g, out, err := second(&relax.Engine{}, start, set)
@@ -80,6 +80,22 @@ func alongNormals(f, disturbed *canopy.Form, normals []r3.Vec) *canopy.Form {
 		}
 	}
 	return &out
+}
+
+// shapeNormals are the normals of nodes, for nodes on cables made square to the
+// cable: along it a node may slide, and would not come back from there.
+func shapeNormals(s *canopy.Structure, f *canopy.Form, normals []r3.Vec) []r3.Vec {
+	out := append([]r3.Vec(nil), normals...)
+	for _, c := range s.Cables {
+		for j := 1; j < len(c.Nodes)-1; j++ {
+			along := r3.Sub(f.Position[c.Nodes[j+1]], f.Position[c.Nodes[j-1]])
+			if l := r3.Norm(along); l > 0 {
+				n := &out[c.Nodes[j]]
+				*n = r3.Sub(*n, r3.Scale(r3.Dot(*n, along)/l/l, along))
+			}
+		}
+	}
+	return out
 }
 
 func verdict(f *canopy.Form, out engine.Outcome, apart float64, what string) string {

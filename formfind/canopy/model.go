@@ -67,7 +67,7 @@ const (
 	EdgeSeam                  // nothing: two fabrics are joined along it
 )
 
-// Edge runs from one point to another and bounds one or two fabrics or nets,
+// Edge runs from one point to another and bounds any number of fabrics or nets,
 // or none (a cable in space).
 type Edge struct {
 	Name     string
