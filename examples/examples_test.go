@@ -17,7 +17,7 @@ import (
 func TestExamplesAreTrusted(t *testing.T) {
 	files, err := filepath.Glob("*.yaml")
 	require.NoError(t, err)
-	require.GreaterOrEqual(t, len(files), 8)
+	require.GreaterOrEqual(t, len(files), 15)
 	for _, file := range files {
 		t.Run(file, func(t *testing.T) {
 			ctx := context.Background()

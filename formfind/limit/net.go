@@ -79,7 +79,7 @@ func (c *check) equalMeshes() {
 			continue
 		}
 		f := canopy.Finding{ID: "equal-mesh", Severity: canopy.Note, Source: SourceModel, Value: n.length, Count: 1,
-			Text: fmt.Sprintf("Net %s is knotted from %.1f m of cable without stress: %s of %.4f m each between %s, and %.1f m in %s cut to fit at the boundary; forces %s to %s.",
+			Text: fmt.Sprintf("Net %s takes %.1f m of cable, measured without stress: %s of %.4f m each between %s, and %.1f m in %s cut to fit at the boundary; forces %s to %s.",
 				n.name, n.length, plural(n.meshes, "mesh side", "mesh sides"), n.unstressed, plural(len(n.nodes), "crossing", "crossings"),
 				n.endLength, plural(n.ends, "end piece", "end pieces"), kN(n.least), kN(n.most))}
 		if len(n.slack.at) > 0 {
