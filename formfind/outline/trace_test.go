@@ -123,6 +123,7 @@ func TestFaultsHaveTheirPlaces(t *testing.T) {
 			"the outline is open: RIM (line 3) ends at (0, 0, 0) m: the nearest other end, of RIM (line 6), is 0.02 m away at (0, 0.02, 0) m",
 			"the outline is open: RIM (line 6) ends at (0, 0.02, 0) m"}, false},
 		"T-junction":       {[]string{rim, "RIDGE 5,0 5,4"}, []string{"RIDGE (line 9) ends at (5, 0, 0) m on RIM (line 3), between its ends"}, false},
+		"nearly a T":       {[]string{rim, "RIDGE 5,0.003 5,4"}, []string{"RIDGE (line 9) ends at (5, 0.003, 0) m on RIM (line 3), between its ends"}, false},
 		"crossing":         {[]string{rim, "RIDGE 5,-1 5,4"}, []string{"RIM (line 3) and RIDGE (line 9) cross at (5, 0, 0) m"}, false},
 		"crossing heights": {[]string{"RIM 0,0,1 10,0,3 10,8 0,8 0,0,1", "RIDGE 5,-1 5,4"}, []string{"cross at (5, 0, 2) m"}, false},
 		"overlap":          {[]string{rim, "WALL 10,0 6,0"}, []string{"WALL (line 9) ends at (6, 0, 0) m on RIM (line 3)"}, false},
