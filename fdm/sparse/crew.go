@@ -4,7 +4,6 @@ import (
 	"context"
 	"errors"
 	"sync"
-	"sync/atomic"
 )
 
 // errDelay says that a static LDL run met a front without enough pivots.
@@ -55,18 +54,21 @@ func (b *blockJob) piece(kind jobKind, i int) {
 type crew struct {
 	f       *Factor
 	workers []worker
-	wake    chan struct{}
-	done    sync.WaitGroup
 
-	// The job at hand: parts 0 to parts-1, taken in turn.
-	next  atomic.Int64
-	parts int64
-	kind  jobKind
-	ctx   context.Context
-	vals  []float64
-	block blockJob
+	// The job at hand: parts 0 to parts-1, taken in turn under the lock. What
+	// describes it does not change before all parts are finished. Nobody waits
+	// for a helper that has not taken a part: on a busy machine it may come late,
+	// and then finds another job, or that its run is over.
+	mu                    sync.Mutex
+	finishedAll           sync.Cond
+	run                   int // number of the factorisation
+	next, parts, finished int
+	kind                  jobKind
+	ctx                   context.Context
+	vals                  []float64
+	block                 blockJob
+	wake                  chan struct{}
 
-	mu       sync.Mutex
 	badFront int32
 	badPlace int32
 	badPivot float64
@@ -98,7 +100,7 @@ func (c *crew) init(f *Factor, n int) {
 	}
 	if n > 1 {
 		f.store = make([]float64, p.topStore+slack)
-		c.wake = make(chan struct{}, n)
+		c.finishedAll.L = &c.mu
 	}
 }
 
@@ -109,39 +111,38 @@ func (c *crew) factor(ctx context.Context, values []float64) error {
 	lead := &c.workers[0]
 	if len(c.workers) == 1 {
 		lead.alone = true
-		c.run(ctx, values, lead, 0, int32(a.fronts())-1)
+		c.eliminate(ctx, values, lead, 0, int32(a.fronts())-1)
 		return c.result()
 	}
-	for i := range c.workers[1:] {
-		go c.help(&c.workers[i+1])
-	}
 	c.ctx, c.vals = ctx, values
+	c.wake = make(chan struct{}, len(c.workers))
+	c.mu.Lock()
+	c.run++
+	run := c.run
+	c.mu.Unlock()
 	for i := range c.workers {
 		c.workers[i].alone = true
+		if i > 0 {
+			go c.help(&c.workers[i], c.wake, run)
+		}
 	}
 	c.split(jobSubtrees, len(a.plan.taskRoot))
 	lead.alone = false
 	for _, s := range a.plan.top {
-		if s > c.badFront || c.err != nil {
-			break
-		}
-		if !c.run(ctx, values, lead, s, s) {
+		if s > c.badFront || c.err != nil || !c.eliminate(ctx, values, lead, s, s) {
 			break
 		}
 	}
-	// A token too many ends a helper.
-	c.parts = -1
-	c.done.Add(len(c.workers) - 1)
-	for range c.workers[1:] {
-		c.wake <- struct{}{}
-	}
-	c.done.Wait()
+	c.mu.Lock()
+	c.run++
+	c.mu.Unlock()
+	close(c.wake)
 	c.ctx, c.vals = nil, nil
 	return c.result()
 }
 
-// run eliminates the fronts from to to.
-func (c *crew) run(ctx context.Context, values []float64, w *worker, from, to int32) bool {
+// eliminate runs the fronts from to to.
+func (c *crew) eliminate(ctx context.Context, values []float64, w *worker, from, to int32) bool {
 	for s := from; s <= to; s++ {
 		if err := ctx.Err(); err != nil {
 			c.mu.Lock()
@@ -174,45 +175,57 @@ func (c *crew) result() error {
 	return nil
 }
 
-// help takes part in jobs until one with a negative number of parts.
-func (c *crew) help(w *worker) {
-	for range c.wake {
-		if c.parts < 0 {
-			c.done.Done()
-			return
-		}
-		c.take(w)
-		c.done.Done()
+// help takes part in the jobs of one run.
+func (c *crew) help(w *worker, wake <-chan struct{}, run int) {
+	for range wake {
+		c.take(w, run)
 	}
 }
 
 // split does a job of so many parts with all workers. Which worker does which
 // part has no influence on the result.
 func (c *crew) split(kind jobKind, parts int) {
-	c.kind, c.parts = kind, int64(parts)
-	c.next.Store(0)
-	helpers := min(len(c.workers), parts) - 1
-	c.done.Add(max(helpers, 0))
-	for range helpers {
-		c.wake <- struct{}{}
+	c.mu.Lock()
+	c.kind, c.next, c.parts, c.finished = kind, 0, parts, 0
+	run := c.run
+	c.mu.Unlock()
+	for range min(len(c.workers), parts) - 1 {
+		select {
+		case c.wake <- struct{}{}:
+		default: // as many are on their way already
+		}
 	}
-	c.take(&c.workers[0])
-	c.done.Wait()
+	c.take(&c.workers[0], run)
+	c.mu.Lock()
+	for c.finished < c.parts {
+		c.finishedAll.Wait()
+	}
+	c.mu.Unlock()
 }
 
 // take works on parts of the job until none is left.
-func (c *crew) take(w *worker) {
+func (c *crew) take(w *worker, run int) {
 	for {
-		i := c.next.Add(1) - 1
-		if i >= c.parts {
+		c.mu.Lock()
+		if c.run != run || c.next >= c.parts {
+			c.mu.Unlock()
 			return
 		}
-		switch c.kind {
-		case jobSubtrees:
+		i := c.next
+		c.next++
+		kind := c.kind
+		c.mu.Unlock()
+		if kind == jobSubtrees {
 			p := &c.f.a.plan
-			c.run(c.ctx, c.vals, w, p.taskFirst[i], p.taskRoot[i])
-		default:
-			c.block.piece(c.kind, int(i))
+			c.eliminate(c.ctx, c.vals, w, p.taskFirst[i], p.taskRoot[i])
+		} else {
+			c.block.piece(kind, i)
 		}
+		c.mu.Lock()
+		c.finished++
+		if c.finished == c.parts {
+			c.finishedAll.Signal()
+		}
+		c.mu.Unlock()
 	}
 }
