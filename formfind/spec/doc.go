@@ -1,6 +1,6 @@
 // Package spec reads model files: YAML text, written by a person, that says
-// what a designer wants, and CSV tables of engineers who bring their own
-// topology.
+// what a designer wants, CSV tables of engineers who bring their own topology,
+// and outlines that were drawn elsewhere.
 //
 // [Read] checks everything it reads and reports all errors at once, each with
 // file, line, column, the offending text, what is wrong and the way out:
@@ -23,6 +23,14 @@
 // a column in brackets where it is not the bare one: x [mm]. Lines that start
 // with # are comments. They are streamed into the flat arrays of a
 // [canopy.Structure]; a million rows take a fraction of a second.
+//
+// # Outlines
+//
+// An outline is a drawing (DXF or a CSV of points) beside the model file. Its
+// layers become edges, cables, masts, guys and points, its faces fabrics with
+// the holes, lines and points inside them; see package [outline]. An OBJ or STL
+// mesh becomes a listed structure. Faults of a drawing are told with its file
+// and line and with places in its unit.
 package spec
 
 import _ "anticlast/formfind/canopy" // for the links above

@@ -49,7 +49,7 @@ type Options struct {
 	Set []string
 	// Warn, if set, gets what is doubtful but not wrong, in order.
 	Warn func(Diagnostic)
-	// AnyFolder permits CSV files outside the model's folder, by absolute
+	// AnyFolder permits CSV files and drawings outside the model's folder, by absolute
 	// path or through "..". Without it they are refused, so that a model
 	// from a stranger cannot read other files.
 	AnyFolder bool
@@ -73,8 +73,8 @@ const (
 // all of them; other errors are those of reading files or of ctx.
 //
 // The model's Digest is the SHA-256 of all bytes read: the model file, its CSV
-// files in the order nodes, supports, members, triangles, loads, and each
-// entry of o.Set.
+// files in the order nodes, supports, members, triangles, loads, or the drawing
+// of its outline, and each entry of o.Set.
 func Read(ctx context.Context, src Source, o Options) (*canopy.Model, error) {
 	if o.MaxBytes == 0 {
 		o.MaxBytes = defaultMaxBytes
