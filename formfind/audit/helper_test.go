@@ -167,9 +167,7 @@ func solveForm(t testing.TB, s *canopy.Structure, q []float64) *canopy.Form {
 	settle(t, s, q)
 	found := append([]r3.Vec(nil), s.Position...)
 	copy(s.Position, ref)
-	for i := range found {
-		s.Position[i] = found[i]
-	}
+	copy(s.Position, found)
 	f := canopy.NewForm(s)
 	for m, e := range s.Ends {
 		f.Force[m] = q[m] * r3.Norm(r3.Sub(f.Position[e[1]], f.Position[e[0]]))

@@ -33,7 +33,7 @@ func (o Orthotropic) Check() error {
 	}
 	nu := o.PoissonWarpWeft
 	if d := 1 - nu*nu*o.Weft/o.Warp; !(d > 0) || math.IsNaN(nu) {
-		return fmt.Errorf("Poisson's ratio %g of fabric (weft contraction under warp stress) must be smaller in size than √(warp/weft modulus) = %.4g",
+		return fmt.Errorf("the Poisson ratio %g of fabric (weft contraction under warp stress) must be smaller in size than √(warp/weft modulus) = %.4g",
 			nu, math.Sqrt(o.Warp/o.Weft))
 	}
 	return nil

@@ -445,9 +445,8 @@ func TestRefusals(t *testing.T) {
 			return m
 		}, mesh.Missing, "cable", "e0", "what force"},
 		"one-sided": {func() *canopy.Model {
-			m := polygon(4)
 			// Three fabrics around, the last with a twist.
-			m = &canopy.Model{Points: []canopy.Point{pt("A", 0, 0, 0), pt("B", 0, 0, 1), pt("C", 4, 0, 0), pt("D", 4, 0, 1), pt("E", 2, 4, 0), pt("F", 2, 4, 1)}}
+			m := &canopy.Model{Points: []canopy.Point{pt("A", 0, 0, 0), pt("B", 0, 0, 1), pt("C", 4, 0, 0), pt("D", 4, 0, 1), pt("E", 2, 4, 0), pt("F", 2, 4, 1)}}
 			for _, e := range [][3]string{{"s1", "A", "B"}, {"s2", "C", "D"}, {"s3", "E", "F"}} {
 				m.Edges = append(m.Edges, canopy.Edge{Name: e[0], From: e[1], To: e[2], Kind: canopy.EdgeSeam})
 			}

@@ -62,9 +62,7 @@ func TestRigidRingReportsTheCoupleThatKeepsItLevel(t *testing.T) {
 			{Z: 1}, {X: 0.5, Z: 1}, {Y: 0.5, Z: 1}, {X: -0.5, Z: 1}, {Y: -0.5, Z: 1},
 			{X: 4}, {X: 1, Y: 5, Z: 0.5}, {X: -3, Z: -1}, {Y: -6},
 		}, []int32{5, 6, 7, 8}, [][2]int32{{1, 5}, {2, 6}, {3, 7}, {4, 8}})
-		for k, q := range []float64{1000, 700, 1500, 900} {
-			s.Given[k] = q
-		}
+		copy(s.Given, []float64{1000, 700, 1500, 900})
 		s.Fixed[0] = canopy.DirX | canopy.DirY
 		s.Master = []int32{-1, 0, 0, 0, 0, -1, -1, -1, -1}
 		s.Load[0].Z = 3000

@@ -32,7 +32,6 @@ type state struct {
 	force0          []r3.Vec // forces of the last step
 	lineOf          []int32  // index into line, −1; nil without lines
 	parts           []sums
-	ringSums        sums
 	smooth          float64    // damping in proportion to stiffness, steps
 	safety          float64    // factor on all masses
 	directed        []directed // masses with directions, nil without elastic elements
