@@ -69,7 +69,7 @@ MODEL may be - for standard input; form.json then goes to standard output unless
 	fl.StringVarP(&f.out, "out", "o", "", "folder to write (default: MODEL-form beside the model); - for form.json on standard output")
 	fl.StringArrayVar(&f.set, "set", nil, "change a value of the model for this run, `PATH=VALUE`; may be repeated")
 	fl.StringSliceVar(&f.also, "also", nil, "further formats to write into the folder (see anticlast export --list)")
-	fl.BoolVar(&f.watch, "watch", false, "form again whenever the model file is saved, until interrupted")
+	fl.BoolVar(&f.watch, "watch", false, "form again whenever the model file, or a drawing or table beside it, is saved, until interrupted")
 	fl.BoolVar(&f.crossCheck, "cross-check", false, "have a second, independent engine confirm the shape")
 	fl.StringVar(&f.method, "method", "auto", "auto, or relax for dynamic relaxation throughout")
 	fl.StringVar(&f.trace, "trace", "", "write residual against iteration and time to a CSV `FILE`")

@@ -22,7 +22,8 @@ func (a *app) readModel(ctx context.Context, path string, set []string) (*canopy
 	} else if info, err := os.Stat(path); err == nil && info.IsDir() {
 		return nil, usageError{fmt.Errorf("%s is a folder; name the model file in it", path)}
 	}
-	m, err := spec.Read(ctx, src, spec.Options{Set: set, Warn: func(d spec.Diagnostic) {
+	a.beside = nil
+	m, err := spec.Read(ctx, src, spec.Options{Set: set, Beside: func(p string) { a.beside = append(a.beside, besideFile{p, stampOf(p)}) }, Warn: func(d spec.Diagnostic) {
 		if !a.quiet {
 			fmt.Fprintf(a.Err, "anticlast: warning: %s\n", d)
 		}

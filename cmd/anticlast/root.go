@@ -16,6 +16,8 @@ type app struct {
 	Streams
 	json  bool
 	quiet bool
+	// beside are the tables and drawings of the model read last.
+	beside []besideFile
 }
 
 // Run runs the command line and returns the exit code: the one place where an

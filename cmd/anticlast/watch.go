@@ -12,8 +12,8 @@ import (
 // works on every file system and with every editor's way of saving.
 const watchInterval = 150 * time.Millisecond
 
-// watch forms the model now and after every change of its file until ctx is
-// done. Faults of a run are said and the watch goes on.
+// watch forms the model now and after every change of its file, or of a table or
+// drawing beside it, until ctx is done. Faults of a run are said and the watch goes on.
 func (a *app) watch(ctx context.Context, path string, f formFlags) error {
 	if path == "-" {
 		return usageError{errors.New("standard input cannot be watched; name a model file")}
@@ -26,7 +26,7 @@ func (a *app) watch(ctx context.Context, path string, f formFlags) error {
 	var last stamp
 	for {
 		now := stampOf(path)
-		if now != last && now != (stamp{}) {
+		if now != last && now != (stamp{}) || changed(a.beside) {
 			last = now
 			start := time.Now()
 			err := a.form(ctx, path, f)
@@ -63,4 +63,20 @@ func stampOf(path string) stamp {
 		return stamp{}
 	}
 	return stamp{info.ModTime(), info.Size()}
+}
+
+// besideFile is a table or drawing and how it was when it was read.
+type besideFile struct {
+	path string
+	was  stamp
+}
+
+// changed reports whether a file is there and is not as it was.
+func changed(files []besideFile) bool {
+	for _, f := range files {
+		if now := stampOf(f.path); now != f.was && now != (stamp{}) {
+			return true
+		}
+	}
+	return false
 }

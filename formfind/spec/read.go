@@ -49,6 +49,8 @@ type Options struct {
 	Set []string
 	// Warn, if set, gets what is doubtful but not wrong, in order.
 	Warn func(Diagnostic)
+	// Beside, if set, gets the path of every CSV file or drawing that is opened.
+	Beside func(path string)
 	// AnyFolder permits CSV files and drawings outside the model's folder, by absolute
 	// path or through "..". Without it they are refused, so that a model
 	// from a stranger cannot read other files.

@@ -309,6 +309,13 @@ func (r *reader) open(name string) (io.ReadCloser, int64, *complaint) {
 	if err != nil {
 		return failed(err)
 	}
+	if r.options.Beside != nil {
+		at := filepath.FromSlash(name)
+		if !filepath.IsAbs(at) {
+			at = filepath.Join(r.folder, at)
+		}
+		r.options.Beside(at)
+	}
 	return f, st.Size(), nil
 }
 
