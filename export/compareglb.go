@@ -68,7 +68,7 @@ func (g *scene) sheetsIn(name string, c rgb, to *canopy.Result) []int {
 		p := &gltf.Primitive{
 			Attributes: gltf.PrimitiveAttributes{
 				gltf.POSITION: g.positions(len(m.node), func(k int) r3.Vec { return r.Form.Position[m.node[k]] }),
-				gltf.NORMAL:   g.normals(len(m.node), func(k int) r3.Vec { return m.normal[k] }),
+				gltf.NORMAL:   g.vectors(len(m.node), func(k int) r3.Vec { return m.normal[k] }),
 			},
 			Indices:  gltf.Index(g.indices(3*len(m.corners), len(m.node), func(k int) int32 { return m.corners[k/3][k%3] })),
 			Material: gltf.Index(paint),
@@ -83,7 +83,7 @@ func (g *scene) sheetsIn(name string, c rgb, to *canopy.Result) []int {
 				gltf.POSITION: g.positions(len(m.node), func(k int) r3.Vec {
 					return r3.Add(g.origin, r3.Sub(to.Form.Position[m.node[k]], r.Form.Position[m.node[k]]))
 				}),
-				gltf.NORMAL: g.normals(len(m.node), func(k int) r3.Vec { return r3.Sub(other.normal[k], m.normal[k]) }),
+				gltf.NORMAL: g.vectors(len(m.node), func(k int) r3.Vec { return r3.Sub(other.normal[k], m.normal[k]) }),
 			}}
 			g.doc.Meshes[mesh].Weights = []float64{0}
 		}
@@ -117,11 +117,8 @@ func (g *scene) animate(root int) {
 
 // track appends an accessor of numbers of an animation.
 func (g *scene) track(v []float64) int {
-	view := g.view(gltf.TargetNone, 0, func(b []byte) []byte {
-		for _, x := range v {
-			b = appendFloat32(b, x)
-		}
-		return b
+	view := g.floats(gltf.TargetNone, len(v), 1, func() func(i int, out []float64) {
+		return func(i int, out []float64) { out[0] = v[i] }
 	})
 	return g.accessor(&gltf.Accessor{BufferView: gltf.Index(view), ComponentType: gltf.ComponentFloat, Type: gltf.AccessorScalar, Count: len(v)})
 }

@@ -1,6 +1,7 @@
 package export
 
 import (
+	"bytes"
 	"context"
 	"encoding/binary"
 	"fmt"
@@ -69,37 +70,49 @@ func writeGLB(ctx context.Context, w io.Writer, r *canopy.Result, o Options) err
 
 // write writes the document and its buffer.
 func (g *scene) write(ctx context.Context, w io.Writer) error {
-	if len(g.bin) > 0 {
-		g.doc.Buffers = []*gltf.Buffer{{ByteLength: len(g.bin), Data: g.bin}}
+	if g.length > 0 {
+		g.doc.Buffers = []*gltf.Buffer{{ByteLength: g.length}}
 	}
 	g.dropUnusedMaterials()
-	if len(g.bin) > math.MaxUint32-1<<24 {
-		return fmt.Errorf("form.glb: %d bytes are more than a GLB can hold", len(g.bin))
+	if g.length > math.MaxUint32-1<<24 {
+		return fmt.Errorf("form.glb: %d bytes are more than a GLB can hold", g.length)
 	}
-	sticky := &stickyWriter{ctx: ctx, w: w}
-	if err := gltf.NewEncoder(sticky).Encode(g.doc); err != nil {
+	var description bytes.Buffer
+	e := gltf.NewEncoder(&description)
+	e.AsBinary = false
+	if err := e.Encode(g.doc); err != nil {
 		return err
 	}
-	return sticky.err
-}
-
-// stickyWriter remembers the first error, for the encoder does not look at all.
-type stickyWriter struct {
-	ctx context.Context
-	w   io.Writer
-	err error
-}
-
-func (s *stickyWriter) Write(p []byte) (int, error) {
-	if s.err == nil {
-		s.err = s.ctx.Err()
+	for description.Len()%4 != 0 {
+		description.WriteByte(' ')
 	}
-	if s.err != nil {
-		return 0, s.err
+	// glTF 2.0, section 4.4: a header of three numbers, then chunks of a length,
+	// a type and their bytes.
+	t := newText(ctx, w)
+	number := func(v int) { t.b = binary.LittleEndian.AppendUint32(t.b, uint32(v)) }
+	total := 12 + 8 + description.Len()
+	if g.length > 0 {
+		total += 8 + g.length
 	}
-	var n int
-	n, s.err = s.w.Write(p)
-	return n, s.err
+	t.str("glTF")
+	number(2)
+	number(total)
+	number(description.Len())
+	t.str("JSON")
+	t.flush()
+	t.b = append(t.b, description.Bytes()...)
+	if g.length > 0 {
+		number(g.length)
+		t.str("BIN\x00")
+	}
+	for _, c := range g.chunks {
+		t.flush()
+		if t.err != nil {
+			break
+		}
+		c(t)
+	}
+	return t.close()
 }
 
 // glbLayer is the root node of a way to show the fabric.
@@ -110,14 +123,17 @@ type glbLayer struct {
 	extras map[string]any
 }
 
-// scene gathers a glTF document and its binary buffer.
+// scene gathers a glTF document and how to write its binary buffer. The numbers
+// in the buffer are as many times as large as the model: first only their places
+// are laid out, and what fills them is made while it is written.
 type scene struct {
 	r      *canopy.Result
 	doc    *gltf.Document
-	bin    []byte
-	origin r3.Vec  // of the positions in the buffers
-	size   float64 // of the model
-	most   float64 // largest size of a member force
+	length int           // of the buffer in bytes
+	chunks []func(*text) // write the buffer, part by part
+	origin r3.Vec        // of the positions in the buffers
+	size   float64       // of the model
+	most   float64       // largest size of a member force
 	unlit  map[string]int
 	lit    map[string]int
 }
@@ -165,17 +181,40 @@ func (g *scene) root(name string, children []int) []int {
 // upY turns a vector into glTF's axes.
 func upY(v r3.Vec) [3]float64 { return [3]float64{v.X, v.Z, -v.Y} }
 
-// view appends a buffer view over bytes added to the buffer, which stays aligned
-// to four bytes.
-func (g *scene) view(target gltf.Target, stride int, add func(b []byte) []byte) int {
-	start := len(g.bin)
-	g.bin = add(g.bin)
-	v := &gltf.BufferView{ByteOffset: start, ByteLength: len(g.bin) - start, ByteStride: stride, Target: target}
-	for len(g.bin)%4 != 0 {
-		g.bin = append(g.bin, 0)
-	}
+// view appends a buffer view over n elements of the given size in bytes, each
+// appended by what start returns; the buffer stays aligned to four bytes.
+func (g *scene) view(target gltf.Target, stride, n, size int, start func() func(b []byte, i int) []byte) int {
+	v := &gltf.BufferView{ByteOffset: g.length, ByteLength: n * size, ByteStride: stride, Target: target}
 	g.doc.BufferViews = append(g.doc.BufferViews, v)
+	padding := -n * size & 3
+	g.length += n*size + padding
+	g.chunks = append(g.chunks, func(t *text) {
+		put := start()
+		for i := range n {
+			t.b = put(t.b, i)
+			if !t.more() {
+				return
+			}
+		}
+		for range padding {
+			t.b = append(t.b, 0)
+		}
+	})
 	return len(g.doc.BufferViews) - 1
+}
+
+// floats is a view over numbers in single precision, per from each of n elements.
+func (g *scene) floats(target gltf.Target, n, per int, start func() func(i int, out []float64)) int {
+	return g.view(target, 0, n, 4*per, func() func(b []byte, i int) []byte {
+		put, out := start(), make([]float64, per)
+		return func(b []byte, i int) []byte {
+			put(i, out)
+			for _, v := range out {
+				b = appendFloat32(b, v)
+			}
+			return b
+		}
+	})
 }
 
 func (g *scene) accessor(a *gltf.Accessor) int {
@@ -187,30 +226,27 @@ func (g *scene) accessor(a *gltf.Accessor) int {
 func (g *scene) positions(n int, at func(i int) r3.Vec) int {
 	lo := [3]float32{math.MaxFloat32, math.MaxFloat32, math.MaxFloat32}
 	hi := [3]float32{-math.MaxFloat32, -math.MaxFloat32, -math.MaxFloat32}
-	view := g.view(gltf.TargetArrayBuffer, 0, func(b []byte) []byte {
-		for i := range n {
-			for k, c := range upY(r3.Sub(at(i), g.origin)) {
-				f := float32(c)
-				lo[k], hi[k] = min(lo[k], f), max(hi[k], f)
-				b = binary.LittleEndian.AppendUint32(b, math.Float32bits(f))
-			}
+	origin := g.origin
+	for i := range n {
+		for k, c := range upY(r3.Sub(at(i), origin)) {
+			f := float32(c)
+			lo[k], hi[k] = min(lo[k], f), max(hi[k], f)
 		}
-		return b
-	})
+	}
+	a := g.vectors(n, func(i int) r3.Vec { return r3.Sub(at(i), origin) })
 	// The bounds must be those of the rounded numbers.
 	wide := func(v [3]float32) []float64 { return []float64{float64(v[0]), float64(v[1]), float64(v[2])} }
-	return g.accessor(&gltf.Accessor{BufferView: gltf.Index(view), ComponentType: gltf.ComponentFloat, Type: gltf.AccessorVec3,
-		Count: n, Min: wide(lo), Max: wide(hi)})
+	g.doc.Accessors[a].Min, g.doc.Accessors[a].Max = wide(lo), wide(hi)
+	return a
 }
 
-func (g *scene) normals(n int, at func(i int) r3.Vec) int {
-	view := g.view(gltf.TargetArrayBuffer, 0, func(b []byte) []byte {
-		for i := range n {
-			for _, c := range upY(at(i)) {
-				b = appendFloat32(b, c)
-			}
+// vectors appends an accessor of n vectors in glTF's axes.
+func (g *scene) vectors(n int, at func(i int) r3.Vec) int {
+	view := g.floats(gltf.TargetArrayBuffer, n, 3, func() func(i int, out []float64) {
+		return func(i int, out []float64) {
+			v := upY(at(i))
+			copy(out, v[:])
 		}
-		return b
 	})
 	return g.accessor(&gltf.Accessor{BufferView: gltf.Index(view), ComponentType: gltf.ComponentFloat, Type: gltf.AccessorVec3, Count: n})
 }
@@ -221,34 +257,30 @@ func appendFloat32(b []byte, v float64) []byte {
 
 // colours appends an accessor of linear colours in 16 bits, in which dark
 // shades stay apart.
-func (g *scene) colours(n int, at func(i int) rgb) int {
-	view := g.view(gltf.TargetArrayBuffer, 8, func(b []byte) []byte {
-		for i := range n {
+func (g *scene) colours(n int, start func() func(i int) rgb) int {
+	view := g.view(gltf.TargetArrayBuffer, 8, n, 8, func() func(b []byte, i int) []byte {
+		at := start()
+		return func(b []byte, i int) []byte {
 			for _, c := range at(i) {
 				b = binary.LittleEndian.AppendUint16(b, uint16(math.Round(65535*c)))
 			}
-			b = binary.LittleEndian.AppendUint16(b, 65535)
+			return binary.LittleEndian.AppendUint16(b, 65535)
 		}
-		return b
 	})
 	return g.accessor(&gltf.Accessor{BufferView: gltf.Index(view), ComponentType: gltf.ComponentUshort, Normalized: true, Type: gltf.AccessorVec4, Count: n})
 }
 
 // indices appends an accessor of n indices below vertices.
 func (g *scene) indices(n, vertices int, at func(i int) int32) int {
-	kind, short := gltf.ComponentUint, vertices < math.MaxUint16
-	if short {
-		kind = gltf.ComponentUshort
+	kind, size := gltf.ComponentUint, 4
+	if vertices < math.MaxUint16 {
+		kind, size = gltf.ComponentUshort, 2
 	}
-	view := g.view(gltf.TargetElementArrayBuffer, 0, func(b []byte) []byte {
-		for i := range n {
-			if short {
-				b = binary.LittleEndian.AppendUint16(b, uint16(at(i)))
-			} else {
-				b = binary.LittleEndian.AppendUint32(b, uint32(at(i)))
-			}
+	view := g.view(gltf.TargetElementArrayBuffer, 0, n, size, func() func(b []byte, i int) []byte {
+		if size == 2 {
+			return func(b []byte, i int) []byte { return binary.LittleEndian.AppendUint16(b, uint16(at(i))) }
 		}
-		return b
+		return func(b []byte, i int) []byte { return binary.LittleEndian.AppendUint32(b, uint32(at(i))) }
 	})
 	return g.accessor(&gltf.Accessor{BufferView: gltf.Index(view), ComponentType: kind, Type: gltf.AccessorScalar, Count: n})
 }
@@ -327,7 +359,7 @@ func (g *scene) solid(name string, m *solid, material int) (int, bool) {
 	p := &gltf.Primitive{
 		Attributes: gltf.PrimitiveAttributes{
 			gltf.POSITION: g.positions(len(m.position), func(i int) r3.Vec { return m.position[i] }),
-			gltf.NORMAL:   g.normals(len(m.normal), func(i int) r3.Vec { return m.normal[i] }),
+			gltf.NORMAL:   g.vectors(len(m.normal), func(i int) r3.Vec { return m.normal[i] }),
 		},
 		Indices:  gltf.Index(g.indices(3*len(kept), len(m.position), func(i int) int32 { return kept[i/3][i%3] })),
 		Material: gltf.Index(material),
@@ -352,15 +384,7 @@ func (g *scene) lines(name string, position []r3.Vec, pairs [][2]int32, material
 func (g *scene) fabric() []glbLayer {
 	r := g.r
 	meshes := sheets(r)
-	type shared struct{ position, normal, index, warp, weft int }
-	stress := func(k int) []float64 {
-		v := make([]float64, len(r.Form.Stress))
-		for i, s := range r.Form.Stress {
-			v[i] = [2]float64{s.Warp, s.Weft}[k]
-		}
-		return v
-	}
-	warp, weft := stress(0), stress(1)
+	type shared struct{ position, normal, index, warp, weft, yarn int }
 	geometry := make([]shared, len(meshes))
 	empty := true
 	for i := range meshes {
@@ -369,11 +393,14 @@ func (g *scene) fabric() []glbLayer {
 			continue
 		}
 		empty = false
+		along, across := m.weave(r)
 		geometry[i] = shared{
 			g.positions(len(m.node), func(k int) r3.Vec { return r.Form.Position[m.node[k]] }),
-			g.normals(len(m.node), func(k int) r3.Vec { return m.normal[k] }),
+			g.vectors(len(m.node), func(k int) r3.Vec { return m.normal[k] }),
 			g.indices(3*len(m.corners), len(m.node), func(k int) int32 { return m.corners[k/3][k%3] }),
-			g.valuesOf(m, warp), g.valuesOf(m, weft),
+			g.valuesOf(m, func(t int) float64 { return r.Form.Stress[t].Warp }),
+			g.valuesOf(m, func(t int) float64 { return r.Form.Stress[t].Weft }),
+			g.textureCoordinates(along, across),
 		}
 	}
 	if empty {
@@ -394,6 +421,8 @@ func (g *scene) fabric() []glbLayer {
 			}
 			if colour != nil {
 				p.Attributes[gltf.COLOR_0] = colour(m)
+			} else {
+				p.Attributes[gltf.TEXCOORD_0] = geometry[i].yarn
 			}
 			what := "fabric " + r.Structure.Fabrics[i].Name
 			n := &gltf.Node{Name: what, Mesh: gltf.Index(g.mesh(what+", "+name, p))}
@@ -411,20 +440,27 @@ func (g *scene) fabric() []glbLayer {
 			extras["scale"] = map[string]any{"pale": 0.0, "dark": l.reach}
 		}
 		show(l.name, extras, g.material("fabric values", white, 1, true), func(m *sheetMesh) int {
-			v := m.atVertices(r, l.values)
-			return g.colours(len(v), func(k int) rgb { return l.colour(v[k]) })
+			return g.colours(len(m.node), func() func(k int) rgb {
+				v := m.atVertices(l.value)
+				return func(k int) rgb { return l.colour(v[k]) }
+			})
 		})
 		out[len(out)-1].legend = g.legend(&l)
 	}
-	show("plain", map[string]any{"layer": "fabric in light, without values", "caution": canopy.Caution},
-		g.material("fabric", fromScreen(245, 242, 235), 0.85, false), nil)
+	show("plain", map[string]any{
+		"layer":   "fabric in light, without values",
+		"yarn":    "TEXCOORD_0 is the length along warp and weft in m; the texture has a line a metre, strong ones along the warp",
+		"caution": canopy.Caution,
+	}, g.woven(), nil)
 	return out
 }
 
 // valuesOf appends an accessor of values of triangles at the vertices of a sheet.
-func (g *scene) valuesOf(m *sheetMesh, ofTriangle []float64) int {
-	v := m.atVertices(g.r, ofTriangle)
-	return g.scalars(len(v), func(i int) float64 { return v[i] })
+func (g *scene) valuesOf(m *sheetMesh, ofTriangle func(t int) float64) int {
+	return g.scalars(len(m.node), func() func(i int) float64 {
+		v := m.atVertices(ofTriangle)
+		return func(i int) float64 { return v[i] }
+	})
 }
 
 func (g *scene) fabricExtras(i int, m *sheetMesh) map[string]any {

@@ -229,9 +229,10 @@ func TestColoursOfLayers(t *testing.T) {
 }
 
 func TestDeviationReachIsRoundAndCovers(t *testing.T) {
-	require.Equal(t, 0.05, deviationReach([]float64{1, 1.001}))
-	require.Equal(t, 0.2, deviationReach([]float64{1, 0.85}))
-	require.Equal(t, 0.5, deviationReach([]float64{4, math.NaN(), math.Inf(1)}))
+	list := func(v ...float64) func(i int) float64 { return func(i int) float64 { return v[i] } }
+	require.Equal(t, 0.05, deviationReach(2, list(1, 1.001)))
+	require.Equal(t, 0.2, deviationReach(2, list(1, 0.85)))
+	require.Equal(t, 0.5, deviationReach(3, list(4, math.NaN(), math.Inf(1))))
 }
 
 func TestContourSpacingIsRound(t *testing.T) {

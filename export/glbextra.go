@@ -141,7 +141,7 @@ func (g *scene) legend(l *layer) []int {
 	mesh := g.mesh("scale of "+l.name, &gltf.Primitive{
 		Attributes: gltf.PrimitiveAttributes{
 			gltf.POSITION: g.positions(len(position), func(i int) r3.Vec { return position[i] }),
-			gltf.COLOR_0:  g.colours(len(colour), func(i int) rgb { return colour[i] }),
+			gltf.COLOR_0:  g.colours(len(colour), func() func(i int) rgb { return func(i int) rgb { return colour[i] } }),
 		},
 		Indices:  gltf.Index(g.indices(3*len(corners), len(position), func(i int) int32 { return corners[i/3][i%3] })),
 		Material: gltf.Index(g.material("fabric values", rgb{1, 1, 1}, 1, true)),
@@ -188,16 +188,14 @@ func fabricPoints(r *canopy.Result) []r3.Vec {
 }
 
 // scalars appends an accessor of a value per vertex, for attributes of our own.
-func (g *scene) scalars(n int, at func(i int) float64) int {
-	view := g.view(gltf.TargetArrayBuffer, 0, func(b []byte) []byte {
-		for i := range n {
-			v := at(i)
-			if math.IsNaN(v) {
-				v = 0
+func (g *scene) scalars(n int, start func() func(i int) float64) int {
+	view := g.floats(gltf.TargetArrayBuffer, n, 1, func() func(i int, out []float64) {
+		at := start()
+		return func(i int, out []float64) {
+			if out[0] = at(i); math.IsNaN(out[0]) {
+				out[0] = 0
 			}
-			b = appendFloat32(b, v)
 		}
-		return b
 	})
 	return g.accessor(&gltf.Accessor{BufferView: gltf.Index(view), ComponentType: gltf.ComponentFloat, Type: gltf.AccessorScalar, Count: n})
 }

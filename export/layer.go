@@ -14,8 +14,8 @@ type layer struct {
 	title string // with the unit
 	// centred layers are shown around 1 on two hues, others from 0 on one.
 	centred bool
-	reach   float64   // |value − 1| or value at the end of the scale
-	values  []float64 // per triangle
+	reach   float64             // |value − 1| or value at the end of the scale
+	value   func(t int) float64 // of triangle t
 }
 
 // colour of a value of the layer.
@@ -36,40 +36,40 @@ const (
 	layerSlope       = "slope"
 )
 
-// layers computes what can be shown in colour on the fabric of r.
+// layers tells what can be shown in colour on the fabric of r.
 func layers(r *canopy.Result) []layer {
 	s, f := r.Structure, r.Form
 	n := len(s.Corners)
 	if n == 0 {
 		return nil
 	}
-	warp, weft := make([]float64, n), make([]float64, n)
-	rel, worse := make([]float64, n), make([]float64, n)
-	tilt, used := make([]float64, n), make([]float64, n)
-	utilised := false
-	for i, got := range f.Stress {
-		want := s.Stress[i]
-		warp[i], weft[i] = ratio(got.Warp, want[0]), ratio(got.Weft, want[1])
-		rel[i] = ratio(warp[i], weft[i])
-		// The one that is farther from 1.
-		worse[i] = warp[i]
-		if math.IsNaN(worse[i]) || math.Abs(weft[i]-1) > math.Abs(warp[i]-1) {
-			worse[i] = weft[i]
+	warp := func(i int) float64 { return ratio(f.Stress[i].Warp, s.Stress[i][0]) }
+	weft := func(i int) float64 { return ratio(f.Stress[i].Weft, s.Stress[i][1]) }
+	rel := func(i int) float64 { return ratio(warp(i), weft(i)) }
+	worse := func(i int) float64 { // the one that is farther from 1
+		a, b := warp(i), weft(i)
+		if math.IsNaN(a) || math.Abs(b-1) > math.Abs(a-1) {
+			return b
 		}
-		normal, _ := triangleNormal(r, i)
-		tilt[i] = degrees(slope(normal))
-		used[i] = fabricUtilisation(r, i)
-		utilised = utilised || used[i] > 0
+		return a
 	}
-	reach := deviationReach(warp, weft)
+	tilt := func(i int) float64 {
+		normal, _ := triangleNormal(r, i)
+		return degrees(slope(normal))
+	}
+	used := func(i int) float64 { return fabricUtilisation(r, i) }
+	reach := deviationReach(n, warp, weft)
 	all := []layer{
 		{layerAchieved, "prestress achieved/specified, the worse of warp and weft", true, reach, worse},
 		{layerWarp, "warp prestress achieved/specified", true, reach, warp},
 		{layerWeft, "weft prestress achieved/specified", true, reach, weft},
-		{layerRatio, "(warp:weft)/nominal", true, deviationReach(rel), rel},
+		{layerRatio, "(warp:weft)/nominal", true, deviationReach(n, rel), rel},
 	}
-	if utilised {
-		all = append(all, layer{layerUtilisation, "utilisation, prestress only", false, 1, used})
+	for i := range n {
+		if used(i) > 0 {
+			all = append(all, layer{layerUtilisation, "utilisation, prestress only", false, 1, used})
+			break
+		}
 	}
 	return append(all, layer{layerSlope, "slope, degrees", false, 90, tilt})
 }
@@ -93,11 +93,11 @@ func fabricUtilisation(r *canopy.Result, i int) float64 {
 
 // deviationReach is the end of a scale around 1: a round number that no value
 // passes, at least 5 % so that noise does not look like news, at most 50 %.
-func deviationReach(values ...[]float64) float64 {
+func deviationReach(n int, values ...func(i int) float64) float64 {
 	most := 0.0
 	for _, v := range values {
-		for _, x := range v {
-			if d := math.Abs(x - 1); d > most && !math.IsInf(d, 0) {
+		for i := range n {
+			if d := math.Abs(v(i) - 1); d > most && !math.IsInf(d, 0) {
 				most = d
 			}
 		}
@@ -112,20 +112,27 @@ func deviationReach(values ...[]float64) float64 {
 
 // atVertices averages values of triangles at the vertices of a sheet, weighted
 // by area. Values that are not known are left out.
-func (m *sheetMesh) atVertices(r *canopy.Result, values []float64) []float64 {
+func (m *sheetMesh) atVertices(value func(t int) float64) []float64 {
 	sum, weight := make([]float64, len(m.node)), make([]float64, len(m.node))
+	whole := int32(len(m.node) - len(m.twin))
 	for k, t := range m.triangle {
-		v := values[t]
+		v := value(int(t))
 		if math.IsNaN(v) || math.IsInf(v, 0) {
 			continue
 		}
 		for _, c := range m.corners[k] {
+			if c >= whole {
+				c = m.twin[c-whole]
+			}
 			sum[c] += m.area[k] * v
 			weight[c] += m.area[k]
 		}
 	}
 	for i := range sum {
 		sum[i] /= weight[i] // NaN where nothing is known
+	}
+	for i, c := range m.twin {
+		sum[whole+int32(i)] = sum[c]
 	}
 	return sum
 }
@@ -137,6 +144,9 @@ type sheetMesh struct {
 	triangle []int32    // triangle of the structure
 	corners  [][3]int32 // its vertices
 	area     []float64
+	// twin are the vertices of which the last ones are copies: along a cut the
+	// sheet has two vertices at one node, see [sheetMesh.cut].
+	twin []int32
 }
 
 // sheets splits the triangles by fabric. Vertices come in the order of first

@@ -174,7 +174,7 @@ func writePLY(ctx context.Context, w io.Writer, r *canopy.Result, _ Options) err
 	sum, weight := make([]float64, len(f.Position)), make([]float64, len(f.Position))
 	for i, c := range s.Corners {
 		_, area := triangleNormal(r, i)
-		if v := shown.values[i]; !math.IsNaN(v) && !math.IsInf(v, 0) {
+		if v := shown.value(i); !math.IsNaN(v) && !math.IsInf(v, 0) {
 			for _, k := range c {
 				sum[k] += area * v
 				weight[k] += area

@@ -303,7 +303,8 @@ func (p *report) script() {
 	short := map[string][2]string{layerWarp: {"warp achieved", ""}, layerWeft: {"weft achieved", ""}, layerSlope: {"slope", "°"}, layerUtilisation: {"utilisation", ""}}
 	for _, l := range layers(r) {
 		b = b[:0]
-		for _, v := range l.values {
+		for i := range r.Structure.Corners {
+			v := l.value(i)
 			b = binary.LittleEndian.AppendUint32(b, math.Float32bits(float32(v)))
 		}
 		data.Layers = append(data.Layers, layerData{l.name, l.title, short[l.name][0], short[l.name][1], l.centred, l.reach, base64.StdEncoding.EncodeToString(b)})
@@ -406,7 +407,7 @@ func (p *report) histogram() {
 		_, area := triangleNormal(r, i)
 		total += area
 		for k := range 2 {
-			v := all[1+k].values[i]
+			v := all[1+k].value(i)
 			if math.IsNaN(v) {
 				continue
 			}

@@ -144,7 +144,7 @@ func (z *zbuffer) sees(p point, tolerance float64) bool {
 func fabricIn(r *canopy.Result, f *frame, l *layer) *zbuffer {
 	z := newZbuffer(int(math.Ceil(f.width)), int(math.Ceil(f.height)))
 	for _, m := range sheets(r) {
-		values := m.atVertices(r, l.values)
+		values := m.atVertices(l.value)
 		paper := make([]point, len(m.node))
 		for i, v := range m.node {
 			paper[i] = f.at(r.Form.Position[v])
