@@ -54,17 +54,27 @@ type dxf struct {
 
 const longest = 1 << 16 // of a line
 
-// text reads one line without its end.
-func (x *dxf) text() (string, error) {
+// text reads one line without its end. What it returns holds until the next one
+// is read.
+func (x *dxf) text() ([]byte, error) {
 	b, err := x.in.ReadSlice('\n')
 	if errors.Is(err, bufio.ErrBufferFull) {
-		return "", fmt.Errorf("longer than %d bytes", longest)
+		return nil, fmt.Errorf("longer than %d bytes", longest)
 	}
 	if err != nil && (err != io.EOF || len(b) == 0) {
-		return "", err
+		return nil, err
 	}
 	x.line++
-	return decode(bytes.TrimRight(b, "\r\n")), nil
+	return bytes.TrimRight(b, "\r\n"), nil
+}
+
+// used reports whether the value of a group matters to the reader.
+func used(code int) bool {
+	switch code {
+	case 0, 2, 8, 9, 10, 11, 20, 21, 30, 31, 38, 40, 42, 50, 51, 67, 70, 210, 220, 230:
+		return true
+	}
+	return false
 }
 
 // decode makes text of bytes: UTF-8 as newer drawings have it, else Latin-1,
@@ -113,12 +123,12 @@ func (x *dxf) next() (group, bool, error) {
 	if err != nil {
 		return x.broken(err)
 	}
-	c, err := strconv.Atoi(strings.TrimSpace(strings.TrimPrefix(code, "\ufeff")))
+	c, err := strconv.Atoi(string(bytes.TrimSpace(bytes.TrimPrefix(code, []byte("\ufeff")))))
 	if err != nil || c < -5 || c > 1071 {
 		if x.line == 1 {
-			return stop("save it as an ASCII DXF drawing (release 12 to 2018)", "%s", notDXF(code))
+			return stop("save it as an ASCII DXF drawing (release 12 to 2018)", "%s", notDXF(decode(code)))
 		}
-		return stop("the file is damaged, or not a DXF drawing", "a group code is expected, not %q", short(code))
+		return stop("the file is damaged, or not a DXF drawing", "a group code is expected, not %q", short(decode(code)))
 	}
 	value, err := x.text()
 	if err == io.EOF {
@@ -127,7 +137,11 @@ func (x *dxf) next() (group, bool, error) {
 	if err != nil {
 		return x.broken(err)
 	}
-	return group{c, value, x.line}, true, nil
+	g := group{code: c, line: x.line}
+	if used(c) {
+		g.value = decode(value)
+	}
+	return g, true, nil
 }
 
 // broken tells a fault of the file from one of reading it.
@@ -583,6 +597,9 @@ func (x *dxf) polyline(p *props, flat bool) {
 	}
 	for k := range last {
 		a, b := p.vertex[k], p.vertex[(k+1)%n]
+		if a.at == b.at {
+			continue // a vertex twice, as many programs close a line
+		}
 		if !flat || a.bulge == 0 {
 			x.segment(p, w(a.at), w(b.at))
 			continue

@@ -175,9 +175,29 @@ func TestDrawingsInManyShapes(t *testing.T) {
 	require.Len(t, d.Segments, 2)
 	near(t, r3.Vec{X: 1, Y: -1}, d.Segments[0].Through)
 	near(t, r3.Vec{X: 1, Y: 1}, d.Segments[1].Through)
+	// A closed line whose last vertex is its first again.
+	d, err = outline.ReadDXF(strings.NewReader(dxf("LWPOLYLINE 8 A 70 1 10 0 20 0 10 2 20 0 10 2 20 2 10 0 20 0")))
+	require.NoError(t, err)
+	require.Len(t, d.Segments, 3)
 	// Meshes of POLYLINE are not outlines; spline frames are not vertices.
 	d, err = outline.ReadDXF(strings.NewReader(dxf("POLYLINE 8 A 70 16", "VERTEX 10 0 20 0", "VERTEX 10 1 20 0", "SEQEND", "POLYLINE 8 A 70 4", "VERTEX 10 0 20 0", "VERTEX 10 9 20 9 70 16", "VERTEX 10 1 20 0", "SEQEND")))
 	require.NoError(t, err)
 	require.Len(t, d.Segments, 1)
 	require.Equal(t, "POLYLINE that is a mesh", d.Ignored[0].Kind)
+}
+
+func BenchmarkReadDXF(b *testing.B) {
+	var lines []string
+	for i := range 100_000 {
+		lines = append(lines, fmt.Sprintf("LINE 5 %X 8 PAVING 62 7 10 %d.5 20 %d.25 30 0.0 11 %d 21 %d 31 0.0", i, i, i%977, i+1, i%977))
+	}
+	text := dxf(lines...)
+	b.SetBytes(int64(len(text)))
+	b.ReportAllocs()
+	for b.Loop() {
+		d, err := outline.ReadDXF(strings.NewReader(text))
+		if err != nil || len(d.Segments) != len(lines) {
+			b.Fatal(err)
+		}
+	}
 }

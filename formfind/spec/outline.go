@@ -154,10 +154,11 @@ func (d *drawn) outline(g *fields) {
 	if !ok || len(dr.Faults) > 0 {
 		return
 	}
-	b.say(g.p, t.unlisted(dr))
+	names := dr.Layers()
+	b.say(g.p, t.unlisted(dr, names))
 	missing := false
 	for _, l := range t.layer {
-		missing = d.missing(l, dr) || missing
+		missing = d.missing(l, names) || missing
 	}
 	if missing || r.diags.failed() {
 		return // what is not drawn yet cannot be traced
@@ -186,31 +187,30 @@ func (d *drawn) outline(g *fields) {
 }
 
 // unlisted warns of layers and entities that are left out.
-func (t *traced) unlisted(dr *outline.Drawing) (out []outline.Fault) {
-	for _, name := range dr.Layers() {
+func (t *traced) unlisted(dr *outline.Drawing, names []string) (out []outline.Fault) {
+	type use struct{ n, line int }
+	uses := map[string]*use{}
+	count := func(layer string, line int) {
+		if u := uses[layer]; u != nil {
+			u.n++
+		} else {
+			uses[layer] = &use{1, line}
+		}
+	}
+	for _, s := range dr.Segments {
+		count(s.Layer, s.Line)
+	}
+	for _, p := range dr.Points {
+		count(p.Layer, p.Line)
+	}
+	for _, name := range names {
 		known := false
 		for _, l := range t.layer {
 			known = known || strings.EqualFold(l.Name, name)
 		}
-		if known {
-			continue
+		if u := uses[name]; !known {
+			out = append(out, outline.Fault{Line: u.line, Warning: true, Message: fmt.Sprintf("layer %q (%d line%s and points) is not in the model: left out", clip(name), u.n, plural(u.n)), Hint: "say what it is under layers, or ignore"})
 		}
-		n, first := 0, 0
-		for _, s := range dr.Segments {
-			if s.Layer == name {
-				if n++; first == 0 {
-					first = s.Line
-				}
-			}
-		}
-		for _, p := range dr.Points {
-			if p.Layer == name {
-				if n++; first == 0 {
-					first = p.Line
-				}
-			}
-		}
-		out = append(out, outline.Fault{Line: first, Warning: true, Message: fmt.Sprintf("layer %q (%d line%s and points) is not in the model: left out", clip(name), n, plural(n)), Hint: "say what it is under layers, or ignore"})
 	}
 	for _, i := range dr.Ignored {
 		for _, l := range t.layer {
@@ -223,11 +223,10 @@ func (t *traced) unlisted(dr *outline.Drawing) (out []outline.Fault) {
 }
 
 // missing complains about a layer of the model that the drawing does not have.
-func (d *drawn) missing(l outlineLayer, dr *outline.Drawing) bool {
+func (d *drawn) missing(l outlineLayer, names []string) bool {
 	if l.Class == outline.Unused {
 		return false
 	}
-	names := dr.Layers()
 	for _, n := range names {
 		if strings.EqualFold(n, l.Name) {
 			return false
