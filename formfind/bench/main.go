@@ -1,0 +1,363 @@
+// Command bench measures how fast shapes are found:
+//
+//	go run ./formfind/bench
+//	go run ./formfind/bench -triangles 15000,60000,250000 -methods newton,solve,relax,warm,lbfgs
+//
+// It prints one JSON object a line: case, method, triangles, seconds of
+// processor time, iterations, residual along the normals, relative error of the
+// area where the exact one is known. At the end of a case its growth exponent
+// (time ∝ triangles^exponent) and ratios against other methods.
+//
+//   - newton: force density start (as front door) and Newton to a residual of 1e-9;
+//   - solve: the whole front door: start, Newton, the pass that balances all
+//     directions, audit;
+//   - relax: dynamic relaxation in the shape-changing directions from the same
+//     start, at one size (-relax);
+//   - lbfgs: SciPy's L-BFGS-B on the area functional from the same start, at one
+//     size (-relax), stopped after -limit seconds; our time is then taken to the
+//     residual it reached;
+//   - warm: a canopy of 2,500 nodes found again after a mast head has moved,
+//     everything cached.
+package main
+
+import (
+	"bytes"
+	"context"
+	_ "embed"
+	"encoding/json"
+	"errors"
+	"flag"
+	"fmt"
+	"math"
+	"os"
+	"os/exec"
+	"path/filepath"
+	"slices"
+	"strconv"
+	"strings"
+
+	"gonum.org/v1/gonum/spatial/r3"
+
+	"anticlast/fdm"
+	"anticlast/formfind"
+	"anticlast/formfind/canopy"
+	"anticlast/formfind/engine"
+	"anticlast/formfind/internal/cases"
+	"anticlast/formfind/newton"
+	"anticlast/formfind/relax"
+)
+
+//go:embed lbfgs.py
+var lbfgs []byte
+
+type row struct {
+	Case       string   `json:"case"`
+	Method     string   `json:"method"`
+	Triangles  int      `json:"triangles,omitempty"`
+	Seconds    float64  `json:"seconds,omitempty"`
+	Iterations int      `json:"iterations,omitempty"`
+	Residual   float64  `json:"residual,omitempty"`
+	Error      *float64 `json:"error,omitempty"`
+	Ratio      float64  `json:"ratio,omitempty"`
+	Exponent   float64  `json:"exponent,omitempty"`
+	Note       string   `json:"note,omitempty"`
+}
+
+func (r row) print() {
+	b, err := json.Marshal(r)
+	if err != nil {
+		panic(err) // numbers and strings only
+	}
+	fmt.Println(string(b))
+}
+
+var surfaces = []struct {
+	name string
+	make func(n int) cases.Case // about 2n² triangles
+}{
+	{"catenoid", func(n int) cases.Case { return cases.Catenoid(0.5, 2*n, n/2, true, 1000) }},
+	{"scherk", func(n int) cases.Case { return cases.Scherk(1, n, 1000) }},
+	{"schwarz-d", func(n int) cases.Case { return cases.SchwarzD(n, 1000) }},
+	{"canopy", func(n int) cases.Case { return cases.FourPoint(10, 3, 2500, 30e3, 0.1, n) }},
+}
+
+func main() {
+	if err := run(); err != nil {
+		fmt.Fprintln(os.Stderr, "bench:", err)
+		os.Exit(1)
+	}
+}
+
+func run() error {
+	sizes := flag.String("triangles", "15000,60000", "numbers of triangles")
+	only := flag.String("cases", "catenoid,scherk,schwarz-d,canopy", "cases")
+	methods := flag.String("methods", "newton,solve,warm", "methods: newton, solve, relax, lbfgs, warm")
+	slow := flag.Int("relax", 60000, "number of triangles for relax and lbfgs")
+	python := flag.String("python", "python3", "interpreter with SciPy, for lbfgs")
+	limit := flag.Float64("limit", 60, "seconds for lbfgs")
+	flag.Parse()
+	ctx := context.Background()
+	use := func(m string) bool { return slices.Contains(strings.Split(*methods, ","), m) }
+	for _, k := range surfaces {
+		if !slices.Contains(strings.Split(*only, ","), k.name) {
+			continue
+		}
+		var size, seconds []float64
+		for _, f := range strings.Split(*sizes, ",") {
+			want, err := strconv.Atoi(f)
+			if err != nil {
+				return fmt.Errorf("triangles: %w", err)
+			}
+			c := k.make(2 * int(math.Round(math.Sqrt(float64(want)/2)/2)))
+			if use("newton") {
+				r, err := byNewton(ctx, k.name, c, 1e-9)
+				if err != nil {
+					return err
+				}
+				r.print()
+				size, seconds = append(size, math.Log(float64(r.Triangles))), append(seconds, math.Log(r.Seconds))
+			}
+			if use("solve") {
+				if err := bySolve(ctx, k.name, c); err != nil {
+					return err
+				}
+			}
+		}
+		if len(size) > 1 {
+			row{Case: k.name, Method: "newton", Exponent: slope(size, seconds), Note: "growth"}.print()
+		}
+		c := k.make(2 * int(math.Round(math.Sqrt(float64(*slow)/2)/2)))
+		if use("relax") {
+			if err := byRelax(ctx, k.name, c); err != nil {
+				return err
+			}
+		}
+		if use("lbfgs") {
+			if err := byLBFGS(ctx, k.name, c, *python, *limit); err != nil {
+				return err
+			}
+		}
+	}
+	if use("warm") {
+		return warm(ctx)
+	}
+	return nil
+}
+
+func slope(x, y []float64) float64 {
+	mx, my := 0.0, 0.0
+	for i := range x {
+		mx, my = mx+x[i]/float64(len(x)), my+y[i]/float64(len(x))
+	}
+	a, b := 0.0, 0.0
+	for i := range x {
+		a, b = a+(x[i]-mx)*(y[i]-my), b+(x[i]-mx)*(x[i]-mx)
+	}
+	return a / b
+}
+
+func areaError(c cases.Case, f *canopy.Form) *float64 {
+	if c.Area == 0 {
+		return nil
+	}
+	e := math.Abs(cases.Area(c.S, f.Position)/c.Area - 1)
+	return &e
+}
+
+// start is five updates of natural force densities from the rough shape, as
+// the front door starts.
+func start(ctx context.Context, s *canopy.Structure) (*canopy.Form, error) {
+	n := fdm.Network{Position: s.Position, Fixed: make([]fdm.Directions, len(s.Position)), Ends: s.Ends, Master: s.Master}
+	for i := range n.Fixed {
+		n.Fixed[i] = fdm.Directions(s.FixedAt(i))
+	}
+	panels := make([]fdm.Panel, len(s.Corners))
+	for t := range panels {
+		panels[t] = fdm.Panel{Corners: s.Corners[t], Warp: s.Warp[t], WarpStress: s.Stress[t][0], WeftStress: s.Stress[t][1]}
+	}
+	v, err := fdm.New(ctx, n, panels)
+	if err != nil {
+		return nil, err
+	}
+	g := fdm.Given{Force: make([]float64, len(s.Ends)), Density: make([]float64, len(s.Ends))}
+	copy(g.Force, s.Given)
+	from := s.Position
+	if cases.MinAngle(s, from) < 10*math.Pi/180 { // a rough shape that is no start
+		q := make([]float64, len(s.Ends))
+		for k, e := range s.Ends {
+			q[k] = s.Given[k] / r3.Norm(r3.Sub(from[e[1]], from[e[0]]))
+		}
+		from = slices.Clone(from)
+		if err := v.Shape(ctx, from, q); err != nil {
+			return nil, err
+		}
+	}
+	r, err := v.Natural(ctx, from, g, 5)
+	if err != nil {
+		return nil, err
+	}
+	f := canopy.NewForm(s)
+	copy(f.Position, r.Position)
+	return f, nil
+}
+
+func byNewton(ctx context.Context, name string, c cases.Case, residual float64) (row, error) {
+	t := processorSeconds()
+	at, err := start(ctx, c.S)
+	if err != nil {
+		return row{}, err
+	}
+	f, out, err := newton.Engine{}.Find(ctx, c.S, at, engine.Settings{Residual: residual, Worst: 10 * residual, Move: math.Max(1e-9, residual)})
+	if err != nil {
+		return row{}, err
+	}
+	if out.Status != engine.Converged {
+		return row{}, fmt.Errorf("%s: %s", name, out.Why)
+	}
+	return row{Case: name, Method: "newton", Triangles: len(c.S.Corners), Seconds: processorSeconds() - t, Iterations: out.Iterations, Residual: out.Residual, Error: areaError(c, f)}, nil
+}
+
+func bySolve(ctx context.Context, name string, c cases.Case) error {
+	t := processorSeconds()
+	r, err := formfind.Solve(ctx, c.S, formfind.Options{})
+	if err != nil {
+		return err
+	}
+	if !r.Audit.Trusted {
+		return fmt.Errorf("%s: %v", name, r.Audit.Reasons)
+	}
+	row{Case: name, Method: "solve", Triangles: len(c.S.Corners), Seconds: processorSeconds() - t, Residual: r.Audit.ResidualRMS, Error: areaError(c, r.Form)}.print()
+	return nil
+}
+
+func byRelax(ctx context.Context, name string, c cases.Case) error {
+	own, err := byNewton(ctx, name, c, 1e-9)
+	if err != nil {
+		return err
+	}
+	t := processorSeconds()
+	at, err := start(ctx, c.S)
+	if err != nil {
+		return err
+	}
+	f, out, err := (&relax.Engine{}).Find(ctx, c.S, at, engine.Settings{})
+	if err != nil {
+		return err
+	}
+	r := row{Case: name, Method: "relax", Triangles: len(c.S.Corners), Seconds: processorSeconds() - t, Iterations: out.Iterations, Residual: out.Residual, Error: areaError(c, f)}
+	r.Ratio = r.Seconds / own.Seconds
+	r.Note = fmt.Sprintf("%s; ratio to newton in the same run (%.3g s)", out.Status, own.Seconds)
+	r.print()
+	return nil
+}
+
+// handOver is what lbfgs.py reads.
+type handOver struct {
+	Position  [][3]float64 `json:"position"`
+	Free      []bool       `json:"free"`
+	Triangles [][3]int32   `json:"triangles"`
+	Stress    float64      `json:"stress"`
+	Members   [][2]int32   `json:"members"`
+	Force     []float64    `json:"force"`
+	Limit     float64      `json:"limit"`
+}
+
+func byLBFGS(ctx context.Context, name string, c cases.Case, python string, limit float64) error {
+	at, err := start(ctx, c.S)
+	if err != nil {
+		return err
+	}
+	h := handOver{Triangles: c.S.Corners, Stress: c.S.Stress[0][0], Members: c.S.Ends, Force: c.S.Given, Limit: limit}
+	for i, p := range at.Position {
+		h.Position = append(h.Position, [3]float64{p.X, p.Y, p.Z})
+		h.Free = append(h.Free, c.S.FixedAt(i) == 0)
+	}
+	dir, err := os.MkdirTemp("", "bench")
+	if err != nil {
+		return err
+	}
+	defer os.RemoveAll(dir)
+	data, err := json.Marshal(h)
+	if err != nil {
+		return err
+	}
+	model, script := filepath.Join(dir, "model.json"), filepath.Join(dir, "lbfgs.py")
+	if err := errors.Join(os.WriteFile(model, data, 0o600), os.WriteFile(script, lbfgs, 0o600)); err != nil {
+		return err
+	}
+	cmd := exec.CommandContext(ctx, python, script, model)
+	cmd.Stderr = os.Stderr
+	text, err := cmd.Output()
+	if err != nil {
+		return fmt.Errorf("lbfgs: %w", err)
+	}
+	var got struct {
+		Seconds    float64
+		Iterations int
+		Residual   float64 // along the normals
+		MinAngle   float64 // rad
+		Position   [][3]float64
+	}
+	if err := json.NewDecoder(bytes.NewReader(text)).Decode(&got); err != nil {
+		return fmt.Errorf("lbfgs: %w", err)
+	}
+	f := canopy.NewForm(c.S)
+	for i, p := range got.Position {
+		f.Position[i] = r3.Vec{X: p[0], Y: p[1], Z: p[2]}
+	}
+	r := row{Case: name, Method: "lbfgs", Triangles: len(c.S.Corners), Seconds: got.Seconds, Iterations: got.Iterations, Residual: got.Residual, Error: areaError(c, f)}
+	if got.MinAngle < math.Pi/180 {
+		r.Note = fmt.Sprintf("no result: its mesh collapsed (smallest angle %.2g°)", got.MinAngle*180/math.Pi)
+		r.print()
+		return nil
+	}
+	own, err := byNewton(ctx, name, c, math.Max(got.Residual, 1e-9))
+	if err != nil {
+		return err
+	}
+	r.Ratio, r.Note = got.Seconds/own.Seconds, fmt.Sprintf("ratio to newton to the same residual in the same run (%.3g s)", own.Seconds)
+	r.print()
+	return nil
+}
+
+// warm moves a mast head of a canopy of 2,500 nodes by a hundredth of its span
+// to and fro and finds the form anew from the last one.
+func warm(ctx context.Context) error {
+	c := cases.FourPoint(10, 3, 2500, 30e3, 0.1, 49)
+	cold, again, steps := math.Inf(1), math.Inf(1), 0
+	var v *newton.Solver
+	var f *canopy.Form
+	for range 5 {
+		t := processorSeconds()
+		at, err := start(ctx, c.S)
+		if err != nil {
+			return err
+		}
+		if v, err = newton.New(ctx, c.S); err != nil {
+			return err
+		}
+		if f, _, err = v.Find(ctx, at, engine.Settings{}); err != nil {
+			return err
+		}
+		cold = math.Min(cold, processorSeconds()-t)
+	}
+	head, up := len(c.S.Position)-1, 0.1
+	const times = 40
+	t := processorSeconds()
+	for i := range times {
+		c.S.Position[head].Z += up
+		up = -up
+		g, out, err := v.Find(ctx, f, engine.Settings{})
+		if err != nil || out.Status != engine.Converged {
+			return fmt.Errorf("warm: %w %s", err, out.Why)
+		}
+		f, steps = g, steps+out.Iterations
+		if i%4 == 3 {
+			again, t = math.Min(again, (processorSeconds()-t)/4), processorSeconds()
+		}
+	}
+	row{Case: "canopy of 2,500 nodes", Method: "cold", Triangles: len(c.S.Corners), Seconds: cold}.print()
+	row{Case: "canopy of 2,500 nodes", Method: "warm", Triangles: len(c.S.Corners), Seconds: again, Iterations: steps / times, Ratio: cold / again,
+		Note: fmt.Sprintf("%.2f frames of 1/60 s; ratio cold to warm", again*60)}.print()
+	return nil
+}
