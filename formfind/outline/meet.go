@@ -1,7 +1,9 @@
 package outline
 
 import (
+	"cmp"
 	"math"
+	"slices"
 
 	"gonum.org/v1/gonum/spatial/r3"
 )
@@ -65,8 +67,72 @@ func (s *sieve) visit(q piece, margin float64, do func(cell int)) {
 
 const maxTests = 20_000_000
 
-// meetings finds lines that meet elsewhere than at their ends.
+// meetings finds lines that meet elsewhere than at their ends. Lines that are
+// held all along are broken where others end on them.
 func (t *tracer) meetings() {
+	for range 3 { // a line broken may meet others at its new ends
+		cuts := t.meet()
+		if t.failed || len(cuts) == 0 {
+			return
+		}
+		t.cut(cuts)
+		if t.duplicates(); t.failed {
+			return
+		}
+		if t.lay(); t.failed {
+			return
+		}
+	}
+	t.fail(0, "break lines where others end on them", "lines that end on each other could not be broken")
+}
+
+// cut is a place where a line is to be broken.
+type cut struct {
+	item, node int
+	at         float64 // the part of the line before it
+}
+
+// cut breaks lines at nodes, in order along each.
+func (t *tracer) cut(cuts []cut) {
+	slices.SortFunc(cuts, func(a, b cut) int {
+		return cmp.Or(cmp.Compare(a.item, b.item), cmp.Compare(a.at, b.at), cmp.Compare(a.node, b.node))
+	})
+	var out []item
+	for i, it := range t.items {
+		from, s := it.a, 0.0
+		add := func(to int, e float64) {
+			n := it
+			n.path = nil
+			n.a, n.b = from, to
+			n.A, n.B = t.nodes[from].at, t.nodes[to].at
+			if it.Arc {
+				n.Through = arcPoint(it.A, it.Through, it.B, (s+e)/2)
+				n.Arc = !straight(n.A, n.Through, n.B)
+			}
+			if from != to {
+				out = append(out, n)
+			}
+			from, s = to, e
+		}
+		for ; len(cuts) > 0 && cuts[0].item == i; cuts = cuts[1:] {
+			c := cuts[0]
+			if c.node != from {
+				add(c.node, c.at)
+			}
+			on := &t.nodes[c.node]
+			by := "a point is"
+			if len(on.items) > 0 {
+				by = t.label(&t.items[on.items[0]]) + " ends"
+			}
+			t.warn(it.Line, "", "%s is broken at %s, where %s", t.label(&it), t.place(on.at), by)
+		}
+		add(it.b, 1)
+	}
+	t.items = out
+}
+
+// meet returns where lines are to be broken, and fails where they may not be.
+func (t *tracer) meet() (cuts []cut) {
 	var p []piece
 	for i, it := range t.items {
 		for k := 1; k < len(it.path); k++ {
@@ -91,7 +157,7 @@ func (t *tracer) meetings() {
 		}
 		for _, k := range s.cell[s.row(at.y)*s.nx+s.column(at.x)] {
 			if over() {
-				return
+				return nil
 			}
 			q := p[k]
 			it := &t.items[q.item]
@@ -99,15 +165,22 @@ func (t *tracer) meetings() {
 				continue
 			}
 			said[[2]int{-1 - n, q.item}] = true
+			if u, on := it.cutAt(t.nodes[n].at, q, t.Snap); on && !t.layers[it.layer].Cable && !t.layers[it.layer].Whole {
+				cuts = append(cuts, cut{q.item, n, u})
+				continue
+			}
 			t.touches(n, it)
 		}
+	}
+	if len(cuts) > 0 || t.failed {
+		return cuts
 	}
 	// Lines that cross.
 	for _, c := range s.cell {
 		for i, k := range c {
 			for _, l := range c[i+1:] {
 				if over() {
-					return
+					return nil
 				}
 				a, b := p[min(k, l)], p[max(k, l)]
 				key := [2]int{a.item, b.item}
@@ -124,6 +197,27 @@ func (t *tracer) meetings() {
 			}
 		}
 	}
+	return nil
+}
+
+// cutAt returns the part of a line before v, which is near its piece q in plan;
+// on says that it is near in space, too, and not at an end.
+func (it *item) cutAt(v r3.Vec, q piece, snap float64) (u float64, on bool) {
+	k, n := 0, len(it.path)-1
+	for it.path[k] != q.a {
+		k++
+	}
+	dx, dy := q.b.x-q.a.x, q.b.y-q.a.y
+	s := 0.0
+	if l := dx*dx + dy*dy; l > 0 {
+		s = min(1, max(0, ((v.X-q.a.x)*dx+(v.Y-q.a.y)*dy)/l))
+	}
+	u = (float64(k) + s) / float64(n)
+	at := r3.Add(it.A, r3.Scale(u, r3.Sub(it.B, it.A)))
+	if it.Arc {
+		at = arcPoint(it.A, it.Through, it.B, u)
+	}
+	return u, apart3(at, v) <= 2*snap && apart3(v, it.A) > snap && apart3(v, it.B) > snap
 }
 
 // heightAt returns the height of a line at the part u of one of its pieces.

@@ -29,6 +29,9 @@ type Layer struct {
 	// Apart says that the points of this layer do not touch the surface even
 	// where they lie inside it.
 	Apart bool
+	// Whole says that lines of this layer are not broken where others end on
+	// them; those of cables never are.
+	Whole bool
 	// Cable says that a line runs on through vertices where it hardly turns.
 	Cable bool
 }
@@ -380,6 +383,9 @@ func (t *tracer) duplicates() {
 
 // lay draws the lines in plan and joins them to their nodes.
 func (t *tracer) lay() {
+	for i := range t.nodes {
+		t.nodes[i].items, t.nodes[i].stays = nil, 0
+	}
 	for i := range t.items {
 		it := &t.items[i]
 		if apart(flat(it.A), flat(it.B)) <= t.Snap && !it.Arc {

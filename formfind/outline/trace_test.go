@@ -154,6 +154,33 @@ func TestFaultsHaveTheirPlaces(t *testing.T) {
 	}
 }
 
+// A wall is held all along: what ends on it breaks it, and says so.
+func TestWallsAreBrokenWhereLinesEndOnThem(t *testing.T) {
+	o, faults := trace(t, draw(t, "WALL 0,0,3 10,0,3 10,8,5 0,8 0,0,3", "RIDGE 4,0.003,3 5,8,2.5", "RIDGE 7,0,3 8,4", "MAST 2,0,3"), metre)
+	require.Len(t, faults, 4, "%v", faults)
+	for i, w := range []string{"WALL (line 3) is broken at (2, 0, 3) m, where a point is", "WALL (line 3) is broken at (4, 0.003, 3) m, where RIDGE (line 9) ends", "WALL (line 3) is broken at (7, 0, 3) m, where RIDGE (line 12) ends", "WALL (line 5) is broken at (5, 8, 2.5) m"} {
+		require.True(t, faults[i].Warning)
+		require.Contains(t, faults[i].String(), w)
+	}
+	require.Len(t, o.Faces, 2)
+	require.Equal(t, []string{"WALL:1", "WALL:2", "RIDGE:1", "WALL:7", "WALL:8"}, edgeNames(o, o.Faces[0].Boundary))
+	require.Equal(t, []string{"RIDGE:2"}, edgeNames(o, o.Faces[1].Lines))
+	// Not where it passes above.
+	_, faults = trace(t, draw(t, "WALL 0,0,3 10,0,3 10,8 0,8 0,0,3", "RIDGE 4,0 5,8"), metre)
+	require.Contains(t, faults[len(faults)-1].String(), "between its ends")
+	// An arc is broken into two arcs of one circle.
+	d, err := outline.ReadDXF(strings.NewReader(dxf("LWPOLYLINE 8 WALL 70 1 10 -5 20 0 42 1 10 5 20 0", "LINE 8 RIDGE 10 -5 20 0 11 3 21 -4")))
+	require.NoError(t, err)
+	o, faults = trace(t, d, metre)
+	require.Len(t, faults, 1)
+	require.Len(t, o.Faces, 2)
+	for _, e := range o.Edges {
+		if e.Arc {
+			require.InDelta(t, 5, math.Hypot(e.Through.X, e.Through.Y), 1e-6)
+		}
+	}
+}
+
 func TestACableWithoutCorners(t *testing.T) {
 	d, err := outline.ReadDXF(strings.NewReader(dxf("CIRCLE 8 RIM 10 0 20 0 40 5")))
 	require.NoError(t, err)

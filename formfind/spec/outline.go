@@ -267,6 +267,7 @@ func (d *drawn) layers(g *fields) (out []outlineLayer) {
 		}
 		l.Cable = l.what == "cable" || l.what == "ridge" || l.what == "valley"
 		l.Apart = l.what == "anchor"
+		l.Whole = l.rise != 0
 		out = append(out, l)
 	}
 	return out
