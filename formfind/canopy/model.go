@@ -112,6 +112,16 @@ const (
 	WarpAround                 // around the axis of the ring
 )
 
+// FabricPattern says how a fabric is meshed.
+type FabricPattern uint8
+
+// Patterns of fabric meshes.
+const (
+	FabricAuto  FabricPattern = iota // along the sides where that makes no thin triangles, else free
+	FabricSides                      // lines along the sides of the boundary, or out from the ring
+	FabricFree                       // triangles of even size in any outline
+)
+
 // ModelFabric is one piece of fabric.
 type ModelFabric struct {
 	Name     string
@@ -125,7 +135,11 @@ type ModelFabric struct {
 	// holes or of each other, or freely inside.
 	Lines []string
 	// Inside are points inside it at which a node of the mesh must lie.
-	Inside     []string
+	Inside  []string
+	Pattern FabricPattern
+	// Plane is the normal of the plane in which a free mesh is laid out; zero =
+	// chosen.
+	Plane      r3.Vec
 	WarpRule   WarpRule
 	WarpDir    r3.Vec  // for WarpAlong; zero = along the first edge
 	Warp, Weft float64 // prestress, N/m

@@ -3,6 +3,7 @@ package mesh
 import (
 	"math"
 
+	"anticlast/formfind/canopy"
 	"gonum.org/v1/gonum/spatial/r3"
 )
 
@@ -15,10 +16,15 @@ func (b *builder) choosePatch(l *loop) patcher {
 	switch {
 	case l.net && !b.alongSides(l):
 		return lineNet{}
+	case l.pattern == canopy.FabricFree:
+		return freePatch{}
 	case len(l.holes)+len(l.lines)+len(l.points) > 0:
+		if l.pattern == canopy.FabricSides {
+			b.fail(l.part(), l.name, l.line, Mismatch, "leave out the pattern", "it has holes, lines or points inside and cannot be meshed along its sides")
+		}
 		return freePatch{}
 	case l.ring >= 0:
-		if !b.seesOutline(l) {
+		if l.pattern != canopy.FabricSides && !b.seesOutline(l) {
 			return freePatch{}
 		}
 		return radialPatch{}
@@ -31,7 +37,7 @@ func (b *builder) choosePatch(l *loop) patcher {
 	default:
 		p = starPatch{}
 	}
-	if !l.net && !b.fairSides(l) {
+	if !l.net && l.pattern != canopy.FabricSides && !b.fairSides(l) {
 		return freePatch{}
 	}
 	return p

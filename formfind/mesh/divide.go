@@ -96,7 +96,7 @@ func (b *builder) misfit(d *division) *loop {
 			switch l.patch.(type) {
 			case radialPatch, freePatch:
 			default:
-				if !l.net {
+				if !l.net && l.pattern != canopy.FabricSides {
 					return l
 				}
 			}

@@ -1,7 +1,6 @@
 package mesh
 
 import (
-	"fmt"
 	"math"
 	"slices"
 
@@ -49,9 +48,8 @@ func (freePatch) fill(p *plot) {
 		p.b.fail(l.part(), l.name, l.line, Degenerate, "move its points apart", "its boundary encloses no area: a mesh without area would come of it")
 		return
 	}
-	d, in, err := f.outline()
-	if err != nil {
-		p.b.foldedOutline(l, f, err)
+	d, in, ok := p.choosePlane(f)
+	if !ok {
 		return
 	}
 	if !p.allInside(f, d, in) {
@@ -161,6 +159,10 @@ type flat struct {
 	size              []float64 // per point of the triangulation: length of the sides there
 	mean              float64   // mean side
 	lone              float64   // wanted side at single points
+
+	at     []r3.Vec // per node: its place
+	area   r3.Vec   // vector area of the outline
+	around float64  // length of the outline
 }
 
 // newFlat lays lines of nodes, the outline first, into the plane of the outline,
@@ -208,29 +210,9 @@ func newFlat(p *plot, rims, chains [][]int32, points []int32) *flat {
 	if !(r3.Norm(area) > 1e-9*around*around) {
 		return nil
 	}
-	f.n = r3.Unit(area)
-	// Axes that turn with the outline.
-	first := r3.Sub(pts[1], pts[0])
-	if first = r3.Sub(first, r3.Scale(r3.Dot(first, f.n), f.n)); r3.Norm(first) > 0 {
-		f.e1 = r3.Unit(first)
-		f.e2 = r3.Cross(f.n, f.e1)
-	} else {
-		f.e1, f.e2 = frame(f.n)
-	}
-	// Places in the plane are rounded to a fine grid, so that a model that is
-	// turned or moved has the same triangles in spite of rounding.
-	grid := math.Exp2(math.Ceil(math.Log2(around)) - 36)
-	for _, v := range pts {
-		q, h := f.drop(v)
-		q = xy{math.Round(q.x/grid) * grid, math.Round(q.y/grid) * grid}
-		f.p, f.h = append(f.p, q), append(f.h, h)
-	}
+	f.area, f.around, f.at = area, around, pts
+	f.lay(r3.Unit(area))
 	return f
-}
-
-func (f *flat) drop(v r3.Vec) (xy, float64) {
-	d := r3.Sub(v, f.origin)
-	return xy{r3.Dot(d, f.e1), r3.Dot(d, f.e2)}, r3.Dot(d, f.n)
 }
 
 // lift returns the place in space at height h over q.
@@ -315,29 +297,4 @@ func (f *flat) owner(i int, err error) *flatError {
 		}
 	}
 	return &flatError{err: err, rim: -1, chain: -1}
-}
-
-// foldedOutline says why an outline cannot be triangulated.
-func (b *builder) foldedOutline(l *loop, f *flat, err *flatError) {
-	what := "crosses"
-	if err.err == errTouch || err.err == errTwice {
-		what = "touches"
-	}
-	seen := fmt.Sprintf("when seen along (%.2f, %.2f, %.2f)", f.n.X, f.n.Y, f.n.Z)
-	hole := err.rim - (len(f.rims) - len(l.holes))
-	switch {
-	case err.chain >= 0:
-		e := b.m.Edges[l.lines[err.chain]]
-		b.fail("edge", e.Name, e.Line, Degenerate, "let lines inside a fabric meet at points only",
-			"it %s another line or the rim of fabric %s %s", what, l.name, seen)
-	case hole >= 0:
-		e := b.m.Edges[l.holes[hole].edges[0]]
-		b.fail("edge", e.Name, e.Line, Degenerate, "move the hole inside, or let it bound the fabric",
-			"its hole %s the rim of fabric %s or another hole %s", what, l.name, seen)
-	case err.rim < 0:
-		b.fail(l.part(), l.name, l.line, Degenerate, "remove the point or let the line end there", "a point inside it lies on a line or on another point %s", seen)
-	default:
-		b.fail(l.part(), l.name, l.line, Degenerate, "divide it with a seam or cable into parts that are seen whole from one side",
-			"its boundary %s itself %s", what, seen)
-	}
 }

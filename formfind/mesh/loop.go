@@ -22,6 +22,9 @@ type loop struct {
 	points []int   // points inside that are nodes
 	ring   int     // ring inside, −1 = none
 	patch  patcher
+	// What the model asks of the mesh.
+	pattern canopy.FabricPattern
+	plane   r3.Vec
 }
 
 func (l *loop) part() string {
@@ -39,7 +42,7 @@ func (b *builder) loops() {
 		b.ringUse[i] = -1
 	}
 	for i, f := range b.m.Fabrics {
-		l := b.chain(&loop{index: i, name: f.Name, line: f.Line, ring: -1}, f.Boundary)
+		l := b.chain(&loop{index: i, name: f.Name, line: f.Line, ring: -1, pattern: f.Pattern, plane: f.Plane}, f.Boundary)
 		if l == nil {
 			continue
 		}

@@ -245,7 +245,7 @@ func checkNasty(t require.TestingT, f *flat) (v verdict, ok bool) {
 		sharp := r.sharpCorners(&verdict{cornerAngle: math.Pi})
 		for i, in := range r.in {
 			c := d.v[i]
-			if in && !sharp[c[0]] && !sharp[c[1]] && !sharp[c[2]] {
+			if in && !r.within(sharp, c) {
 				_, angle := fatness(d.p[c[0]], d.p[c[1]], d.p[c[2]])
 				require.GreaterOrEqual(t, angle, AngleBound)
 			}

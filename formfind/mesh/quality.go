@@ -24,8 +24,9 @@ type Quality struct {
 	// plane of the outline: 1 for an equilateral triangle.
 	Mean, Worst float64
 	LeastAngle  float64 // radians, in the plane of the outline
-	// Met is set when no angle is below AngleBound but at corners sharper
-	// than twice that. Otherwise Why says what stood in the way At.
+	// Met is set when no angle is below AngleBound but in corners sharper than
+	// twice that, as far as these are narrower than the sides they are divided
+	// into. Otherwise Why says what stood in the way At.
 	Met bool
 	At  r3.Vec // place of the least angle that Why explains
 	Why string
@@ -64,7 +65,7 @@ func (r *refinement) inspect() verdict {
 		v.triangles++
 		v.mean += ratio
 		v.worst, v.angle = min(v.worst, ratio), min(v.angle, angle)
-		if angle >= thinnest || sharp[c[0]] || sharp[c[1]] || sharp[c[2]] {
+		if angle >= thinnest || r.within(sharp, c) {
 			continue
 		}
 		thinnest = angle
@@ -102,11 +103,34 @@ func fatness(a, b, c xy) (ratio, angle float64) {
 	return ratio, math.Asin(min(1, 2*area/la/lb/lc*min(la, lb, lc)))
 }
 
-// sharpCorners marks points at which two held sides meet under less than
+// corner is a point at which two held sides meet under less than sharpCorner.
+type corner struct {
+	point int32
+	angle float64
+	reach float64 // how far the corner is narrower than the sides there are long
+}
+
+// within reports whether all corners of a triangle lie in a sharp corner.
+func (r *refinement) within(sharp []corner, c [3]int32) bool {
+	p := r.d.p
+	for _, s := range sharp {
+		o := p[s.point]
+		far := 0.0
+		for _, i := range c {
+			far = max(far, math.Hypot(p[i].x-o.x, p[i].y-o.y))
+		}
+		if far <= s.reach {
+			return true
+		}
+	}
+	return false
+}
+
+// sharpCorners lists the points at which two held sides meet under less than
 // sharpCorner with triangles to be kept between them.
-func (r *refinement) sharpCorners(v *verdict) []bool {
+func (r *refinement) sharpCorners(v *verdict) []corner {
 	d := r.d
-	sharp := make([]bool, len(d.p))
+	var sharp []corner
 	for t, in := range r.in {
 		if !in {
 			continue
@@ -117,12 +141,13 @@ func (r *refinement) sharpCorners(v *verdict) []bool {
 				continue
 			}
 			i := d.v[t][k]
-			sum, s := 0.0, int32(t)
+			sum, s, long := 0.0, int32(t), 0.0
 			for {
 				j := d.corner(s, i)
 				o, a, b := d.p[i], d.p[d.v[s][(j+1)%3]], d.p[d.v[s][(j+2)%3]]
 				ux, uy, wx, wy := a.x-o.x, a.y-o.y, b.x-o.x, b.y-o.y
 				sum += math.Atan2(ux*wy-uy*wx, ux*wx+uy*wy)
+				long = max(long, math.Hypot(ux, uy), math.Hypot(wx, wy))
 				if d.held[s][(j+1)%3] || sum > sharpCorner {
 					break
 				}
@@ -131,10 +156,9 @@ func (r *refinement) sharpCorners(v *verdict) []bool {
 			if sum > sharpCorner {
 				continue
 			}
-			if !sharp[i] {
-				v.sharp++
-			}
-			sharp[i] = true
+			// At the distance x it is 2·x·tan(angle/2) wide.
+			sharp = append(sharp, corner{i, sum, long/(2*math.Tan(sum/2)) + long})
+			v.sharp++
 			if sum < v.cornerAngle {
 				v.corner, v.cornerAngle = i, sum
 			}

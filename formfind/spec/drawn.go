@@ -685,6 +685,15 @@ func (d *drawn) fabrics(f *fields) {
 		}
 		d.boundaryRefs = append(d.boundaryRefs, refs)
 		fab.Holes = d.holes(g, fmt.Sprintf("fabric %q", e.name))
+		switch g.word("pattern") {
+		case "along sides":
+			fab.Pattern = canopy.FabricSides
+		case "free":
+			fab.Pattern = canopy.FabricFree
+		}
+		if n := g.get("plane"); n != nil {
+			fab.Plane, _ = d.r.direction(n, p.down("plane"))
+		}
 		lines, _ := g.refs("lines")
 		for _, q := range lines {
 			fab.Lines = append(fab.Lines, q.name)
