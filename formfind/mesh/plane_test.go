@@ -26,16 +26,21 @@ func drawn(corner ...r3.Vec) *canopy.Model {
 	}
 	m.Fabrics = []canopy.ModelFabric{sail("sail", names...)}
 	m.Fabrics[0].Pattern = canopy.FabricFree
-	m.Fabrics[0].WarpDir = r3.Vec{Y: 1}
+	m.Fabrics[0].WarpDir = r3.Vec{X: 0.5, Y: 1}
 	return m
 }
 
-// A roof with a tongue bent down and back under it overlaps itself seen from
-// above, the direction in which it looks largest, but not from aside.
+// A strip bent like a Z overlaps itself seen along the direction in which its
+// outline looks largest, but not from everywhere.
 func TestPlaneIsChosenWithoutOverlap(t *testing.T) {
-	roof := func() *canopy.Model {
-		return drawn(r3.Vec{}, r3.Vec{X: 10}, r3.Vec{X: 10, Y: 2}, r3.Vec{X: 9, Y: 2, Z: -3},
-			r3.Vec{X: 9, Y: 4, Z: -3}, r3.Vec{X: 10, Y: 4}, r3.Vec{X: 10, Y: 6}, r3.Vec{Y: 6})
+	z := func() *canopy.Model {
+		a := []r3.Vec{{}, {X: 3, Z: -2}, {X: 2, Z: -2.9}, {X: 5, Z: -4.9}}
+		for i := range 4 {
+			b := a[3-i]
+			b.Y = 4
+			a = append(a, b)
+		}
+		return drawn(a...)
 	}
 	check := func(m *canopy.Model) {
 		s, quality, err := mesh.BuildMeasured(t.Context(), m)
@@ -48,22 +53,21 @@ func TestPlaneIsChosenWithoutOverlap(t *testing.T) {
 		require.Equal(t, quality[0].LeastAngle >= mesh.AngleBound, quality[0].Met)
 		require.Equal(t, quality[0].Met, quality[0].Why == "")
 		require.Equal(t, len(s.Corners), quality[0].Triangles)
-		require.Greater(t, quality[0].LeastAngle, 20*math.Pi/180)
+		require.True(t, quality[0].Sharp > 0 || quality[0].LeastAngle > 20*math.Pi/180)
 		require.Greater(t, quality[0].Mean, 0.9)
-		require.Zero(t, quality[0].Sharp)
 	}
-	check(roof())
-	m := roof()
-	m.Fabrics[0].Plane = r3.Vec{X: 1, Z: 1.5}
+	check(z())
+	m := z()
+	m.Fabrics[0].Plane = r3.Vec{X: 1}
 	check(m)
-	m.Fabrics[0].Plane = r3.Vec{X: -1, Z: -1.5}
+	m.Fabrics[0].Plane = r3.Vec{X: -1}
 	check(m)
 	m.Fabrics[0].Plane = r3.Vec{Y: 1}
 	_, err := mesh.Build(context.Background(), m)
 	require.ErrorContains(t, err, "fabric sail: its plane is seen nearly edge-on from its own side: they are 90° apart")
-	m.Fabrics[0].Plane = r3.Vec{Z: 1}
+	m.Fabrics[0].Plane = r3.Vec{X: 4.9, Z: 5}
 	_, err = mesh.Build(context.Background(), m)
-	require.ErrorContains(t, err, "itself when seen along (0.00, 0.00, 1.00)")
+	require.ErrorContains(t, err, "itself when seen along (0.70, 0.00, 0.71)")
 }
 
 // One like a C overlaps whatever it is seen along: the corner at which it folds
