@@ -152,7 +152,7 @@ func (t *table) row(s string, line int) {
 	for i, c := range t.columns {
 		if c == "layer" {
 			if f[i] != "" {
-				m.Layer = f[i]
+				m.Layer = printable(f[i])
 			}
 			continue
 		}

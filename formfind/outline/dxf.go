@@ -10,6 +10,7 @@ import (
 	"sort"
 	"strconv"
 	"strings"
+	"unicode"
 	"unicode/utf8"
 
 	"gonum.org/v1/gonum/spatial/r3"
@@ -171,11 +172,16 @@ func short(s string) string {
 	if r := []rune(s); len(r) > 30 {
 		s = string(r[:29]) + "…"
 	}
+	return printable(s)
+}
+
+// printable replaces control characters.
+func printable(s string) string {
 	return strings.Map(func(r rune) rune {
-		if r < 0x20 || r == 0x7f {
-			return '\uFFFD'
+		if unicode.IsPrint(r) {
+			return r
 		}
-		return r
+		return '\uFFFD'
 	}, s)
 }
 
@@ -398,7 +404,7 @@ func (x *dxf) props(kind string, p *props) error {
 		}
 		switch g.code {
 		case 8:
-			p.layer = strings.TrimSpace(g.value)
+			p.layer = printable(strings.TrimSpace(g.value))
 		case 67:
 			var v int
 			whole(&v)
