@@ -505,6 +505,12 @@ func (d *drawn) outlineFabrics() {
 	common.Warp, common.Weft = d.r.warpWeft(g, "prestress")
 	d.r.plausiblePrestress(g, common.Warp, common.Weft)
 	common.MeshSize = g.number("mesh")
+	switch g.word("pattern") {
+	case "along sides":
+		common.Pattern = canopy.FabricSides
+	case "free":
+		common.Pattern = canopy.FabricFree
+	}
 	d.r.material(g, &common.Properties)
 	rule := d.outlineWarp(g, &common)
 	radial := false

@@ -123,7 +123,7 @@ outline:
     GUY: {guy: {force: 9 kN}}
     P: point
     FEET: anchor
-  fabric: {prestress: {warp: 2, weft: 3}, warp: {from: "RIM:1", to: "RIM:2"}, weight: 10 N/m2}
+  fabric: {prestress: {warp: 2, weft: 3}, warp: {from: "RIM:1", to: "RIM:2"}, weight: 10 N/m2, pattern: free}
 guys:
   G2: {from: RIM:1, to: FEET:1}
 `, map[string]string{"plan.csv": table})
@@ -133,6 +133,7 @@ guys:
 	require.Equal(t, "fabric:1", m.Fabrics[0].Name)
 	require.Equal(t, "fabric:2", m.Fabrics[1].Properties.Name)
 	require.Equal(t, []string{"P:1"}, m.Fabrics[0].Inside)
+	require.Equal(t, canopy.FabricFree, m.Fabrics[1].Pattern)
 	require.Equal(t, r3.Unit(r3.Vec{X: 9, Z: -2}), m.Fabrics[1].WarpDir)
 	for _, e := range m.Edges {
 		if e.Name == "ARCH:1" {
@@ -290,6 +291,7 @@ func TestAMeshIsTakenAsTheTopology(t *testing.T) {
 		"no fabric":    {"anticlast: 1\noutline: {file: tent.obj, units: mm}\n", square(), "the mesh has no fabric"},
 		"points":       {model + "points: {A: [0, 0, 0]}\n", square(), `"points" does not go with the mesh of an outline`},
 		"layers":       {strings.Replace(model, "units: mm", "units: mm, layers: {A: fixed}", 1), square(), "layers are for drawings"},
+		"its own mesh": {strings.Replace(model, "prestress: 2", "prestress: 2, mesh: 1 m", 1), square(), "the mesh is that of the file; remove mesh"},
 		"bad face":     {model, square() + "f 1 2 99\n", `tent.obj:14: there is no vertex "99"`},
 		"three at one": {model, square() + "v 500 0 900\nf 1 2 10\nf 2 1 10\n", "triangles meet along the side from (0, 0, 0) mm to (1000, 0, 0) mm"},
 		"no sag":       {strings.Replace(model, "EDGE", "{sag: 8 %}", 1), "v 0 0 0\nv 1000 0 0\nv 1000 1000 0\nv 0 1000 0\nf 1 2 3 4\n", "cable edge:1 from (0, 0, 0) mm to (1000, 0, 0) mm is one side of the mesh and cannot sag"},

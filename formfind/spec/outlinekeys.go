@@ -41,6 +41,8 @@ var outlineFabricSection = &section{id: "outline-fabric", doc: "The fabric in ev
 		doc: "Wanted stress per width, both directions at once or {warp, weft}."},
 	{name: "warp", shape: either(word("radial", "around"), &shape{form: formDirection}, in(warpBetweenSection)), deflt: "[1, 0, 0]; radial where there is a ring", example: "[1, 0, 0]",
 		doc: "Warp direction: a direction in space (laid onto the surface), {from, to} of two points; radial or around where there is a ring."},
+	{name: "pattern", shape: word("along sides", "free"), deflt: "along sides where a face allows that without thin triangles, else free", example: "free",
+		doc: "How it is meshed. along sides: mesh lines follow the sides of the boundary, or run out from the ring. free: triangles of even size in any outline."},
 	{name: "mesh", shape: quantity(Length).above(0), deflt: "that of the model", example: "300 mm",
 		doc: "Wanted length of a mesh side."},
 }, fabricMaterialKeys()...)}

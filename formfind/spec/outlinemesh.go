@@ -114,8 +114,10 @@ func (r *reader) meshFabric(g *fields) (canopy.ModelFabric, bool) {
 	fab.Warp, fab.Weft = r.warpWeft(h, "prestress")
 	r.plausiblePrestress(h, fab.Warp, fab.Weft)
 	r.material(h, &fab.Properties)
-	if h.has("mesh") {
-		r.fail(h.keyNode("mesh"), p.down("mesh"), "the mesh is that of the file", "remove it")
+	for _, k := range []string{"mesh", "pattern"} {
+		if h.has(k) {
+			r.fail(h.keyNode(k), p.down(k), "the mesh is that of the file", "remove "+k)
+		}
 	}
 	fab.WarpDir = r3.Vec{X: 1}
 	if w := h.get("warp"); w != nil {
