@@ -225,6 +225,9 @@ func (b *builder) divide() {
 	for _, l := range b.loop {
 		if !l.net {
 			total += l.patch.triangles(b, l)
+		} else if l.patch.triangles(b, l) > 2*maxLattice {
+			b.tooFineNet(l)
+			return
 		}
 	}
 	if total > MaxTriangles {

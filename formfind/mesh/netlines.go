@@ -148,11 +148,19 @@ func (b *builder) layStraight(l *loop, net *laidNet) {
 		net.lat = newLattice(n, net.rim)
 	}
 	if net.lat == nil {
-		b.fail("net", l.name, l.line, Mismatch, "let families cross at 10° or more, and give a spacing that suits the size", "its families run the same way, or it would have more than %d million crossings", maxLattice/1_000_000)
+		if f := n.Families; len(f) == 2 && f[0].HasAngle != f[1].HasAngle || f[0].HasAngle {
+			b.fail("net", l.name, l.line, Mismatch, "let them cross at 10° or more, and give a spacing that suits the size", "its families run nearly the same way, or it would have more than %d million crossings", maxLattice/1_000_000)
+			return
+		}
+		b.tooFineNet(l)
 		return
 	}
 	net.least = least * net.lat.h
 	net.cut(b)
+}
+
+func (b *builder) tooFineNet(l *loop) {
+	b.fail("net", l.name, l.line, TooFine, "give a larger spacing", "it would have more crossings than the %d million that are possible", maxLattice/1_000_000)
 }
 
 // states of a crossing.
@@ -574,5 +582,9 @@ func (net *laidNet) rise(i int) r3.Vec {
 		return net.lat.space[i]
 	}
 	q, r := net.lat.at[i], net.rim
-	return r3.Add(r.origin, r3.Add(r3.Scale(q.x, r.e1), r3.Add(r3.Scale(q.y, r.e2), r3.Scale(r.up.meanValue(q), r.n))))
+	h := r.up.meanValue(q)
+	if math.IsNaN(h) || math.IsInf(h, 0) {
+		h = 0 // a hole without area
+	}
+	return r3.Add(r.origin, r3.Add(r3.Scale(q.x, r.e1), r3.Add(r3.Scale(q.y, r.e2), r3.Scale(h, r.n))))
 }

@@ -67,14 +67,18 @@ func (b *builder) layRadial(l *loop, net *laidNet) {
 	h := netSpacings(n)
 	out, in := b.walked(l), b.walked(l.holes[0])
 	var from []along
+	if !(out.length()/h[0]*max(2, out.length()/h[1]) < maxLattice) {
+		b.tooFineNet(l)
+		return
+	}
 	for k, e := range l.edges {
 		num := int(math.Max(1, math.Round(math.Min(b.curve[e].length/h[0], maxLattice))))
 		for i := range num {
 			from = append(from, out.onEdge(k, float64(i)/float64(num)))
 		}
 	}
-	if len(from) < 3 || len(from) > maxLattice {
-		b.fail("net", l.name, l.line, Mismatch, "give a spacing that suits the size", "it would have %d radial lines", len(from))
+	if len(from) < 3 {
+		b.fail("net", l.name, l.line, Mismatch, "give a smaller spacing", "it would have %d radial lines", len(from))
 		return
 	}
 	turn := math.Copysign(1, b.walkArea(l, net.rim)*b.walkArea(l.holes[0], net.rim))
@@ -117,10 +121,6 @@ func (b *builder) layRadial(l *loop, net *laidNet) {
 		rad.inner = append(rad.inner, b.arrive(t.on, net))
 	}
 	rad.layers = int(math.Max(2, math.Round(math.Min(mean/h[1], maxLattice))))
-	if float64(rad.layers)*float64(len(from)) > maxLattice {
-		b.fail("net", l.name, l.line, TooFine, "give a larger spacing", "it would have more than %d million crossings", maxLattice/1_000_000)
-		return
-	}
 	net.radial = rad
 }
 

@@ -107,7 +107,9 @@ func (b *builder) newRim(l *loop) *rim {
 				up.h = append(up.h, r3.Dot(r3.Sub(p.a, r.origin), r.n))
 			}
 		}
-		up.rims = append(up.rims, rim)
+		if len(rim) > 0 {
+			up.rims = append(up.rims, rim)
+		}
 	}
 	r.up = up
 	if !(r.area > 0) || len(r.sides) < 3 {
