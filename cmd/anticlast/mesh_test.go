@@ -82,3 +82,35 @@ func TestMeshSaysWhereItIsPoor(t *testing.T) {
 	folded := strings.Replace(small, "boundary: [AB, BC, CD, DA]", "boundary: [AB, BC, CD]", 1)
 	require.Equal(t, exitBadInput, run(t, folded, "mesh", "-").code)
 }
+
+// What is exported as OBJ or STL is read back as the same surface.
+func TestExportedMeshesAreReadBack(t *testing.T) {
+	dir := t.TempDir()
+	m := write(t, dir, "sail.yaml", small)
+	require.Equal(t, exitFine, run(t, "", "form", m).code)
+	var form struct {
+		Triangles []struct {
+			Area float64 `json:"area"`
+		} `json:"triangles"`
+	}
+	b, err := os.ReadFile(filepath.Join(dir, "sail-form", "form.json"))
+	require.NoError(t, err)
+	require.NoError(t, json.Unmarshal(b, &form))
+	area := 0.0
+	for _, c := range form.Triangles {
+		area += c.Area
+	}
+	for _, ext := range []string{"obj", "stl"} {
+		r := run(t, "", "export", filepath.Join(dir, "sail-form"), "--to", ext, "-o", filepath.Join(dir, "sail."+ext))
+		require.Equal(t, exitFine, r.code, r.err)
+		back := write(t, dir, ext+".yaml", "anticlast: 1\noutline: {file: sail."+ext+", units: m, snap: 0.1 mm, fabric: {prestress: 2}}\n")
+		r = run(t, "", "mesh", back, "--json")
+		require.Equal(t, exitFine, r.code, r.err)
+		var got meshReport
+		require.NoError(t, json.Unmarshal([]byte(r.out), &got))
+		require.Equal(t, len(form.Triangles), got.Triangles, ext)
+		require.InEpsilon(t, area, got.Fabrics[0].Area, 1e-5, ext)
+		require.Equal(t, "given", got.Fabrics[0].Mesh)
+		require.Equal(t, exitFine, run(t, "", "form", back).code, "and formed, held along its edge")
+	}
+}
