@@ -63,8 +63,9 @@ func (freePatch) fill(p *plot) {
 		node[i] = -1
 	}
 	copy(node[3:], f.node)
-	for i := r.rim; i < len(d.p); i++ {
-		if r.used[i] {
+	points, triangles := r.order()
+	for _, i := range points {
+		if int(i) >= r.rim {
 			node[i] = p.node(f.lift(d.p[i], height[i]))
 		}
 	}
@@ -79,11 +80,9 @@ func (freePatch) fill(p *plot) {
 		quality.Corner = node[q.corner]
 	}
 	p.b.quality = append(p.b.quality, quality)
-	for t, in := range r.in {
-		if in {
-			v := d.v[t]
-			p.tri(node[v[0]], node[v[1]], node[v[2]])
-		}
+	for _, t := range triangles {
+		v := d.v[t]
+		p.tri(node[v[0]], node[v[1]], node[v[2]])
 	}
 }
 

@@ -14,7 +14,7 @@ func (f *flat) heights(r *refinement) []float64 {
 	h := make([]float64, len(r.d.p))
 	copy(h[3:], f.h)
 	inner := len(r.d.p) - r.rim
-	if len(f.chains)+len(f.points) > 0 || len(f.rims) > 1 || inner*len(f.p) > 2e8 {
+	if len(f.chains)+len(f.points) > 0 || len(f.rims) > 1 || inner*len(f.p) > 2e7 {
 		r.relaxHeights(h)
 		return h
 	}
@@ -70,7 +70,7 @@ func (r *refinement) relaxHeights(h []float64) {
 		dir[i] = res[i]
 		rr += res[i] * res[i]
 	}
-	for first, step := rr, 0; step < 20*int(math.Sqrt(float64(n)))+50 && rr > 1e-16*first; step++ {
+	for first, step := rr, 0; step < 20*int(math.Sqrt(float64(n)))+50 && rr > 1e-12*first; step++ {
 		alpha := rr / apply(tmp, dir)
 		next := 0.0
 		for i := range n {
