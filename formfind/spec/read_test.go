@@ -165,6 +165,30 @@ fabrics:
 	require.Equal(t, r3.Vec{Y: 1}, m.Fabrics[0].WarpDir)
 }
 
+func TestNetPatterns(t *testing.T) {
+	m := read(t, `anticlast: 1
+points: {A: [0, 0, 3], B: [9, 0, 5], C: [9, 9, 3], D: [0, 9, 5], P: {x: 3, y: 3, z: 4, hold: free}, Q: {x: 6, y: 3, z: 4, hold: free}, R: {x: 4, y: 6, z: 4, hold: free}}
+edges:
+  AB: {from: A, to: B, cable: &rim {mean force: 90 kN}}
+  BC: {from: B, to: C, cable: *rim}
+  CD: {from: C, to: D, cable: *rim}
+  DA: {from: D, to: A, cable: *rim}
+  PQ: {from: P, to: Q, cable: *rim}
+  QR: {from: Q, to: R, cable: *rim}
+  RP: {from: R, to: P, cable: *rim}
+nets:
+  cage: {boundary: [AB, BC, CD, DA], holes: [[PQ, QR, RP]], pattern: straight, direction: {from: A, to: B}, equal mesh: {length: 600 mm, at tension: 5},
+    families: [{mean force: 5, stiffness: 8 MN}, {angle: 75 deg, force: 6, stiffness: 8 MN}]}
+`)
+	require.Equal(t, []canopy.Net{{
+		Name: "cage", Boundary: []string{"AB", "BC", "CD", "DA"}, Holes: [][]string{{"PQ", "QR", "RP"}}, Pattern: canopy.NetStraight,
+		Direction: r3.Unit(r3.Vec{X: 9, Z: 2}), MeshLength: 0.6, MarkTension: 5000, Line: 12,
+		Families: []canopy.Family{{MeanForce: 5000, Stiffness: 8e6}, {Angle: 75 * math.Pi / 180, HasAngle: true, Force: 6000, Stiffness: 8e6}},
+	}}, m.Nets)
+	require.Equal(t, 90e3, m.Cables[0].MeanForce)
+	require.Equal(t, canopy.KindEdgeCable, m.Edges[4].Role)
+}
+
 func TestUnits(t *testing.T) {
 	for _, c := range []struct {
 		text string
