@@ -2,6 +2,7 @@ package formfind
 
 import (
 	"context"
+	"errors"
 	"fmt"
 
 	"anticlast/formfind/canopy"
@@ -68,4 +69,33 @@ func startOf(s *canopy.Structure, before *canopy.Form) *canopy.Form {
 		f.Force[k] = sum / max(1, n)
 	}
 	return f
+}
+
+// clampHint adds to the error of a net for which no engine found equilibrium
+// what is most often the reason: its lines end obliquely on an edge cable that
+// has one force all along, and so lets them slide along it until nodes meet.
+func clampHint(m *canopy.Model, err error) error {
+	var none *NoEquilibriumError
+	if !errors.As(err, &none) || none.Shown || m.Listed != nil {
+		return err
+	}
+	slides := map[string]bool{}
+	for _, c := range m.Cables {
+		slides[c.Name] = c.ForceDensity == 0 && c.MeanForce == 0
+	}
+	cable := map[string]string{}
+	for _, e := range m.Edges {
+		if e.Kind == canopy.EdgeCable {
+			cable[e.Name] = e.Cable
+		}
+	}
+	for _, n := range m.Nets {
+		for _, e := range n.Boundary {
+			if c, ok := cable[e]; ok && slides[c] {
+				none.Text += fmt.Sprintf("; lines of net %s that end obliquely slide along cable %s, which has one force all along: give it a mean force, with which they are clamped to it", n.Name, c)
+				return err
+			}
+		}
+	}
+	return err
 }

@@ -146,6 +146,19 @@ func TestEqualMeshNetTurnsWithItsModel(t *testing.T) {
 	}
 }
 
+// Lines that end obliquely on a cable of one force slide along it; the refusal
+// says so.
+func TestObliqueLinesSlideOnACableOfOneForce(t *testing.T) {
+	m := meshNet(200e3, 1.2, 0, r3.Vec{Z: 4}, r3.Vec{X: 20, Z: 9}, r3.Vec{X: 20, Y: 20, Z: 4}, r3.Vec{Y: 20, Z: 9})
+	m.Nets[0].Direction = r3.Vec{X: 1, Y: 1}
+	for i := range m.Cables {
+		m.Cables[i].Force, m.Cables[i].MeanForce = m.Cables[i].MeanForce, 0
+	}
+	_, err := formfind.Find(context.Background(), m, formfind.Options{})
+	require.ErrorContains(t, err, "slide along cable e0")
+	require.ErrorContains(t, err, "mean force")
+}
+
 // Whatever the outline, the net is found, trusted and under tension throughout.
 func TestEqualMeshNetsInRandomOutlines(t *testing.T) {
 	for seed := range sweep.N(12, 60, 1000) {

@@ -18,6 +18,11 @@ import (
 // Find meshes the model, solves it and holds its limits against what was
 // found. See the package comment for errors.
 func Find(ctx context.Context, m *canopy.Model, o Options) (*canopy.Result, error) {
+	r, err := find(ctx, m, o)
+	return r, clampHint(m, err)
+}
+
+func find(ctx context.Context, m *canopy.Model, o Options) (*canopy.Result, error) {
 	if mesh.HasEqualMesh(m) {
 		s, warm, err := layEqualMesh(ctx, m, o)
 		if err != nil {
