@@ -23,32 +23,16 @@
 //   - around a ring, any number of sides, divided as they like: radial lines
 //     with layers whose depth grows with the distance from the ring.
 //
-// Any other outline, with a ring in it or without, and any boundary whose edges
-// must be divided otherwise than the patch asks for, is triangulated in the
-// plane of its vector area: constrained Delaunay (Lawson 1977; Sloan 1993) with exact
-// predicates (after Shewchuk 1997), refined by circumcentres (Chew 1989;
-// Ruppert 1995), smoothed, and lifted into space by mean value coordinates
-// (Floater 2003). Its sides may be divided in any way.
-//
-// # Nets
-//
-// The lines of a net run along the sides of its boundary where that is a fair
-// patch of three or four sides, by transfinite interpolation as above. Straight
-// lines of two or three families are laid in plan (in the plane of its vector
-// area where the boundary stands upright), symmetric about the middle of the
-// outline, and cut at the boundary and at holes, with edge cables where their
-// forces are expected to pull them. A crossing nearer to the boundary than a third
-// of the spacing is put on it; line ends nearer than that to each other or to a
-// corner are put together; links that double others, run beside the boundary or
-// leave the net, and crossings of fewer than three links, are left out. So no
-// link is shorter than a third of the spacing. Edges that bound only such nets
-// are divided where lines end. Radial nets join even divisions of the boundary to
-// the same parts of the hole's length, turned so that the sum of the squares of
-// the lines is least.
-//
-// Equal-mesh nets start as straight lines a mesh apart, and are laid again in the
-// shape found (BuildLaid, Laid.Again): each line is continued mesh by mesh beyond
-// where it ended, and cut at the edge cables where they now are.
+// Any other outline, with holes, lines and points in it, and any boundary whose
+// edges must be divided otherwise than the patch asks for, is triangulated in a
+// plane in which it does not overlap itself, first of all that of its vector area:
+// constrained Delaunay (Lawson 1977; Sloan 1993) with exact predicates (after
+// Shewchuk 1997), filled by an advancing front (Rebay 1993) and refined by
+// circumcentres (Chew 1993; Ruppert 1995), smoothed, and lifted into space by mean
+// value coordinates (Floater 2003). Its sides may be divided in any way.
+// [BuildMeasured] says how well that went, and what stood in the way where an
+// angle is below [AngleBound]. The model may ask for either kind, and give the
+// plane.
 //
 // Rim cables start about at the sag that the prestress will give them, so that
 // the mesh of the found shape is about as even as that of the start. Numbers of
