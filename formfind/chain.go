@@ -253,7 +253,8 @@ func (c *chain) iterate(ctx context.Context, all bool, starts ...func(context.Co
 			if len(c.s.Corners) == 0 {
 				return nil
 			}
-			got := candidate{c.f, smallestAngle(c.f.Position, c.s.Corners), c.unstable > 0, unreal(c.s, c.f)}
+			angle := smallestAngle(c.f.Position, c.s.Corners)
+			got := candidate{c.f, angle, c.unstable > 0, angle < nearCollapse/4 || unreal(c.s, c.f)}
 			if got.sound() {
 				return nil
 			}
@@ -579,7 +580,7 @@ func (c *chain) finish(ctx context.Context) error {
 }
 
 // maxPasses bounds the passes of finish where loads follow the shape.
-const maxPasses = 40
+const maxPasses = 200
 
 func equalStress(s *canopy.Structure) bool {
 	for _, st := range s.Stress {

@@ -71,15 +71,19 @@ func (c *chain) along(ctx context.Context, w way) (bool, *NoEquilibriumError, er
 	if err != nil {
 		return false, nil, fmt.Errorf("newton: %w", err)
 	}
+	// A walk past the last shape draws out triangles.
+	set := c.settings(false)
+	set.MaxIterations = 30 // from a shape nearby it takes a few; a failure need not take long
+	least := min(nearCollapse/4, smallestAngle(form.Position, s.Corners)/3)
 	step := 1 - at
 	for step >= walkPrecision {
 		t := math.Min(1, at+step)
 		w.set(s, c.s, t)
-		f, out, err := solver.Find(ctx, form, c.settings(false))
+		f, out, err := solver.Find(ctx, form, set)
 		if err != nil && ctx.Err() != nil {
 			return false, nil, err
 		}
-		if err == nil && out.Status == engine.Converged && out.NegativePivots == 0 && !unreal(s, f) {
+		if err == nil && out.Status == engine.Converged && out.NegativePivots == 0 && !unreal(s, f) && smallestAngle(f.Position, s.Corners) > least {
 			at, form = t, f
 			if t == 1 {
 				c.f = form
