@@ -3,6 +3,7 @@ package export
 import (
 	"bytes"
 	"context"
+	"crypto/sha256"
 	"encoding/binary"
 	"fmt"
 	"io"
@@ -136,6 +137,8 @@ type scene struct {
 	most   float64       // largest size of a member force
 	unlit  map[string]int
 	lit    map[string]int
+	// corners are the accessors of indices of solids by what is in them.
+	corners map[string]int
 }
 
 // manyMembers is the number of members without a chain from which on they are
@@ -144,7 +147,7 @@ const manyMembers = 20000
 
 func newScene(r *canopy.Result) *scene {
 	lo, hi := canopy.Bounds(r.Form.Position)
-	g := &scene{r: r, size: r3.Norm(r3.Sub(hi, lo)), lit: map[string]int{}, unlit: map[string]int{}}
+	g := &scene{r: r, size: r3.Norm(r3.Sub(hi, lo)), lit: map[string]int{}, unlit: map[string]int{}, corners: map[string]int{}}
 	if g.size == 0 {
 		g.size = 1
 	}
@@ -285,6 +288,27 @@ func (g *scene) indices(n, vertices int, at func(i int) int32) int {
 	return g.accessor(&gltf.Accessor{BufferView: gltf.Index(view), ComponentType: kind, Type: gltf.AccessorScalar, Count: n})
 }
 
+// sharedIndices appends an accessor of the corners of triangles, unless there is
+// one already: tubes of as many pieces have the same ones.
+func (g *scene) sharedIndices(corners [][3]int32, vertices int) int {
+	h := sha256.New()
+	var b []byte
+	for _, c := range corners {
+		b = b[:0]
+		for _, v := range c {
+			b = binary.LittleEndian.AppendUint32(b, uint32(v))
+		}
+		h.Write(b)
+	}
+	key := fmt.Sprintf("%d %x", vertices, h.Sum(nil))
+	a, ok := g.corners[key]
+	if !ok {
+		a = g.indices(3*len(corners), vertices, func(i int) int32 { return corners[i/3][i%3] })
+		g.corners[key] = a
+	}
+	return a
+}
+
 // material returns the number of a material, made at its first use.
 func (g *scene) material(name string, c rgb, roughness float64, unlit bool) int {
 	table := g.lit
@@ -361,7 +385,7 @@ func (g *scene) solid(name string, m *solid, material int) (int, bool) {
 			gltf.POSITION: g.positions(len(m.position), func(i int) r3.Vec { return m.position[i] }),
 			gltf.NORMAL:   g.vectors(len(m.normal), func(i int) r3.Vec { return m.normal[i] }),
 		},
-		Indices:  gltf.Index(g.indices(3*len(kept), len(m.position), func(i int) int32 { return kept[i/3][i%3] })),
+		Indices:  gltf.Index(g.sharedIndices(kept, len(m.position))),
 		Material: gltf.Index(material),
 	}
 	return g.mesh(name, p), true

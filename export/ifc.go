@@ -28,12 +28,9 @@ func writeIFC(ctx context.Context, w io.Writer, r *canopy.Result, _ Options) err
 	f.str("FILE_SCHEMA(('IFC4'));\nENDSEC;\nDATA;\n")
 	f.head(r)
 	nodes := f.nodes(r)
-	members := f.members(r, nodes)
-	surfaces := f.surfaces(r)
-	all := append(append(append([]int(nil), nodes.connection...), members...), surfaces...)
-	if len(all) > 0 {
-		f.add("IFCRELASSIGNSTOGROUP(%s,$,$,$,%s,$,#%d)", f.guid("group", 0), list(all), f.model)
-	}
+	f.members(r, nodes)
+	f.surfaces(r, nodes)
+	f.group()
 	f.str("ENDSEC;\nEND-ISO-10303-21;\n")
 	return f.close()
 }
@@ -46,6 +43,26 @@ type ifc struct {
 	placement int
 	model     int
 	zAxis     int
+	// waiting are parts that are not yet said to belong to the model; it takes
+	// them in groups, so that they need not all be remembered.
+	waiting []int
+	groups  int
+}
+
+// belongs notes that a part belongs to the model.
+func (f *ifc) belongs(n int) {
+	if f.waiting = append(f.waiting, n); len(f.waiting) == 4096 {
+		f.group()
+	}
+}
+
+// group says that the parts that wait belong to the model.
+func (f *ifc) group() {
+	if len(f.waiting) > 0 {
+		f.add("IFCRELASSIGNSTOGROUP(%s,$,$,$,%s,$,#%d)", f.guid("group", f.groups), list(f.waiting), f.model)
+		f.waiting = f.waiting[:0]
+		f.groups++
+	}
 }
 
 // add writes an instance and returns its number.
@@ -168,19 +185,19 @@ func (f *ifc) properties(kind string, i, of int, name string, list0 ...property)
 	f.add("IFCRELDEFINESBYPROPERTIES(%s,$,$,$,(#%d),#%d)", f.guid(kind+" has", i), of, set)
 }
 
+// ifcNodes are the numbers of what stands for each node.
 type ifcNodes struct {
-	vertex     []int // of each node
-	point      []int
-	connection []int
+	vertex     []int32 // one more than its point
+	connection []int32
 }
 
 func (f *ifc) nodes(r *canopy.Result) ifcNodes {
 	s := r.Structure
-	var out ifcNodes
+	out := ifcNodes{make([]int32, 0, len(s.Position)), make([]int32, 0, len(s.Position))}
 	for i, p := range r.Form.Position {
 		point := f.point(p)
 		vertex := f.add("IFCVERTEXPOINT(#%d)", point)
-		out.point, out.vertex = append(out.point, point), append(out.vertex, vertex)
+		out.vertex = append(out.vertex, int32(vertex))
 		condition := "$"
 		if fixed := s.Fixed[i]; fixed != 0 {
 			var held [3]string
@@ -193,7 +210,8 @@ func (f *ifc) nodes(r *canopy.Result) ifcNodes {
 			condition = "#" + strconv.Itoa(f.add("IFCBOUNDARYNODECONDITION('support',%s,IFCBOOLEAN(.F.),IFCBOOLEAN(.F.),IFCBOOLEAN(.F.))", strings.Join(held[:], ",")))
 		}
 		n := f.add("IFCSTRUCTURALPOINTCONNECTION(%s,$,%s,$,$,#%d,#%d,%s,$)", f.guid("node", i), stepText(s.NodeName.At(i)), f.placement, f.shape("Vertex", vertex), condition)
-		out.connection = append(out.connection, n)
+		out.connection = append(out.connection, int32(n))
+		f.belongs(n)
 		if s.Fixed[i] != 0 {
 			v := r.Form.Reaction[i]
 			f.properties("node", i, n, "Anticlast_Reaction", property{"ReactionX", "IFCFORCEMEASURE", v.X}, property{"ReactionY", "IFCFORCEMEASURE", v.Y}, property{"ReactionZ", "IFCFORCEMEASURE", v.Z})
@@ -205,9 +223,8 @@ func (f *ifc) nodes(r *canopy.Result) ifcNodes {
 	return out
 }
 
-func (f *ifc) members(r *canopy.Result, nodes ifcNodes) []int {
+func (f *ifc) members(r *canopy.Result, nodes ifcNodes) {
 	s := r.Structure
-	var out []int
 	for i, e := range s.Ends {
 		if f.err != nil {
 			break
@@ -223,7 +240,7 @@ func (f *ifc) members(r *canopy.Result, nodes ifcNodes) []int {
 		}
 		edge := f.add("IFCEDGE(#%d,#%d)", nodes.vertex[e[0]], nodes.vertex[e[1]])
 		n := f.add("IFCSTRUCTURALCURVEMEMBER(%s,$,%s,$,%s,#%d,#%d,.%s.,#%d)", f.guid("member", i), stepText(s.MemberName.At(i)), stepText(s.Kind[i].String()), f.placement, f.shape("Edge", edge), kind, axis)
-		out = append(out, n)
+		f.belongs(n)
 		values := []property{{"PrestressForce", "IFCFORCEMEASURE", r.Form.Force[i]}, {"Length", "IFCLENGTHMEASURE", memberLength(r, i)}}
 		if l := unstressedLength(r, i); l > 0 {
 			values = append(values, property{"UnstressedLength", "IFCLENGTHMEASURE", l}, property{"AxialStiffness", "IFCFORCEMEASURE", optional(s.Stiffness, i)})
@@ -233,12 +250,10 @@ func (f *ifc) members(r *canopy.Result, nodes ifcNodes) []int {
 			f.add("IFCRELCONNECTSSTRUCTURALMEMBER(%s,$,$,$,#%d,#%d,$,$,$,$)", f.guid("end", 2*i+k), n, nodes.connection[v])
 		}
 	}
-	return out
 }
 
-func (f *ifc) surfaces(r *canopy.Result) []int {
+func (f *ifc) surfaces(r *canopy.Result, nodes ifcNodes) {
 	s := r.Structure
-	var out []int
 	for i, c := range s.Corners {
 		if f.err != nil {
 			break
@@ -249,15 +264,14 @@ func (f *ifc) surfaces(r *canopy.Result) []int {
 		}
 		var points []int
 		for _, v := range c {
-			points = append(points, f.point(r.Form.Position[v]))
+			points = append(points, int(nodes.vertex[v]-1))
 		}
 		bound := f.add("IFCFACEOUTERBOUND(#%d,.T.)", f.add("IFCPOLYLOOP(%s)", list(points)))
 		plane := f.add("IFCPLANE(#%d)", f.add("IFCAXIS2PLACEMENT3D(#%d,#%d,#%d)", points[0], f.direction(normal), f.direction(r.Form.Warp[i])))
 		face := f.add("IFCFACESURFACE((#%d),#%d,.T.)", bound, plane)
 		n := f.add("IFCSTRUCTURALSURFACEMEMBER(%s,$,%s,$,%s,#%d,#%d,.MEMBRANE_ELEMENT.,$)", f.guid("triangle", i), stepText(strconv.Itoa(i)), stepText(s.Fabrics[s.FabricOf[i]].Name), f.placement, f.shape("Face", face))
-		out = append(out, n)
+		f.belongs(n)
 		t := r.Form.Stress[i]
 		f.properties("triangle", i, n, "Anticlast_Prestress", property{"PrestressWarp", "IFCLINEARFORCEMEASURE", t.Warp}, property{"PrestressWeft", "IFCLINEARFORCEMEASURE", t.Weft}, property{"PrestressShear", "IFCLINEARFORCEMEASURE", t.Shear})
 	}
-	return out
 }

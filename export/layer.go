@@ -156,14 +156,32 @@ func sheets(r *canopy.Result) []sheetMesh {
 	out := make([]sheetMesh, len(s.Fabrics))
 	vertex := make([]int32, len(s.Position)) // of the current fabric
 	byFabric := make([][]int32, len(s.Fabrics))
+	count := make([]int, len(s.Fabrics))
+	for _, f := range s.FabricOf {
+		count[f]++
+	}
+	for f, n := range count {
+		byFabric[f] = make([]int32, 0, n)
+	}
 	for i, f := range s.FabricOf {
 		byFabric[f] = append(byFabric[f], int32(i))
 	}
 	for f := range out {
 		m := &out[f]
+		m.triangle, m.corners, m.area = make([]int32, 0, count[f]), make([][3]int32, 0, count[f]), make([]float64, 0, count[f])
 		for i := range vertex {
 			vertex[i] = -1
 		}
+		vertices := 0
+		for _, t := range byFabric[f] {
+			for _, node := range s.Corners[t] {
+				if vertex[node] == -1 {
+					vertex[node] = -2 // counted
+					vertices++
+				}
+			}
+		}
+		m.node, m.normal = make([]int32, 0, vertices), make([]r3.Vec, 0, vertices)
 		for _, t := range byFabric[f] {
 			normal, area := triangleNormal(r, int(t))
 			if area == 0 {

@@ -9,6 +9,7 @@ import (
 	"math"
 	"strings"
 
+	"anticlast/formfind/audit"
 	"anticlast/formfind/canopy"
 
 	"gonum.org/v1/gonum/spatial/r3"
@@ -55,6 +56,8 @@ func writeVTU(ctx context.Context, w io.Writer, r *canopy.Result, _ Options) err
 	})
 	v.str("</Cells>\n<PointData>\n")
 	v.vectors("reaction", len(f.Position), func(i int) r3.Vec { return f.Reaction[i] })
+	residual := audit.Residuals(s, f)
+	v.vectors("residual", len(f.Position), func(i int) r3.Vec { return residual[i] })
 	v.vectors("load", len(f.Position), func(i int) r3.Vec { return s.LoadAt(i) })
 	v.ints("UInt8", "supported", len(f.Position), func(i int) int64 { return int64(s.Fixed[i]) })
 	v.str("</PointData>\n<CellData>\n")

@@ -199,15 +199,15 @@ func (m *sheetMesh) potential(r *canopy.Result, direction func(k int) r3.Vec) []
 	n := len(m.node)
 	at := func(v int32) r3.Vec { return r.Form.Position[m.node[v]] }
 	// For each side, opposite corner j: half the cotangent of the angle there.
-	half := make([][3]float64, len(m.corners))
+	half := make([][3]float32, len(m.corners)) // there are many
 	rhs, diagonal := make([]float64, n), make([]float64, n)
 	for k, c := range m.corners {
 		d := direction(k)
 		for j := range c {
 			a, b := c[(j+1)%3], c[(j+2)%3]
 			u, w := r3.Sub(at(a), at(c[j])), r3.Sub(at(b), at(c[j]))
-			h := r3.Dot(u, w) / (4 * m.area[k])
-			half[k][j] = h
+			half[k][j] = float32(r3.Dot(u, w) / (4 * m.area[k]))
+			h := float64(half[k][j])
 			e := h * r3.Dot(d, r3.Sub(at(b), at(a)))
 			rhs[b] += e
 			rhs[a] -= e
@@ -221,7 +221,7 @@ func (m *sheetMesh) potential(r *canopy.Result, direction func(k int) r3.Vec) []
 		for k, c := range m.corners {
 			for j := range c {
 				a, b := c[(j+1)%3], c[(j+2)%3]
-				e := half[k][j] * (v[b] - v[a])
+				e := float64(half[k][j]) * (v[b] - v[a])
 				out[b] += e
 				out[a] -= e
 			}

@@ -32,6 +32,23 @@ func (c *audited) gathered() (sum []r3.Vec, meet, round []float64) {
 	return sum, meet, round
 }
 
+// Residuals returns, for each node, the sum in N of the forces of members and
+// triangles, from their reported forces and true stresses, and of the loads, in
+// the directions in which no support holds the node. Nodes tied to the centre of
+// a rigid ring pass theirs on to it. f must fit s.
+func Residuals(s *canopy.Structure, f *canopy.Form) []r3.Vec {
+	c := newCase(s, f)
+	c.forces()
+	sum, _, _ := c.gathered()
+	for i := range sum {
+		sum[i] = masked(sum[i], canopy.DirAll&^s.Fixed[i])
+		if s.MasterOf(i) >= 0 {
+			sum[i] = r3.Vec{}
+		}
+	}
+	return sum
+}
+
 // residuals judges the balance of every node in the directions in which no
 // support holds it; held points are among them: their masts and guys must
 // balance them.
