@@ -155,6 +155,40 @@ func TestExportGivesWhatFormWrote(t *testing.T) {
 	}
 }
 
+func TestHandoverIsAFolderOrAnArchive(t *testing.T) {
+	dir := t.TempDir()
+	form := filepath.Join(dir, "sail-form")
+	require.Equal(t, exitFine, run(t, "", "form", write(t, dir, "sail.yaml", small)).code)
+	before := folder(t, form)
+	tables := filepath.Join(dir, "engineer")
+	for range 2 { // the second takes the place of the first
+		e := run(t, "", "export", form, "--to", "handover", "-o", tables)
+		require.Equal(t, exitFine, e.code, e.err)
+		got := folder(t, tables)
+		for _, name := range []string{"read-me.txt", "nodes.csv", "members.csv", "triangles.csv", "supports.csv", "reactions.csv"} {
+			require.Contains(t, got, name)
+		}
+		require.Contains(t, got["read-me.txt"], "Tension is positive")
+	}
+	archive := filepath.Join(dir, "engineer.zip")
+	require.Equal(t, exitFine, run(t, "", "export", form, "--to", "handover", "-o", archive).code)
+	text, err := os.ReadFile(archive)
+	require.NoError(t, err)
+	require.True(t, strings.HasPrefix(string(text), "PK"))
+	// A result folder is not replaced, nor is somebody else's.
+	require.Equal(t, exitFine, run(t, "", "export", form, "--to", "handover", "-o", form).code)
+	after := folder(t, form)
+	for name := range before {
+		require.Contains(t, after, name)
+	}
+	theirs := filepath.Join(dir, "theirs")
+	require.NoError(t, os.Mkdir(theirs, 0o777))
+	require.NoError(t, os.WriteFile(filepath.Join(theirs, "novel.txt"), nil, 0o666))
+	e := run(t, "", "export", form, "--to", "handover", "-o", theirs)
+	require.Equal(t, exitBadInput, e.code)
+	require.Contains(t, e.err, "--force")
+}
+
 func TestBrokenModelsEndWithTwoAndTheRightLine(t *testing.T) {
 	files, err := filepath.Glob("../../testdata/broken/*.yaml")
 	require.NoError(t, err)

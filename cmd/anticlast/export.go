@@ -34,13 +34,15 @@ func (a *app) exportCommand() *cobra.Command {
 for standard input.
 
 One format goes to the file -o names, to standard output for -o -, or beside the
-form.json. Several formats go into the folder that -o names.
+form.json. Several formats go into the folder that -o names. An analysis hand-over
+is a folder of tables with a text that explains them, or a .zip of it.
 
 ` + canopy.Caution,
 		Example: `  anticlast export --list
   anticlast export sail-form --to glb -o sail.glb
   anticlast export sail-form/form.json --to reactions -o -
-  anticlast export sail-form --to glb,members,summary -o hand-over`,
+  anticlast export sail-form --to handover -o for-the-engineer
+  anticlast export sail-form --to glb,members,summary -o for-the-client`,
 		Args: func(cmd *cobra.Command, list []string) error {
 			if f.list {
 				return args(0, 0, "no argument with --list")(cmd, list)
@@ -125,16 +127,18 @@ func (a *app) export(ctx context.Context, path string, f exportFlags) error {
 	switch {
 	case len(formats) > 1:
 		if err := export.Folder(ctx, f.out, r, names, o); err != nil {
-			if errors.Is(err, export.ErrForeign) {
-				return usageError{fmt.Errorf("%w; name another folder with -o, or add --force to move it aside", err)}
-			}
-			return err
+			return foreign(err)
 		}
 		for _, format := range formats {
 			wrote = append(wrote, filepath.Join(f.out, format.File))
 		}
 	case f.out == "-" || f.out == "" && path == "-":
 		return formats[0].Write(ctx, a.Out, r, o)
+	case formats[0].Name == "handover" && handoverFolder(f.out):
+		if err := export.Handover(ctx, f.out, r, o); err != nil {
+			return foreign(err)
+		}
+		wrote = append(wrote, f.out)
 	default:
 		name := f.out
 		if name == "" {
@@ -164,6 +168,25 @@ func (a *app) export(ctx context.Context, path string, f exportFlags) error {
 		fmt.Fprintln(a.Out, canopy.Caution)
 	}
 	return nil
+}
+
+// foreign tells what to do about somebody else's folder.
+func foreign(err error) error {
+	if errors.Is(err, export.ErrForeign) {
+		return usageError{fmt.Errorf("%w; name another folder with -o, or add --force to move it aside", err)}
+	}
+	return err
+}
+
+// handoverFolder reports whether a hand-over goes to out as a folder of tables:
+// not when out says it is an archive, nor when it is a result folder, which is
+// not to be replaced and gets the archive.
+func handoverFolder(out string) bool {
+	if out == "" || out == "-" || strings.EqualFold(filepath.Ext(out), ".zip") {
+		return false
+	}
+	_, err := os.Stat(filepath.Join(out, "form.json"))
+	return err != nil
 }
 
 func isFolder(path string) bool {
