@@ -213,8 +213,13 @@ func (c *chain) warmStart() *canopy.Form {
 // otherwise it returns why not.
 func (c *chain) newton(ctx context.Context, all bool) (why string, err error) {
 	f, out, err := newton.Engine{}.Find(ctx, c.s, c.f, c.settings(all))
+	var flat *newton.DegenerateError
+	if errors.As(err, &flat) {
+		c.say("Newton was not tried: %s %s has no size", flat.Element, flat.Name)
+		return fmt.Sprintf("%s %s shrinks to nothing, as nothing else pulls at its end; hold that point, or connect it to something that pulls the other way", flat.Element, flat.Name), nil
+	}
 	if err != nil {
-		return "", fmt.Errorf("newton: %w", err)
+		return "", err
 	}
 	if out.Status != engine.Converged {
 		c.say("Newton%s %s after %d iterations: %s", directions(all), out.Status, out.Iterations, out.Why)

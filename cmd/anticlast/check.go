@@ -70,7 +70,7 @@ func (a *app) check(ctx context.Context, path string, set []string) error {
 		r, err = formfind.Find(ctx, m, formfind.Options{Progress: bar.step})
 		bar.done()
 		if err != nil {
-			return inputError2(path, err)
+			return modelError{path, err}
 		}
 		r.Program.Name, r.Program.Version = "anticlast", version
 	}

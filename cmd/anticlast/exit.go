@@ -41,6 +41,15 @@ type inputError struct {
 
 func (e inputError) Unwrap() error { return e.error }
 
+// modelError is an error met while working on a model file; what kind it is
+// says the error inside.
+type modelError struct {
+	file string
+	error
+}
+
+func (e modelError) Unwrap() error { return e.error }
+
 func exitCode(ctx context.Context, err error) int {
 	var (
 		usage   usageError
@@ -98,7 +107,7 @@ func (a *app) exit(ctx context.Context, err error) int {
 
 // message puts the file's name before what the mesher says of its lines.
 func message(err error) string {
-	var input inputError
+	var input modelError
 	var built mesh.Errors
 	if errors.As(err, &input) && errors.As(err, &built) {
 		var lines []string

@@ -120,7 +120,7 @@ func (a *app) form(ctx context.Context, path string, f formFlags) error {
 		}
 	}
 	if err != nil {
-		err = inputError2(path, err)
+		err = modelError{path, err}
 		if text, ok := explanation(m, err); ok && out != "-" {
 			if werr := export.Explanation(ctx, out, text, export.Options{Force: f.force}); werr != nil {
 				return errors.Join(err, werr)
@@ -204,8 +204,6 @@ func explanation(m *canopy.Model, err error) (string, bool) {
 	}
 	return b.String(), true
 }
-
-func inputError2(path string, err error) error { return inputError{path, err} }
 
 // wanted is the list of formats of a result folder.
 func wanted(also []string) ([]string, error) {

@@ -48,7 +48,7 @@ func (a *app) mesh(ctx context.Context, path string, set []string, svg string) e
 	}
 	s, free, err := mesh.BuildMeasured(ctx, m)
 	if err != nil {
-		return inputError2(path, err)
+		return modelError{path, err}
 	}
 	r := reportMesh(m, s, free)
 	if svg != "" {
