@@ -281,6 +281,18 @@ func TestNastyOutlines(t *testing.T) {
 	t.Logf("%d filled to the angle bound, %d capped with a reason, %d refused", met, capped, refused)
 }
 
+// Points so near to each other that squares of their distance vanish.
+func TestVanishingSides(t *testing.T) {
+	f := &flat{lone: 1, rims: [][]int{{0, 1, 2, 3, 4}}}
+	f.p = []xy{{0, 0}, {5, 0}, {5, 5}, {1e-162, 5}, {0, 5}}
+	_, ok := checkNasty(t, f)
+	require.True(t, ok)
+	f = &flat{lone: 1, rims: [][]int{{0, 1, 2, 3}}, chains: [][]int{{0, 4, 5}}}
+	f.p = []xy{{0, 0}, {5, 0}, {5, 5}, {0, 5}, {1e-162, 1e-162}, {3e-162, 2e-162}}
+	_, ok = checkNasty(t, f)
+	require.True(t, ok)
+}
+
 func FuzzOutline(f *testing.F) {
 	f.Add([]byte{0, 9, 1, 2, 3, 4, 5, 6, 7, 8, 9, 10, 11, 12})
 	for k := range 6 {

@@ -99,6 +99,9 @@ func (r *refinement) inspect() verdict {
 func fatness(a, b, c xy) (ratio, angle float64) {
 	la, lb, lc := math.Hypot(b.x-c.x, b.y-c.y), math.Hypot(c.x-a.x, c.y-a.y), math.Hypot(a.x-b.x, a.y-b.y)
 	area := ((b.x-a.x)*(c.y-a.y) - (b.y-a.y)*(c.x-a.x)) / 2
+	if !(area > 0 && la*lb*lc > 0) {
+		return 0, 0 // too small for floating point
+	}
 	ratio = 16 * area / (la + lb + lc) * (area / la / lb / lc)
 	return ratio, math.Asin(min(1, 2*area/la/lb/lc*min(la, lb, lc)))
 }

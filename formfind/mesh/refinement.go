@@ -152,7 +152,7 @@ func (r *refinement) advance(budget int) {
 			continue
 		}
 		q, ok := r.ahead(x.t)
-		if !ok {
+		if !ok || !finite(q) { // sides so short that their squares vanish
 			continue
 		}
 		t, side, blocked := d.locate(q, x.t, true)
