@@ -369,3 +369,38 @@ func TestUnclassifiedCanopiesAreTallied(t *testing.T) {
 	}
 	require.True(t, count < 20 || slices.Contains(keys, "trusted"))
 }
+
+// The answer depends neither on the mesh, within what discretisation explains,
+// nor on the start: relaxation of a disturbed shape comes back to it.
+func TestAnswersDependNeitherOnMeshNorOnStart(t *testing.T) {
+	count := sweep.N(3, 10, 30)
+	worst := 0.0
+	for k := range uint64(count) {
+		m := randomCanopy(6 * k) // equal stress, structured where the outline allows
+		m.MeshSize *= 0.5
+		what := describe(m)
+		a, err := formfind.Find(t.Context(), m, formfind.Options{CrossCheck: true})
+		require.NoError(t, err)
+		require.True(t, a.Audit.Trusted, "seed %d (%s): %v", 6*k, what, a.Audit.Reasons)
+		at := map[string]r3.Vec{}
+		for _, p := range m.Points {
+			at[p.Name] = p.At
+		}
+		for i := range m.Edges {
+			p, q := at[m.Edges[i].From], at[m.Edges[i].To]
+			m.Edges[i].Segments = max(7, int(r3.Norm(r3.Sub(q, p))/m.MeshSize)) + i%2
+		}
+		b, err := formfind.Find(t.Context(), m, formfind.Options{})
+		require.NoError(t, err)
+		require.True(t, b.Audit.Trusted, "seed %d, unstructured: %v", 6*k, b.Audit.Reasons)
+		x := cases.Area(a.Structure, a.Form.Position)
+		off := math.Abs(cases.Area(b.Structure, b.Form.Position)/x - 1)
+		// Polygons of n sides cut the area under an arc short by about 1/n² of
+		// it, the smooth surface between nodes a like share.
+		n := float64(len(a.Structure.Corners))
+		t.Logf("seed %d (%s): %d and %d triangles, areas differ by %.2g", 6*k, what, len(a.Structure.Corners), len(b.Structure.Corners), off)
+		require.Less(t, off, 1/math.Min(n, float64(len(b.Structure.Corners))), "seed %d", 6*k)
+		worst = math.Max(worst, off)
+	}
+	t.Logf("%d canopies on two meshes each: areas within %.2g", count, worst)
+}

@@ -11,8 +11,8 @@
 //   - newton: force density start (as front door) and Newton to a residual of 1e-9;
 //   - solve: the whole front door: start, Newton, the pass that balances all
 //     directions, audit;
-//   - relax: dynamic relaxation in the shape-changing directions from the same
-//     start, at one size (-relax);
+//   - relax: dynamic relaxation in the shape-changing directions from force
+//     densities, at one size (-relax);
 //   - lbfgs: SciPy's L-BFGS-B on the area functional from the same start, at one
 //     size (-relax), stopped after -limit seconds; our time is then taken to the
 //     residual it reached;
@@ -165,8 +165,8 @@ func areaError(c cases.Case, f *canopy.Form) *float64 {
 }
 
 // start is five updates of natural force densities from the rough shape, as
-// the front door starts.
-func start(ctx context.Context, s *canopy.Structure) (*canopy.Form, error) {
+// the front door starts; without updates the linear force density step alone.
+func start(ctx context.Context, s *canopy.Structure, updates int) (*canopy.Form, error) {
 	n := fdm.Network{Position: s.Position, Fixed: make([]fdm.Directions, len(s.Position)), Ends: s.Ends, Master: s.Master}
 	for i := range n.Fixed {
 		n.Fixed[i] = fdm.Directions(s.FixedAt(i))
@@ -182,7 +182,7 @@ func start(ctx context.Context, s *canopy.Structure) (*canopy.Form, error) {
 	g := fdm.Given{Force: make([]float64, len(s.Ends)), Density: make([]float64, len(s.Ends))}
 	copy(g.Force, s.Given)
 	from := s.Position
-	if cases.MinAngle(s, from) < 10*math.Pi/180 { // a rough shape that is no start
+	if updates == 0 || cases.MinAngle(s, from) < 10*math.Pi/180 { // a rough shape that is no start
 		q := make([]float64, len(s.Ends))
 		for k, e := range s.Ends {
 			q[k] = s.Given[k] / r3.Norm(r3.Sub(from[e[1]], from[e[0]]))
@@ -192,18 +192,22 @@ func start(ctx context.Context, s *canopy.Structure) (*canopy.Form, error) {
 			return nil, err
 		}
 	}
-	r, err := v.Natural(ctx, from, g, 5)
+	f := canopy.NewForm(s)
+	if updates == 0 {
+		copy(f.Position, from)
+		return f, nil
+	}
+	r, err := v.Natural(ctx, from, g, updates)
 	if err != nil {
 		return nil, err
 	}
-	f := canopy.NewForm(s)
 	copy(f.Position, r.Position)
 	return f, nil
 }
 
 func byNewton(ctx context.Context, name string, c cases.Case, residual float64) (row, error) {
 	t := processorSeconds()
-	at, err := start(ctx, c.S)
+	at, err := start(ctx, c.S, 5)
 	if err != nil {
 		return row{}, err
 	}
@@ -236,7 +240,7 @@ func byRelax(ctx context.Context, name string, c cases.Case) error {
 		return err
 	}
 	t := processorSeconds()
-	at, err := start(ctx, c.S)
+	at, err := start(ctx, c.S, 0)
 	if err != nil {
 		return err
 	}
@@ -263,7 +267,7 @@ type handOver struct {
 }
 
 func byLBFGS(ctx context.Context, name string, c cases.Case, python string, limit float64) error {
-	at, err := start(ctx, c.S)
+	at, err := start(ctx, c.S, 5)
 	if err != nil {
 		return err
 	}
@@ -329,7 +333,7 @@ func warm(ctx context.Context) error {
 	var f *canopy.Form
 	for range 5 {
 		t := processorSeconds()
-		at, err := start(ctx, c.S)
+		at, err := start(ctx, c.S, 5)
 		if err != nil {
 			return err
 		}
