@@ -556,6 +556,12 @@ func (d *drawing) dimensions() {
 		// Where x and y point.
 		d.printf("<g transform=\"translate(24 %s)\"><path class=\"dim\" d=\"M0 0h26m-4 -3l4 3l-4 3M0 0v-26m-3 4l3 -4l3 4\"/><text class=\"faint\" x=\"30\" y=\"4\" font-size=\"11\">x</text><text class=\"faint\" x=\"-3\" y=\"-30\" font-size=\"11\">y</text></g>\n", px(f.height-14))
 	}
+	if f.name == "plan" && d.r.North != nil {
+		// The letter stays upright beyond the tip.
+		n := *d.r.North
+		d.printf("<g class=\"north\" transform=\"translate(%s 78)\"><title>north</title><path class=\"dim\" transform=\"rotate(%s)\" d=\"M0 18V-18M-5 -8L0 -18L5 -8\"/><text class=\"ink\" x=\"%s\" y=\"%s\" font-size=\"12\" text-anchor=\"middle\">N</text></g>\n",
+			px(f.width-44), px(degrees(n)), px(26*math.Sin(n)), px(4-26*math.Cos(n)))
+	}
 	if d.shown != nil {
 		d.legend(f.width-24, 14)
 	}

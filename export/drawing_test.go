@@ -140,3 +140,19 @@ func BenchmarkDrawings(b *testing.B) {
 		}
 	}
 }
+
+// North is turned clockwise from y, which points up in the plan, as angles are
+// in SVG. Without it there is no arrow.
+func TestPlanHasANorthArrowWhereNorthIsKnown(t *testing.T) {
+	r := sail(6)
+	var b bytes.Buffer
+	require.NoError(t, writeSVG(background, &b, r, Options{PictureWidth: 200}))
+	require.NotContains(t, b.String(), `class="north"`)
+	north := math.Pi / 2 // the tip is to the right
+	r.North = &north
+	b.Reset()
+	require.NoError(t, writeSVG(background, &b, r, Options{PictureWidth: 200}))
+	require.Equal(t, 1, strings.Count(b.String(), `class="north"`), "in the plan only")
+	require.Contains(t, b.String(), `rotate(90)" d="M0 18V-18`)
+	require.Contains(t, b.String(), `x="26" y="4" font-size="12" text-anchor="middle">N<`)
+}

@@ -105,7 +105,7 @@ func solve(ctx context.Context, s *canopy.Structure, m *canopy.Model, o Options)
 	}
 	r := &canopy.Result{
 		Title: m.Title, File: m.File, Digest: m.Digest,
-		Limits: m.Limits, Factors: m.Factors,
+		Limits: m.Limits, Factors: m.Factors, North: m.North,
 		Structure: s, Form: f,
 	}
 	r.Program.Engines = f.Engines

@@ -30,6 +30,7 @@ type Model struct {
 	SelfWeight bool // weights act during form finding
 	Limits     Limits
 	Factors    Factors
+	North      *float64 // where north is, rad clockwise from the y axis seen from above; nil = not given
 }
 
 // Hold says what keeps a point where it is.

@@ -21,6 +21,7 @@ type Result struct {
 	Digest    string // "sha256:" + hex of the model's bytes (all of its files)
 	Limits    Limits
 	Factors   Factors
+	North     *float64 // rad clockwise from the y axis seen from above; nil = not given
 	Structure *Structure
 	Form      *Form
 	Audit     Audit

@@ -78,6 +78,7 @@ func small() *canopy.Result {
 		Limits: canopy.Limits{Achieved: &[2]float64{0.9, 1.1}, Ratio: &[2]float64{0.5, 2}, StressMin: p(1), StressMax: p(2), CableMax: p(3), SlopeMin: p(0.05), ReactionMax: p(5), Utilisation: p(1),
 			Headroom: []canopy.Headroom{{Name: "path", Height: 2.5, Region: []r3.Vec{vec(), vec(), vec()}}, {Name: "all", Height: 2.2}}},
 		Factors:   canopy.Factors{Load: 1.35, Fabric: 1.4, Cable: 1.65},
+		North:     new(0.3),
 		Structure: s, Form: f,
 		Findings: []canopy.Finding{{ID: "slope-low", Severity: canopy.Broken, Text: "flat", Value: 0.1, Limit: 0.2, Source: "model", Count: 3,
 			Places: []canopy.Place{{Kind: "node", Index: 3, Name: "D", At: vec()}}}},

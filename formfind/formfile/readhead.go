@@ -48,6 +48,13 @@ func (d *reader) model() error {
 			return d.setString(&r.File)
 		case "digest":
 			return d.setString(&r.Digest)
+		case "north":
+			r.North = nil
+			if d.null() {
+				return nil
+			}
+			r.North = new(float64)
+			return d.setNumber(r.North)
 		case "limits":
 			return d.limits()
 		case "factors":

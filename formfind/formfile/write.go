@@ -238,6 +238,9 @@ func writeModel(t *text, r *canopy.Result) {
 	t.k("fabric").given(r.Factors.Fabric)
 	t.k("cable").given(r.Factors.Cable)
 	t.close('}')
+	if r.North != nil {
+		t.k("north").number(*r.North)
+	}
 	t.close('}')
 }
 

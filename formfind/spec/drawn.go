@@ -49,6 +49,7 @@ func (r *reader) decode(root *yaml.Node) *canopy.Model {
 	r.version(f)
 	m.Title = f.text("title")
 	m.Description = f.text("description")
+	m.North = f.optional("north")
 	m.MeshSize = f.number("mesh")
 	m.SelfWeight, _ = f.flag("self weight")
 	r.limits(f, m)

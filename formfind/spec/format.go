@@ -17,6 +17,8 @@ var modelSection = &section{id: "model", doc: "A model says what the designer wa
 		doc: "One line that names the project; it appears in every output."},
 	{name: "description", shape: &shape{form: formTexts}, example: "Shade for the waiting passengers.",
 		doc: "Free text about the project."},
+	{name: "north", shape: quantity(Angle), deflt: "not known", example: "15 deg",
+		doc: "Where north is, turned clockwise from the y axis seen from above (-180 deg to 180 deg); plans then have a north arrow."},
 	{name: "mesh", shape: quantity(Length).above(0), deflt: "chosen from the size of the model", example: "400 mm",
 		doc: "Wanted length of a mesh side."},
 	{name: "self weight", shape: yesNo(), deflt: "false", example: "true",

@@ -45,6 +45,15 @@ func readErr(t testing.TB, text string, o spec.Options) []spec.Diagnostic {
 	return all.List
 }
 
+func TestNorthIsAnAngleOrNotKnown(t *testing.T) {
+	const points = "\npoints: {A: [0, 0, 0], B: [1, 0, 0]}\nedges: {AB: {from: A, to: B, cable: {force: 1 kN}}}\n"
+	require.Nil(t, read(t, "anticlast: 1"+points).North)
+	m := read(t, "anticlast: 1\nnorth: -10 deg"+points)
+	require.NotNil(t, m.North)
+	require.InDelta(t, -10*math.Pi/180, *m.North, 1e-15)
+	require.Zero(t, *read(t, "anticlast: 1\nnorth: 0"+points).North)
+}
+
 func TestDrawnModelIsReadInSI(t *testing.T) {
 	m := read(t, `anticlast: 1
 title: Kiosk
