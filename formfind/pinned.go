@@ -21,6 +21,7 @@ func unreal(s *canopy.Structure, f *canopy.Form) bool { return pinned(s, f) || c
 const (
 	pinnedEqual   = 0.01
 	pinnedUnequal = 0.009
+	pinnedNode    = 0.03   // at a single node; cones between rings show 0.018 at most
 	pinnedHeld    = 0.0015 // unequal stress without edge cables that shear it
 )
 
@@ -31,7 +32,7 @@ const (
 func pinned(s *canopy.Structure, f *canopy.Form) bool {
 	sum, size := nodalForces(s, f)
 	sum = gather(s, sum)
-	rr, ss := 0.0, 0.0
+	rr, ss, worst := 0.0, 0.0, 0.0
 	for i, r := range sum {
 		free := canopy.DirAll &^ s.FixedAt(i)
 		if free == 0 || s.MasterOf(i) >= 0 {
@@ -39,6 +40,7 @@ func pinned(s *canopy.Structure, f *canopy.Form) bool {
 		}
 		rr += r3.Norm2(only(r, free))
 		ss += size[i] * size[i]
+		worst = max(worst, r3.Norm(only(r, free))/size[i])
 	}
 	most := pinnedEqual
 	switch {
@@ -46,6 +48,10 @@ func pinned(s *canopy.Structure, f *canopy.Form) bool {
 	case slices.Contains(s.Kind, canopy.KindEdgeCable):
 		most = pinnedUnequal
 	default:
+		// A short neck hardly counts in the mean.
+		if worst > pinnedNode {
+			return true
+		}
 		most = pinnedHeld
 	}
 	return math.Sqrt(rr) > most*math.Sqrt(ss)
