@@ -253,10 +253,7 @@ func (a *Analysis) joinColumns(parent, count []int32, mem *pool) {
 			tree[s] = into[up[s]]
 		}
 	}
-	number := make([]int32, 0, ns) // kept supernodes in a new postorder
-	for _, s := range a.orderFronts(tree, into, cols, below) {
-		number = append(number, s)
-	}
+	number := a.orderFronts(tree, into, cols, below) // kept supernodes in a new postorder
 	newNum := make([]int32, ns)
 	for k, s := range number {
 		newNum[s] = int32(k)

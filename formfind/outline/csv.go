@@ -66,8 +66,7 @@ type table struct {
 	d       *Drawing
 	sep     string
 	columns []string // layer, x, y, z
-	layer   string
-	run     []Mark // the polyline so far
+	run     []Mark   // the polyline so far
 	count   int
 	path    int
 }
