@@ -109,10 +109,10 @@ func solve(ctx context.Context, s *canopy.Structure, m *canopy.Model, o Options)
 		Structure: s, Form: f,
 	}
 	r.Program.Engines = f.Engines
+	r.Audit.Discretisation = finer
 	if err := judge(ctx, r, o); err != nil {
 		return nil, err
 	}
-	r.Audit.Discretisation = finer
 	if disagreement != "" {
 		r.Audit.Trusted = false
 		r.Audit.Reasons = append(r.Audit.Reasons, disagreement)
@@ -155,6 +155,10 @@ func judge(ctx context.Context, r *canopy.Result, o Options) error {
 	if !r.Form.Converged {
 		r.Audit.Trusted = false
 		r.Audit.Reasons = append(r.Audit.Reasons, "the engine did not converge: "+r.Form.Why)
+	}
+	if why := drawnOut(&r.Audit); why != "" {
+		r.Audit.Trusted = false
+		r.Audit.Reasons = append(r.Audit.Reasons, why)
 	}
 	o.begin("limits")
 	r.Summary = audit.Quantities(r.Structure, r.Form, r.Factors)
