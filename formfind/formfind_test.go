@@ -415,7 +415,7 @@ func TestShallowSaddleRelation(t *testing.T) {
 
 // The catenoid of half separation h = 0.5 R: waist 0.848337938094979 R and area
 // 5.99179697580228 R² (stable), 0.235094990234533 R (unstable): roots of
-// a cosh(h/a) = R (Euler 1744; J. C. C. Nitsche, Lectures on Minimal Surfaces 1,
+// a cosh(h/a) = R (Euler 1744; J. C. C. Nitsche, Minimal Surfaces 1,
 // Cambridge 1989), recomputed.
 func TestCatenoidBothBranches(t *testing.T) {
 	require.InDelta(t, 0.848337938094979, cases.Waist(0.5, true), 1e-12)

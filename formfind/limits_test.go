@@ -24,7 +24,7 @@ func noShape(t *testing.T, err error) *formfind.NoEquilibriumError {
 
 // Equal coaxial rings of radius R have a catenoid between them up to the
 // separation 1.32548683869836 R: u tanh u = 1, h/R = u/cosh u = 0.662743419349182
-// (J. C. C. Nitsche, Lectures on Minimal Surfaces 1, Cambridge 1989; recomputed).
+// (J. C. C. Nitsche, Minimal Surfaces 1, Cambridge 1989; recomputed).
 func TestCriticalSeparationOfRings(t *testing.T) {
 	n := sweep.N(1, 2, 3)
 	around, along := 32*n, 16*n

@@ -11,7 +11,7 @@ import (
 )
 
 // Both branches of the catenoid between rings of radius 1 at ±0.5: the roots a
-// of a·cosh(0.5/a) = 1 (Euler 1744; J. C. C. Nitsche, Lectures on Minimal
+// of a·cosh(0.5/a) = 1 (Euler 1744; J. C. C. Nitsche, Minimal
 // Surfaces, vol. 1, 1989; recomputed).
 const (
 	stableWaist   = 0.848337938094979

@@ -11,7 +11,7 @@ import (
 
 // CriticalHalfSeparation is the largest h/R at which two equal coaxial rings
 // of radius R at z = ±h still carry a catenoid: u*/cosh u* with u* tanh u* = 1
-// (Goldschmidt 1831; Nitsche, Lectures on Minimal Surfaces, vol. 1, 1989).
+// (Goldschmidt 1831; Nitsche, Minimal Surfaces, vol. 1, 1989).
 const CriticalHalfSeparation = 0.662743419349182
 
 // Waist returns the waist radius a of a catenoid between rings of radius 1 at
@@ -47,7 +47,7 @@ func Waist(h float64, stable bool) float64 {
 func Catenoid(h float64, around, along int, stable bool, stress float64) Case {
 	c := Case{
 		Name:   fmt.Sprintf("catenoid h=%g %d×%d", h, around, along),
-		Source: "Euler 1744; J. C. C. Nitsche, Lectures on Minimal Surfaces, vol. 1, Cambridge 1989",
+		Source: "Euler 1744; J. C. C. Nitsche, Minimal Surfaces, vol. 1, Cambridge 1989",
 	}
 	fixed := func(_, j int) canopy.Freedom {
 		if j == 0 || j == along {
