@@ -195,7 +195,7 @@ func deflectionOff(factor, load float64) func(*canopy.Result) float64 {
 // Published surfaces through the front door, in balance in all directions and
 // audited: what is known of them is met with second order in the mesh size.
 //
-// Sources: catenoid Euler 1744, Goldschmidt 1831, J. C. C. Nitsche, Lectures on
+// Sources: catenoid Euler 1744, Goldschmidt 1831, J. C. C. Nitsche,
 // Minimal Surfaces 1, Cambridge 1989; Scherk 1835; Schwarz 1865 (area
 // K(3/4)/K(1/4), recomputed); spherical cap Laplace-Young p = 2T/R; cable radius
 // T/σ (balance of a cable against a film); ring F = 2πσc (axial force of the
