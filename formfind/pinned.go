@@ -21,7 +21,7 @@ func unreal(s *canopy.Structure, f *canopy.Form) bool { return pinned(s, f) || c
 // 2.5e-3 and 0.1 at a single node within 2 % of their height limit on fine meshes.
 // Surfaces that only their mesh holds, cones taller than any cone can be, show
 // 0.03 and 0.01 upwards, 0.3 at a node. What lies between is caught by
-// drawnOut.
+// unsettled.
 const (
 	pinnedEqual   = 0.01
 	pinnedUnequal = 0.009
@@ -61,13 +61,14 @@ func pinned(s *canopy.Structure, f *canopy.Form) bool {
 	return math.Sqrt(rr) > most*math.Sqrt(ss)
 }
 
-// drawnOut says why a result is held by its mesh rather than by its forces: it
-// has thin triangles, and refining the mesh still moves the surface by more than
-// discretisation of a resolved one ever does. Canopies that have a shape move by
-// less than 1e-3 of their size from a few hundred triangles on.
-func drawnOut(a *canopy.Audit) string {
-	if a.Discretisation > 2e-3 && a.MinAngle < 5*math.Pi/180 {
-		return fmt.Sprintf("a finer mesh would move the surface by about %.1f %% of its size, and triangles are drawn out to %.1f°: the mesh holds this shape, not its forces; form it on a finer mesh", 100*a.Discretisation, a.MinAngle*180/math.Pi)
+// unsettled says why a result is not to be relied on though every number of it
+// balances: refining the mesh still moves the surface by more than discretisation
+// of a resolved one ever does. Canopies that have a shape move by less than 1e-3
+// of their size from a few hundred triangles on; a surface beyond the last real
+// equilibrium, held by its mesh, moves by several times that.
+func unsettled(a *canopy.Audit) string {
+	if a.Discretisation > 2.5e-3 {
+		return fmt.Sprintf("a finer mesh would move the surface by about %.2f %% of its size, too much for a shape that the forces hold: form it on a finer mesh, and ask whether it can exist at all", 100*a.Discretisation)
 	}
 	return ""
 }

@@ -156,7 +156,7 @@ func judge(ctx context.Context, r *canopy.Result, o Options) error {
 		r.Audit.Trusted = false
 		r.Audit.Reasons = append(r.Audit.Reasons, "the engine did not converge: "+r.Form.Why)
 	}
-	if why := drawnOut(&r.Audit); why != "" {
+	if why := unsettled(&r.Audit); why != "" {
 		r.Audit.Trusted = false
 		r.Audit.Reasons = append(r.Audit.Reasons, why)
 	}
