@@ -7,6 +7,15 @@ import "golang.org/x/sys/cpu"
 // paths.
 var haveStrips = cpu.X86.HasAVX2 && cpu.X86.HasFMA
 
+// haveWide says that mulSubStrip goes on to mulSubStrip512: the processor has
+// AVX-512. A variable for the same reason.
+var haveWide = haveStrips && cpu.X86.HasAVX512F
+
+// mulSubStrip512 gives the same bits as mulSubStrip, which jumps to it.
+//
+//go:noescape
+func mulSubStrip512(c, a, b *float64, ldc, lda, ldb, m, n, k, step, fresh int)
+
 // mulSubStrip does C −= A·Bᵀ (C = −A·Bᵀ if fresh is not 0) for C of m ≥ 1 rows
 // and 1 ≤ n ≤ 4 columns. step is the distance between blocks of eight rows of
 // A: 8, or more if A is packed. The caller keeps m·k below stripWork, since

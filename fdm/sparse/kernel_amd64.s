@@ -8,6 +8,8 @@
 // func mulSubStrip(c, a, b *float64, ldc, lda, ldb, m, n, k, step, fresh int)
 // Reads up to seven entries beyond column ends of A and three beyond those of B.
 TEXT ·mulSubStrip(SB), NOSPLIT, $0-88
+	CMPB ·haveWide(SB), $0
+	JNE  wide
 	MOVQ c+0(FP), DI
 	MOVQ a+8(FP), SI
 	MOVQ b+16(FP), DX
@@ -243,6 +245,9 @@ put1:
 done:
 	VZEROUPPER
 	RET
+
+wide:
+	JMP ·mulSubStrip512(SB)
 
 // func scaleStrip(c *float64, ldc, m int, t *[10]float64)
 // Solves X·Tᵀ = C for m rows (a multiple of four) of four columns in place. T

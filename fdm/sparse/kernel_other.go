@@ -2,7 +2,7 @@
 
 package sparse
 
-var haveStrips = false
+var haveStrips, haveWide = false, false
 
 func mulSubStrip(c, a, b *float64, ldc, lda, ldb, m, n, k, step, fresh int) {
 	panic("sparse: no strip kernel on this machine")

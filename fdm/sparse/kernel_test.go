@@ -8,15 +8,22 @@ import (
 )
 
 // bothPaths runs f with the portable kernels and, where there are any, with
-// those in assembly.
+// those in assembly, for narrow and for wide registers.
 func bothPaths(t *testing.T, f func(t *testing.T)) {
-	t.Run("portable", func(t *testing.T) {
-		defer func(old bool) { haveStrips = old }(haveStrips)
-		haveStrips = false
-		f(t)
-	})
-	if haveStrips {
-		t.Run("assembly", f)
+	run := func(name string, strips, wide bool) {
+		t.Run(name, func(t *testing.T) {
+			defer func(s, w bool) { haveStrips, haveWide = s, w }(haveStrips, haveWide)
+			haveStrips, haveWide = strips, wide
+			f(t)
+		})
+	}
+	strips, wide := haveStrips, haveWide
+	run("portable", false, false)
+	if strips {
+		run("assembly", true, false)
+	}
+	if wide {
+		run("wide", true, true)
 	}
 }
 
@@ -34,7 +41,7 @@ func naive(c []float64, ldc int, a []float64, lda int, b []float64, ldb, i, j, k
 
 func TestProductKernelsOnEverySize(t *testing.T) {
 	var sizes [][3]int
-	for m := 1; m <= 21; m++ {
+	for m := 1; m <= 50; m++ {
 		for n := 1; n <= 9; n++ {
 			for _, k := range []int{1, 2, 3, 4, 5, 8, 13} {
 				sizes = append(sizes, [3]int{m, n, k})
@@ -221,6 +228,28 @@ func TestPathsAgreeOnSystems(t *testing.T) {
 			for i := range got {
 				if math.Abs(got[i]-want[i]) > 1e-9*(1+math.Abs(want[i])) {
 					t.Fatalf("%s, %v: x[%d] is %g portable, %g in assembly", p.name, kind, i, got[i], want[i])
+				}
+			}
+		}
+	}
+}
+
+// Wide registers change no bit: a result does not depend on the machine's width.
+func TestWideKernelsGiveTheSameBits(t *testing.T) {
+	if !haveWide {
+		t.Skip("no wide kernels")
+	}
+	defer func() { haveWide = true }()
+	for _, p := range patterns() {
+		for _, kind := range []Kind{Cholesky, LDL} {
+			s := laplacian(rand.New(rand.NewPCG(6, 6)), p.n, p.pairs)
+			haveWide = true
+			want := bitsOf(t, s, kind, 1)
+			haveWide = false
+			got := bitsOf(t, s, kind, 1)
+			for i := range got {
+				if got[i] != want[i] {
+					t.Fatalf("%s, %v: x[%d] is %g with narrow, %g with wide registers", p.name, kind, i, got[i], want[i])
 				}
 			}
 		}

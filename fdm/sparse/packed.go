@@ -1,6 +1,7 @@
 package sparse
 
 const (
+	wideBlocks  = 3   // packed blocks that a kernel for wide registers takes together
 	packRows    = 8   // rows of a packed block
 	packDepth   = 128 // columns packed at a time: a block of eight rows is a quarter of the first-level cache
 	packColumns = 64  // columns of C worked on at a time: their blocks are a part of the second-level cache
@@ -39,10 +40,16 @@ func mulSubPacked(c []float64, ldc int, p []float64, m, n, k, i int, fresh bool)
 	}
 	j0 := i * packColumns
 	j1 := min(j0+packColumns, n)
-	for i := j0; i < m; i += packRows {
-		mi := min(packRows, m-i)
-		for j := j0; j < j1 && j < i+mi; j += 4 {
-			mulSubStrip(&c[j*ldc+i], &p[i*k], &p[(j&^7)*k+j&7], ldc, packRows, packRows, mi, min(4, j1-j), k, 8, flag)
+	rows := packRows
+	if haveWide {
+		rows *= wideBlocks
+	}
+	for i := j0; i < m; i += rows {
+		end := min(i+rows, m)
+		for j := j0; j < j1 && j < end; j += 4 {
+			// Blocks above the diagonal are left out.
+			top := i + max(0, j-i)&^(packRows-1)
+			mulSubStrip(&c[j*ldc+top], &p[top*k], &p[(j&^7)*k+j&7], ldc, packRows, packRows, end-top, min(4, j1-j), k, packRows*k, flag)
 		}
 	}
 }
