@@ -95,11 +95,11 @@ func (c *crew) init(f *Factor, n int) {
 		if w.shares {
 			size = p.taskStack
 		}
-		w.stack = large[float64](int(size)+slack)
+		w.stack = large[float64](int(size) + slack)
 		w.scratch = make([]float64, p.scratch+slack)
 	}
 	if n > 1 {
-		f.store = large[float64](int(p.topStore)+slack)
+		f.store = large[float64](int(p.topStore) + slack)
 		c.finishedAll.L = &c.mu
 	}
 }

@@ -37,7 +37,7 @@ func (a *Analysis) NewFactor(k Kind) (*Factor, error) {
 		return nil, fmt.Errorf("sparse: unknown kind of factorisation %d", int(k))
 	}
 	f := &Factor{a: a, kind: k}
-	f.panels = large[float64](int(a.panel[a.fronts()])+3*a.cost.LargestFront+slack)
+	f.panels = large[float64](int(a.panel[a.fronts()]) + 3*a.cost.LargestFront + slack)
 	f.crew.init(f, a.workers())
 	if k == LDL {
 		f.diag = make([]float64, a.n)

@@ -25,7 +25,7 @@ func (f *Factor) Solve(b []float64, nrhs int) error {
 
 func (f *Factor) solve(b []float64, nrhs int) {
 	if f.x == nil {
-		f.x = large[float64](solveWidth*f.a.n+slack)
+		f.x = large[float64](solveWidth*f.a.n + slack)
 	}
 	for r := 0; r < nrhs; r += solveWidth {
 		f.solveSome(b, nrhs, r, min(solveWidth, nrhs-r))
