@@ -25,6 +25,7 @@ type chain struct {
 	// smooth is the surface of prescribed stress, before the pass that
 	// balances in all directions.
 	smooth *canopy.Form
+	solver *newton.Solver // that found it
 	did    []string
 	use    []string
 	// unstable is how many unstable directions Newton's last shape has.
@@ -58,12 +59,15 @@ func findForm(ctx context.Context, s *canopy.Structure, o Options) (found, error
 		return found{}, err
 	}
 	c.f.Steps, c.f.Engines = c.did, c.use
-	return found{c.f, c.smooth}, nil
+	return found{c.f, c.smooth, c.solver}, nil
 }
 
 // found is what a chain of engines ends with. surface is the fabric's before the
 // pass that balances in all directions.
-type found struct{ form, surface *canopy.Form }
+type found struct {
+	form, surface *canopy.Form
+	solver        *newton.Solver // of the surface
+}
 
 // net finds the shape of a structure without triangles.
 func (c *chain) net(ctx context.Context) error {
@@ -212,7 +216,14 @@ func (c *chain) warmStart() *canopy.Form {
 // newton runs Newton from the shape so far and keeps its shape if it converged;
 // otherwise it returns why not.
 func (c *chain) newton(ctx context.Context, all bool) (why string, err error) {
-	f, out, err := newton.Engine{}.Find(ctx, c.s, c.f, c.settings(all))
+	v, err := newton.New(ctx, c.s)
+	if err != nil {
+		return "", err
+	}
+	if !all {
+		v.Above(c.o.solver, c.o.parents)
+	}
+	f, out, err := v.Find(ctx, c.f, c.settings(all))
 	var flat *newton.DegenerateError
 	if errors.As(err, &flat) {
 		c.say("Newton was not tried: %s %s has no size", flat.Element, flat.Name)
@@ -226,6 +237,7 @@ func (c *chain) newton(ctx context.Context, all bool) (why string, err error) {
 		return out.Why, nil
 	}
 	c.f, c.f.Converged = f, true
+	c.solver = v
 	c.unstable = out.NegativePivots
 	c.used("newton")
 	c.say("Newton%s: %d iterations to a residual of %.1e", directions(all), out.Iterations, out.Residual)
@@ -549,6 +561,7 @@ func (c *chain) finish(ctx context.Context) error {
 		}
 	}
 	found := c.f
+	c.o.begin("balance")
 	c.stage("natural force density", "final pass")
 	ref := c.f.Position
 	steady := steadyLoads(s)

@@ -28,7 +28,7 @@ func (c *chain) ease(ctx context.Context) error {
 			s.Stress[t] = [2]float64{mean * half, mean / half}
 		}
 		o := c.o
-		o.eased, o.Warm, o.below, o.Listed = true, nil, nil, false
+		o.eased, o.Warm, o.below, o.solver, o.Listed = true, nil, nil, nil, false
 		sub := &chain{s: &s, o: o}
 		if err := sub.fabric(ctx); err != nil {
 			if ctx.Err() != nil {

@@ -75,10 +75,39 @@ func meshLevels(ctx context.Context, m *canopy.Model, s *canopy.Structure) (*can
 	return nil, nil, nil
 }
 
-// climb solves level after level and returns a start for the last one and the
-// surface found on the one below it; nothing when a level has no shape, which
-// is for the last one to say.
-func climb(ctx context.Context, coarse *canopy.Structure, steps []*mesh.Refinement, o Options) (warm, below *canopy.Form, err error) {
+// SolveLevels is [Solve] on the finest of several meshes, each of which refines
+// the one before: the surface found on one is the start on the next, and steps
+// there are solved with its help. The difference between the last two says how
+// far a finer mesh would still move the surface.
+func SolveLevels(ctx context.Context, coarse *canopy.Structure, steps []*mesh.Refinement, o Options) (*canopy.Result, error) {
+	if len(steps) == 0 {
+		return Solve(ctx, coarse, o)
+	}
+	return solveLevels(ctx, coarse, steps, steps[len(steps)-1].Fine, &canopy.Model{}, o)
+}
+
+// solveLevels is SolveLevels for the model m; whole is solved at once when a
+// coarser mesh has no shape.
+func solveLevels(ctx context.Context, coarse *canopy.Structure, steps []*mesh.Refinement, whole *canopy.Structure, m *canopy.Model, o Options) (*canopy.Result, error) {
+	if err := check(coarse); err != nil {
+		return nil, err
+	}
+	o.begin("solve")
+	up, ok, err := climb(ctx, coarse, steps, o)
+	if err != nil {
+		return nil, err
+	}
+	if ok {
+		return solve(ctx, steps[len(steps)-1].Fine, m, up)
+	}
+	return solve(ctx, whole, m, o)
+}
+
+// climb solves level after level below the last one and returns options with a
+// start for that; false when a level has no shape, which is for the last one to
+// say.
+func climb(ctx context.Context, coarse *canopy.Structure, steps []*mesh.Refinement, o Options) (Options, bool, error) {
+	last := o
 	o.surface, o.CrossCheck = true, false
 	s := coarse
 	for i, r := range steps {
@@ -92,16 +121,17 @@ func climb(ctx context.Context, coarse *canopy.Structure, steps []*mesh.Refineme
 		got, err := findForm(ctx, local, o)
 		if err != nil {
 			if ctx.Err() != nil {
-				return nil, nil, err
+				return last, false, err
 			}
-			return nil, nil, nil
+			return last, false, nil
 		}
 		backFrom(s, got.form, origin)
-		below = got.form
-		o.Warm, o.below = r.Prolong(below), below
+		o.Warm, o.below = r.Prolong(got.form), got.form
+		o.solver, o.parents = got.solver, r.Parents
 		s = r.Fine
 	}
-	return o.Warm, below, nil
+	last.Warm, last.below, last.solver, last.parents = o.Warm, o.below, o.solver, o.parents
+	return last, true, nil
 }
 
 // moveOnRefinement is how far the nodes of the coarse mesh lie from the surface

@@ -6,6 +6,7 @@ import (
 
 	"anticlast/formfind/canopy"
 	"anticlast/formfind/engine"
+	"anticlast/formfind/newton"
 )
 
 // Method chooses how a shape is found.
@@ -50,15 +51,18 @@ type Options struct {
 	Progress func(engine.Step)
 	// Recorder, if set, records every iteration of every engine.
 	Recorder *engine.Recorder
-	// Stage, if set, is told when a stage begins: "mesh", "solve",
-	// "cross-check", "audit", "limits".
+	// Stage, if set, is told when a stage begins: "mesh", "solve", "balance" (the
+	// pass that balances fabric in all directions), "cross-check", "audit",
+	// "limits".
 	Stage func(name string)
 
-	below   *canopy.Form // the surface found on the mesh half as fine
-	level   string       // which of several levels this is
-	eased   bool         // the ratio of warp to weft has been eased
-	stiff   bool         // links of a length make single nodes far worse than the mean
-	surface bool         // leave out the pass that balances in all directions
+	below   *canopy.Form   // the surface found on the mesh half as fine
+	solver  *newton.Solver // that found it
+	parents [][2]int32     // how the mesh refines that one, see mesh.Refinement
+	level   string         // which of several levels this is
+	eased   bool           // the ratio of warp to weft has been eased
+	stiff   bool           // links of a length make single nodes far worse than the mean
+	surface bool           // leave out the pass that balances in all directions
 }
 
 // ErrEmpty is returned for a structure with nothing to find.

@@ -43,18 +43,7 @@ func find(ctx context.Context, m *canopy.Model, o Options) (*canopy.Result, erro
 			return nil, err
 		}
 		if len(steps) > 0 {
-			if err := check(coarse); err != nil {
-				return nil, err
-			}
-			o.begin("solve")
-			warm, below, err := climb(ctx, coarse, steps, o)
-			if err != nil {
-				return nil, err
-			}
-			if warm != nil {
-				o.Warm, o.below = warm, below
-				s = steps[len(steps)-1].Fine
-			}
+			return solveLevels(ctx, coarse, steps, s, m, o)
 		}
 	}
 	return solve(ctx, s, m, o)

@@ -32,6 +32,7 @@ import (
 	"os"
 	"os/exec"
 	"path/filepath"
+	"runtime"
 	"slices"
 	"strconv"
 	"strings"
@@ -71,16 +72,6 @@ func (r row) print() {
 	fmt.Println(string(b))
 }
 
-var surfaces = []struct {
-	name string
-	make func(n int) cases.Case // about 2n² triangles
-}{
-	{"catenoid", func(n int) cases.Case { return cases.Catenoid(0.5, 2*n, n/2, true, 1000) }},
-	{"scherk", func(n int) cases.Case { return cases.Scherk(1, n, 1000) }},
-	{"schwarz-d", func(n int) cases.Case { return cases.SchwarzD(n, 1000) }},
-	{"canopy", func(n int) cases.Case { return cases.FourPoint(10, 3, 2500, 30e3, 0.1, n) }},
-}
-
 func main() {
 	if err := run(); err != nil {
 		fmt.Fprintln(os.Stderr, "bench:", err)
@@ -98,8 +89,8 @@ func run() error {
 	flag.Parse()
 	ctx := context.Background()
 	use := func(m string) bool { return slices.Contains(strings.Split(*methods, ","), m) }
-	for _, k := range surfaces {
-		if !slices.Contains(strings.Split(*only, ","), k.name) {
+	for k := range surfaces {
+		if !slices.Contains(strings.Split(*only, ","), surfaces[k].name) {
 			continue
 		}
 		var size, seconds []float64
@@ -108,9 +99,12 @@ func run() error {
 			if err != nil {
 				return fmt.Errorf("triangles: %w", err)
 			}
-			c := k.make(2 * int(math.Round(math.Sqrt(float64(want)/2)/2)))
+			p, err := newProblem(k, want)
+			if err != nil {
+				return err
+			}
 			if use("newton") {
-				r, err := byNewton(ctx, k.name, c, 1e-9)
+				r, err := byNewton(ctx, p)
 				if err != nil {
 					return err
 				}
@@ -118,22 +112,32 @@ func run() error {
 				size, seconds = append(size, math.Log(float64(r.Triangles))), append(seconds, math.Log(r.Seconds))
 			}
 			if use("solve") {
-				if err := bySolve(ctx, k.name, c); err != nil {
+				if err := bySolve(ctx, p); err != nil {
 					return err
 				}
 			}
+			if use("one-level") {
+				r, err := byOneLevel(ctx, p, 1e-9)
+				if err != nil {
+					return err
+				}
+				r.print()
+			}
 		}
 		if len(size) > 1 {
-			row{Case: k.name, Method: "newton", Exponent: slope(size, seconds), Note: "growth"}.print()
+			row{Case: surfaces[k].name, Method: "newton", Exponent: slope(size, seconds), Note: "growth"}.print()
 		}
-		c := k.make(2 * int(math.Round(math.Sqrt(float64(*slow)/2)/2)))
+		p, err := newProblem(k, *slow)
+		if err != nil {
+			return err
+		}
 		if use("relax") {
-			if err := byRelax(ctx, k.name, c); err != nil {
+			if err := byRelax(ctx, p); err != nil {
 				return err
 			}
 		}
 		if use("lbfgs") {
-			if err := byLBFGS(ctx, k.name, c, *python, *limit); err != nil {
+			if err := byLBFGS(ctx, p, *python, *limit); err != nil {
 				return err
 			}
 		}
@@ -156,11 +160,11 @@ func slope(x, y []float64) float64 {
 	return a / b
 }
 
-func areaError(c cases.Case, f *canopy.Form) *float64 {
-	if c.Area == 0 {
+func (p *problem) areaError(f *canopy.Form) *float64 {
+	if p.area == 0 {
 		return nil
 	}
-	e := math.Abs(cases.Area(c.S, f.Position)/c.Area - 1)
+	e := math.Abs(cases.Area(p.fine, f.Position)/p.area - 1)
 	return &e
 }
 
@@ -205,52 +209,104 @@ func start(ctx context.Context, s *canopy.Structure, updates int) (*canopy.Form,
 	return f, nil
 }
 
-func byNewton(ctx context.Context, name string, c cases.Case, residual float64) (row, error) {
+// times is how often a quick method is run; the least time counts. Memory that
+// others have left behind is cleared away before.
+const times = 3
+
+// byNewton is the front door from the coarsest mesh to a surface in balance in
+// the shape-changing directions: force densities on the coarsest mesh, Newton on
+// every one.
+func byNewton(ctx context.Context, p *problem) (row, error) {
+	best := row{Case: p.name, Method: "newton", Triangles: len(p.fine.Corners), Seconds: math.Inf(1)}
+	for range times {
+		runtime.GC()
+		rec := &engine.Recorder{}
+		t, seconds := processorSeconds(), 0.0
+		r, err := formfind.SolveLevels(ctx, p.coarse, p.steps, formfind.Options{Recorder: rec, Stage: func(name string) {
+			if name == "balance" {
+				seconds = processorSeconds() - t
+			}
+		}})
+		if err != nil {
+			return row{}, err
+		}
+		if !r.Audit.Trusted {
+			return row{}, fmt.Errorf("%s: %v", p.name, r.Audit.Reasons)
+		}
+		last := rec.Rows[len(rec.Rows)-1]
+		if !(last.Residual <= 1e-9) {
+			return row{}, fmt.Errorf("%s: residual %g", p.name, last.Residual)
+		}
+		if seconds < best.Seconds {
+			best.Seconds, best.Iterations, best.Residual, best.Error = seconds, last.Iteration, last.Residual, p.areaError(r.Form)
+		}
+	}
+	return best, nil
+}
+
+// byOneLevel starts on the finest mesh: five updates of natural force densities
+// and Newton, every step by a factorisation.
+func byOneLevel(ctx context.Context, p *problem, residual float64) (row, error) {
+	runtime.GC()
 	t := processorSeconds()
-	at, err := start(ctx, c.S, 5)
+	at, err := start(ctx, p.fine, 5)
 	if err != nil {
 		return row{}, err
 	}
-	f, out, err := newton.Engine{}.Find(ctx, c.S, at, engine.Settings{Residual: residual, Worst: 10 * residual, Move: math.Max(1e-9, residual)})
+	f, out, err := newton.Engine{}.Find(ctx, p.fine, at, engine.Settings{Residual: residual, Worst: 10 * residual, Move: math.Max(1e-9, residual)})
 	if err != nil {
 		return row{}, err
 	}
 	if out.Status != engine.Converged {
-		return row{}, fmt.Errorf("%s: %s", name, out.Why)
+		return row{}, fmt.Errorf("%s: %s", p.name, out.Why)
 	}
-	return row{Case: name, Method: "newton", Triangles: len(c.S.Corners), Seconds: processorSeconds() - t, Iterations: out.Iterations, Residual: out.Residual, Error: areaError(c, f)}, nil
+	return row{Case: p.name, Method: "one-level", Triangles: len(p.fine.Corners), Seconds: processorSeconds() - t, Iterations: out.Iterations, Residual: out.Residual, Error: p.areaError(f)}, nil
 }
 
-func bySolve(ctx context.Context, name string, c cases.Case) error {
+func bySolve(ctx context.Context, p *problem) error {
+	runtime.GC()
 	t := processorSeconds()
-	r, err := formfind.Solve(ctx, c.S, formfind.Options{})
+	r, err := formfind.SolveLevels(ctx, p.coarse, p.steps, formfind.Options{})
 	if err != nil {
 		return err
 	}
 	if !r.Audit.Trusted {
-		return fmt.Errorf("%s: %v", name, r.Audit.Reasons)
+		return fmt.Errorf("%s: %v", p.name, r.Audit.Reasons)
 	}
-	row{Case: name, Method: "solve", Triangles: len(c.S.Corners), Seconds: processorSeconds() - t, Residual: r.Audit.ResidualRMS, Error: areaError(c, r.Form)}.print()
+	row{Case: p.name, Method: "solve", Triangles: len(p.fine.Corners), Seconds: processorSeconds() - t, Residual: r.Audit.ResidualRMS, Error: p.areaError(r.Form)}.print()
 	return nil
 }
 
-func byRelax(ctx context.Context, name string, c cases.Case) error {
-	own, err := byNewton(ctx, name, c, 1e-9)
+// byRelax relaxes from the linear force density step, or where that is no start
+// for it (it crushes the rows of triangles along cables) from natural force
+// densities.
+func byRelax(ctx context.Context, p *problem) error {
+	own, err := byNewton(ctx, p)
 	if err != nil {
 		return err
 	}
-	t := processorSeconds()
-	at, err := start(ctx, c.S, 0)
-	if err != nil {
-		return err
+	r := row{Case: p.name, Method: "relax", Triangles: len(p.fine.Corners), Seconds: math.Inf(1)}
+	for _, updates := range []int{0, 5} {
+		runtime.GC()
+		t := processorSeconds()
+		at, err := start(ctx, p.fine, updates)
+		if err != nil {
+			return err
+		}
+		f, out, err := (&relax.Engine{}).Find(ctx, p.fine, at, engine.Settings{})
+		if err != nil {
+			return err
+		}
+		if s := processorSeconds() - t; out.Status == engine.Converged && s < r.Seconds {
+			r.Seconds, r.Iterations, r.Residual, r.Error = s, out.Iterations, out.Residual, p.areaError(f)
+			r.Note = fmt.Sprintf("from %d updates of natural force densities; ratio to newton in the same run (%.3g s)", updates, own.Seconds)
+		}
 	}
-	f, out, err := (&relax.Engine{}).Find(ctx, c.S, at, engine.Settings{})
-	if err != nil {
-		return err
+	if math.IsInf(r.Seconds, 1) {
+		r.Seconds, r.Note = 0, "no result from either start"
+	} else {
+		r.Ratio = r.Seconds / own.Seconds
 	}
-	r := row{Case: name, Method: "relax", Triangles: len(c.S.Corners), Seconds: processorSeconds() - t, Iterations: out.Iterations, Residual: out.Residual, Error: areaError(c, f)}
-	r.Ratio = r.Seconds / own.Seconds
-	r.Note = fmt.Sprintf("%s; ratio to newton in the same run (%.3g s)", out.Status, own.Seconds)
 	r.print()
 	return nil
 }
@@ -266,15 +322,15 @@ type handOver struct {
 	Limit     float64      `json:"limit"`
 }
 
-func byLBFGS(ctx context.Context, name string, c cases.Case, python string, limit float64) error {
-	at, err := start(ctx, c.S, 5)
+func byLBFGS(ctx context.Context, p *problem, python string, limit float64) error {
+	at, err := start(ctx, p.fine, 5)
 	if err != nil {
 		return err
 	}
-	h := handOver{Triangles: c.S.Corners, Stress: c.S.Stress[0][0], Members: c.S.Ends, Force: c.S.Given, Limit: limit}
-	for i, p := range at.Position {
-		h.Position = append(h.Position, [3]float64{p.X, p.Y, p.Z})
-		h.Free = append(h.Free, c.S.FixedAt(i) == 0)
+	h := handOver{Triangles: p.fine.Corners, Stress: p.fine.Stress[0][0], Members: p.fine.Ends, Force: p.fine.Given, Limit: limit}
+	for i, x := range at.Position {
+		h.Position = append(h.Position, [3]float64{x.X, x.Y, x.Z})
+		h.Free = append(h.Free, p.fine.FixedAt(i) == 0)
 	}
 	dir, err := os.MkdirTemp("", "bench")
 	if err != nil {
@@ -305,21 +361,21 @@ func byLBFGS(ctx context.Context, name string, c cases.Case, python string, limi
 	if err := json.NewDecoder(bytes.NewReader(text)).Decode(&got); err != nil {
 		return fmt.Errorf("lbfgs: %w", err)
 	}
-	f := canopy.NewForm(c.S)
-	for i, p := range got.Position {
-		f.Position[i] = r3.Vec{X: p[0], Y: p[1], Z: p[2]}
+	f := canopy.NewForm(p.fine)
+	for i, x := range got.Position {
+		f.Position[i] = r3.Vec{X: x[0], Y: x[1], Z: x[2]}
 	}
-	r := row{Case: name, Method: "lbfgs", Triangles: len(c.S.Corners), Seconds: got.Seconds, Iterations: got.Iterations, Residual: got.Residual, Error: areaError(c, f)}
+	r := row{Case: p.name, Method: "lbfgs", Triangles: len(p.fine.Corners), Seconds: got.Seconds, Iterations: got.Iterations, Residual: got.Residual, Error: p.areaError(f)}
 	if got.MinAngle < math.Pi/180 {
 		r.Note = fmt.Sprintf("no result: its mesh collapsed (smallest angle %.2g°)", got.MinAngle*180/math.Pi)
 		r.print()
 		return nil
 	}
-	own, err := byNewton(ctx, name, c, math.Max(got.Residual, 1e-9))
+	own, err := byOneLevel(ctx, p, math.Max(got.Residual, 1e-9))
 	if err != nil {
 		return err
 	}
-	r.Ratio, r.Note = got.Seconds/own.Seconds, fmt.Sprintf("ratio to newton to the same residual in the same run (%.3g s)", own.Seconds)
+	r.Ratio, r.Note = got.Seconds/own.Seconds, fmt.Sprintf("ratio to newton on one level to the same residual in the same run (%.3g s)", own.Seconds)
 	r.print()
 	return nil
 }

@@ -23,6 +23,9 @@ const (
 	keep = 0.15
 	// A step is not shortened below this share.
 	shortest = 1.0 / 4096
+	// A full step that leaves this share of the residual has come so close that
+	// the next one finds the same tangent good enough.
+	closeBy = 0.03
 	// Steps that reduce neither residual nor energy taken before giving up.
 	patience = 6
 )
@@ -108,8 +111,11 @@ func (v *Solver) iterate(ctx context.Context, set engine.Settings, first int) (e
 	v.mixing.forget()
 	size := v.modelSize(v.now.at)
 	hasEnergy := v.potential()
+	mayReuse := !set.AllDirections && !v.uneven && len(v.commons) == 0 && !v.hasElastic()
 	v.evaluate(&v.now)
 	refused := 0
+	v.target, v.reuse = set.Residual, false
+	defer func() { v.reuse = false }()
 	st := step{u: make([]float64, v.unknown), force: make([]float64, len(v.commons))}
 	for it := first; ; it++ {
 		if err := ctx.Err(); err != nil {
@@ -128,8 +134,10 @@ func (v *Solver) iterate(ctx context.Context, set engine.Settings, first int) (e
 			out.Status, out.NegativePivots = engine.Converged, 0
 			return out, nil
 		}
-		v.assemble(&v.now)
-		v.columnsOf(&v.now)
+		if !v.reuse {
+			v.assemble(&v.now)
+			v.columnsOf(&v.now)
+		}
 		err := v.newtonStep(ctx, &v.now, &st)
 		if err != nil {
 			return out, err
@@ -216,6 +224,7 @@ func (v *Solver) iterate(ctx context.Context, set engine.Settings, first int) (e
 				return out, nil
 			}
 		}
+		v.reuse = mayReuse && taken && alpha == 1 && !st.shifted && v.positive && v.trial.merit <= closeBy*v.now.merit
 		v.now, v.trial = v.trial, v.now
 	}
 }
@@ -334,6 +343,10 @@ func (v *Solver) largestMove(st *state, u []float64) float64 {
 // diagonal what makes it positive definite on the shapes that the conditions
 // allow.
 func (v *Solver) newtonStep(ctx context.Context, st *state, out *step) error {
+	done, err := v.gridsStep(ctx, st, out)
+	if done || err != nil {
+		return err
+	}
 	mean := v.meanDiagonal()
 	shift := 0.0
 	for try := 0; ; try++ {
@@ -372,13 +385,13 @@ func (v *Solver) tryStep(ctx context.Context, st *state, shift float64, out *ste
 		}
 		values = v.shifted
 	}
-	if v.chol == nil {
-		if v.chol, err = v.analysis.NewFactor(sparse.Cholesky); err != nil {
-			return false, fmt.Errorf("newton: %w", err)
-		}
+	factor, err := v.factorOf(ctx, &v.chol, sparse.Cholesky)
+	if err != nil {
+		return false, err
 	}
-	factor := v.chol
-	err = factor.Refactor(ctx, values)
+	if shift > 0 || !v.reuse {
+		err = factor.Refactor(ctx, values)
+	}
 	positive := err == nil
 	v.positive = positive && shift == 0
 	if err != nil {
@@ -395,12 +408,9 @@ func (v *Solver) tryStep(ctx context.Context, st *state, shift float64, out *ste
 		if !held {
 			return false, nil
 		}
-		if v.ldl == nil {
-			if v.ldl, err = v.analysis.NewFactor(sparse.LDL); err != nil {
-				return false, fmt.Errorf("newton: %w", err)
-			}
+		if factor, err = v.factorOf(ctx, &v.ldl, sparse.LDL); err != nil {
+			return false, err
 		}
-		factor = v.ldl
 		if err = factor.Refactor(ctx, values); err != nil {
 			if ctx.Err() != nil {
 				return false, ctx.Err()
@@ -532,21 +542,25 @@ func (v *Solver) limitForces(st *state, change []float64) {
 // negative counts the negative pivots of the unshifted tangent in v.values on
 // the shapes that symmetric conditions allow; −1 when rounding hides it.
 func (v *Solver) negative(ctx context.Context) (int, error) {
+	if v.byGrids && v.positive {
+		return -1, nil
+	}
 	if v.unknown == 0 || v.positive {
 		return 0, nil
 	}
-	err := v.chol.Refactor(ctx, v.values)
-	if err == nil {
+	chol, err := v.factorOf(ctx, &v.chol, sparse.Cholesky)
+	if err != nil {
+		return -1, err
+	}
+	if err = chol.Refactor(ctx, v.values); err == nil {
 		return 0, nil
 	}
 	var pe *sparse.PivotError
 	if !errors.As(err, &pe) {
 		return -1, fmt.Errorf("newton: %w", err)
 	}
-	if v.ldl == nil {
-		if v.ldl, err = v.analysis.NewFactor(sparse.LDL); err != nil {
-			return -1, fmt.Errorf("newton: %w", err)
-		}
+	if _, err = v.factorOf(ctx, &v.ldl, sparse.LDL); err != nil {
+		return -1, err
 	}
 	if err := v.ldl.Refactor(ctx, v.values); err != nil {
 		if ctx.Err() != nil {

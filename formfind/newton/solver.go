@@ -46,9 +46,13 @@ type Solver struct {
 	unknown int
 	pattern *pattern
 
-	analysis *sparse.Analysis
+	analysis *sparse.Analysis // made when first needed
 	chol     *sparse.Factor
 	ldl      *sparse.Factor
+	grids    *grids  // nil: every step by a factor
+	byGrids  bool    // the last step was solved by grids
+	reuse    bool    // keep the tangent of the step before
+	target   float64 // wanted residual
 
 	// Work.
 	values       []float64
@@ -253,7 +257,7 @@ func (v *Solver) prepare(ctx context.Context, at []r3.Vec, all bool) error {
 	s := v.s
 	n := len(s.Position)
 	old := v.start
-	same := v.analysis != nil && slices.Equal(cls, v.cls)
+	same := v.pattern != nil && slices.Equal(cls, v.cls)
 	v.cls, v.lines = cls, lines
 	start := make([]int32, n+1)
 	first := make([]int32, n)
@@ -282,11 +286,7 @@ func (v *Solver) prepare(ctx context.Context, at []r3.Vec, all bool) error {
 	}
 	v.start, v.first, v.unknown = start, first, int(unknown)
 	v.pattern = v.newPattern()
-	v.analysis, err = sparse.Analyze(ctx, v.unknown, v.pattern.pairs, sparse.Options{})
-	if err != nil {
-		return fmt.Errorf("newton: %w", err)
-	}
-	v.chol, v.ldl, v.inside = nil, nil, nil
+	v.analysis, v.chol, v.ldl, v.inside = nil, nil, nil, nil
 	v.slideWork = make([]r3.Vec, n)
 	nv := v.unknown + len(v.pattern.pairs)
 	v.values = make([]float64, nv)
@@ -308,6 +308,23 @@ func (v *Solver) prepare(ctx context.Context, at []r3.Vec, all bool) error {
 		}
 	}
 	return nil
+}
+
+// factorOf returns the factorisation in at, which is made, after the ordering,
+// when it is first asked for.
+func (v *Solver) factorOf(ctx context.Context, at **sparse.Factor, kind sparse.Kind) (*sparse.Factor, error) {
+	var err error
+	if v.analysis == nil {
+		if v.analysis, err = sparse.Analyze(ctx, v.unknown, v.pattern.pairs, sparse.Options{}); err != nil {
+			return nil, fmt.Errorf("newton: %w", err)
+		}
+	}
+	if *at == nil {
+		if *at, err = v.analysis.NewFactor(kind); err != nil {
+			return nil, fmt.Errorf("newton: %w", err)
+		}
+	}
+	return *at, nil
 }
 
 // place fills at with the starting positions: those of the form, with every
