@@ -111,9 +111,6 @@ func (f *Factor) factorDelayed(ctx context.Context, values []float64) error {
 			f.position[i] = int32(pivot + k)
 		}
 		pivot += n
-		if w := &f.crew.workers[0]; len(w.scratch) < solveWidth*ld+slack {
-			w.scratch = make([]float64, solveWidth*ld+slack)
-		}
 	}
 	return nil
 }

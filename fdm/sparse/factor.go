@@ -16,7 +16,8 @@ type Factor struct {
 	panels []float64
 	store  []float64 // updates between subtrees, several workers only
 	crew   crew
-	x      []float64 // right-hand sides in the order of elimination
+	x      []float64 // right-hand sides in the order of elimination, four floats an unknown
+	below  []int32   // LDL only: the pivots of the rows of a front
 	ok     bool
 
 	// LDL only.
@@ -37,7 +38,7 @@ func (a *Analysis) NewFactor(k Kind) (*Factor, error) {
 		return nil, fmt.Errorf("sparse: unknown kind of factorisation %d", int(k))
 	}
 	f := &Factor{a: a, kind: k}
-	f.panels = large[float64](int(a.panel[a.fronts()]) + 3*a.cost.LargestFront + slack)
+	f.panels = large[float64](int(a.panel[a.fronts()]) + slack)
 	f.crew.init(f, a.workers())
 	if k == LDL {
 		f.diag = make([]float64, a.n)

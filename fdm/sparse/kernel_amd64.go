@@ -30,11 +30,14 @@ func mulSubStrip(c, a, b *float64, ldc, lda, ldb, m, n, k, step, fresh int)
 //go:noescape
 func scaleStrip(c *float64, ldc, m int, t *[10]float64)
 
-// dotStrip does out = Aᵀ·B for four columns of A and three of B, m rows: sum r
-// of column c of A with column r of B at out[4*r+c].
+// forwardFront and backwardFront do what solveForward and solveBackward say: y
+// is x at the first of the own unknowns.
 //
 //go:noescape
-func dotStrip(a, b, out *float64, lda, ldb, m int, mask *[4]int64)
+func forwardFront(p, y, x *float64, ld, cols, own int, rows *int32, below int, unit bool)
+
+//go:noescape
+func backwardFront(p, y, x *float64, ld, cols, own int, rows *int32, below int, unit bool)
 
 // addRuns adds cols columns of the lower triangle of an update matrix, those
 // from skip on of the first of the runs, to the columns of a front.

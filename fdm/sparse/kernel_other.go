@@ -12,7 +12,11 @@ func scaleStrip(c *float64, ldc, m int, t *[10]float64) {
 	panic("sparse: no strip kernel on this machine")
 }
 
-func dotStrip(a, b, out *float64, lda, ldb, m int, mask *[4]int64) {
+func forwardFront(p, y, x *float64, ld, cols, own int, rows *int32, below int, unit bool) {
+	panic("sparse: no strip kernel on this machine")
+}
+
+func backwardFront(p, y, x *float64, ld, cols, own int, rows *int32, below int, unit bool) {
 	panic("sparse: no strip kernel on this machine")
 }
 

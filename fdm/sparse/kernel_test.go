@@ -119,27 +119,73 @@ func TestSolveKernelsOnEverySize(t *testing.T) {
 						}
 					}
 				}
-				for nb := 1; nb <= 3; nb++ {
-					lda, ldb := m+rng.IntN(3), m+rng.IntN(3)
-					a, b := randomVector(rng, 4*lda+slack), randomVector(rng, 3*ldb+slack)
-					// What lies beyond the rows must not matter.
-					for j := range 4 {
-						for i := m; i < lda; i++ {
-							a[j*lda+i] = math.NaN()
+			}
+		}
+	})
+}
+
+// The columns of a front against the triangular solves entry by entry, for all
+// groups of columns, rows that are columns of the same front and rows below.
+func TestFrontSolvesOnEverySize(t *testing.T) {
+	bothPaths(t, func(t *testing.T) {
+		rng := rand.New(rand.NewPCG(7, 7))
+		for cols := 1; cols <= 10; cols++ {
+			for own := cols; own <= cols+4; own++ {
+				for below := 0; below <= 5; below++ {
+					for _, unit := range []bool{false, true} {
+						first, m := rng.IntN(3), own+below
+						ld := m + rng.IntN(2)
+						p := randomVector(rng, (cols-1)*ld+m)
+						n := first + own + 2*below
+						var rows []int32
+						for k := range below {
+							rows = append(rows, int32(first+own+2*k+rng.IntN(2)))
 						}
-					}
-					var out [12]float64
-					mulTrans(&out, a, lda, b, ldb, m, n, nb)
-					for r := range nb {
-						for j := range n {
-							s := 0.0
-							for i := range m {
-								s += a[j*lda+i] * b[r*ldb+i]
+						place := func(i int) int {
+							if i < own {
+								return first + i
 							}
-							if !(math.Abs(s-out[4*r+j]) <= 1e-12) {
-								t.Fatalf("m %d, n %d, nb %d: product (%d, %d) is %g, want %g", m, n, nb, j, r, out[4*r+j], s)
+							return int(rows[i-own])
+						}
+						diagonal := func(j int) float64 {
+							if unit {
+								return 1
+							}
+							return p[j*ld+j]
+						}
+						x := randomVector(rng, solveWidth*n)
+						forth := append([]float64(nil), x...)
+						back := append([]float64(nil), x...)
+						solveForward(p, ld, cols, own, first, rows, forth, unit)
+						solveBackward(p, ld, cols, own, first, rows, back, unit)
+						want := append([]float64(nil), x...)
+						for j := range cols {
+							for r := range solveWidth {
+								want[solveWidth*(first+j)+r] *= diagonal(j)
+								for i := j + 1; i < m; i++ {
+									want[solveWidth*place(i)+r] -= p[j*ld+i] * want[solveWidth*(first+j)+r]
+								}
 							}
 						}
+						compare := func(what string, got []float64) {
+							for i := range got {
+								if !(math.Abs(got[i]-want[i]) <= 1e-11*(1+math.Abs(want[i]))) {
+									t.Fatalf("%s, %d columns, %d own, %d below, unit %v: %d is %g, want %g", what, cols, own, below, unit, i, got[i], want[i])
+								}
+							}
+						}
+						compare("forward", forth)
+						copy(want, x)
+						for j := cols - 1; j >= 0; j-- {
+							for r := range solveWidth {
+								s := want[solveWidth*(first+j)+r]
+								for i := j + 1; i < m; i++ {
+									s -= p[j*ld+i] * want[solveWidth*place(i)+r]
+								}
+								want[solveWidth*(first+j)+r] = s * diagonal(j)
+							}
+						}
+						compare("backward", back)
 					}
 				}
 			}

@@ -1,12 +1,14 @@
 package sparse
 
-// solveWidth is the number of right-hand sides solved together.
-const solveWidth = 3
+import "slices"
+
+// solveWidth is the number of right-hand sides solved together: inside, an
+// unknown has four neighbouring floats, used or not, that one register takes.
+const solveWidth = 4
 
 // Solve replaces b by the solution X of A·X = B. Both are n×nrhs, row by row:
-// b[i*nrhs+r] belongs to unknown i of right-hand side r. Three right-hand
-// sides together cost little more than one. The first solve allocates
-// 4·n floats.
+// b[i*nrhs+r] belongs to unknown i of right-hand side r. Up to four right-hand
+// sides together cost no more than one. The first solve allocates 4·n floats.
 //
 // Errors: [ErrNotFactored], [SizeError], [ValueError].
 func (f *Factor) Solve(b []float64, nrhs int) error {
@@ -25,7 +27,7 @@ func (f *Factor) Solve(b []float64, nrhs int) error {
 
 func (f *Factor) solve(b []float64, nrhs int) {
 	if f.x == nil {
-		f.x = large[float64](solveWidth*f.a.n + slack)
+		f.x = large[float64](solveWidth * f.a.n)
 	}
 	for r := 0; r < nrhs; r += solveWidth {
 		f.solveSome(b, nrhs, r, min(solveWidth, nrhs-r))
@@ -33,37 +35,35 @@ func (f *Factor) solve(b []float64, nrhs int) {
 }
 
 // solveSome solves for the columns r to r+w-1 of b. Inside, the unknowns stand
-// in the order of elimination, row by row.
+// in the order of elimination.
 func (f *Factor) solveSome(b []float64, nrhs, r, w int) {
-	a := f.a
-	x := f.x[:a.n*w+slack]
-	f.permute(x, b, nrhs, r, w, false)
-	scratch := f.crew.workers[0].scratch
-	m := int32(a.fronts())
+	f.permute(b, nrhs, r, w, false)
+	m := int32(f.a.fronts())
 	for s := range m {
 		v := f.view(s)
-		v.forward(x, w, f.position, scratch)
+		v.forward(f.x)
 	}
 	if f.kind == LDL {
-		f.divide(x, w)
+		f.divide()
 	}
 	for s := m - 1; s >= 0; s-- {
 		v := f.view(s)
-		v.backward(x, w, f.position, scratch)
+		v.backward(f.x)
 	}
-	f.permute(x, b, nrhs, r, w, true)
+	f.permute(b, nrhs, r, w, true)
 }
 
 // permute copies w columns of b to x in the order of elimination, or back.
-func (f *Factor) permute(x, b []float64, nrhs, r, w int, back bool) {
+func (f *Factor) permute(b []float64, nrhs, r, w int, back bool) {
 	order := f.a.order
 	if w == 3 && f.kind == Cholesky {
+		x := f.x
 		for k, i := range order {
-			p, q := x[3*k:3*k+3:3*k+3], b[int(i)*nrhs+r:][:3]
+			p, q := (*[solveWidth]float64)(x[solveWidth*k:]), (*[3]float64)(b[int(i)*nrhs+r:])
 			if back {
 				q[0], q[1], q[2] = p[0], p[1], p[2]
 			} else {
-				p[0], p[1], p[2] = q[0], q[1], q[2]
+				p[0], p[1], p[2], p[3] = q[0], q[1], q[2], 0
 			}
 		}
 		return
@@ -73,11 +73,11 @@ func (f *Factor) permute(x, b []float64, nrhs, r, w int, back bool) {
 		if f.kind == LDL {
 			i = int(f.pivots[k])
 		}
-		p, q := x[k*w:][:w], b[int(order[i])*nrhs+r:][:w]
+		p, q := f.x[k*solveWidth:][:solveWidth], b[int(order[i])*nrhs+r:][:w]
 		if back {
 			copy(q, p)
 		} else {
-			copy(p, q)
+			clear(p[copy(p, q):])
 		}
 	}
 }
@@ -88,7 +88,7 @@ type frontView struct {
 	ld    int
 	cols  int
 	first int     // number of the first pivot
-	rows  []int32 // places of the rows below
+	rows  []int32 // numbers of the pivots that eliminate the rows below
 	unit  bool    // the diagonal of L is 1; otherwise it is stored inverted
 }
 
@@ -96,204 +96,61 @@ func (f *Factor) view(s int32) frontView {
 	a := f.a
 	if len(f.delayed) > 0 {
 		d := &f.delayed[s]
-		return frontView{p: d.panel, ld: len(d.rows), cols: d.cols, first: d.first, rows: d.rows[d.cols:], unit: true}
+		return frontView{p: d.panel, ld: len(d.rows), cols: d.cols, first: d.first, rows: f.pivotsOf(d.rows[d.cols:]), unit: true}
 	}
 	cols, ld := a.shape(s)
-	return frontView{
-		p: f.panels[a.panel[s]:], ld: ld, cols: cols, first: int(a.first[s]),
-		rows: a.rows[a.rowPtr[s]:a.rowPtr[s+1]], unit: f.kind == LDL,
+	v := frontView{p: f.panels[a.panel[s]:a.panel[s+1]], ld: ld, cols: cols, first: int(a.first[s]), rows: a.rows[a.rowPtr[s]:a.rowPtr[s+1]]}
+	if f.kind == LDL {
+		v.rows, v.unit = f.pivotsOf(v.rows), true
 	}
+	return v
 }
 
-// solveBlock is the number of columns of a front solved one by one before the
-// rest of the rows is updated.
-const solveBlock = 16
+// pivotsOf finds the pivots that eliminate the places.
+func (f *Factor) pivotsOf(places []int32) []int32 {
+	f.below = slices.Grow(f.below[:0], len(places))[:len(places)]
+	for i, k := range places {
+		f.below[i] = f.position[k]
+	}
+	return f.below
+}
+
+// solveWork bounds the entries of L that one call of a kernel reads to some 50 µs.
+const solveWork = 1 << 16
+
+// step is the number of columns to hand to a kernel at a time, a multiple of four.
+func (v *frontView) step() int { return max(4, solveWork/max(v.ld, 1)&^3) }
 
 // forward does x = L⁻¹·x for the columns of one front.
-func (v *frontView) forward(x []float64, w int, position []int32, scratch []float64) {
-	own := x[v.first*w:]
-	for k := 0; k < v.cols; k += solveBlock {
-		n := min(solveBlock, v.cols-k)
-		p := v.p[k*v.ld+k:]
-		y := own[k*w:]
-		for j := range n {
-			c := p[j*v.ld:][:n]
-			inv := 1.0
-			if !v.unit {
-				inv = c[j]
-			}
-			if w == 3 {
-				yj := y[3*j : 3*j+3 : 3*j+3]
-				y0, y1, y2 := yj[0]*inv, yj[1]*inv, yj[2]*inv
-				yj[0], yj[1], yj[2] = y0, y1, y2
-				for i := j + 1; i < n; i++ {
-					yi := y[3*i : 3*i+3 : 3*i+3]
-					yi[0] -= c[i] * y0
-					yi[1] -= c[i] * y1
-					yi[2] -= c[i] * y2
-				}
-				continue
-			}
-			for r := range w {
-				yj := y[j*w+r] * inv
-				y[j*w+r] = yj
-				for i := j + 1; i < n; i++ {
-					y[i*w+r] -= c[i] * yj
-				}
-			}
-		}
-		if rest := v.cols - k - n; rest > 0 {
-			mulSub(scratch, rest, p[n:], v.ld, y, w, rest, w, n, true, false)
-			z := y[n*w:]
-			for r := range w {
-				for i, t := range scratch[r*rest:][:rest] {
-					z[i*w+r] += t
-				}
-			}
-		}
-	}
-	nu := len(v.rows)
-	if nu == 0 || v.cols == 0 {
-		return
-	}
-	mulSub(scratch, nu, v.p[v.cols:], v.ld, own, w, nu, w, v.cols, true, false)
-	if w == 3 {
-		t0, t1, t2 := scratch[:nu], scratch[nu:][:nu], scratch[2*nu:][:nu]
-		for i, row := range v.rows {
-			k := int(row)
-			if position != nil {
-				k = int(position[k])
-			}
-			xi := x[3*k : 3*k+3 : 3*k+3]
-			xi[0] += t0[i]
-			xi[1] += t1[i]
-			xi[2] += t2[i]
-		}
-		return
-	}
-	for i, row := range v.rows {
-		k := int(row)
-		if position != nil {
-			k = int(position[k])
-		}
-		for r := range w {
-			x[k*w+r] += scratch[r*nu+i]
-		}
+func (v *frontView) forward(x []float64) {
+	step := v.step()
+	for k := 0; k < v.cols; k += step {
+		solveForward(v.p[k*(v.ld+1):], v.ld, min(step, v.cols-k), v.cols-k, v.first+k, v.rows, x, v.unit)
 	}
 }
 
 // backward does x = L⁻ᵀ·x for the columns of one front.
-func (v *frontView) backward(x []float64, w int, position []int32, scratch []float64) {
-	own := x[v.first*w:]
-	nu := len(v.rows)
-	var dot [12]float64
-	if nu > 0 {
-		// The values at the rows below, column by column.
-		if w == 3 {
-			t0, t1, t2 := scratch[:nu], scratch[nu:][:nu], scratch[2*nu:][:nu]
-			for i, row := range v.rows {
-				k := int(row)
-				if position != nil {
-					k = int(position[k])
-				}
-				xi := x[3*k : 3*k+3 : 3*k+3]
-				t0[i], t1[i], t2[i] = xi[0], xi[1], xi[2]
-			}
-		} else {
-			for i, row := range v.rows {
-				k := int(row)
-				if position != nil {
-					k = int(position[k])
-				}
-				for r := range w {
-					scratch[r*nu+i] = x[k*w+r]
-				}
-			}
-		}
-		for j := 0; j < v.cols; j += 4 {
-			n := min(4, v.cols-j)
-			mulTrans(&dot, v.p[j*v.ld+v.cols:], v.ld, scratch, nu, nu, n, w)
-			if w == 3 {
-				o := own[3*j:][:3*n]
-				for c := 0; 3*c+2 < len(o); c++ {
-					o[3*c] -= dot[c]
-					o[3*c+1] -= dot[4+c]
-					o[3*c+2] -= dot[8+c]
-				}
-				continue
-			}
-			for c := range n {
-				for r := range w {
-					own[(j+c)*w+r] -= dot[4*r+c]
-				}
-			}
-		}
-	}
-	last := (v.cols - 1) / solveBlock * solveBlock
-	for k := last; k >= 0 && v.cols > 0; k -= solveBlock {
-		n := min(solveBlock, v.cols-k)
-		p := v.p[k*v.ld+k:]
-		y := own[k*w:]
-		if rest := v.cols - k - n; rest > 0 {
-			z := y[n*w:]
-			for r := range w {
-				t := scratch[r*rest:][:rest]
-				for i := range t {
-					t[i] = z[i*w+r]
-				}
-			}
-			for j := 0; j < n; j += 4 {
-				nj := min(4, n-j)
-				mulTrans(&dot, p[j*v.ld+n:], v.ld, scratch, rest, rest, nj, w)
-				for c := range nj {
-					for r := range w {
-						y[(j+c)*w+r] -= dot[4*r+c]
-					}
-				}
-			}
-		}
-		for j := n - 1; j >= 0; j-- {
-			c := p[j*v.ld:][:n]
-			inv := 1.0
-			if !v.unit {
-				inv = c[j]
-			}
-			if w == 3 {
-				yj := y[3*j : 3*j+3 : 3*j+3]
-				y0, y1, y2 := yj[0], yj[1], yj[2]
-				for i := j + 1; i < n; i++ {
-					yi := y[3*i : 3*i+3 : 3*i+3]
-					y0 -= c[i] * yi[0]
-					y1 -= c[i] * yi[1]
-					y2 -= c[i] * yi[2]
-				}
-				yj[0], yj[1], yj[2] = y0*inv, y1*inv, y2*inv
-				continue
-			}
-			for r := range w {
-				s := y[j*w+r]
-				for i := j + 1; i < n; i++ {
-					s -= c[i] * y[i*w+r]
-				}
-				y[j*w+r] = s * inv
-			}
-		}
+func (v *frontView) backward(x []float64) {
+	step := v.step()
+	for k := (v.cols - 1) / step * step; k >= 0 && v.cols > 0; k -= step {
+		solveBackward(v.p[k*(v.ld+1):], v.ld, min(step, v.cols-k), v.cols-k, v.first+k, v.rows, x, v.unit)
 	}
 }
 
 // divide does x = D⁻¹·x.
-func (f *Factor) divide(x []float64, w int) {
+func (f *Factor) divide() {
+	x := f.x
 	for k := 0; k < f.a.n; k++ {
 		d, e := f.diag[k], f.sub[k]
 		if e == 0 {
-			for r := range w {
-				x[k*w+r] /= d
+			for r := range solveWidth {
+				x[k*solveWidth+r] /= d
 			}
 			continue
 		}
 		inv := newInverse2(d, e, f.diag[k+1])
-		for r := range w {
-			p, q := k*w+r, (k+1)*w+r
+		for r := range solveWidth {
+			p, q := k*solveWidth+r, (k+1)*solveWidth+r
 			x[p], x[q] = inv.mul(x[p], x[q])
 		}
 		k++
