@@ -571,6 +571,8 @@ func (c *chain) finish(ctx context.Context) error {
 		for t := range panels {
 			// Of unequal warp and weft only the ratio is what was asked for;
 			// the magnitude is what Newton fitted.
+			n := s.Corners[t]
+			panels[t].Warp = s.WarpAt(t, ref[n[0]], ref[n[1]], ref[n[2]])
 			panels[t].WarpStress, panels[t].WeftStress = found.Stress[t].Warp, found.Stress[t].Weft
 		}
 		solver, err := fdm.New(ctx, net, panels)

@@ -15,18 +15,26 @@ import (
 func unreal(s *canopy.Structure, f *canopy.Form) bool { return pinned(s, f) || closedCorner(s, f) }
 
 // How far from balance in all directions a shape may be that balances in the
-// shape-changing ones, as ‖r‖/‖s‖: a resolved surface of equal stress is within
-// 3e-4 from a hundred triangles on; of unequal stress, whose magnitude is fitted,
-// within 8e-3 (400 random canopies); cones between rings within 1e-3, and up to
-// 2.5e-3 and 0.1 at a single node within 2 % of their height limit on fine meshes.
+// shape-changing ones, as ‖r‖/‖s‖ over the nodes and at a single node.
+//
+// Resolved surfaces: a node carries of a stress that is out of balance in the
+// surface by div S about |div S|·h², of forces of about S·h that meet there, h the
+// side of a triangle. Equal stress and cones between rings can balance exactly; what
+// is left is discretisation, h times h². Seen: 3e-3 for equal stress on two hundred
+// triangles near a limit, 1e-4 and falling eightfold with h halved for cones, at a
+// node 1e-3. Other unequal stress cannot, and ‖r‖/‖s‖ falls as h: 0.07·h/L at most for
+// sails held all round at warp:weft 3:1 as steep as they exist, L the size.
+//
 // Surfaces that only their mesh holds, cones taller than any cone can be, show
-// 0.03 and 0.01 upwards, 0.3 at a node. What lies between is caught by
-// unsettled.
+// 6e-4 upwards on any mesh and, since it is a few triangles that hold, 0.04 upwards
+// at one node; of equal stress 0.03 and 0.1. Without edge cables nothing else does.
+// Cables shear the fabric bonded to them, most at the corners: 400 random canopies
+// show 8e-3, and 0.12 at a node.
 const (
 	pinnedEqual   = 0.01
-	pinnedUnequal = 0.009
-	pinnedNode    = 0.12   // at a single node
-	pinnedHeld    = 0.0028 // unequal stress without edge cables that shear it
+	pinnedUnequal = 0.009 // unequal stress with edge cables
+	pinnedNode    = 0.03  // at a single node, unequal stress held all round
+	pinnedHeld    = 0.1   // by h/L: the stress out of balance by a tenth of itself over the size
 )
 
 // pinned reports whether a shape in balance along its normals is far from balance
@@ -56,9 +64,18 @@ func pinned(s *canopy.Structure, f *canopy.Form) bool {
 		if worst > pinnedNode {
 			return true
 		}
-		most = pinnedHeld
+		most = pinnedHeld * meshSide(s, f) / s.Size()
 	}
 	return math.Sqrt(rr) > most*math.Sqrt(ss)
+}
+
+// meshSide is the side of a typical triangle, m.
+func meshSide(s *canopy.Structure, f *canopy.Form) float64 {
+	area := 0.0
+	for _, c := range s.Corners {
+		area += r3.Norm(r3.Cross(r3.Sub(f.Position[c[1]], f.Position[c[0]]), r3.Sub(f.Position[c[2]], f.Position[c[0]]))) / 2
+	}
+	return math.Sqrt(2 * area / float64(max(1, len(s.Corners))))
 }
 
 // unsettled says why a result is not to be relied on though every number of it

@@ -66,7 +66,7 @@ func (c *chain) settle(ctx context.Context) (bool, error) {
 	for t, n := range s.Corners {
 		corners := [3]r3.Vec{ref[n[0]], ref[n[1]], ref[n[2]]}
 		var err error
-		if tri[t], err = element.NewFabricTriangle(corners, s.Warp[t]); err != nil {
+		if tri[t], err = element.NewFabricTriangle(corners, s.WarpAt(t, corners[0], corners[1], corners[2])); err != nil {
 			return false, nil // the linear pass names it
 		}
 		d := tri[t].Densities([3]float64{found.Stress[t].Warp, found.Stress[t].Weft, 0})

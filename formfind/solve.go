@@ -95,7 +95,7 @@ func solve(ctx context.Context, s *canopy.Structure, m *canopy.Model, o Options)
 	r := &canopy.Result{
 		Title: m.Title, File: m.File, Digest: m.Digest,
 		Limits: m.Limits, Factors: m.Factors, North: m.North,
-		Structure: s, Form: f,
+		Structure: laid(s, f), Form: f,
 	}
 	r.Program.Engines = f.Engines
 	r.Audit.Discretisation = finer
@@ -107,6 +107,22 @@ func solve(ctx context.Context, s *canopy.Structure, m *canopy.Model, o Options)
 		r.Audit.Reasons = append(r.Audit.Reasons, disagreement)
 	}
 	return r, nil
+}
+
+// laid returns the structure with its wanted warp as it lies on the surface found,
+// which is what the warp achieved is held against.
+func laid(s *canopy.Structure, f *canopy.Form) *canopy.Structure {
+	out := *s
+	out.Warp = make([]r3.Vec, len(s.Corners))
+	same := true
+	for t, n := range s.Corners {
+		out.Warp[t] = s.WarpAt(t, f.Position[n[0]], f.Position[n[1]], f.Position[n[2]])
+		same = same && out.Warp[t] == s.Warp[t]
+	}
+	if same {
+		return s
+	}
+	return &out
 }
 
 // check refuses what cannot be solved before anything is.
@@ -168,6 +184,10 @@ func nearOrigin(s *canopy.Structure) (*canopy.Structure, r3.Vec) {
 	local := *s
 	local.Position = moved(s.Position, r3.Scale(-1, origin))
 	local.Reference = moved(s.Reference, r3.Scale(-1, origin))
+	local.Fabrics = slices.Clone(s.Fabrics)
+	for i := range local.Fabrics {
+		local.Fabrics[i].WarpCentre = r3.Sub(local.Fabrics[i].WarpCentre, origin)
+	}
 	local.Curves = slices.Clone(s.Curves)
 	for i := range local.Curves {
 		c := &local.Curves[i]

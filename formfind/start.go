@@ -72,7 +72,9 @@ func network(s *canopy.Structure, loads []r3.Vec) (fdm.Network, []fdm.Panel) {
 	}
 	panels := make([]fdm.Panel, len(s.Corners))
 	for t := range panels {
-		panels[t] = fdm.Panel{Corners: s.Corners[t], Warp: s.Warp[t], WarpStress: s.Stress[t][0], WeftStress: s.Stress[t][1]}
+		c := s.Corners[t]
+		warp := s.WarpAt(t, s.Position[c[0]], s.Position[c[1]], s.Position[c[2]])
+		panels[t] = fdm.Panel{Corners: c, Warp: warp, WarpStress: s.Stress[t][0], WeftStress: s.Stress[t][1]}
 	}
 	return n, panels
 }

@@ -390,7 +390,7 @@ func (b *builder) warp(l *loop, from int) {
 		normal := r3.Unit(r3.Cross(r3.Sub(q, p), r3.Sub(r, p)))
 		w := along
 		if f.WarpRule != canopy.WarpAlong {
-			w = warpAbout(f.WarpRule, b.ringAxis(l.ring), r3.Sub(v, b.ringAt(l)), normal)
+			w = canopy.WarpAbout(f.WarpRule, b.ringAxis(l.ring), r3.Sub(v, b.ringAt(l)), normal)
 		}
 		flat := r3.Norm(r3.Sub(w, r3.Scale(r3.Dot(w, normal), normal)))
 		if !(flat > minWarp) {
@@ -400,28 +400,6 @@ func (b *builder) warp(l *loop, from int) {
 		}
 		s.Warp = append(s.Warp, w)
 	}
-}
-
-// warpAbout returns the unit warp direction at offset d from a centre on the
-// axis: around the axis, or radial, which is in the surface and at right angles
-// to that. Zero where it is undefined.
-func warpAbout(rule canopy.WarpRule, axis, d, normal r3.Vec) r3.Vec {
-	around := r3.Cross(axis, d)
-	if r3.Norm(around) == 0 {
-		return r3.Vec{}
-	}
-	around = r3.Unit(around)
-	if rule == canopy.WarpAround {
-		return around
-	}
-	w := r3.Cross(around, normal)
-	if r3.Norm(w) == 0 {
-		return r3.Vec{}
-	}
-	if r3.Dot(w, d) < 0 {
-		w = r3.Scale(-1, w)
-	}
-	return r3.Unit(w)
 }
 
 // minWarp is the least length of a unit warp direction projected into the

@@ -328,7 +328,7 @@ func (r *refiner) triangles() {
 			continue
 		}
 		d := r3.Sub(r3.Scale(1.0/3, r3.Add(p, r3.Add(q, v))), fab.WarpCentre)
-		if w := warpAbout(fab.WarpRule, fab.WarpAxis, d, r3.Unit(normal)); w != (r3.Vec{}) {
+		if w := canopy.WarpAbout(fab.WarpRule, fab.WarpAxis, d, r3.Unit(normal)); w != (r3.Vec{}) {
 			f.Warp[t] = w
 		}
 	}

@@ -119,7 +119,7 @@ func (v *Solver) evaluate(st *state) {
 		if stress == weftStress {
 			f = tri.FilmPull(stress)
 		} else {
-			warp, weft, err := tri.ProjectWarp(s.Warp[k])
+			warp, weft, err := v.axes(st, k, &tri)
 			if err != nil {
 				st.collapse = int32(k)
 				continue
@@ -354,7 +354,7 @@ func (v *Solver) addFilm(st *state, t int, tri *element.Triangle, slots [3]int32
 			next[k] = f * r3.Dot(tri.Edge[k], tri.Edge[(k+1)%3])
 		}
 	} else {
-		warp, weft, err := tri.ProjectWarp(v.s.Warp[t])
+		warp, weft, err := v.axes(st, t, tri)
 		if err != nil {
 			return
 		}

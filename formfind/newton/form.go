@@ -28,7 +28,7 @@ func (v *Solver) form(st *state) (*canopy.Form, error) {
 			f.Warp[t] = s.Warp[t]
 			continue
 		}
-		w, _, err := tri.ProjectWarp(s.Warp[t])
+		w, _, err := v.axes(st, t, &tri)
 		if err != nil {
 			return nil, v.warpError(t, err)
 		}

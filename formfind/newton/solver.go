@@ -392,6 +392,7 @@ func (v *Solver) Find(ctx context.Context, start *canopy.Form, set engine.Settin
 	if err := v.place(start, at); err != nil {
 		return nil, out, err
 	}
+	v.resume(start)
 	if start != nil {
 		if err := v.carry(ctx, start, at); err != nil {
 			return nil, out, err

@@ -56,7 +56,7 @@ func (st *state) reportStress(t int, f *canopy.Form) {
 		if !ok {
 			return
 		}
-		w, _, err := g.ProjectWarp(st.warp[t])
+		w, _, err := g.ProjectWarp(st.warpAt(t, x))
 		if err != nil {
 			// Equal stresses: any direction will do.
 			w = unit(g.Edge[0])
@@ -74,6 +74,11 @@ func (st *state) reportStress(t int, f *canopy.Form) {
 		f.Warp[k] = w
 		f.Stress[k] = canopy.Stress{Warp: n[0], Weft: n[1], Shear: n[2]}
 	}
+}
+
+// warpAt is the wanted warp direction of triangle t with its corners at x.
+func (p *problem) warpAt(t int, x [3]r3.Vec) r3.Vec {
+	return p.s.WarpAt(int(p.tri[t]), r3.Add(x[0], p.origin), r3.Add(x[1], p.origin), r3.Add(x[2], p.origin))
 }
 
 // react fills in reactions and the couples of rings.

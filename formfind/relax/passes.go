@@ -176,7 +176,7 @@ func (st *state) pullWeighted(t int, x [3]r3.Vec) {
 			return
 		}
 		n := r3.Scale(1/l, twice)
-		w := st.warp[t]
+		w := st.warpAt(t, x)
 		w = unit(r3.Sub(w, r3.Scale(r3.Dot(w, n), n)))
 		f := r3.Cross(n, w)
 		var ew, ef [3]float64

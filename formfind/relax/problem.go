@@ -80,7 +80,6 @@ type problem struct {
 	tri       []int32 // index in the structure
 	triLaw    []triangleLaw
 	stress    [][2]float64 // given stress, or prestress
-	warp      []r3.Vec     // wanted direction, of woven ones
 	fabric    []element.FabricTriangle
 	fabricLaw []element.FabricLaw // by fabric
 	fabricOf  []int32
@@ -305,7 +304,6 @@ func (p *problem) addTriangles(start []r3.Vec, form *canopy.Form) error {
 		p.tri = append(p.tri, int32(t))
 		p.triLaw = append(p.triLaw, law)
 		p.stress = append(p.stress, s.Stress[t])
-		p.warp = append(p.warp, s.Warp[t])
 		p.fabricOf = append(p.fabricOf, f)
 		if pressed {
 			p.push = append(p.push, s.Fabrics[f].Pressure/6)
@@ -323,7 +321,7 @@ func (p *problem) addTriangles(start []r3.Vec, form *canopy.Form) error {
 			if !ok {
 				return fmt.Errorf("triangle %d at node %s: %w", t, s.NodeName.At(int(c[0])), element.ErrFlatTriangle)
 			}
-			if _, _, err := g.ProjectWarp(s.Warp[t]); err != nil {
+			if _, _, err := g.ProjectWarp(s.WarpAt(t, start[c[0]], start[c[1]], start[c[2]])); err != nil {
 				return fmt.Errorf("triangle %d at node %s: %w", t, s.NodeName.At(int(c[0])), err)
 			}
 		} else {

@@ -115,6 +115,7 @@ func Cone(rBase, rTop, h float64, stress [2]float64, around, rows int) Case {
 	}, func(c r3.Vec) r3.Vec { // axis plane
 		return r3.Vec{X: c.X, Y: c.Y, Z: -math.Hypot(c.X, c.Y) * h / (rBase - rTop)}
 	}, stress)
+	b.s.Fabrics[0].WarpRule, b.s.Fabrics[0].WarpAxis = canopy.WarpRadial, r3.Vec{Z: 1}
 	c := Case{
 		Name:   fmt.Sprintf("cone %g/%g h=%g warp:weft %g:%g", rBase, rTop, h, stress[0], stress[1]),
 		Source: "axisymmetric membrane equilibrium: d(r·Ns)/dr = Nh, r·Ns·sin α = constant",
