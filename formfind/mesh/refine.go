@@ -23,6 +23,7 @@ type Refinement struct {
 	TriangleOf []int32 // per fine triangle: the coarse triangle it is part of
 
 	coarse *canopy.Structure
+	folds  [][2]int32 // coarse sides with one triangle, or more than two
 }
 
 // Refine divides every triangle of s into four and every member that lies on
@@ -43,36 +44,7 @@ func Refine(s *canopy.Structure) (*Refinement, error) {
 	r.triangles()
 	r.chains()
 	r.names()
-	return &Refinement{Fine: r.f, Parents: r.parents, MemberOf: r.memberOf, TriangleOf: r.triangleOf, coarse: s}, nil
-}
-
-// Prolong carries a form found on the coarse mesh to the fine one, as a start:
-// positions of new nodes half-way between their parents (on their curves where
-// they are fixed, at their offsets from the centre on rigid rings), forces,
-// stresses and warp of what they are part of. Reactions are left zero.
-func (r *Refinement) Prolong(form *canopy.Form) *canopy.Form {
-	f := canopy.NewForm(r.Fine)
-	for i, p := range r.Parents {
-		x := form.Position[p[0]]
-		if p[0] != p[1] {
-			x = mid(x, form.Position[p[1]])
-		}
-		// What is fixed stays where the structure has it.
-		f.Position[i] = pick(r.Fine.FixedAt(i), r.Fine.Position[i], x)
-	}
-	for i := range f.Position {
-		if m := r.Fine.MasterOf(i); m >= 0 {
-			x := r3.Add(f.Position[m], r3.Sub(r.Fine.Position[i], r.Fine.Position[m]))
-			f.Position[i] = pick(r.Fine.FixedAt(i), r.Fine.Position[i], x)
-		}
-	}
-	for i, k := range r.MemberOf {
-		f.Force[i] = form.Force[k]
-	}
-	for i, t := range r.TriangleOf {
-		f.Stress[i], f.Warp[i] = form.Stress[t], form.Warp[t]
-	}
-	return f
+	return &Refinement{Fine: r.f, Parents: r.parents, MemberOf: r.memberOf, TriangleOf: r.triangleOf, coarse: s, folds: r.folds()}, nil
 }
 
 // pick takes the coordinates in the directions of d from a, the others from b.
@@ -134,6 +106,17 @@ func (r *refiner) sides() {
 			}
 		}
 	}
+}
+
+// folds lists the sides with one triangle, or with more than two.
+func (r *refiner) folds() [][2]int32 {
+	var out [][2]int32
+	for k, u := range r.uses {
+		if u != 2 {
+			out = append(out, r.parents[len(r.s.Position)+k])
+		}
+	}
+	return out
 }
 
 // nodes places the nodes of the fine mesh.

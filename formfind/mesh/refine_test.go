@@ -170,33 +170,6 @@ func TestRefinedRingIsRoundAndTied(t *testing.T) {
 	}
 }
 
-func TestProlongTakesTheFoundShape(t *testing.T) {
-	s := build(t, cone())
-	r, err := mesh.Refine(s)
-	require.NoError(t, err)
-	form := canopy.NewForm(s)
-	drop := r3.Vec{Z: -0.25}
-	for i := range form.Position {
-		if s.FixedAt(i) == 0 && s.MasterOf(i) < 0 {
-			form.Position[i] = r3.Add(form.Position[i], drop)
-		}
-	}
-	for k := range form.Force {
-		form.Force[k] = float64(k + 1)
-	}
-	f := r.Prolong(form)
-	for i, p := range r.Parents {
-		want := r3.Scale(0.5, r3.Add(form.Position[p[0]], form.Position[p[1]]))
-		if r.Fine.MasterOf(i) >= 0 {
-			want = r.Fine.Position[i]
-		}
-		require.InDelta(t, 0, r3.Norm(r3.Sub(want, f.Position[i])), 1e-12)
-	}
-	for i, k := range r.MemberOf {
-		require.Equal(t, float64(k+1), f.Force[i])
-	}
-}
-
 // A listed square of fixed rim nodes without names or curves: the new rim nodes
 // are fixed, the new inner ones free.
 func TestRefineListedMesh(t *testing.T) {
