@@ -27,8 +27,9 @@ type Analysis struct {
 	rowPtr []int64
 	rows   []int32
 	// Where the update rows are among the rows of the parent's front.
-	runPtr []int64
-	runs   []run
+	// The runs of front s are runs[runPtr[s]:runEnd[s]].
+	runPtr, runEnd []int64
+	runs           []run
 
 	// The children of front s in the order in which they are eliminated.
 	childPtr []int32
@@ -368,19 +369,35 @@ func (a *Analysis) frontRows(g graph, mem *pool) {
 	m := int32(a.fronts())
 	a.rows = make([]int32, a.rowPtr[m])
 	a.panel = make([]int64, m+1)
+	a.runPtr = make([]int64, m)
+	a.runEnd = make([]int64, m)
+	a.runs = make([]run, 0, 4*m)
 	stamp := mem.filled(a.n, none)
-	defer mem.put(stamp)
+	local := mem.get(a.n) // position of a row in the front at hand
+	spare := mem.get(a.n)
+	defer mem.put(stamp, local, spare)
 	for s := range m {
 		last := a.first[s+1] - 1
 		out := a.rows[a.rowPtr[s]:a.rowPtr[s]:a.rowPtr[s+1]]
-		for _, c := range a.children[a.childPtr[s]:a.childPtr[s+1]] {
-			for _, i := range a.rows[a.rowPtr[c]:a.rowPtr[c+1]] {
-				if i > last && stamp[i] != s {
+		kids := a.children[a.childPtr[s]:a.childPtr[s+1]]
+		parts := 0
+		for _, c := range kids {
+			rows := a.rows[a.rowPtr[c]:a.rowPtr[c+1]]
+			for len(rows) > 0 && rows[0] <= last {
+				rows = rows[1:]
+			}
+			sorted := len(out)
+			for _, i := range rows {
+				if stamp[i] != s {
 					stamp[i] = s
 					out = append(out, i)
 				}
 			}
+			if parts++; parts <= maxMerges {
+				mergeTail(out, sorted, spare)
+			}
 		}
+		sorted := len(out)
 		for j := a.first[s]; j <= last; j++ {
 			for _, node := range g.row(a.order[j]) {
 				if i := a.place[node]; i > last && stamp[i] != s {
@@ -389,60 +406,72 @@ func (a *Analysis) frontRows(g graph, mem *pool) {
 				}
 			}
 		}
-		slices.Sort(out)
+		if parts <= maxMerges {
+			slices.Sort(out[sorted:])
+			mergeTail(out, sorted, spare)
+		} else {
+			slices.Sort(out)
+		}
 		cols, rows := a.shape(s)
 		a.panel[s+1] = a.panel[s] + int64(cols)*int64(rows)
-	}
-	// Relative positions: local[i] is the position of row i in front p. Fronts
-	// are met by parent here, so the runs are made in two passes.
-	a.runPtr = make([]int64, m+1)
-	local := stamp
-	rel := make([]int32, 0, 64)
-	var total int64
-	for pass := range 2 {
-		if pass == 1 {
-			for s := range m {
-				a.runPtr[s+1] += a.runPtr[s]
-			}
-			a.runs = make([]run, total)
+		for k, i := range out {
+			local[i] = int32(cols + k)
 		}
-		for p := range m {
-			kids := a.children[a.childPtr[p]:a.childPtr[p+1]]
-			if len(kids) == 0 {
-				continue
-			}
-			cols := a.first[p+1] - a.first[p]
-			for k, i := range a.rows[a.rowPtr[p]:a.rowPtr[p+1]] {
-				local[i] = cols + int32(k)
-			}
-			for _, c := range kids {
-				rel = rel[:0]
-				for _, i := range a.rows[a.rowPtr[c]:a.rowPtr[c+1]] {
-					if i < a.first[p+1] {
-						rel = append(rel, i-a.first[p])
-					} else {
-						rel = append(rel, local[i])
-					}
-				}
-				if pass == 1 {
-					appendRuns(a.runs[a.runPtr[c]:a.runPtr[c]:a.runPtr[c+1]], rel, cols)
-					continue
-				}
-				count := int64(0)
-				for k, q := range rel {
-					if k == 0 || q != rel[k-1]+1 || q == cols {
-						count++
-					}
-				}
-				a.runPtr[c+1] = count
-				total += count
-			}
+		for _, c := range kids {
+			a.runPtr[c] = int64(len(a.runs))
+			a.findRuns(c, s, local)
+			a.runEnd[c] = int64(len(a.runs))
 		}
 	}
 }
 
+// maxMerges is the number of sorted lists from which sorting their union beats
+// merging them one by one.
+const maxMerges = 8
+
+// mergeTail merges out[:mid] and out[mid:], both ascending, by way of spare.
+func mergeTail(out []int32, mid int, spare []int32) {
+	if mid == 0 || mid == len(out) || out[mid-1] < out[mid] {
+		return
+	}
+	tail := spare[:copy(spare, out[mid:])]
+	i, k := mid-1, len(out)-1
+	for j := len(tail) - 1; j >= 0; k-- {
+		if i >= 0 && out[i] > tail[j] {
+			out[k] = out[i]
+			i--
+		} else {
+			out[k] = tail[j]
+			j--
+		}
+	}
+}
+
+// findRuns appends the runs of front c in the front of its parent s, whose
+// rows have the positions local. No run crosses from the columns that the
+// parent eliminates to its update rows.
+func (a *Analysis) findRuns(c, s int32, local []int32) {
+	first, end := a.first[s], a.first[s+1]
+	next := int32(-1)
+	for _, i := range a.rows[a.rowPtr[c]:a.rowPtr[c+1]] {
+		p := i - first
+		if i >= end {
+			p = local[i]
+			if next == end-first {
+				next = -1
+			}
+		}
+		if p == next {
+			a.runs[len(a.runs)-1].length++
+		} else {
+			a.runs = append(a.runs, run{p, 1})
+		}
+		next = p + 1
+	}
+}
+
 // runsOf front c in its parent's front.
-func (a *Analysis) runsOf(c int32) []run { return a.runs[a.runPtr[c]:a.runPtr[c+1]] }
+func (a *Analysis) runsOf(c int32) []run { return a.runs[a.runPtr[c]:a.runEnd[c]] }
 
 // assembly lists for each front where its values go.
 func (a *Analysis) assembly(pairs [][2]int32, mem *pool) error {

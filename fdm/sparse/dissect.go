@@ -3,7 +3,6 @@ package sparse
 import (
 	"context"
 	"math"
-	"math/bits"
 	"slices"
 )
 
@@ -17,9 +16,6 @@ import (
 // Numer. Anal. 10 (1973), 345-363.
 
 const (
-	// leafSize is the number of nodes below which a part is ordered by exact
-	// minimum degree.
-	leafSize = 96
 	// dissectFrom is the number of nodes below which approximate minimum
 	// degree is as good and quicker.
 	dissectFrom = 2000
@@ -398,7 +394,7 @@ func (d *dissector) split(ctx context.Context, from, to int) {
 	for {
 		nodes, pts := d.nodes[from:to], d.pts[from:to]
 		if len(nodes) <= leafSize {
-			d.leaf.order(d, nodes)
+			d.leaf.run(d, nodes)
 			return
 		}
 		if ctx.Err() != nil {
@@ -510,139 +506,6 @@ func (d *dissector) orderRest(nodes []int32) {
 	}
 	copy(nodes, order)
 	for _, i := range nodes {
-		d.region[i] = none
-	}
-}
-
-// leafOrder orders small parts by exact minimum degree, with the neighbourhoods
-// as sets of bits. Neighbours outside the part are eliminated later and count
-// for the degrees.
-type leafOrder struct {
-	local []int32 // place of a node among members
-	out   []int32
-	nodes []int32 // members: the part, then its neighbours
-	bits  []uint64
-	deg   []int32
-	// Members of each degree; the last holds all larger ones.
-	ofDegree [256][(leafSize + 63) / 64]uint64
-}
-
-func (l *leafOrder) order(d *dissector, part []int32) {
-	if len(part) == 0 {
-		return
-	}
-	label := d.region[part[0]]
-	const met = -3
-	k := len(part)
-	l.nodes = append(l.nodes[:0], part...)
-	for x, i := range part {
-		l.local[i] = int32(x)
-	}
-	for _, i := range part {
-		for _, j := range d.g.row(i) {
-			if d.region[j] == none {
-				d.region[j] = met
-				l.local[j] = int32(len(l.nodes))
-				l.nodes = append(l.nodes, j)
-			}
-		}
-	}
-	m := len(l.nodes)
-	words := (m + 63) / 64
-	if cap(l.bits) < m*words {
-		l.bits = make([]uint64, m*words*2)
-	}
-	set := l.bits[:m*words]
-	clear(set)
-	for x, i := range part {
-		row := set[x*words:][:words]
-		for _, j := range d.g.row(i) {
-			if r := d.region[j]; r == label || r == met {
-				y := l.local[j]
-				row[y>>6] |= 1 << (y & 63)
-				if r == met {
-					set[int(y)*words+x>>6] |= 1 << (x & 63)
-				}
-			}
-		}
-	}
-	for _, j := range l.nodes[k:] {
-		d.region[j] = none
-	}
-	if cap(l.deg) < k {
-		l.deg = make([]int32, 2*k)
-	}
-	deg := l.deg[:k]
-	degree := func(row []uint64) int32 {
-		if d.weight == nil {
-			var c int
-			for _, b := range row {
-				c += bits.OnesCount64(b)
-			}
-			return int32(c)
-		}
-		var c int32
-		for w, b := range row {
-			for ; b != 0; b &= b - 1 {
-				c += d.weight[l.nodes[w<<6+bits.TrailingZeros64(b)]]
-			}
-		}
-		return c
-	}
-	for x := range k {
-		deg[x] = degree(set[x*words:][:words])
-	}
-	// The uneliminated members of each degree, as sets of bits.
-	const places = (leafSize + 63) / 64
-	top := len(l.ofDegree) - 1
-	bucket := func(v int32) *[places]uint64 { return &l.ofDegree[min(int(v), top)] }
-	clear(l.ofDegree[:])
-	least := top
-	for x, v := range deg {
-		bucket(v)[x>>6] |= 1 << (x & 63)
-		least = min(least, int(v))
-	}
-	l.out = l.out[:0]
-	for range k {
-		best := -1
-		for best < 0 {
-			for w, b := range l.ofDegree[least] {
-				if b != 0 {
-					best = w<<6 + bits.TrailingZeros64(b)
-					break
-				}
-			}
-			if best < 0 {
-				least++
-			}
-		}
-		l.ofDegree[least][best>>6] &^= 1 << (best & 63)
-		l.out = append(l.out, part[best])
-		pivot := set[best*words:][:words]
-		// The neighbours become a clique.
-		for w, b := range pivot {
-			for ; b != 0; b &= b - 1 {
-				y := w<<6 + bits.TrailingZeros64(b)
-				if y >= k {
-					break
-				}
-				row := set[y*words:][:words]
-				for z, pb := range pivot {
-					row[z] |= pb
-				}
-				row[y>>6] &^= 1 << (y & 63)
-				row[best>>6] &^= 1 << (best & 63)
-				if v := degree(row); v != deg[y] {
-					bucket(deg[y])[y>>6] &^= 1 << (y & 63)
-					bucket(v)[y>>6] |= 1 << (y & 63)
-					deg[y] = v
-					least = min(least, int(v), top)
-				}
-			}
-		}
-	}
-	copy(part, l.out)
-	for _, i := range part {
 		d.region[i] = none
 	}
 }
