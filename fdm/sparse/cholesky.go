@@ -124,8 +124,29 @@ func choleskyBlock(f []float64, ld, m, n int) (int, float64) {
 	return -1, 0
 }
 
-// choleskyTop factors an n×n block, n ≤ 4.
+// choleskyTop factors an n×n block, n ≤ 4. Of the block of four first L·D·Lᵀ is
+// found, so that each pivot waits for one division only; the roots come after.
 func choleskyTop(f []float64, ld, n int) (int, float64) {
+	if n == 4 {
+		f0, f1, f2, f3 := (*[4]float64)(f), (*[4]float64)(f[ld:]), (*[4]float64)(f[2*ld:]), (*[4]float64)(f[3*ld:])
+		d0, c1, c2, c3 := f0[0], f0[1], f0[2], f0[3]
+		r0 := 1 / d0
+		l1, l2, l3 := c1*r0, c2*r0, c3*r0
+		d1, e2, e3 := f1[1]-c1*l1, f1[2]-c2*l1, f1[3]-c3*l1
+		r1 := 1 / d1
+		m2, m3 := e2*r1, e3*r1
+		d2, g3 := f2[2]-c2*l2-e2*m2, f2[3]-c3*l2-e3*m2
+		r2 := 1 / d2
+		d3 := f3[3] - c3*l3 - e3*m3 - g3*(g3*r2)
+		const most = math.MaxFloat64
+		if d0 > 0 && d1 > 0 && d2 > 0 && d3 > 0 && d0 <= most && d1 <= most && d2 <= most && d3 <= most {
+			i0, i1, i2, i3 := math.Sqrt(d0)*r0, math.Sqrt(d1)*r1, math.Sqrt(d2)*r2, 1/math.Sqrt(d3)
+			*f0 = [4]float64{i0, c1 * i0, c2 * i0, c3 * i0}
+			f1[1], f1[2], f1[3] = i1, e2*i1, e3*i1
+			f2[2], f2[3], f3[3] = i2, g3*i2, i3
+			return -1, 0
+		}
+	}
 	for j := range n {
 		cj := f[j*ld:][:n]
 		d := cj[j]

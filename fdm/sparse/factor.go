@@ -93,12 +93,20 @@ func checkValues(v []float64, n int, what string) error {
 	if len(v) != n {
 		return &SizeError{What: what, Got: len(v), Want: n}
 	}
-	// x−x is 0 for finite x and not a number otherwise.
-	sum := 0.0
-	for _, x := range v {
-		sum += x - x
+	// x−x is 0 for finite x and not a number otherwise. Four sums, so that none
+	// has to wait for the last addition.
+	var s0, s1, s2, s3 float64
+	r := v
+	for ; len(r) >= 4; r = r[4:] {
+		s0 += r[0] - r[0]
+		s1 += r[1] - r[1]
+		s2 += r[2] - r[2]
+		s3 += r[3] - r[3]
 	}
-	if sum == 0 {
+	for _, x := range r {
+		s0 += x - x
+	}
+	if s0+s1+s2+s3 == 0 {
 		return nil
 	}
 	for i, x := range v {

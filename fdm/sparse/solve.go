@@ -39,15 +39,16 @@ func (f *Factor) solve(b []float64, nrhs int) {
 func (f *Factor) solveSome(b []float64, nrhs, r, w int) {
 	f.permute(b, nrhs, r, w, false)
 	m := int32(f.a.fronts())
+	var v frontView
 	for s := range m {
-		v := f.view(s)
+		f.view(s, &v)
 		v.forward(f.x)
 	}
 	if f.kind == LDL {
 		f.divide()
 	}
 	for s := m - 1; s >= 0; s-- {
-		v := f.view(s)
+		f.view(s, &v)
 		v.backward(f.x)
 	}
 	f.permute(b, nrhs, r, w, true)
@@ -92,18 +93,21 @@ type frontView struct {
 	unit  bool    // the diagonal of L is 1; otherwise it is stored inverted
 }
 
-func (f *Factor) view(s int32) frontView {
+func (f *Factor) view(s int32, v *frontView) {
 	a := f.a
 	if len(f.delayed) > 0 {
 		d := &f.delayed[s]
-		return frontView{p: d.panel, ld: len(d.rows), cols: d.cols, first: d.first, rows: f.pivotsOf(d.rows[d.cols:]), unit: true}
+		*v = frontView{p: d.panel, ld: len(d.rows), cols: d.cols, first: d.first, rows: f.pivotsOf(d.rows[d.cols:]), unit: true}
+		return
 	}
-	cols, ld := a.shape(s)
-	v := frontView{p: f.panels[a.panel[s]:a.panel[s+1]], ld: ld, cols: cols, first: int(a.first[s]), rows: a.rows[a.rowPtr[s]:a.rowPtr[s+1]]}
+	first := a.first[s]
+	v.first, v.cols = int(first), int(a.first[s+1]-first)
+	v.rows = a.rows[a.rowPtr[s]:a.rowPtr[s+1]]
+	v.ld = v.cols + len(v.rows)
+	v.p = f.panels[a.panel[s]:a.panel[s+1]]
 	if f.kind == LDL {
 		v.rows, v.unit = f.pivotsOf(v.rows), true
 	}
-	return v
 }
 
 // pivotsOf finds the pivots that eliminate the places.
@@ -118,8 +122,14 @@ func (f *Factor) pivotsOf(places []int32) []int32 {
 // solveWork bounds the entries of L that one call of a kernel reads to some 50 µs.
 const solveWork = 1 << 16
 
-// step is the number of columns to hand to a kernel at a time, a multiple of four.
-func (v *frontView) step() int { return max(4, solveWork/max(v.ld, 1)&^3) }
+// step is the number of columns to hand to a kernel at a time: all of them, or
+// a multiple of four.
+func (v *frontView) step() int {
+	if v.cols*v.ld <= solveWork {
+		return max(v.cols, 1)
+	}
+	return max(4, solveWork/v.ld&^3)
+}
 
 // forward does x = L⁻¹·x for the columns of one front.
 func (v *frontView) forward(x []float64) {
@@ -131,8 +141,15 @@ func (v *frontView) forward(x []float64) {
 
 // backward does x = L⁻ᵀ·x for the columns of one front.
 func (v *frontView) backward(x []float64) {
+	if v.cols == 0 {
+		return
+	}
 	step := v.step()
-	for k := (v.cols - 1) / step * step; k >= 0 && v.cols > 0; k -= step {
+	k := 0
+	if step < v.cols {
+		k = (v.cols - 1) / step * step
+	}
+	for ; k >= 0; k -= step {
 		solveBackward(v.p[k*(v.ld+1):], v.ld, min(step, v.cols-k), v.cols-k, v.first+k, v.rows, x, v.unit)
 	}
 }
