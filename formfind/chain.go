@@ -201,6 +201,7 @@ func onlyDensities(s *canopy.Structure) bool {
 func (c *chain) warmStart() *canopy.Form {
 	f := canopy.NewForm(c.s)
 	copy(f.Force, c.o.Warm.Force)
+	copy(f.Pressure, c.o.Warm.Pressure)
 	for i := range f.Position {
 		fixed := c.s.FixedAt(i)
 		f.Position[i] = r3.Add(only(c.s.Position[i], fixed), only(c.o.Warm.Position[i], canopy.DirAll&^fixed))
@@ -559,6 +560,9 @@ func (c *chain) finish(ctx context.Context) error {
 		if done, err := c.settle(ctx); done || err != nil {
 			return err
 		}
+	}
+	if len(s.Enclosures) > 0 {
+		return c.finishVolumes(ctx)
 	}
 	found := c.f
 	c.o.begin("balance")

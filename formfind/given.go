@@ -22,7 +22,7 @@ const nearlyBalanced = 1e-2
 // without a word. It is then taken as what was found, for the audit to refuse.
 func (c *chain) givenShape(ctx context.Context) (bool, error) {
 	s := c.s
-	if !equalStress(s) || normalResidual(s) > nearlyBalanced {
+	if len(s.Enclosures) > 0 || !equalStress(s) || normalResidual(s) > nearlyBalanced {
 		return false, nil
 	}
 	f := c.f

@@ -13,7 +13,7 @@ import (
 // external, supports left out, and the sum of their sizes. Forces on tied
 // nodes stay on those nodes.
 func nodalForces(s *canopy.Structure, f *canopy.Form) (sum []r3.Vec, size []float64) {
-	sum = load.Nodal(s, f.Position)
+	sum = load.Nodal(s.Carrying(f), f.Position)
 	size = make([]float64, len(sum))
 	for i := range sum {
 		size[i] = r3.Norm(sum[i])

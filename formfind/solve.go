@@ -71,6 +71,8 @@ func solve(ctx context.Context, s *canopy.Structure, m *canopy.Model, o Options)
 		return nil, err
 	}
 	f := got.form
+	// From here on the pressures found act like given ones.
+	s, local = s.Carrying(f), local.Carrying(f)
 	setReactions(local, f)
 	if err := balanceHeld(local, f); err != nil {
 		return nil, err

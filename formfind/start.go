@@ -223,6 +223,9 @@ func guessDensities(s *canopy.Structure, x []r3.Vec, force []float64) []float64 
 
 // steadyLoads reports whether external forces do not depend on the shape.
 func steadyLoads(s *canopy.Structure) bool {
+	if len(s.Enclosures) > 0 {
+		return false
+	}
 	for i := range s.Fabrics {
 		if s.Fabrics[i].Pressure != 0 || s.SelfWeight && s.Fabrics[i].Weight != 0 {
 			return false

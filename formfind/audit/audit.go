@@ -123,6 +123,7 @@ func Run(ctx context.Context, s *canopy.Structure, f *canopy.Form, o Options) (c
 	c.balance(&a, o, &why)
 	c.virial(&a, o, &why)
 	c.laws(&a, o, &why)
+	c.volumes(o, &why)
 	c.tension(&a, &why)
 	c.quality(&a, o, &why)
 	if err := ctx.Err(); err != nil {

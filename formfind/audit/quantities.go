@@ -24,6 +24,12 @@ func Quantities(s *canopy.Structure, f *canopy.Form, factors canopy.Factors) can
 	for c := range s.Cables {
 		q.Cables[c] = cableReport(s, f, factors, &s.Cables[c])
 	}
+	if len(s.Enclosures) > 0 {
+		c := newCase(s, f)
+		for i := range s.Enclosures {
+			q.Enclosed = append(q.Enclosed, c.measureAir(&s.Enclosures[i]).volume)
+		}
+	}
 	q.Lines = make([]canopy.LineReport, len(s.Lines))
 	for l := range s.Lines {
 		q.Lines[l] = lineReport(f, s.Lines[l].Nodes)

@@ -57,10 +57,10 @@ type StabilityResult struct {
 // tangent; where a stiffness is given it also stretches, EA/L₀·ttᵀ. Fabric of
 // prescribed stress keeps its true stress: for equal warp and weft that is
 // σ times the second derivative of area. Elastic fabric follows its law. Dead
-// loads and weights do not change, pressure follows the surface. A force
-// density is never taken as one: the matrix of force densities, and that of
-// any fixed reference, is positive definite for every field of tension and
-// would pass the unstable catenoid.
+// loads and weights do not change, pressure follows the surface; air of given
+// volume keeps its volume. A force density is never taken as one: the matrix of
+// force densities, and that of any fixed reference, is positive definite for
+// every field of tension and would pass the unstable catenoid.
 //
 // The energy's second derivative at an equilibrium is a quadratic form on all
 // motions; looking at it on the shape-changing ones (see freedoms) leaves out
@@ -299,6 +299,9 @@ func (k *tangent) loosen(d *freedoms) []int32 {
 		size[p[1]] = max(size[p[1]], v)
 	}
 	for _, cb := range k.cables {
+		if cb.compliance == 0 {
+			continue // a volume holds no node by itself
+		}
 		for _, g := range cb.g {
 			size[g.unknown] = max(size[g.unknown], g.value*g.value/cb.compliance)
 		}

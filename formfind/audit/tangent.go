@@ -57,7 +57,7 @@ type tangent struct {
 	pairs  [][2]int32
 	off    []float64
 	mass   []float64
-	cables []rankOne
+	cables []rankOne // and air of given volume, of no compliance
 }
 
 // buildTangent assembles the tangent.
@@ -116,6 +116,7 @@ func (c *audited) buildTangent(d *freedoms) *tangent {
 	}
 	c.fabricTangent(d, k, put, weigh)
 	c.cableTangent(d, k)
+	c.volumeTangent(d, k)
 	return k
 }
 

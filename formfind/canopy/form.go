@@ -22,6 +22,8 @@ type Form struct {
 	// Couple is, for each ring, the moment about its centre by which what
 	// carries a rigid ring restrains its rotation, N·m.
 	Couple []r3.Vec
+	// Pressure is the pressure found in each enclosure, Pa.
+	Pressure []float64
 
 	// Steps says in plain words, in order, what the front door did.
 	Steps []string
@@ -42,6 +44,9 @@ func NewForm(s *Structure) *Form {
 		Stress:   make([]Stress, len(s.Corners)),
 		Reaction: make([]r3.Vec, len(s.Position)),
 		Couple:   make([]r3.Vec, len(s.Rings)),
+	}
+	if n := len(s.Enclosures); n > 0 {
+		f.Pressure = make([]float64, n)
 	}
 	copy(f.Position, s.Position)
 	return f

@@ -144,6 +144,12 @@ type ModelFabric struct {
 	WarpRule   WarpRule
 	WarpDir    r3.Vec  // for WarpAlong; zero = along the first edge
 	Warp, Weft float64 // prestress, N/m
+	// Volume is the volume of air that is shut in below the fabric, between it
+	// and the plane of its boundary or the other fabrics named in VolumeWith,
+	// in m³; its pressure is found. HasVolume says that it is given.
+	Volume     float64
+	HasVolume  bool
+	VolumeWith []string
 	MeshSize   float64 // m; 0 = the model's
 	Properties Fabric  // stiffness, strength, weight, pressure; its Name is Name
 	Line       int

@@ -124,6 +124,7 @@ type Quantities struct {
 	Lines                        []LineReport
 	KindLength                   [KindStrut + 1]float64 // total length by Kind, m
 	FabricUtilisation            []float64              // per fabric, 0 = not computed
+	Enclosed                     []float64              // per enclosure: the volume it encloses, m³
 }
 
 // CableReport is what a cable carries.

@@ -125,7 +125,10 @@ type Fabric struct {
 	// Characteristic strip strength in N/m of width, 0 = not given.
 	WarpStrength, WeftStrength float64
 	Weight                     float64 // self weight, N/m²; 0 = none
-	Pressure                   float64 // internal pressure (follower) towards the positive side of its triangles, Pa
+	// Pressure is the internal pressure (follower) towards the positive side of
+	// its triangles, Pa. Of the fabrics of an [Enclosure] it is found: in a
+	// Result it is the one found, before that it counts for nothing.
+	Pressure float64
 	// WarpRule is how the warp was laid, so that a finer mesh can lay it
 	// anew; WarpAxis (unit) and WarpCentre are the axis of the ring for
 	// WarpRadial and WarpAround.
@@ -219,6 +222,10 @@ type Structure struct {
 	// Reference (optional) are node positions of the unstressed fabric, for
 	// elastic fabrics. nil: Position.
 	Reference []r3.Vec
+
+	// Enclosures are volumes of air of which the volume is given and the
+	// pressure found; a fabric bounds at most one. Optional.
+	Enclosures []Enclosure
 
 	Rings []Ring
 	Lines []Line

@@ -4,6 +4,7 @@ import (
 	"errors"
 	"fmt"
 	"math"
+	"slices"
 
 	"gonum.org/v1/gonum/spatial/r3"
 )
@@ -119,6 +120,7 @@ func (s *Structure) Validate() error {
 			}
 		}
 	}
+	v.enclosures(s)
 	for r := range s.Rings {
 		rg := &s.Rings[r]
 		if rg.Centre < -1 || int(rg.Centre) >= n {
@@ -141,6 +143,45 @@ func (s *Structure) Validate() error {
 		v.errs = append(v.errs, fmt.Errorf("and %d more", v.more))
 	}
 	return errors.Join(v.errs...)
+}
+
+// enclosures checks that enclosures are what [Structure.Enclose] makes of their
+// fabrics.
+func (v *validator) enclosures(s *Structure) {
+	if len(s.Enclosures) == 0 || len(v.errs) > 0 {
+		return
+	}
+	used := make([]bool, len(s.Fabrics))
+	for i := range s.Enclosures {
+		e := &s.Enclosures[i]
+		if len(e.Fabrics) == 0 || len(e.Side) != len(e.Fabrics) {
+			v.add("volume of fabric %s: it has %d fabrics and %d sides", e.Name, len(e.Fabrics), len(e.Side))
+			return
+		}
+		for _, f := range e.Fabrics {
+			if f < 0 || int(f) >= len(s.Fabrics) {
+				v.add("volume of fabric %s: there is no fabric %d", e.Name, f)
+				return
+			}
+			if used[f] {
+				v.add("volume of fabric %s: fabric %s bounds two volumes", e.Name, s.Fabrics[f].Name)
+				return
+			}
+			used[f] = true
+		}
+		if math.IsNaN(e.Volume) || math.IsInf(e.Volume, 0) {
+			v.add("volume of fabric %s: it is not finite", e.Name)
+		}
+		want, err := s.Enclose(e.Name, e.Fabrics, e.Side[0], e.Volume)
+		switch {
+		case err != nil:
+			v.errs = append(v.errs, err)
+		case !slices.Equal(want.Side, e.Side):
+			v.add("volume of fabric %s: its sides do not look out of the air", e.Name)
+		case e.Base < 0 || int(e.Base) >= len(s.Position):
+			v.add("volume of fabric %s: there is no node %d", e.Name, e.Base)
+		}
+	}
 }
 
 const maxProblems = 20

@@ -25,6 +25,9 @@
 //	audit       trusted, reasons, and every number behind them
 //	findings    remarks with the places they are about
 //	fabrics     name, elastic, moduli, strength, weight, pressure
+//	air         volumes given: name, fabrics around it, sides (1 where the
+//	            positive side of a fabric looks out), base (a node of the plane of
+//	            the boundary), volume asked for and enclosed, pressure found
 //	nodes       id, name, position, fixed, load, reaction [held, master, reference]
 //	members     id, name, kind, group, nodes, length, unstressed_length, force,
 //	            force_density, specified, stiffness, weight, resistance, law

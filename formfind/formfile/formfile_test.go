@@ -68,6 +68,8 @@ func small() *canopy.Result {
 		f.Warp = append(f.Warp, vec())
 		f.Stress = append(f.Stress, canopy.Stress{Warp: num(), Weft: num(), Shear: num()})
 	}
+	s.Enclosures = []canopy.Enclosure{{Name: "sail \"1\"", Fabrics: []int32{1, 0}, Side: []int8{-1, 1}, Base: 3, Volume: num()}}
+	f.Pressure = []float64{num()}
 	s.Rings = []canopy.Ring{{Name: "R", Centre: 1, Nodes: []int32{2, 3, 4}, Rigid: true, Free: canopy.DirZ, Weight: 3, Cable: -1}, {Name: "Q", Centre: 2, Nodes: []int32{0}, Free: canopy.DirX, Cable: 1}}
 	f.Couple = []r3.Vec{vec(), vec()}
 	s.Lines = []canopy.Line{{Name: "arch", Role: "arch", Nodes: []int32{1, 2}}}
@@ -86,6 +88,7 @@ func small() *canopy.Result {
 	fill(reflect.ValueOf(&r.Audit).Elem(), rnd)
 	r.Audit.ResidualNode, r.Audit.SoftestNode, r.Audit.MinAngleTri = 1, 2, 3
 	fill(reflect.ValueOf(&r.Summary).Elem(), rnd)
+	r.Summary.Enclosed = r.Summary.Enclosed[:1] // one for each enclosure
 	return r
 }
 
@@ -275,8 +278,13 @@ func TestFaultsAreNamedWithLineAndThing(t *testing.T) {
 		{"node of line", `"role":"arch","nodes":[1,2]`, `"role":"arch","nodes":[1,99]`, "line 0: node 99 does not exist"},
 		{"huge index", `"nodes":[1,2],"length"`, `"nodes":[1,9999999999],"length"`, "whole number of at most 32 bits"},
 		{"fabric", `"fabric":"two","nodes"`, `"fabric":"three","nodes"`, `fabric "three" is not in the list`},
-		{"cut", good[len(good)/2:], "", "the end of the file"},
+		{"cut", good[strings.Index(good, `"master"`)-1:], "", "the end of the file"},
 		{"cut list", good[strings.Index(good, `{"id":3,"fabric"`)-2 : strings.Index(good, `"cables":[`+"\n")-4], "", "announces 4 triangles and holds 3"},
+		{"air fabric", `"fabrics":["two"`, `"fabrics":["three"`, `air 0: fabric "three" is not in the list`},
+		{"air side", `"sides":[-1,1]`, `"sides":[-1,2]`, "a side is 1 or -1, not 2"},
+		{"air sides", `"sides":[-1,1]`, `"sides":[-1]`, "2 fabrics need as many sides, not 1"},
+		{"air twice", `"fabrics":["two","sail"]`, `"fabrics":["two","two"]`, `fabric "two" is named twice`},
+		{"air base", `"base":3`, `"base":99`, "node 99 does not exist"},
 		{"tail", good, good + "x", "something follows"},
 		{"escape", `"title":"Quay`, `"title":"\x`, "unknown escape"},
 		{"surrogate", `"title":"Quay`, `"title":"\ud800`, "half a surrogate"},

@@ -41,8 +41,10 @@ type reader struct {
 	group     map[string]int32 // into Structure.Groups
 	fabric    map[string]int32 // into fabricOf, names in order of appearance
 	usedNames []string
-	named     [2]bool // some node, some member has a name that is not its number
-	nameBytes [2]int
+	// airFabrics are, per enclosure, the names of its fabrics.
+	airFabrics [][]string
+	named      [2]bool // some node, some member has a name that is not its number
+	nameBytes  [2]int
 }
 
 // fields notes which keys of an object have been seen.
@@ -175,6 +177,8 @@ func (d *reader) top(key []byte) (read func() error, bit uint, section string) {
 		return d.lines, 14, "line"
 	case "loads":
 		return d.loads, 15, "loads"
+	case "air":
+		return d.readAir, 16, "air"
 	}
 	return nil, 0, ""
 }
@@ -881,6 +885,9 @@ func (d *reader) finish() error {
 			what := [...]string{"nodes", "members", "triangles"}[i]
 			return d.errorf("the file announces %d %s and holds %d: it is cut or edited", c, what, n)
 		}
+	}
+	if err := d.joinAir(byName); err != nil {
+		return err
 	}
 	s.Position = slices.Clone(f.Position)
 	return references(d.result, func(what string, i int, problem string) error {

@@ -69,6 +69,9 @@ func references(r *canopy.Result, fail func(what string, i int, problem string) 
 			return fail("cable", i, fmt.Sprintf("%d members need %d nodes, not %d", len(c.Members), len(c.Members)+1, len(c.Nodes)))
 		}
 	}
+	if err := airReferences(s, fail); err != nil {
+		return err
+	}
 	for i := range s.Rings {
 		g := &s.Rings[i]
 		for _, v := range append([]int32{g.Centre}, g.Nodes...) {

@@ -44,10 +44,11 @@ var head = []struct {
 	{"audit", writeAudit},
 	{"findings", writeFindings},
 	{"fabrics", writeFabrics},
+	{"air", writeAir},
 }
 
 // AppendHead appends what stands before the long lists of form.json (program,
-// model, units, counts, form, quantities, audit, findings, fabrics) to b as the
+// model, units, counts, form, quantities, audit, findings, fabrics, air) to b as the
 // members of a JSON object without its braces, for those who want the result
 // without the shape.
 func AppendHead(b []byte, r *canopy.Result) ([]byte, error) {
@@ -254,6 +255,7 @@ func writeUnits(t *text, r *canopy.Result) {
 		{"stress", "N/m of fabric width, in the deformed triangle"},
 		{"weight", "N/m of members, N/m2 of fabric, N of rings"},
 		{"pressure", "N/m2"},
+		{"volume", "m3"},
 		{"stiffness", "N (EA) of members, N/m of fabric"},
 		{"angle", "rad"},
 		{"couple", "N m"},

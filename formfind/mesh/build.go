@@ -50,7 +50,7 @@ func (b *builder) build() (*canopy.Structure, error) {
 	for _, stage := range []func(){
 		b.index, b.curves, b.loops, b.orient, b.divide, b.layNets, b.supports,
 		b.pointNodes, b.edgeNodes, b.ringNodes, b.fill, b.cables, b.stays,
-		b.finish, b.verify,
+		b.finish, b.verify, b.enclosures,
 	} {
 		if err := ctx.Err(); err != nil {
 			return nil, err

@@ -43,6 +43,7 @@ func (r *Refinement) Prolong(form *canopy.Form) *canopy.Form {
 	for i, k := range r.MemberOf {
 		f.Force[i] = form.Force[k]
 	}
+	copy(f.Pressure, form.Pressure)
 	for i, t := range r.TriangleOf {
 		f.Stress[i], f.Warp[i] = form.Stress[t], form.Warp[t]
 	}

@@ -123,7 +123,7 @@ func (r *refiner) folds() [][2]int32 {
 func (r *refiner) nodes() {
 	s := r.s
 	n, total := len(s.Position), len(r.parents)
-	f := &canopy.Structure{Curves: s.Curves, Groups: s.Groups, Fabrics: s.Fabrics, SelfWeight: s.SelfWeight}
+	f := &canopy.Structure{Curves: s.Curves, Groups: s.Groups, Fabrics: s.Fabrics, Enclosures: s.Enclosures, SelfWeight: s.SelfWeight}
 	r.f = f
 	f.Position = append(make([]r3.Vec, 0, total), s.Position...)
 	f.Fixed = append(make([]canopy.Freedom, 0, total), s.Fixed...)

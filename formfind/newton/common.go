@@ -19,7 +19,8 @@ import (
 //
 // all in m. The last two make the bordered system symmetric.
 type common struct {
-	cable int32
+	cable  int32
+	pocket *pocket // air of given volume instead of a cable, whose pressure is the unknown; nil for a cable
 }
 
 // condition is the state of a common's condition at one shape.
@@ -33,12 +34,16 @@ type condition struct {
 func (v *Solver) cableOf(k int) *canopy.Cable { return &v.s.Cables[v.commons[k].cable] }
 
 // pushes reports whether the common force may be negative.
-func (v *Solver) pushes(k int) bool { return v.cableOf(k).Kind.Pushes() }
+func (v *Solver) pushes(k int) bool { return v.commons[k].pocket != nil || v.cableOf(k).Kind.Pushes() }
 
 // conditions computes the gaps of st and, for elastic cables, who is slack.
 func (v *Solver) conditions(st *state) {
 	for k := range v.commons {
 		cm := &st.cond[k]
+		if p := v.commons[k].pocket; p != nil {
+			*cm = v.volumeCondition(p, st)
+			continue
+		}
 		cb := v.cableOf(k)
 		switch cb.Law {
 		case canopy.CableSag:
@@ -99,6 +104,10 @@ func (v *Solver) columnsOf(st *state) {
 		v.columns[i] = 0
 	}
 	for k := range v.commons {
+		if v.commons[k].pocket != nil {
+			v.pocketColumn(st, k)
+			continue
+		}
 		for _, e := range v.cableOf(k).Members {
 			if v.comOf[e] != int32(k) {
 				continue
@@ -128,8 +137,7 @@ func (v *Solver) columnsOf(st *state) {
 // unknowns, entry by entry; an unknown may come more than once.
 func (v *Solver) conditionRow(st *state, k int, f func(unknown int, x float64)) {
 	cm := &st.cond[k]
-	cb := v.cableOf(k)
-	if cb.Law != canopy.CableSag {
+	if v.commons[k].pocket != nil || v.cableOf(k).Law != canopy.CableSag {
 		if cm.slack {
 			return
 		}
@@ -141,6 +149,7 @@ func (v *Solver) conditionRow(st *state, k int, f func(unknown int, x float64)) 
 		}
 		return
 	}
+	cb := v.cableOf(k)
 	na, nb := cb.Nodes[0], cb.Nodes[len(cb.Nodes)-1]
 	a, b := st.at[na], st.at[nb]
 	t, chord, ok := element.Line(a, b)
@@ -170,6 +179,9 @@ func (v *Solver) conditionRow(st *state, k int, f func(unknown int, x float64)) 
 
 // conditionSlope is the derivative of the gap of common k by its own force.
 func (v *Solver) conditionSlope(st *state, k int) float64 {
+	if v.commons[k].pocket != nil {
+		return 0
+	}
 	cb := v.cableOf(k)
 	if cb.Law != canopy.CableElastic {
 		return 0
@@ -182,12 +194,18 @@ func (v *Solver) conditionSlope(st *state, k int) float64 {
 
 // symmetric reports whether common k makes the bordered system symmetric.
 func (v *Solver) symmetric(st *state, k int) bool {
-	return v.cableOf(k).Law != canopy.CableSag && !st.cond[k].slack
+	return v.commons[k].pocket != nil || v.cableOf(k).Law != canopy.CableSag && !st.cond[k].slack
 }
 
 // impossible names a condition that no shape can meet, "" when there is none.
 func (v *Solver) impossible(at []r3.Vec) string {
+	if why := v.stuck(at); why != "" {
+		return why
+	}
 	for k := range v.commons {
+		if v.commons[k].pocket != nil {
+			continue
+		}
 		cb := v.cableOf(k)
 		na, nb := cb.Nodes[0], cb.Nodes[len(cb.Nodes)-1]
 		if v.first[na] >= 0 || v.first[nb] >= 0 {
@@ -219,6 +237,9 @@ func (v *Solver) startForces(start *canopy.Form) {
 	guess := make([]bool, len(v.commons))
 	for k := range v.commons {
 		st.force[k] = 0
+		if v.commons[k].pocket != nil {
+			continue // the pressure that balances the start best
+		}
 		for _, m := range v.cableOf(k).Members {
 			if v.comOf[m] != int32(k) {
 				continue

@@ -34,6 +34,9 @@ func (v *Solver) potential() bool {
 	if v.uneven {
 		return false
 	}
+	if len(s.Enclosures) > 0 {
+		return false
+	}
 	for f := range s.Fabrics {
 		if s.Fabrics[f].Pressure != 0 || (s.SelfWeight && s.Fabrics[f].Weight != 0) {
 			return false
@@ -133,9 +136,9 @@ func (v *Solver) evaluate(st *state) {
 			st.pull[i] = r3.Add(st.pull[i], f[j])
 			st.size[i] += 0.5 * stress * norm(tri.Edge[j])
 		}
-		if fabric.Pressure != 0 {
-			p := tri.PressurePush(fabric.Pressure)
-			size := math.Abs(fabric.Pressure) * tri.Area / 3
+		if pressure := v.pressureOn(st, s.FabricOf[k]); pressure != 0 {
+			p := tri.PressurePush(pressure)
+			size := math.Abs(pressure) * tri.Area / 3
 			for _, i := range c {
 				st.pull[i] = r3.Add(st.pull[i], p)
 				st.size[i] += size
@@ -343,7 +346,7 @@ func (v *Solver) put(i, j int32, a, b, ni, nj int, slot int32, x float64) {
 // the warp. The symmetric part of the pressure's block is (p/12)[eᵢ − eⱼ]ₓ.
 func (v *Solver) addFilm(st *state, t int, tri *element.Triangle, slots [3]int32) {
 	c := v.s.Corners[t]
-	pressure := v.s.Fabrics[v.s.FabricOf[t]].Pressure
+	pressure := v.pressureOn(st, v.s.FabricOf[t])
 	n := tri.Normal
 	stress, weftStress := v.stressOf(t)
 	var same, next [3]float64

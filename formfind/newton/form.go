@@ -21,6 +21,7 @@ func (v *Solver) form(st *state) (*canopy.Form, error) {
 			f.Force[m] = v.tension(m, l, st.force).Force
 		}
 	}
+	v.pressures(st, f)
 	for t, c := range s.Corners {
 		f.Stress[t].Warp, f.Stress[t].Weft = v.stressOf(t)
 		tri, ok := element.NewTriangle(st.at[c[0]], st.at[c[1]], st.at[c[2]])

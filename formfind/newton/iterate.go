@@ -72,9 +72,15 @@ const fits = 3
 // magnitude returned.
 func (v *Solver) rounds(ctx context.Context, set engine.Settings, start *canopy.Form) (engine.Outcome, error) {
 	first := 0
+	if used, why, err := v.inflate(ctx, set, 0); err != nil || why != "" {
+		return engine.Outcome{Status: engine.Stalled, Why: why, Iterations: used, NegativePivots: -1}, err
+	} else if used > 0 {
+		first = used
+		set.MaxIterations += used
+	}
 	if v.hasElastic() {
 		var err error
-		if first, err = v.approach(ctx, set, start, 0); err != nil {
+		if first, err = v.approach(ctx, set, start, first); err != nil {
 			return engine.Outcome{NegativePivots: -1}, err
 		}
 	}
@@ -210,19 +216,18 @@ func (v *Solver) iterate(ctx context.Context, set engine.Settings, first int) (e
 			out.NegativePivots, err = v.negative(ctx)
 			return out, err
 		}
-		copy(v.trial.force, st.force)
 		longest := alpha
 		taken := false
 		// Energy at the present shape with the new common forces.
 		energy := v.now.energy
 		if hasEnergy {
-			for k := range v.commons {
+			for k := range v.commons { // of cables: with air enclosed there is no energy
 				energy += (st.force[k] - v.now.force[k]) * v.lengthOf(k, v.now.at)
 			}
 		}
 		for ; alpha > longest/2048; alpha /= 2 {
 			v.moveTrial(alpha, st.u)
-			copy(v.trial.force, st.force)
+			v.takeForces(alpha, &st)
 			v.evaluate(&v.trial)
 			if v.trial.collapse != none || math.IsInf(v.trial.merit, 1) {
 				continue
@@ -245,7 +250,7 @@ func (v *Solver) iterate(ctx context.Context, set engine.Settings, first int) (e
 				return out, err
 			}
 			v.moveTrial(longest, st.u)
-			copy(v.trial.force, st.force)
+			v.takeForces(longest, &st)
 			v.evaluate(&v.trial)
 			if v.trial.collapse != none || math.IsInf(v.trial.merit, 1) {
 				out.Status = engine.Diverged

@@ -19,9 +19,9 @@ import (
 //
 // Between calls the numbers of the structure may be changed in place:
 // positions, loads, given forces and force densities, stiffnesses, unstressed
-// lengths, stresses, weights, pressures, values of cables. Nodes, members,
-// triangles, supports, laws, ties and the members of cables may not. A Solver
-// is not safe for concurrent use.
+// lengths, stresses, weights, pressures, values of cables, volumes of
+// enclosures. Nodes, members, triangles, supports, laws, ties and the members of
+// cables may not. A Solver is not safe for concurrent use.
 type Solver struct {
 	s *canopy.Structure
 
@@ -34,9 +34,11 @@ type Solver struct {
 	openEdges [][2]int32
 	active    []bool // member takes part (not of a CableBalance cable)
 
-	commons    []common  // cables of common force
+	commons    []common  // cables of common force, then air of given volume
 	firstForce []float64 // the forces they start from
 	comOf      []int32   // member → commons or −1
+	pocketOn   []int32   // fabric → commons or −1
+	sideOn     []float64 // fabric → +1 where its positive side looks out of the air
 
 	// Unknowns, for the classes at the last start.
 	cls     []class
@@ -181,6 +183,7 @@ func (v *Solver) topology() error {
 			}
 		}
 	}
+	v.addPockets()
 	v.memberPtr = make([]int32, n+1)
 	for m, e := range s.Ends {
 		if !v.active[m] {
@@ -401,6 +404,7 @@ func (v *Solver) Find(ctx context.Context, start *canopy.Form, set engine.Settin
 	if err := v.prepare(ctx, at, set.AllDirections); err != nil {
 		return nil, out, err
 	}
+	v.wantVolumes()
 	copy(v.now.at, at)
 	if err := v.measure(at); err != nil {
 		return nil, out, err

@@ -114,6 +114,7 @@ func (r *run) kinetic(ctx context.Context) error {
 		if !fresh && s.kinetic <= energy1 {
 			r.stop(energy0, energy1, s.kinetic)
 			r.adjustCables(eta)
+			r.adjustPockets(eta)
 			r.elements()
 			r.renew()
 			fresh, energy0, energy1 = true, 0, 0
@@ -210,6 +211,8 @@ func (r *run) nodeName(i int) string { return r.s.NodeName.At(i) }
 // resting looks at a place of rest; true ends the run.
 func (r *run) resting(it int, eta float64) bool {
 	cable, _ := r.cableError()
+	air, _ := r.airError()
+	cable = max(cable, air)
 	merit := max(eta, cable)
 	if merit < 0.9*r.bestMerit {
 		r.bestMerit, r.bestAt, r.bestRest = merit, it, r.rests
@@ -312,6 +315,10 @@ func (r *run) stall() {
 	r.elements()
 	r.renew()
 	b := r.balance()
+	if e, k := r.airError(); k >= 0 && e > cableTarget && e > b.eta {
+		r.finish(engine.Stalled, fmt.Sprintf("the volume of fabric %s stays %.1e from the one asked for", r.s.Enclosures[r.pocket[k].index].Name, e))
+		return
+	}
 	if e, c := r.cableError(); c >= 0 && e > cableTarget && e > b.eta {
 		r.finish(engine.Stalled, fmt.Sprintf("cable %s stays %.1e from the length or sag asked for", r.s.Cables[r.cable[c].index].Name, e))
 		return
@@ -388,6 +395,7 @@ func (r *run) viscous(ctx context.Context) error {
 				return nil
 			}
 			r.adjustCables(eta)
+			r.adjustPockets(eta)
 		}
 		r.advance()
 		r.elements()

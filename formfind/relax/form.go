@@ -9,6 +9,7 @@ import (
 
 // startForces takes first guesses of common cable forces from a form.
 func (p *problem) startForces(f *canopy.Form) {
+	p.startPressures(f)
 	for c := range p.cable {
 		g := &p.cable[c]
 		if g.law == canopy.CableElastic || len(f.Force) != len(p.s.Ends) {
@@ -41,6 +42,12 @@ func (st *state) form(frozen *canopy.Form) *canopy.Form {
 	}
 	for t := range st.corners {
 		st.reportStress(t, f)
+	}
+	for k := range st.pocket {
+		f.Pressure[st.pocket[k].index] = st.pocket[k].pressure
+	}
+	if frozen != nil {
+		copy(f.Pressure, frozen.Pressure)
 	}
 	st.react(f)
 	return f

@@ -20,7 +20,7 @@ func Frozen(form *canopy.Form) *Engine { return &Engine{form: form} }
 
 // freezeLoads makes the loads on the form's shape dead.
 func (p *problem) freezeLoads(form *canopy.Form) {
-	s := p.s
+	s := p.s.Carrying(form)
 	for t, c := range s.Corners {
 		fab := &s.Fabrics[s.FabricOf[t]]
 		weight := fab.Weight

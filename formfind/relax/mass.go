@@ -34,6 +34,9 @@ func (st *state) refresh() {
 	if len(st.cable) > 0 {
 		st.stiffenCables()
 	}
+	if len(st.pocket) > 0 {
+		st.stiffenPockets()
+	}
 	for _, r := range st.ring {
 		for _, i := range r.nodes {
 			st.mass[r.centre] += st.mass[i]

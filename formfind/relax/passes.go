@@ -102,6 +102,9 @@ func (st *state) elements() {
 		st.pullCables()
 	}
 	st.crew.run(len(st.corners), st.triangleBlock)
+	if len(st.pocket) > 0 {
+		st.pressPockets()
+	}
 }
 
 func (st *state) memberBlock(b int) {

@@ -85,6 +85,7 @@ type problem struct {
 	fabricOf  []int32
 	bound     []float64    // of the elastic law, by fabric
 	push      []float64    // pressure/6, nil when none
+	pocket    []pocket     // air of given volume
 	drape     []float64    // weight/6, nil when none
 	shear     []float64    // shear of frozen stress, nil when none
 	density   [][3]float64 // of all but the uniform ones: q of the side opposite each corner
@@ -165,6 +166,7 @@ func compile(s *canopy.Structure, start []r3.Vec, form *canopy.Form, all bool) (
 		if err := p.addCables(x); err != nil {
 			return nil, nil, err
 		}
+		p.addPockets(x)
 	}
 	return p, x, p.checkHeld()
 }
@@ -245,7 +247,7 @@ func (p *problem) addTriangles(start []r3.Vec, form *canopy.Form) error {
 	s := p.s
 	p.fabricLaw = make([]element.FabricLaw, len(s.Fabrics))
 	p.bound = make([]float64, len(s.Fabrics))
-	pressed, heavy := false, false
+	pressed, heavy := len(s.Enclosures) > 0, false
 	for f := range s.Fabrics {
 		fab := &s.Fabrics[f]
 		pressed = pressed || fab.Pressure != 0

@@ -14,6 +14,7 @@ func (d *drawn) check() {
 	d.edgesHaveKinds()
 	d.boundaries()
 	d.inside()
+	d.drawnAir()
 	d.roles()
 	d.ringUse()
 	d.holds()

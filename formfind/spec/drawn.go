@@ -27,6 +27,7 @@ type drawn struct {
 	edgeRole                 []string
 	ringUsers                [][]ref
 	boundaryRefs             [][]ref // of fabrics, then of nets
+	air                      []air
 	holeRefs                 []holeRefs
 	lineRefs                 []insideRef // edges inside fabrics
 	insideRefs               []insideRef // points inside fabrics
@@ -671,6 +672,9 @@ func (d *drawn) fabrics(f *fields) {
 		d.r.plausiblePrestress(g, fab.Warp, fab.Weft)
 		fab.MeshSize = g.number("mesh")
 		d.r.material(g, &fab.Properties)
+		if a, ok := d.r.air(g, e.name); ok {
+			d.air = append(d.air, a)
+		}
 		if q, ok := g.ref("ring"); ok {
 			fab.Ring = q.name
 			if i, known := d.ring[q.name]; known {

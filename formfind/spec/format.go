@@ -181,7 +181,7 @@ var fabricSection = &section{id: "fabric", doc: "One piece of fabric inside a cl
 		doc: "Direction at right angles to the plane in which a free mesh is laid out; the outline must not overlap itself seen along it."},
 	{name: "mesh", shape: quantity(Length).above(0), deflt: "that of the model", example: "300 mm",
 		doc: "Wanted length of a mesh side in this fabric."},
-}, fabricMaterialKeys()...)}
+}, append(fabricMaterialKeys(), volumeKeys()...)...)}
 
 // familyRules are the ways to say what force the links of a family have.
 var familyRules = []string{"force", "force density", "mean force"}
@@ -327,7 +327,7 @@ var listedFabricSection = &section{id: "listed-fabric", doc: "What the triangles
 		doc: "Wanted stress per width of triangles that do not give it themselves."},
 	{name: "warp", shape: &shape{form: formDirection}, example: "[1, 0, 0]",
 		doc: "Warp direction, laid onto the surface, of triangles that do not give it themselves. Needed where warp and weft differ."},
-}, fabricMaterialKeys()...)}
+}, append(fabricMaterialKeys(), volumeKeys()...)...)}
 
 var listedSection = &section{id: "listed", doc: "A structure with its own topology. Each table is a CSV file beside the model file (\"nodes.csv\"), or rows in the model file, or CSV text in a block that starts with |. Nodes are referred to by name, or by number counted from 0 when they have no names.", keys: []*key{
 	{name: "nodes", shape: table(nodeColumns), required: true, example: "nodes.csv", doc: "The nodes."},

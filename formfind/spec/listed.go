@@ -35,6 +35,7 @@ func (r *reader) listed(f *fields) *canopy.Structure {
 	}
 	l.cables()
 	l.connected()
+	l.enclose()
 	return l.s
 }
 
@@ -53,6 +54,7 @@ type lister struct {
 	fabric map[string]int
 	preset []preset
 	cable  []span
+	air    []air
 }
 
 // preset is what the triangles of a fabric have unless they say otherwise.
@@ -86,6 +88,9 @@ func (l *lister) fabrics() {
 		}
 		fab := canopy.Fabric{Name: e.name}
 		l.r.material(g, &fab)
+		if a, ok := l.r.air(g, e.name); ok {
+			l.air = append(l.air, a)
+		}
 		l.fabric[e.name] = len(l.s.Fabrics)
 		l.s.Fabrics = append(l.s.Fabrics, fab)
 		l.preset = append(l.preset, pre)

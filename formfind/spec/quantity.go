@@ -50,6 +50,9 @@ var (
 	Pressure = &Dimension{Name: "pressure", limit: 1e12, Units: []Unit{
 		{"kN/m2", 1e3, 1}, {"N/m2", 1, 1}, {"Pa", 1, 1}, {"hPa", 100, 1}, {"kPa", 1e3, 1}, {"mbar", 100, 1}, {"bar", 1e5, 1},
 	}}
+	Volume = &Dimension{Name: "volume", limit: 1e18, Units: []Unit{
+		{"m3", 1, 1}, {"l", 1, 1000}, {"cm3", 1, 1e6},
+	}}
 	Ratio = &Dimension{Name: "ratio", limit: 1e9, Units: []Unit{
 		{"", 1, 1}, {"%", 1, 100},
 	}}
@@ -63,7 +66,7 @@ var (
 	}}
 )
 
-var dimensions = []*Dimension{Length, Force, ForcePerLength, Weight, WeightPerLength, WeightPerArea, Pressure, Ratio, Angle, Slope}
+var dimensions = []*Dimension{Length, Force, ForcePerLength, Weight, WeightPerLength, WeightPerArea, Pressure, Volume, Ratio, Angle, Slope}
 
 // Bare names the unit of a number without one: "m", "kN", "" for a ratio.
 func (d *Dimension) Bare() string { return d.Units[0].Name }
