@@ -16,18 +16,18 @@ func nodalForces(s *canopy.Structure, f *canopy.Form) (sum []r3.Vec, size []floa
 	sum = load.Nodal(s.Carrying(f), f.Position)
 	size = make([]float64, len(sum))
 	for i := range sum {
-		size[i] = r3.Norm(sum[i])
+		size[i] = length(sum[i])
 	}
 	add := func(i int32, v r3.Vec) {
 		sum[i] = r3.Add(sum[i], v)
-		size[i] += r3.Norm(v)
+		size[i] += length(v)
 	}
 	for k, e := range s.Ends {
 		if f.Force[k] == 0 {
 			continue
 		}
 		d := r3.Sub(f.Position[e[1]], f.Position[e[0]])
-		l := r3.Norm(d)
+		l := length(d)
 		if l == 0 {
 			continue
 		}
@@ -44,11 +44,15 @@ func nodalForces(s *canopy.Structure, f *canopy.Form) (sum []r3.Vec, size []floa
 	return sum, size
 }
 
+// length is r3.Norm without its guard against overflow, which costs several times
+// as much.
+func length(v r3.Vec) float64 { return math.Sqrt(v.X*v.X + v.Y*v.Y + v.Z*v.Z) }
+
 // trianglePulls returns the forces by which a triangle of uniform true stress
 // pulls its corners, −½ σ(n × e) with e the opposite edge counter-clockwise.
 func trianglePulls(a, b, c, warp r3.Vec, st canopy.Stress) [3]r3.Vec {
 	n := r3.Cross(r3.Sub(b, a), r3.Sub(c, a))
-	l := r3.Norm(n)
+	l := length(n)
 	if l == 0 {
 		return [3]r3.Vec{}
 	}

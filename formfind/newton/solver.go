@@ -214,37 +214,19 @@ func (v *Solver) topology() error {
 			v.hasTied[m] = true
 		}
 	}
-	// Edges of triangles by how many triangles share them.
-	type edge struct{ i, j int32 }
-	edges := make([]edge, 0, 3*len(s.Corners))
 	for _, c := range s.Corners {
-		for k := range 3 {
-			v.filmAt[c[k]] = true
-			i, j := c[k], c[(k+1)%3]
-			edges = append(edges, edge{min(i, j), max(i, j)})
-		}
+		v.filmAt[c[0]], v.filmAt[c[1]], v.filmAt[c[2]] = true, true, true
 	}
-	slices.SortFunc(edges, func(a, b edge) int {
-		if a.i != b.i {
-			return int(a.i) - int(b.i)
-		}
-		return int(a.j) - int(b.j)
-	})
 	v.seamAt = map[int32][]int32{}
-	for a := 0; a < len(edges); {
-		b := a
-		for b < len(edges) && edges[b] == edges[a] {
-			b++
+	sides(n, s.Corners, func(i, j int32, uses int) {
+		switch {
+		case uses == 1:
+			v.openEdges = append(v.openEdges, [2]int32{i, j})
+		case uses > 2:
+			v.seamAt[i] = append(v.seamAt[i], j)
+			v.seamAt[j] = append(v.seamAt[j], i)
 		}
-		switch e := edges[a]; {
-		case b-a == 1:
-			v.openEdges = append(v.openEdges, [2]int32{e.i, e.j})
-		case b-a > 2:
-			v.seamAt[e.i] = append(v.seamAt[e.i], e.j)
-			v.seamAt[e.j] = append(v.seamAt[e.j], e.i)
-		}
-		a = b
-	}
+	})
 	return nil
 }
 
