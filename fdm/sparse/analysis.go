@@ -482,15 +482,19 @@ func (a *Analysis) assembly(pairs [][2]int32, mem *pool) error {
 		}
 	}
 	super := mem.get(a.n)
-	defer mem.put(super)
+	front := mem.get(len(pairs))
+	defer mem.put(super, front)
 	for s := range int32(m) {
 		for j := a.first[s]; j < a.first[s+1]; j++ {
 			super[j] = s
 		}
 	}
+	place := a.place
 	a.sourcePtr = make([]int64, m+1)
-	for _, p := range pairs {
-		a.sourcePtr[super[min(a.place[p[0]], a.place[p[1]])]+1]++
+	for k, p := range pairs {
+		s := super[min(place[p[0]], place[p[1]])]
+		front[k] = s
+		a.sourcePtr[s+1]++
 	}
 	for s := range m {
 		a.sourcePtr[s+1] += a.sourcePtr[s]
@@ -498,8 +502,7 @@ func (a *Analysis) assembly(pairs [][2]int32, mem *pool) error {
 	a.source = make([]int32, len(pairs))
 	a.target = make([]int32, len(pairs))
 	at := slices.Clone(a.sourcePtr[:m])
-	for k, p := range pairs {
-		s := super[min(a.place[p[0]], a.place[p[1]])]
+	for k, s := range front {
 		a.source[at[s]] = int32(k)
 		at[s]++
 	}
@@ -507,20 +510,17 @@ func (a *Analysis) assembly(pairs [][2]int32, mem *pool) error {
 	for s := range int32(m) {
 		c0, c1 := a.first[s], a.first[s+1]
 		cols, ld := a.shape(s)
+		for i := c0; i < c1; i++ {
+			local[i] = i - c0
+		}
 		for k, i := range a.rows[a.rowPtr[s]:a.rowPtr[s+1]] {
 			local[i] = int32(cols + k)
 		}
-		for k := a.sourcePtr[s]; k < a.sourcePtr[s+1]; k++ {
-			p := pairs[a.source[k]]
-			col, row := a.place[p[0]], a.place[p[1]]
-			if col > row {
-				col, row = row, col
-			}
-			r := row - c0
-			if row >= c1 {
-				r = local[row]
-			}
-			a.target[k] = (col-c0)*int32(ld) + r
+		target := a.target[a.sourcePtr[s]:a.sourcePtr[s+1]]
+		for x, k := range a.source[a.sourcePtr[s]:a.sourcePtr[s+1]] {
+			p := pairs[k]
+			i, j := place[p[0]], place[p[1]]
+			target[x] = (min(i, j)-c0)*int32(ld) + local[max(i, j)]
 		}
 	}
 	return nil

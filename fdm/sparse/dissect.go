@@ -77,23 +77,32 @@ func newDissector(g graph, weight []int32, mem *pool) *dissector {
 // bfs fills dist for the component of root and returns its nodes in the order
 // met, the farthest last.
 func (d *dissector) bfs(root int32, dist []int32) []int32 {
-	q := d.queue[:1]
-	q[0] = root
-	for _, i := range d.nodes {
-		dist[i] = none
+	if len(d.nodes) == d.g.n {
+		for i := range dist {
+			dist[i] = none
+		}
+	} else {
+		for _, i := range d.nodes {
+			dist[i] = none
+		}
 	}
+	q := d.queue
+	q[0] = root
 	dist[root] = 0
-	for k := 0; k < len(q); k++ {
+	ptr, adj := d.g.ptr, d.g.adj
+	met := 1
+	for k := 0; k < met; k++ {
 		i := q[k]
 		next := dist[i] + 1
-		for _, j := range d.g.row(i) {
+		for _, j := range adj[ptr[i]:ptr[i+1]] {
 			if dist[j] == none {
 				dist[j] = next
-				q = append(q, j)
+				q[met] = j
+				met++
 			}
 		}
 	}
-	return q
+	return q[:met]
 }
 
 // layout places the nodes of one component (in d.nodes) in a plane.
@@ -101,24 +110,32 @@ func (d *dissector) bfs(root int32, dist []int32) []int32 {
 // With p and q far apart, dist(p) − dist(q) runs from one to the other nearly
 // evenly over a net or mesh; where it is zero lies an equator, whose ends r and
 // s give the second coordinate likewise. On a square grid this gives multiples
-// of its diagonals, on a triangulated one its skew axes.
-func (d *dissector) layout() {
+// of its diagonals, on a triangulated one its skew axes. The nodes from
+// lastLevel on are the farthest from some node.
+func (d *dissector) layout(lastLevel int) {
 	dp, dq, dr := d.lend[0], d.lend[1], d.lend[2]
 	// A node of least degree among the farthest is likely a corner (George &
 	// Liu 1979, "An implementation of a pseudoperipheral node finder").
-	farthest := func(root int32, dist []int32) (int32, int32) {
-		q := d.bfs(root, dist)
-		far := q[len(q)-1]
-		away := dist[far]
-		for k := len(q) - 1; k >= 0 && dist[q[k]] == away; k-- {
-			if i := q[k]; d.g.ptr[i+1]-d.g.ptr[i] < d.g.ptr[far+1]-d.g.ptr[far] {
+	slender := func(level []int32) int32 {
+		far := level[len(level)-1]
+		for k := len(level) - 2; k >= 0; k-- {
+			if i := level[k]; d.g.ptr[i+1]-d.g.ptr[i] < d.g.ptr[far+1]-d.g.ptr[far] {
 				far = i
 			}
 		}
-		return far, away
+		return far
 	}
-	p, away := farthest(d.nodes[0], dp)
-	q, _ := farthest(p, dp)
+	farthest := func(root int32, dist []int32) (int32, int32) {
+		q := d.bfs(root, dist)
+		k := len(q) - 1
+		away := dist[q[k]]
+		for k > 0 && dist[q[k-1]] == away {
+			k--
+		}
+		return slender(q[k:]), away
+	}
+	p := slender(d.nodes[lastLevel:])
+	q, away := farthest(p, dp)
 	for round := 0; ; round++ {
 		next, further := farthest(q, dq)
 		if further <= away || round == 4 {
@@ -178,13 +195,21 @@ func (d *dissector) layout() {
 			d.at[i].v *= fv
 		}
 	}
-	d.reach = [4]int32{1, 1, 1, 1}
-	var sum [4]int64
+	// Along an edge a distance changes by one at most, and a difference of two
+	// by two. How much it does on average is told by some of the nodes.
+	d.reach = [4]int32{2 * fu, 2 * fv, 2 * (fu + fv), 2 * (fu + fv)}
 	for x, i := range d.nodes {
-		p := d.at[i]
-		d.pts[x] = p
+		d.pts[x] = d.at[i]
+	}
+	var sum [4]int64
+	every := 1
+	if len(d.nodes) > 2000 {
+		every = 7
+	}
+	for x := 0; x < len(d.nodes); x += every {
+		p := d.pts[x]
 		var far [4]int32
-		for _, j := range d.g.row(i) {
+		for _, j := range d.g.row(d.nodes[x]) {
 			q := d.at[j]
 			du, dv := q.u-p.u, q.v-p.v
 			far[0], far[1] = max(far[0], du), max(far[1], dv)
@@ -192,11 +217,10 @@ func (d *dissector) layout() {
 		}
 		for k, f := range far {
 			sum[k] += int64(f)
-			d.reach[k] = max(d.reach[k], f)
 		}
 	}
 	for k := range 4 {
-		d.step[k] = float64(sum[k]) / float64(len(d.nodes))
+		d.step[k] = float64(sum[k]) / float64((len(d.nodes)+every-1)/every)
 	}
 }
 
@@ -527,7 +551,11 @@ func dissect(ctx context.Context, g graph, weight []int32, picky bool, mem *pool
 		}
 		part := append(all[done:done], root)
 		d.region[root] = int32(done)
+		level, levelEnd := 0, 1 // the nodes as far from root as the one at hand
 		for k := 0; k < len(part); k++ {
+			if k == levelEnd {
+				level, levelEnd = k, len(part)
+			}
 			for _, j := range g.row(part[k]) {
 				if d.region[j] == unmet {
 					d.region[j] = int32(done)
@@ -537,7 +565,7 @@ func dissect(ctx context.Context, g graph, weight []int32, picky bool, mem *pool
 		}
 		if len(part) > leafSize {
 			d.nodes, d.pts = part, pts[done:]
-			d.layout()
+			d.layout(level)
 		}
 		d.nodes, d.pts = all, pts
 		if picky {
