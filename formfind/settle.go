@@ -2,6 +2,7 @@ package formfind
 
 import (
 	"context"
+	"errors"
 	"fmt"
 	"math"
 	"slices"
@@ -122,6 +123,7 @@ func (c *chain) settle(ctx context.Context) (bool, error) {
 		}
 	}
 	net.Corners, net.FabricOf, net.Warp, net.Stress, net.Fabrics, net.Lines = nil, nil, nil, nil, nil, nil
+	net.Enclosures = nil
 
 	start := canopy.NewForm(&net)
 	copy(start.Position, ref)
@@ -130,26 +132,49 @@ func (c *chain) settle(ctx context.Context) (bool, error) {
 	fabricOnly.Load, fabricOnly.Weight, fabricOnly.Rings = nil, nil, nil
 	set := c.settings(true)
 	set.Residual, set.Worst = 1e-13, 1e-13
-	for pass := 1; ; pass++ {
-		net.Load = load.Nodal(&fabricOnly, start.Position)
-		for i := range net.Load {
-			net.Load[i] = r3.Add(net.Load[i], s.LoadAt(i))
+	loadsAt := func(x []r3.Vec, p []float64) []r3.Vec {
+		loads := load.Nodal(fabricOnly.Carrying(&canopy.Form{Pressure: p}), x)
+		for i := range loads {
+			loads[i] = r3.Add(loads[i], s.LoadAt(i))
 		}
+		return loads
+	}
+	stuck := errors.New("not in balance")
+	rest := func(loads []r3.Vec) ([]r3.Vec, error) {
+		net.Load = loads
 		g, out, err := newton.Engine{}.Find(ctx, &net, start, set)
 		if err != nil {
-			return false, fmt.Errorf("newton: %w", err)
+			return nil, fmt.Errorf("newton: %w", err)
 		}
 		if out.Status != engine.Converged && !(out.Residual <= 1e-10) {
 			c.say("fixed-reference pass with the members' own laws %s: %s", out.Status, out.Why)
-			return false, nil
+			return nil, stuck
 		}
-		move := largestMove(g.Position, start.Position)
 		start = g
-		if steadyLoads(s) || move <= 1e-13*s.Size() || pass == maxPasses {
+		return g.Position, nil
+	}
+	pressure := found.Pressure
+	var err error
+	if len(s.Enclosures) > 0 {
+		pressure, err = holdVolumes(ctx, s, ref, pressure, loadsAt, rest)
+	}
+	for pass := 1; err == nil && len(s.Enclosures) == 0; pass++ {
+		before := start.Position
+		if _, err = rest(loadsAt(before, nil)); err != nil {
+			break
+		}
+		if steadyLoads(s) || largestMove(start.Position, before) <= 1e-13*s.Size() || pass == maxPasses {
 			break
 		}
 	}
+	if err != nil {
+		if errors.Is(err, stuck) {
+			err = nil
+		}
+		return false, err
+	}
 	f := canopy.NewForm(s)
+	copy(f.Pressure, pressure)
 	copy(f.Position, start.Position)
 	copy(f.Force, start.Force[:members])
 	for t, n := range s.Corners {

@@ -157,6 +157,7 @@ func pressureUnit(s *canopy.Structure, size float64) float64 {
 // encloses what is wanted to the last digits.
 func (c *chain) finishVolumes(ctx context.Context) error {
 	s, found := c.s, c.f
+	c.o.begin("balance")
 	c.stage("natural force density", "final pass")
 	net, panels := network(s, nil)
 	for t := range panels {

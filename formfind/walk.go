@@ -143,6 +143,7 @@ func copyForWalk(s *canopy.Structure) *canopy.Structure {
 	w.Position = slices.Clone(s.Position)
 	w.Given = slices.Clone(s.Given)
 	w.Fabrics = slices.Clone(s.Fabrics)
+	w.Enclosures = slices.Clone(s.Enclosures)
 	w.Load = slices.Clone(s.Load)
 	return &w
 }
@@ -168,6 +169,9 @@ func ways(s *canopy.Structure) []way {
 					Text: fmt.Sprintf("no equilibrium at an internal pressure of %.4g Pa: with this prestress a shape exists up to about %.4g Pa, beyond which it has no more surface to grow into (the hemisphere of a round one). Raise the prestress, lower the pressure, or give the volume instead", pressure, t*pressure)}
 			},
 		})
+	}
+	if w, ok := volumeWay(s); ok {
+		out = append(out, w)
 	}
 	if lo, hi := heights(s); hi > lo {
 		out = append(out, way{
