@@ -171,48 +171,25 @@ func choleskyTop(f []float64, ld, n int) (int, float64) {
 // scaleRows solves X·Tᵀ = C in place for m rows of n ≤ 4 columns, T the lower
 // triangle of an n×n block with its diagonal inverted.
 func scaleRows(c []float64, ldc, m, n int, t []float64, ldt int) {
-	switch n {
-	case 4:
-		w := [10]float64{
-			t[0],
-			t[1], t[ldt+1],
-			t[2], t[ldt+2], t[2*ldt+2],
-			t[3], t[ldt+3], t[2*ldt+3], t[3*ldt+3],
+	if haveStrips {
+		_ = c[(n-1)*ldc+m-1]
+		_ = t[(n-1)*ldt+n-1]
+		scaleStrip(&c[0], &t[0], ldc, ldt, m, n)
+		return
+	}
+	// By columns, left of each those already solved.
+	for j := range n {
+		cj := c[j*ldc:][:m]
+		for k := range j {
+			ck := c[k*ldc:][:m]
+			w := t[k*ldt+j]
+			for i := range cj {
+				cj[i] -= ck[i] * w
+			}
 		}
-		i := 0
-		if haveStrips && m >= 4 {
-			i = m &^ 3
-			_ = c[3*ldc+m-1]
-			scaleStrip(&c[0], ldc, i, &w)
-		}
-		c0, c1, c2, c3 := c[:m], c[ldc:][:m], c[2*ldc:][:m], c[3*ldc:][:m]
-		for ; i < m; i++ {
-			x0 := c0[i] * w[0]
-			x1 := (c1[i] - x0*w[1]) * w[2]
-			x2 := (c2[i] - x0*w[3] - x1*w[4]) * w[5]
-			x3 := (c3[i] - x0*w[6] - x1*w[7] - x2*w[8]) * w[9]
-			c0[i], c1[i], c2[i], c3[i] = x0, x1, x2, x3
-		}
-	case 3:
-		w0, w1, w2, w3, w4, w5 := t[0], t[1], t[ldt+1], t[2], t[ldt+2], t[2*ldt+2]
-		c0, c1, c2 := c[:m], c[ldc:][:m], c[2*ldc:][:m]
-		for i := range c0 {
-			x0 := c0[i] * w0
-			x1 := (c1[i] - x0*w1) * w2
-			c0[i], c1[i], c2[i] = x0, x1, (c2[i]-x0*w3-x1*w4)*w5
-		}
-	case 2:
-		w0, w1, w2 := t[0], t[1], t[ldt+1]
-		c0, c1 := c[:m], c[ldc:][:m]
-		for i := range c0 {
-			x0 := c0[i] * w0
-			c0[i], c1[i] = x0, (c1[i]-x0*w1)*w2
-		}
-	case 1:
-		w0 := t[0]
-		c0 := c[:m]
-		for i := range c0 {
-			c0[i] *= w0
+		inv := t[j*ldt+j]
+		for i := range cj {
+			cj[i] *= inv
 		}
 	}
 }

@@ -235,3 +235,77 @@ three:
 	ADDQ R8, AX
 	STORE3(AX, Z9, Z10, Z11)
 	JMP  done
+
+// func scaleStrip512(c, t *float64, ldc, ldt, m, n int)
+// Solves X·Tᵀ = C in place for m ≥ 1 rows of 1 ≤ n ≤ 4 columns, eight rows at a
+// time; T is n×n, lower triangular, its diagonal inverted.
+TEXT ·scaleStrip512(SB), NOSPLIT, $0-48
+	MOVQ c+0(FP), DI
+	MOVQ t+8(FP), SI
+	MOVQ ldc+16(FP), R8
+	SHLQ $3, R8
+	MOVQ ldt+24(FP), R9
+	SHLQ $3, R9
+	MOVQ m+32(FP), CX
+	MOVQ n+40(FP), R13
+	LEAQ (R8)(R8*2), R10
+	LEAQ (R9)(R9*2), R11
+	MOVL  $0xff, AX
+	KMOVW AX, K1
+	VBROADCASTSD (SI), Z4
+	CMPQ R13, $2
+	JLT  scale
+	VBROADCASTSD 8(SI), Z5
+	VBROADCASTSD 8(SI)(R9*1), Z6
+	JEQ  scale
+	VBROADCASTSD 16(SI), Z7
+	VBROADCASTSD 16(SI)(R9*1), Z8
+	VBROADCASTSD 16(SI)(R9*2), Z9
+	CMPQ R13, $4
+	JLT  scale
+	VBROADCASTSD 24(SI), Z10
+	VBROADCASTSD 24(SI)(R9*1), Z11
+	VBROADCASTSD 24(SI)(R9*2), Z12
+	VBROADCASTSD 24(SI)(R11*1), Z13
+
+scale:
+	CMPQ CX, $8
+	JGE  rows
+	MOVL $8, DX
+	SUBL CX, DX
+	MOVL $0xff, AX
+	XCHGQ CX, DX
+	SHRL CX, AX
+	XCHGQ CX, DX
+	KMOVW AX, K1
+
+rows:
+	VMULPD.Z (DI), Z4, K1, Z0
+	VMOVUPD  Z0, K1, (DI)
+	CMPQ R13, $2
+	JLT  next
+	VMOVUPD.Z    (DI)(R8*1), K1, Z1
+	VFNMADD231PD Z0, Z5, Z1
+	VMULPD       Z1, Z6, Z1
+	VMOVUPD      Z1, K1, (DI)(R8*1)
+	JEQ  next
+	VMOVUPD.Z    (DI)(R8*2), K1, Z2
+	VFNMADD231PD Z0, Z7, Z2
+	VFNMADD231PD Z1, Z8, Z2
+	VMULPD       Z2, Z9, Z2
+	VMOVUPD      Z2, K1, (DI)(R8*2)
+	CMPQ R13, $4
+	JLT  next
+	VMOVUPD.Z    (DI)(R10*1), K1, Z3
+	VFNMADD231PD Z0, Z10, Z3
+	VFNMADD231PD Z1, Z11, Z3
+	VFNMADD231PD Z2, Z12, Z3
+	VMULPD       Z3, Z13, Z3
+	VMOVUPD      Z3, K1, (DI)(R10*1)
+
+next:
+	ADDQ $64, DI
+	SUBQ $8, CX
+	JGT  scale
+	VZEROUPPER
+	RET

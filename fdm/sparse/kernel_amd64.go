@@ -7,9 +7,9 @@ import "golang.org/x/sys/cpu"
 // paths.
 var haveStrips = cpu.X86.HasAVX2 && cpu.X86.HasFMA
 
-// haveWide says that mulSubStrip goes on to mulSubStrip512: the processor has
-// AVX-512. A variable for the same reason.
-var haveWide = haveStrips && cpu.X86.HasAVX512F
+// haveWide says that mulSubStrip goes on to mulSubStrip512, and what else has
+// AVX-512 in it: the processor has that, too. A variable for the same reason.
+var haveWide = haveStrips && cpu.X86.HasAVX512F && cpu.X86.HasBMI2
 
 // mulSubStrip512 gives the same bits as mulSubStrip, which jumps to it.
 //
@@ -24,11 +24,16 @@ func mulSubStrip512(c, a, b *float64, ldc, lda, ldb, m, n, k, step, fresh int)
 //go:noescape
 func mulSubStrip(c, a, b *float64, ldc, lda, ldb, m, n, k, step, fresh int)
 
-// scaleStrip solves X·Tᵀ = C in place for four columns of m rows, m a positive
-// multiple of four.
+// scaleStrip solves X·Tᵀ = C in place for m ≥ 1 rows of 1 ≤ n ≤ 4 columns, T
+// lower triangular with its diagonal inverted.
 //
 //go:noescape
-func scaleStrip(c *float64, ldc, m int, t *[10]float64)
+func scaleStrip(c, t *float64, ldc, ldt, m, n int)
+
+// scaleStrip512 gives the same bits as scaleStrip, which jumps to it.
+//
+//go:noescape
+func scaleStrip512(c, t *float64, ldc, ldt, m, n int)
 
 // forwardFront and backwardFront do what solveForward and solveBackward say: y
 // is x at the first of the own unknowns.
@@ -39,8 +44,8 @@ func forwardFront(p, y, x *float64, ld, cols, own int, rows *int32, below int, u
 //go:noescape
 func backwardFront(p, y, x *float64, ld, cols, own int, rows *int32, below int, unit bool)
 
-// addRuns adds cols columns of the lower triangle of an update matrix, those
-// from skip on of the first of the runs, to the columns of a front.
+// addRuns adds cols columns of the lower triangle of an update matrix, from
+// column skip of the first of the runs on, to the columns of a front.
 //
 //go:noescape
 func addRuns(dst, src *float64, ld, n, cols, skip, shift int, runs *run, count int)

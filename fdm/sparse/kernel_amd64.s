@@ -249,59 +249,118 @@ done:
 wide:
 	JMP ·mulSubStrip512(SB)
 
-// func scaleStrip(c *float64, ldc, m int, t *[10]float64)
-// Solves X·Tᵀ = C for m rows (a multiple of four) of four columns in place. T
-// is lower triangular, by rows, with its diagonal inverted.
-TEXT ·scaleStrip(SB), NOSPLIT, $0-32
+// One to three rows of a column at p, which moves.
+#define STOREFEW(x, y, p) \
+	TESTQ        $2, CX;    \
+	JZ           4(PC);     \
+	VMOVUPD      x, (p);    \
+	VEXTRACTF128 $1, y, x;  \
+	ADDQ         $16, p;    \
+	TESTQ        $1, CX;    \
+	JZ           2(PC);     \
+	VMOVSD       x, (p)
+
+// func scaleStrip(c, t *float64, ldc, ldt, m, n int)
+// Solves X·Tᵀ = C in place for m ≥ 1 rows of 1 ≤ n ≤ 4 columns, four rows at a
+// time; T is n×n, lower triangular, its diagonal inverted. Reads up to three
+// entries beyond column ends of C.
+TEXT ·scaleStrip(SB), NOSPLIT, $0-48
+	CMPB ·haveWide(SB), $0
+	JNE  wide
 	MOVQ c+0(FP), DI
-	MOVQ ldc+8(FP), R8
+	MOVQ t+8(FP), SI
+	MOVQ ldc+16(FP), R8
 	SHLQ $3, R8
-	MOVQ m+16(FP), CX
-	MOVQ t+24(FP), DX
-	LEAQ (DI)(R8*2), SI
-	VBROADCASTSD (DX), Y4
-	VBROADCASTSD 8(DX), Y5
-	VBROADCASTSD 16(DX), Y6
-	VBROADCASTSD 24(DX), Y7
-	VBROADCASTSD 32(DX), Y8
-	VBROADCASTSD 40(DX), Y9
-	VBROADCASTSD 48(DX), Y10
-	VBROADCASTSD 56(DX), Y11
-	VBROADCASTSD 64(DX), Y12
-	VBROADCASTSD 72(DX), Y13
+	MOVQ ldt+24(FP), R9
+	SHLQ $3, R9
+	MOVQ m+32(FP), CX
+	MOVQ n+40(FP), R13
+	LEAQ (R8)(R8*2), R10
+	LEAQ (R9)(R9*2), R11
+	VBROADCASTSD (SI), Y4
+	CMPQ R13, $2
+	JLT  rows
+	VBROADCASTSD 8(SI), Y5
+	VBROADCASTSD 8(SI)(R9*1), Y6
+	JEQ  rows
+	VBROADCASTSD 16(SI), Y7
+	VBROADCASTSD 16(SI)(R9*1), Y8
+	VBROADCASTSD 16(SI)(R9*2), Y9
+	CMPQ R13, $4
+	JLT  rows
+	VBROADCASTSD 24(SI), Y10
+	VBROADCASTSD 24(SI)(R9*1), Y11
+	VBROADCASTSD 24(SI)(R9*2), Y12
+	VBROADCASTSD 24(SI)(R11*1), Y13
 
 rows:
 	VMULPD       (DI), Y4, Y0
+	CMPQ R13, $2
+	JLT  store
 	VMOVUPD      (DI)(R8*1), Y1
-	VMOVUPD      (SI), Y2
-	VMOVUPD      (SI)(R8*1), Y3
 	VFNMADD231PD Y0, Y5, Y1
-	VFNMADD231PD Y0, Y7, Y2
-	VFNMADD231PD Y0, Y10, Y3
 	VMULPD       Y1, Y6, Y1
+	JEQ  store
+	VMOVUPD      (DI)(R8*2), Y2
+	VFNMADD231PD Y0, Y7, Y2
 	VFNMADD231PD Y1, Y8, Y2
-	VFNMADD231PD Y1, Y11, Y3
 	VMULPD       Y2, Y9, Y2
+	CMPQ R13, $4
+	JLT  store
+	VMOVUPD      (DI)(R10*1), Y3
+	VFNMADD231PD Y0, Y10, Y3
+	VFNMADD231PD Y1, Y11, Y3
 	VFNMADD231PD Y2, Y12, Y3
 	VMULPD       Y3, Y13, Y3
-	VMOVUPD      Y0, (DI)
-	VMOVUPD      Y1, (DI)(R8*1)
-	VMOVUPD      Y2, (SI)
-	VMOVUPD      Y3, (SI)(R8*1)
-	ADDQ         $32, DI
-	ADDQ         $32, SI
-	SUBQ         $4, CX
-	JNZ          rows
+
+store:
+	CMPQ CX, $4
+	JLT  few
+	VMOVUPD Y0, (DI)
+	CMPQ R13, $2
+	JLT  next
+	VMOVUPD Y1, (DI)(R8*1)
+	JEQ  next
+	VMOVUPD Y2, (DI)(R8*2)
+	CMPQ R13, $4
+	JLT  next
+	VMOVUPD Y3, (DI)(R10*1)
+
+next:
+	ADDQ $32, DI
+	SUBQ $4, CX
+	JNZ  rows
+
+done:
 	VZEROUPPER
 	RET
 
+few:
+	MOVQ DI, AX
+	STOREFEW(X0, Y0, AX)
+	CMPQ R13, $2
+	JLT  done
+	LEAQ (DI)(R8*1), AX
+	STOREFEW(X1, Y1, AX)
+	CMPQ R13, $3
+	JLT  done
+	LEAQ (DI)(R8*2), AX
+	STOREFEW(X2, Y2, AX)
+	CMPQ R13, $4
+	JLT  done
+	LEAQ (DI)(R10*1), AX
+	STOREFEW(X3, Y3, AX)
+	JMP  done
+
+wide:
+	JMP ·scaleStrip512(SB)
+
 // func addRuns(dst, src *float64, ld, n, cols, skip, shift int, runs *run, count int)
-// Adds columns of a lower triangle to those of a larger one. The columns are
-// skip, skip+1, ... of the first run; src points at the diagonal entry of the
-// first of them, in a matrix with n rows, dst at the start of the column of dst
-// that takes it. Row position p is row p−shift of dst.
+// Adds columns of a lower triangle to those of a larger one: cols columns from
+// column skip of the first of the runs on. src points at the diagonal entry of
+// the first of them, in a matrix with n rows; position p of the larger matrix is
+// row and column p−shift of dst.
 TEXT ·addRuns(SB), NOSPLIT, $0-72
-	MOVQ dst+0(FP), DI
 	MOVQ src+8(FP), SI
 	MOVQ ld+16(FP), R8
 	SHLQ $3, R8
@@ -312,19 +371,32 @@ TEXT ·addRuns(SB), NOSPLIT, $0-72
 	MOVQ skip+40(FP), R11
 	MOVQ runs+56(FP), R12
 	MOVQ count+64(FP), R13
+	MOVQ $-1, R15
+
+columns:
+	// DI: position 0 of the column that takes the first column of the run.
+	MOVLQSX (R12), DI
+	ADDQ    R11, DI
+	MOVQ    shift+48(FP), AX
+	SUBQ    AX, DI
+	IMULQ   R8, DI
+	SHLQ    $3, AX
+	SUBQ    AX, DI
+	ADDQ    dst+0(FP), DI
 
 column:
-	MOVQ SI, BX
-	MOVQ R12, DX
-	MOVQ R13, CX
+	MOVQ    SI, BX
+	MOVQ    R12, DX
+	MOVQ    R13, CX
 	MOVLQSX (DX), AX        // position
 	MOVLQSX 4(DX), R14      // length
-	ADDQ R11, AX
-	SUBQ R11, R14
+	ADDQ    R11, AX
+	SUBQ    R11, R14
 
 part:
-	SUBQ shift+48(FP), AX
 	LEAQ (DI)(AX*8), AX
+	CMPB ·haveWide(SB), $0
+	JNE  wide
 	SUBQ $4, R14
 	JLT  few
 
@@ -362,11 +434,50 @@ nextpart:
 	MOVLQSX 4(DX), R14
 	JMP  part
 
+	// The last eight entries or fewer of a part at once, under a mask.
+wide:
+	CMPQ R14, $8
+	JLE  masked
+	VMOVUPD (BX), Z0
+	VADDPD  (AX), Z0, Z0
+	VMOVUPD Z0, (AX)
+	ADDQ    $64, BX
+	ADDQ    $64, AX
+	SUBQ    $8, R14
+	JMP     wide
+
+masked:
+	BZHIQ R14, R15, DX
+	KMOVW DX, K1
+	VMOVUPD.Z (BX), K1, Z0
+	VADDPD.Z  (AX), Z0, K1, Z0
+	VMOVUPD   Z0, K1, (AX)
+	LEAQ  (BX)(R14*8), BX
+	// DX was needed: where the runs are follows from how many are left.
+	DECQ CX
+	JZ   nextcolumn
+	MOVQ R13, DX
+	SUBQ CX, DX
+	LEAQ (R12)(DX*8), DX
+	MOVLQSX (DX), AX
+	MOVLQSX 4(DX), R14
+	LEAQ (DI)(AX*8), AX
+	JMP  wide
+
 nextcolumn:
+	DECQ R10
+	JZ   done
 	ADDQ R9, SI
 	ADDQ R8, DI
 	INCQ R11
-	DECQ R10
-	JNZ  column
+	MOVLQSX 4(R12), AX
+	CMPQ R11, AX
+	JLT  column
+	XORL R11, R11
+	ADDQ $8, R12
+	DECQ R13
+	JMP  columns
+
+done:
 	VZEROUPPER
 	RET

@@ -8,7 +8,7 @@ func mulSubStrip(c, a, b *float64, ldc, lda, ldb, m, n, k, step, fresh int) {
 	panic("sparse: no strip kernel on this machine")
 }
 
-func scaleStrip(c *float64, ldc, m int, t *[10]float64) {
+func scaleStrip(c, t *float64, ldc, ldt, m, n int) {
 	panic("sparse: no strip kernel on this machine")
 }
 
