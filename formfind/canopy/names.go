@@ -1,6 +1,9 @@
 package canopy
 
-import "strconv"
+import (
+	"slices"
+	"strconv"
+)
 
 // Names is a list of names in one slab of text, so that a million of them cost
 // no more than their letters. The zero value is an empty list.
@@ -13,6 +16,11 @@ type Names struct {
 func (n *Names) Append(name string) {
 	n.text = append(n.text, name...)
 	n.end = append(n.end, int32(len(n.text)))
+}
+
+// Grow makes room for names more names with letters letters in all.
+func (n *Names) Grow(names, letters int) {
+	n.text, n.end = slices.Grow(n.text, letters), slices.Grow(n.end, names)
 }
 
 // Len returns the number of names.

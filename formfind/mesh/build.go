@@ -3,6 +3,7 @@ package mesh
 import (
 	"context"
 	"fmt"
+	"slices"
 
 	"anticlast/formfind/canopy"
 	"gonum.org/v1/gonum/spatial/r3"
@@ -10,6 +11,9 @@ import (
 
 // MaxTriangles is the largest number of triangles a model may be divided into.
 const MaxTriangles = 2_000_000
+
+// maxEdgeNodes bounds the nodes on all edges of a model, and of a ring.
+const maxEdgeNodes = 1_000_000
 
 // Build divides m into nodes, members and triangles. A listed model is checked
 // by [Validate] and returned as it is. The error is an [Errors] with everything
@@ -40,27 +44,34 @@ func BuildMeasured(ctx context.Context, m *canopy.Model) (*canopy.Structure, []Q
 }
 
 func newBuilder(ctx context.Context, m *canopy.Model) *builder {
-	return &builder{ctx: ctx, m: m, s: &canopy.Structure{SelfWeight: m.SelfWeight}}
+	return &builder{ctx: ctx, m: m}
 }
 
 // build runs all stages.
 func (b *builder) build() (*canopy.Structure, error) {
-	ctx := b.ctx
 	// Each stage needs the ones before it to be without fault.
-	for _, stage := range []func(){
-		b.index, b.curves, b.loops, b.orient, b.divide, b.layNets, b.supports,
-		b.pointNodes, b.edgeNodes, b.ringNodes, b.fill, b.cables, b.stays,
-		b.finish, b.verify, b.enclosures,
-	} {
-		if err := ctx.Err(); err != nil {
-			return nil, err
+	run := func(stages ...func()) error {
+		for _, stage := range stages {
+			if err := b.ctx.Err(); err != nil {
+				return err
+			}
+			stage()
+			if len(b.errs) > 0 {
+				return b.errs.err()
+			}
 		}
-		stage()
-		if len(b.errs) > 0 {
-			return nil, b.errs.err()
-		}
+		return b.ctx.Err()
 	}
-	return b.s, ctx.Err()
+	if err := run(b.index, b.curves, b.loops, b.orient, b.divide, b.layNets, b.supports); err != nil {
+		return nil, err
+	}
+	if err := b.fillFinely(run); err != nil {
+		return nil, err
+	}
+	if err := run(b.cables, b.stays, b.finish, b.verify, b.enclosures); err != nil {
+		return nil, err
+	}
+	return b.s, nil
 }
 
 // builder carries what the stages of Build learn.
@@ -72,17 +83,21 @@ type builder struct {
 
 	point, edge, cable, ring map[string]int
 
-	ends    [][2]int    // per edge: model indices of its points
-	curve   []curve     // per edge
-	loop    []*loop     // fabrics first, then nets
-	users   [][]int32   // per edge: loops that it bounds
-	count   []int       // per edge: number of segments
-	param   [][]float64 // per edge: where its nodes are, by length; nil = evenly
-	laid    []*laidNet  // per loop: the lines of a net laid in its plane
-	arrival []arrival   // where such lines end on edges
-	found   *foundShape // an earlier shape in which nets are laid anew
-	soft    bool        // end links of given force start with the force density that gives it
-	ringUse []int       // per ring: loop that surrounds it, −1 = none
+	ends      [][2]int    // per edge: model indices of its points
+	curve     []curve     // per edge
+	loop      []*loop     // fabrics first, then nets
+	users     [][]int32   // per edge: loops that it bounds
+	count     []int       // per edge: number of segments
+	asked     []int       // the same before narrow places were divided further
+	param     [][]float64 // per edge: where its nodes are, by length; nil = evenly
+	laid      []*laidNet  // per loop: the lines of a net laid in its plane
+	arrival   []arrival   // where such lines end on edges
+	found     *foundShape // an earlier shape in which nets are laid anew
+	soft      bool        // end links of given force start with the force density that gives it
+	wish      wish        // what stands in the way of fabrics
+	ringWish  []bool      // per ring: whether it does
+	ringTimes []int       // per ring: how many times as many nodes as its size asks for
+	ringUse   []int       // per ring: loop that surrounds it, −1 = none
 
 	fixed []canopy.Freedom // per point
 	held  []canopy.Freedom
@@ -209,6 +224,17 @@ func (b *builder) addNode(at r3.Vec, name string) int32 {
 	s.Param = append(s.Param, 0)
 	s.NodeName.Append(name)
 	return int32(len(s.Position) - 1)
+}
+
+// reserve makes room for nodes with names of about the given length, and for
+// triangles.
+func (b *builder) reserve(nodes, triangles, name int) {
+	s := b.s
+	s.Position, s.Fixed = slices.Grow(s.Position, nodes), slices.Grow(s.Fixed, nodes)
+	s.OnCurve, s.Param = slices.Grow(s.OnCurve, nodes), slices.Grow(s.Param, nodes)
+	s.NodeName.Grow(nodes, nodes*name)
+	s.Corners, s.FabricOf = slices.Grow(s.Corners, triangles), slices.Grow(s.FabricOf, triangles)
+	s.Stress, s.Warp = slices.Grow(s.Stress, triangles), slices.Grow(s.Warp, triangles)
 }
 
 // member is what addMember is told about a member.

@@ -93,20 +93,19 @@ func scaled(h, e []float64, b float64) []float64 {
 	return h
 }
 
-// times returns e·f.
-func times(e, f []float64) []float64 {
+// times returns e·f in room, with other to work in. Both must hold 2·len(e)·len(f)
+// numbers; neither may be that of e or f.
+func times(room, other, e, f []float64) []float64 {
 	if len(e) < len(f) {
 		e, f = f, e
 	}
-	var sum []float64
-	var room [64]float64
-	for k, b := range f {
-		part := scaled(room[:0], e, b)
-		if k == 0 {
-			sum = append(sum, part...)
-			continue
-		}
-		sum = plus(make([]float64, 0, len(sum)+len(part)), sum, part)
+	sum, next := room[:0], other[:0]
+	var part [32]float64
+	for _, b := range f {
+		sum, next = plus(next[:0], sum, scaled(part[:0], e, b)), sum
+	}
+	if len(f)%2 != 0 {
+		return append(room[:0], sum...)
 	}
 	return sum
 }
@@ -130,20 +129,32 @@ func signOf(e []float64) int {
 }
 
 func expandedOrient(a, b, c xy) int {
-	var r [8]float64
+	var r, s [8]float64
+	var l, m [16]float64
 	ax, ay := difference(r[0:0:2], a.x, c.x), difference(r[2:2:4], a.y, c.y)
 	bx, by := difference(r[4:4:6], b.x, c.x), difference(r[6:6:8], b.y, c.y)
-	return signOf(plus(nil, times(ax, by), negated(times(ay, bx))))
+	left := times(l[:8], s[:], ax, by)
+	return signOf(plus(m[:0], left, negated(times(l[8:], s[:], ay, bx))))
 }
 
+// expandedInCircle adds up three terms of at most 2·16·16 numbers each.
 func expandedInCircle(a, b, c, d xy) int {
 	var r [12]float64
 	ax, ay := difference(r[0:0:2], a.x, d.x), difference(r[2:2:4], a.y, d.y)
 	bx, by := difference(r[4:4:6], b.x, d.x), difference(r[6:6:8], b.y, d.y)
 	cx, cy := difference(r[8:8:10], c.x, d.x), difference(r[10:10:12], c.y, d.y)
-	term := func(px, py, qx, qy, sx, sy []float64) []float64 {
-		lift := plus(nil, times(px, px), times(py, py))
-		return times(lift, plus(nil, times(qx, sy), negated(times(sx, qy))))
+	var other [512]float64
+	// p·p·(q × s) in room.
+	term := func(room []float64, px, py, qx, qy, sx, sy []float64) []float64 {
+		var s, u, v [8]float64
+		var lift, cross [16]float64
+		l := plus(lift[:0], times(u[:], s[:], px, px), times(v[:], s[:], py, py))
+		x := plus(cross[:0], times(u[:], s[:], qx, sy), negated(times(v[:], s[:], sx, qy)))
+		return times(room, other[:], l, x)
 	}
-	return signOf(plus(nil, plus(nil, term(ax, ay, bx, by, cx, cy), term(bx, by, cx, cy, ax, ay)), term(cx, cy, ax, ay, bx, by)))
+	var one, two, three [512]float64
+	var both [1024]float64
+	var all [1536]float64
+	sum := plus(both[:0], term(one[:], ax, ay, bx, by, cx, cy), term(two[:], bx, by, cx, cy, ax, ay))
+	return signOf(plus(all[:0], sum, term(three[:], cx, cy, ax, ay, bx, by)))
 }

@@ -63,26 +63,31 @@ func (freePatch) fill(p *plot) {
 		node[i] = -1
 	}
 	copy(node[3:], f.node)
-	points, triangles := r.order()
-	for _, i := range points {
-		if int(i) >= r.rim {
+	q := r.inspect()
+	if q.thin > 0 {
+		p.wishFor(r.obstacles(), node)
+	}
+	p.b.reserve(len(d.p)-r.rim, q.triangles, 12+len(l.name))
+	for i := r.rim; i < len(d.p); i++ {
+		if r.used[i] {
 			node[i] = p.node(f.lift(d.p[i], height[i]))
 		}
 	}
-	q := r.inspect()
 	h := 0.0
 	for _, z := range f.h {
 		h += z / float64(len(f.h))
 	}
 	quality := Quality{Fabric: l.name, Triangles: q.triangles, Mean: q.mean, Worst: q.worst, LeastAngle: q.angle,
-		Met: q.met, At: f.lift(q.at, h), Why: q.why, Sharp: q.sharp, Corner: -1, CornerAngle: q.cornerAngle}
+		Met: q.met, thin: q.thin, At: f.lift(q.at, h), Why: q.why, Sharp: q.sharp, Corner: -1, CornerAngle: q.cornerAngle}
 	if q.corner >= 0 {
 		quality.Corner = node[q.corner]
 	}
 	p.b.quality = append(p.b.quality, quality)
-	for _, t := range triangles {
-		v := d.v[t]
-		p.tri(node[v[0]], node[v[1]], node[v[2]])
+	for t, in := range r.in {
+		if in {
+			v := d.v[t]
+			p.tri(node[v[0]], node[v[1]], node[v[2]])
+		}
 	}
 }
 

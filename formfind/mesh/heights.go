@@ -32,20 +32,13 @@ func (f *flat) heights(r *refinement) []float64 {
 }
 
 // relaxHeights makes each height from r.rim on the mean of its neighbours', by
-// conjugate gradients.
+// conjugate gradients with a multilevel preconditioner.
 func (r *refinement) relaxHeights(h []float64) {
 	n := len(h) - r.rim
 	if n == 0 {
 		return
 	}
-	start := make([]int32, n+1)
-	var near []int32
-	for i := range n {
-		if p := int32(r.rim + i); r.used[p] {
-			r.d.around(p, func(_, q, _ int32) { near = append(near, q) })
-		}
-		start[i+1] = int32(len(near))
-	}
+	start, near := r.neighbours()
 	apply := func(out, x []float64) (dot float64) {
 		for i := range n {
 			s := float64(start[i+1]-start[i]) * x[i]
@@ -67,22 +60,58 @@ func (r *refinement) relaxHeights(h []float64) {
 				res[i] += h[q]
 			}
 		}
-		dir[i] = res[i]
 		rr += res[i] * res[i]
 	}
+	// The preconditioned residual goes into tmp, which is free then.
+	m := newMultilevel(r, start)
+	rz := m.apply(tmp, res)
+	copy(dir, tmp)
 	for first, step := rr, 0; step < 20*int(math.Sqrt(float64(n)))+50 && rr > 1e-12*first; step++ {
-		alpha := rr / apply(tmp, dir)
-		next := 0.0
+		alpha := rz / apply(tmp, dir)
+		rr = 0
 		for i := range n {
 			x[i] += alpha * dir[i]
 			res[i] -= alpha * tmp[i]
-			next += res[i] * res[i]
+			rr += res[i] * res[i]
 		}
+		next := m.apply(tmp, res)
 		for i := range n {
-			dir[i] = res[i] + next/rr*dir[i]
+			dir[i] = tmp[i] + next/rz*dir[i]
 		}
-		rr = next
+		rz = next
 	}
+}
+
+// neighbours lists the neighbours of the points from r.rim on: those of point
+// r.rim+i are near[start[i]:start[i+1]].
+func (r *refinement) neighbours() (start, near []int32) {
+	n := len(r.d.p) - r.rim
+	start = make([]int32, n+2)
+	for t, in := range r.in {
+		if in {
+			for _, i := range r.d.v[t] {
+				if int(i) >= r.rim {
+					start[int(i)-r.rim+2]++
+				}
+			}
+		}
+	}
+	for i := range n {
+		start[i+2] += start[i+1]
+	}
+	near = make([]int32, start[n+1])
+	for t, in := range r.in {
+		if in {
+			for k, i := range r.d.v[t] {
+				// Around an inner point each neighbour follows it in one triangle.
+				if int(i) >= r.rim {
+					near[start[int(i)-r.rim+1]] = r.d.v[t][(k+1)%3]
+					start[int(i)-r.rim+1]++
+				}
+			}
+		}
+	}
+	return start[:n+1], near
 }
 
 // meanValue returns the height over q.

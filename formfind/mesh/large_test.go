@@ -32,7 +32,7 @@ func TestLargeMeshes(t *testing.T) {
 	count := float64(len(s.Corners))
 	require.InDelta(t, n*n/0.433, count, 0.05*count)
 	t.Logf("%.0f triangles, %.0f bytes allocated a triangle in all", count, float64(after.TotalAlloc-before.TotalAlloc)/count)
-	require.Less(t, float64(after.TotalAlloc-before.TotalAlloc)/count, 1500.0)
+	require.Less(t, float64(after.TotalAlloc-before.TotalAlloc)/count, 400.0)
 	runtime.GC()
 	runtime.ReadMemStats(&after)
 	require.Less(t, float64(after.HeapAlloc)-float64(before.HeapAlloc), 300*count)

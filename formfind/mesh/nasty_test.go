@@ -2,6 +2,7 @@ package mesh
 
 import (
 	"math"
+	"slices"
 	"testing"
 
 	"anticlast/formfind/internal/sweep"
@@ -191,12 +192,63 @@ func simple(f *flat) bool {
 
 const nastyBudget = 3000
 
-// checkNasty refines f and checks everything that must hold of it.
+// checkNasty refines f and checks everything that must hold of it; then it divides
+// the sides in the way of fat triangles, a few times, and does so again.
 func checkNasty(t require.TestingT, f *flat) (v verdict, ok bool) {
+	for range 4 {
+		w, obstacles, sound := checkFilled(t, f)
+		if !sound {
+			return v, ok // rounding may fold what is divided
+		}
+		if v, ok = w, true; len(obstacles) == 0 || len(f.p) > 400 {
+			break
+		}
+		f = f.finer(obstacles)
+	}
+	return v, ok
+}
+
+// finer returns f with the sides in the list divided.
+func (f *flat) finer(list []obstacle) *flat {
+	parts := map[[2]int32]int{}
+	for _, o := range list {
+		parts[[2]int32{o.a - 3, o.b - 3}] = o.parts
+	}
+	g := &flat{p: slices.Clone(f.p), points: f.points, lone: f.lone}
+	divide := func(i, j int) (list []int) {
+		list = []int{i}
+		n := parts[[2]int32{int32(min(i, j)), int32(max(i, j))}]
+		for k := 1; k < n; k++ {
+			s := float64(k) / float64(n)
+			a, b := f.p[i], f.p[j]
+			list = append(list, len(g.p))
+			g.p = append(g.p, xy{a.x + s*(b.x-a.x), a.y + s*(b.y-a.y)})
+		}
+		return list
+	}
+	for _, rim := range f.rims {
+		var r []int
+		for k, i := range rim {
+			r = append(r, divide(i, rim[(k+1)%len(rim)])...)
+		}
+		g.rims = append(g.rims, r)
+	}
+	for _, c := range f.chains {
+		var r []int
+		for k := 1; k < len(c); k++ {
+			r = append(r, divide(c[k-1], c[k])...)
+		}
+		g.chains = append(g.chains, append(r, c[len(c)-1]))
+	}
+	return g
+}
+
+// checkFilled refines f and checks everything that must hold of it.
+func checkFilled(t require.TestingT, f *flat) (v verdict, obstacles []obstacle, ok bool) {
 	d, in, fault := f.outline()
 	if fault != nil {
 		require.False(t, simple(f), "a sound outline was refused: %v", fault)
-		return v, false
+		return v, nil, false
 	}
 	require.True(t, simple(f), "a faulty outline was not refused")
 	want, extent := 0.0, 0.0
@@ -253,7 +305,18 @@ func checkNasty(t require.TestingT, f *flat) (v verdict, ok bool) {
 	} else {
 		require.NotEmpty(t, v.why)
 	}
-	return v, true
+	for _, o := range r.obstacles() {
+		require.Less(t, o.a, o.b)
+		require.Less(t, int(o.b), r.rim)
+		require.GreaterOrEqual(t, o.parts, 2)
+		require.LessOrEqual(t, o.parts, narrowParts)
+		held(int(o.a)-3, int(o.b)-3)
+		obstacles = append(obstacles, o)
+	}
+	if v.thin == 0 && !r.full {
+		require.Empty(t, obstacles)
+	}
+	return v, obstacles, true
 }
 
 func triangleArea(d *delaunay, t int) float64 {

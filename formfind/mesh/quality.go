@@ -35,6 +35,8 @@ type Quality struct {
 	Sharp       int
 	Corner      int32
 	CornerAngle float64
+
+	thin int // triangles below the bound, but for those in sharp corners
 }
 
 // verdict is what inspect finds out about a refined triangulation.
@@ -43,6 +45,7 @@ type verdict struct {
 	mean, worst float64
 	angle       float64 // least of all
 	met         bool
+	thin        int
 	at          xy
 	why         string
 	sharp       int
@@ -65,7 +68,11 @@ func (r *refinement) inspect() verdict {
 		v.triangles++
 		v.mean += ratio
 		v.worst, v.angle = min(v.worst, ratio), min(v.angle, angle)
-		if angle >= thinnest || r.within(sharp, c) {
+		if angle >= AngleBound || r.within(sharp, c) {
+			continue
+		}
+		v.thin++
+		if angle >= thinnest {
 			continue
 		}
 		thinnest = angle
@@ -89,7 +96,7 @@ func (r *refinement) inspect() verdict {
 	}
 	v.mean /= max(1, float64(v.triangles))
 	if r.full {
-		v.met = false
+		v.met, v.thin = false, 0
 		v.why = "the greatest number of triangles was reached; a coarser mesh would be filled"
 	}
 	return v

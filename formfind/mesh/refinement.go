@@ -15,7 +15,7 @@ type refinement struct {
 	rim  int       // points of the outline and far corners
 	used []bool    // per point: corner of a triangle inside
 	good []bool    // per triangle: small enough to be left behind the front
-	heap badHeap
+	todo badQueue
 	full bool // the budget ended it
 }
 
@@ -32,64 +32,52 @@ const (
 	apart = 0.5
 )
 
-// bad is a triangle to be split. Its key is of single precision and ties are
-// broken by its corners, so that rounding does not decide what comes first.
+// bad is a triangle to be split, known by its corners: it is gone when they are
+// no longer its own.
 type bad struct {
-	key float32
-	t   int32
-	v   [3]int32
+	t int32
+	v [3]int32
 }
 
-func (x bad) before(y bad) bool {
-	if x.key != y.key {
-		return x.key > y.key
+// badQueue gives out the largest triangles first, in steps of a 32nd of an
+// octave of the circumradius, and within a step those first that came first: fronts
+// advance evenly, and rounding hardly ever decides what comes first.
+type badQueue struct {
+	step [1024]struct {
+		list []bad
+		next int
 	}
-	return slices.Compare(x.v[:], y.v[:]) < 0
+	top int // highest step with something in it
+	len int
 }
 
-// badHeap is a binary heap, the worst triangle first.
-type badHeap []bad
-
-func (h *badHeap) push(x bad) {
-	a := append(*h, x)
-	i := len(a) - 1
-	for i > 0 {
-		up := (i - 1) / 2
-		if !x.before(a[up]) {
-			break
-		}
-		a[i] = a[up]
-		i = up
+// push adds triangle t of the given circumradius over wanted side.
+func (q *badQueue) push(radius float64, x bad) {
+	// 0.0171 keeps sizes that are likely off the limits of a step.
+	k := min(max(int(32*math.Log2(radius)+81.0171), 0), len(q.step)-1)
+	s := &q.step[k]
+	if len(s.list) == cap(s.list) && s.next > len(s.list)/2 {
+		s.list = s.list[:copy(s.list, s.list[s.next:])]
+		s.next = 0
 	}
-	a[i] = x
-	*h = a
+	s.list = append(s.list, x)
+	q.top = max(q.top, k)
+	q.len++
 }
 
-func (h *badHeap) pop() bad {
-	a := *h
-	top, x := a[0], a[len(a)-1]
-	a = a[:len(a)-1]
-	*h = a
-	if len(a) == 0 {
-		return top
+// pop removes the first; there must be one.
+func (q *badQueue) pop() bad {
+	for q.step[q.top].next == len(q.step[q.top].list) {
+		q.top--
 	}
-	i := 0
-	for {
-		down := 2*i + 1
-		if down >= len(a) {
-			break
-		}
-		if down+1 < len(a) && a[down+1].before(a[down]) {
-			down++
-		}
-		if !a[down].before(x) {
-			break
-		}
-		a[i] = a[down]
-		i = down
+	s := &q.step[q.top]
+	x := s.list[s.next]
+	s.next++
+	q.len--
+	if s.next == len(s.list) {
+		s.list, s.next = s.list[:0], 0
 	}
-	a[i] = x
-	return top
+	return x
 }
 
 // circumcentre returns the centre and radius of the circle through a, b, c and
@@ -115,10 +103,38 @@ func finite(q xy) bool { return !math.IsNaN(q.x-q.x) && !math.IsNaN(q.y-q.y) }
 // equilateral triangles. Where fronts have met, circumcentres do the rest
 // (Chew 1989, Ruppert 1995).
 func (r *refinement) run(budget int) {
+	r.reserve(min(r.expected(), budget/2))
 	r.advance(budget)
 	r.improve(budget)
+	r.good = nil
+	r.arrange()
 	r.smooth(4)
 	r.mark()
+}
+
+// expected is about how many points will be added if all triangles become as
+// large as they may.
+func (r *refinement) expected() int {
+	area := 0.0
+	for t, in := range r.in {
+		if in {
+			v := r.d.v[t]
+			a, b, c := r.d.p[v[0]], r.d.p[v[1]], r.d.p[v[2]]
+			area += (b.x-a.x)*(c.y-a.y) - (b.y-a.y)*(c.x-a.x)
+		}
+	}
+	// Two triangles a point; equilateral ones have √3/4·most².
+	return int(1.02 * min(area/2/(r.most*r.most*math.Sqrt(3)/2), MaxTriangles))
+}
+
+// reserve makes room for n more points and the triangles that come with them.
+// Room that doubles costs less than room that grows by a quarter.
+func (r *refinement) reserve(n int) {
+	d := r.d
+	n += 8
+	d.p, d.at, r.size = slices.Grow(d.p, n), slices.Grow(d.at, n), slices.Grow(r.size, n)
+	d.v, d.n, d.held = slices.Grow(d.v, 2*n), slices.Grow(d.n, 2*n), slices.Grow(d.held, 2*n)
+	r.in, r.good = slices.Grow(r.in, 2*n), slices.Grow(r.good, 2*n)
 }
 
 // shape returns the circumradius of t over the wanted side, and whether t is
@@ -137,7 +153,7 @@ func (r *refinement) shape(t int32) (o xy, radius float64, small, thick bool) {
 // advance puts points in front of sides of the outline and of good triangles.
 func (r *refinement) advance(budget int) {
 	d := r.d
-	r.good = make([]bool, len(d.v), 2*len(d.v))
+	r.good = append(r.good, make([]bool, len(d.v))...)
 	for t := range d.v {
 		if r.in[t] {
 			_, _, r.good[t], _ = r.shape(int32(t))
@@ -146,8 +162,8 @@ func (r *refinement) advance(budget int) {
 	for t := range d.v {
 		r.front(int32(t))
 	}
-	for len(r.heap) > 0 && !r.spent(budget) {
-		x := r.heap.pop()
+	for r.todo.len > 0 && !r.spent(budget) {
+		x := r.todo.pop()
 		if d.v[x.t] != x.v || r.good[x.t] {
 			continue
 		}
@@ -176,7 +192,7 @@ func (r *refinement) advance(budget int) {
 			}
 		})
 	}
-	r.heap = r.heap[:0]
+	r.todo = badQueue{}
 }
 
 // open reports whether side i of t is one that the front starts from.
@@ -192,7 +208,7 @@ func (r *refinement) front(t int32) {
 	for i := range 3 {
 		if r.open(t, i) {
 			_, radius, _, _ := r.shape(t)
-			r.heap.push(bad{float32(radius), t, r.d.v[t]})
+			r.todo.push(radius, bad{t, r.d.v[t]})
 			return
 		}
 	}
@@ -237,8 +253,8 @@ func (r *refinement) improve(budget int) {
 	for t := range r.d.v {
 		r.look(int32(t))
 	}
-	for len(r.heap) > 0 && !r.spent(budget) {
-		x := r.heap.pop()
+	for r.todo.len > 0 && !r.spent(budget) {
+		x := r.todo.pop()
 		if r.d.v[x.t] != x.v {
 			continue
 		}
@@ -254,7 +270,7 @@ func (r *refinement) improve(budget int) {
 			r.d.around(i, func(t, _, _ int32) { r.look(t) })
 		}
 	}
-	r.heap = r.heap[:0]
+	r.todo = badQueue{}
 }
 
 // look puts a triangle on the list if it is not good enough.
@@ -263,7 +279,7 @@ func (r *refinement) look(t int32) {
 		return
 	}
 	if _, radius, small, thick := r.shape(t); !small || !thick {
-		r.heap.push(bad{float32(radius), t, r.d.v[t]})
+		r.todo.push(radius, bad{t, r.d.v[t]})
 	}
 }
 
@@ -319,6 +335,9 @@ func (r *refinement) insert(o xy, t int32, side int) (int32, bool) {
 	for _, i := range d.v[t] {
 		x, y := d.p[i].x-o.x, d.p[i].y-o.y
 		want = min(want, r.size[i]+growth*math.Sqrt(x*x+y*y))
+	}
+	if n := len(d.p); n == cap(d.p) || len(d.v)+2 > cap(d.v) {
+		r.reserve(n)
 	}
 	i := d.insert(o, t, side)
 	r.size = append(r.size, want)

@@ -58,7 +58,7 @@ func (b *builder) sagVector(i int) r3.Vec {
 // expectedSag estimates the sag of a rim cable over its chord c.
 func (b *builder) expectedSag(i int, l *loop, c float64) float64 {
 	f := b.m.Fabrics[l.index]
-	return b.cableSag(i, (f.Warp+f.Weft)/2, c/float64(b.count[i]))
+	return b.cableSag(i, (f.Warp+f.Weft)/2, c/float64(b.asked[i]))
 }
 
 // cableSag estimates the sag over its chord of the cable along edge i where it

@@ -29,9 +29,9 @@ func (r *refinement) smooth(rounds int) {
 	}
 }
 
-// poor is the squared sine of 43°: where the least angle is smaller, more places
+// poor is the squared sine of 46°: where the least angle is smaller, more places
 // are tried than the mean of the neighbours.
-const poor = 0.465
+const poor = 0.52
 
 // search looks around q for the place with the largest least angle, ever closer.
 func search(ring []xy, q xy, best float64) xy {
