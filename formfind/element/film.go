@@ -22,28 +22,39 @@ type Triangle struct {
 // are on one line (area below 1e-14 of the longest edge squared, the rounding
 // of its computation) or not finite.
 func NewTriangle(x0, x1, x2 r3.Vec) (t Triangle, ok bool) {
-	t.Edge = [3]r3.Vec{r3.Sub(x2, x1), r3.Sub(x0, x2), r3.Sub(x1, x0)}
-	l0, l1, l2 := norm2(t.Edge[0]), norm2(t.Edge[1]), norm2(t.Edge[2])
+	ok = t.Span(&x0, &x1, &x2)
+	return t, ok
+}
+
+// Span is NewTriangle in place, for loops over many triangles.
+func (t *Triangle) Span(x0, x1, x2 *r3.Vec) (ok bool) {
+	e0 := r3.Vec{X: x2.X - x1.X, Y: x2.Y - x1.Y, Z: x2.Z - x1.Z}
+	e1 := r3.Vec{X: x0.X - x2.X, Y: x0.Y - x2.Y, Z: x0.Z - x2.Z}
+	e2 := r3.Vec{X: x1.X - x0.X, Y: x1.Y - x0.Y, Z: x1.Z - x0.Z}
+	l0, l1, l2 := norm2(e0), norm2(e1), norm2(e2)
 	// The product of the two shorter edges loses least on needles.
 	var a r3.Vec
 	longest := l0
 	switch {
 	case l0 >= l1 && l0 >= l2:
-		a = r3.Cross(t.Edge[1], t.Edge[2])
+		a = r3.Cross(e1, e2)
 	case l1 >= l2:
 		longest = l1
-		a = r3.Cross(t.Edge[2], t.Edge[0])
+		a = r3.Cross(e2, e0)
 	default:
 		longest = l2
-		a = r3.Cross(t.Edge[0], t.Edge[1])
+		a = r3.Cross(e0, e1)
 	}
+	t.Edge[0], t.Edge[1], t.Edge[2] = e0, e1, e2
 	twice := math.Sqrt(norm2(a))
 	t.Area = 0.5 * twice
 	if !(t.Area > 1e-14*longest) || math.IsInf(t.Area, 1) {
-		return t, false
+		t.Normal = r3.Vec{}
+		return false
 	}
-	t.Normal = r3.Scale(1/twice, a)
-	return t, true
+	f := 1 / twice
+	t.Normal = r3.Vec{X: f * a.X, Y: f * a.Y, Z: f * a.Z}
+	return true
 }
 
 // Altitude returns ½·n × eᵢ, the gradient of the area by the place of node i:

@@ -25,6 +25,7 @@ type spread struct {
 	factor   *sparse.Factor
 	values   []float64
 	inner    []int32 // edges between two unknowns
+	rim      []int32 // edges between an unknown and a given node
 	x        []float64
 	weights  []float64
 }
@@ -44,6 +45,8 @@ func newSpread(ctx context.Context, n int, edges [][2]int32, unknown func(i int3
 		if i, j := p.unknown[e[0]], p.unknown[e[1]]; i >= 0 && j >= 0 {
 			pairs = append(pairs, [2]int32{i, j})
 			p.inner = append(p.inner, int32(k))
+		} else if i >= 0 || j >= 0 {
+			p.rim = append(p.rim, int32(k))
 		}
 	}
 	var err error
@@ -100,12 +103,12 @@ func (p *spread) solve(move []r3.Vec) error {
 	for i := range p.x {
 		p.x[i] = 0
 	}
-	for k, e := range p.edges {
-		f := p.weight(k)
+	for _, k := range p.rim {
+		e, f := p.edges[k], p.weight(int(k))
 		for side := range 2 {
 			u := p.unknown[e[side]]
 			o := e[1-side]
-			if u < 0 || p.unknown[o] >= 0 {
+			if u < 0 {
 				continue
 			}
 			p.x[3*u] += f * move[o].X

@@ -107,15 +107,15 @@ func (v *Solver) evaluate(st *state) {
 			}
 		}
 	}
+	var tri element.Triangle
 	for k, c := range s.Corners {
-		tri, ok := element.NewTriangle(at[c[0]], at[c[1]], at[c[2]])
+		ok := tri.Span(&at[c[0]], &at[c[1]], &at[c[2]])
 		if !ok || tri.Area < collapsed*v.areaStart[k] {
 			st.collapse = int32(k)
 			if !ok {
 				continue
 			}
 		}
-		a := r3.Scale(tri.Area, tri.Normal)
 		fabric := &s.Fabrics[s.FabricOf[k]]
 		stress, weftStress := v.stressOf(k)
 		var f [3]r3.Vec
@@ -131,10 +131,11 @@ func (v *Solver) evaluate(st *state) {
 			stress = 0.5 * (stress + weftStress)
 		}
 		energy += stress * tri.Area
+		a, half := r3.Scale(tri.Area, tri.Normal), 0.5*stress
 		for j, i := range c {
-			v.normalSum[i] = r3.Add(v.normalSum[i], a)
-			st.pull[i] = r3.Add(st.pull[i], f[j])
-			st.size[i] += 0.5 * stress * norm(tri.Edge[j])
+			add(&v.normalSum[i], &a)
+			add(&st.pull[i], &f[j])
+			st.size[i] += half * norm(tri.Edge[j])
 		}
 		if pressure := v.pressureOn(st, s.FabricOf[k]); pressure != 0 {
 			p := tri.PressurePush(pressure)
@@ -225,6 +226,12 @@ func (v *Solver) evaluate(st *state) {
 	}
 }
 
+func add(to, v *r3.Vec) {
+	to.X += v.X
+	to.Y += v.Y
+	to.Z += v.Z
+}
+
 func ratio(a, b float64) float64 {
 	if a == 0 {
 		return 0
@@ -258,12 +265,12 @@ func (v *Solver) assemble(st *state) {
 		k.Scale(-1)
 		v.addPair(st, i, j, &k, p.member[m])
 	}
+	var tri element.Triangle
 	for t, c := range s.Corners {
 		if v.first[c[0]] < 0 && v.first[c[1]] < 0 && v.first[c[2]] < 0 {
 			continue
 		}
-		tri, ok := element.NewTriangle(at[c[0]], at[c[1]], at[c[2]])
-		if !ok {
+		if !tri.Span(&at[c[0]], &at[c[1]], &at[c[2]]) {
 			continue
 		}
 		v.addFilm(st, t, &tri, p.triangle[t])
@@ -373,6 +380,10 @@ func (v *Solver) addFilm(st *state, t int, tri *element.Triangle, slots [3]int32
 		}
 		stress = 0.5 * (stress + weftStress)
 	}
+	if pressure == 0 && v.cls[c[0]] == normal && v.cls[c[1]] == normal && v.cls[c[2]] == normal {
+		v.addInner(st, c, n, -0.5*stress, &same, &next, slots)
+		return
+	}
 	for k, i := range c {
 		fi := v.first[i]
 		if fi < 0 {
@@ -407,5 +418,20 @@ func (v *Solver) addFilm(st *state, t int, tri *element.Triangle, slots [3]int32
 				v.put(i, j, a, b, len(bi), len(bj), slot, wb*r3.Dot(n, bi[a])+r3.Dot(bi[a], q))
 			}
 		}
+	}
+}
+
+// addInner is addFilm for three nodes that have their normals only: most of them.
+func (v *Solver) addInner(st *state, c [3]int32, n r3.Vec, turn float64, same, next *[3]float64, slots [3]int32) {
+	var b [3]*r3.Vec
+	var along [3]float64
+	for k, i := range c {
+		b[k] = &st.basis[v.start[i]]
+		along[k] = r3.Dot(n, *b[k])
+		v.values[v.first[i]] += same[k] * along[k] * along[k]
+	}
+	for k := range 3 {
+		l := (k + 1) % 3
+		v.values[slots[k]] += next[k]*along[k]*along[l] + turn*r3.Dot(*b[k], r3.Cross(n, *b[l]))
 	}
 }
