@@ -561,50 +561,57 @@ func (c *chain) finish(ctx context.Context) error {
 			return err
 		}
 	}
-	if len(s.Enclosures) > 0 {
-		return c.finishVolumes(ctx)
-	}
 	found := c.f
 	c.o.begin("balance")
 	c.stage("natural force density", "final pass")
-	ref := c.f.Position
-	steady := steadyLoads(s)
+	ref := found.Position
 	members := given(s, found.Force)
-	for pass := 1; ; pass++ {
-		net, panels := network(s, load.Nodal(s, c.f.Position))
-		for t := range panels {
-			// Of unequal warp and weft only the ratio is what was asked for;
-			// the magnitude is what Newton fitted.
-			n := s.Corners[t]
-			panels[t].Warp = s.WarpAt(t, ref[n[0]], ref[n[1]], ref[n[2]])
-			panels[t].WarpStress, panels[t].WeftStress = found.Stress[t].Warp, found.Stress[t].Weft
-		}
-		solver, err := fdm.New(ctx, net, panels)
-		if err != nil {
-			return c.unsupported(err)
-		}
-		r, err := solver.Natural(ctx, ref, members, 1)
-		if err != nil {
-			return c.unsupported(err)
-		}
-		move := 0.0
-		for i := range r.Position {
-			move = math.Max(move, r3.Norm(r3.Sub(r.Position[i], c.f.Position[i])))
-		}
-		c.f = naturalForm(s, r)
-		c.f.Converged = true
-		// Loads that follow the shape are those of the last pass: repeat until
-		// that no longer matters.
-		if steady || move <= 1e-13*s.Size() || pass == maxPasses {
-			c.used("natural force density")
-			c.say("fixed-reference pass: exact balance in all directions, residual %.1e", r.Residual)
-			return nil
-		}
+	net, panels := network(s, nil)
+	for t := range panels {
+		// Of unequal warp and weft only the ratio is what was asked for;
+		// the magnitude is what Newton fitted.
+		n := s.Corners[t]
+		panels[t].Warp = s.WarpAt(t, ref[n[0]], ref[n[1]], ref[n[2]])
+		panels[t].WarpStress, panels[t].WeftStress = found.Stress[t].Warp, found.Stress[t].Weft
 	}
+	solver, err := fdm.New(ctx, net, panels)
+	if err != nil {
+		return c.unsupported(err)
+	}
+	var r fdm.NaturalResult
+	loadsAt := func(x []r3.Vec, p []float64) []r3.Vec {
+		return load.Nodal(s.Carrying(&canopy.Form{Pressure: p}), x)
+	}
+	rest := func(loads []r3.Vec) ([]r3.Vec, error) {
+		if err := solver.SetLoad(loads); err != nil {
+			return nil, fmt.Errorf("loads: %w", err)
+		}
+		var err error
+		if r, err = solver.Natural(ctx, ref, members, 1); err != nil {
+			return nil, c.unsupported(err)
+		}
+		return r.Position, nil
+	}
+	pressure := found.Pressure
+	if steadyLoads(s) {
+		_, err = rest(loadsAt(ref, nil))
+	} else {
+		pressure, err = followLoads(ctx, s, ref, pressure, loadsAt, rest)
+	}
+	if err != nil {
+		return err
+	}
+	c.f = naturalForm(s, r)
+	copy(c.f.Pressure, pressure)
+	c.f.Converged = true
+	c.used("natural force density")
+	with := ""
+	if len(s.Enclosures) > 0 {
+		with = " with the volume asked for"
+	}
+	c.say("fixed-reference pass: exact balance in all directions%s, residual %.1e", with, r.Residual)
+	return nil
 }
-
-// maxPasses bounds the passes of finish where loads follow the shape.
-const maxPasses = 200
 
 func equalStress(s *canopy.Structure) bool {
 	for _, st := range s.Stress {

@@ -155,17 +155,10 @@ func (c *chain) settle(ctx context.Context) (bool, error) {
 	}
 	pressure := found.Pressure
 	var err error
-	if len(s.Enclosures) > 0 {
-		pressure, err = holdVolumes(ctx, s, ref, pressure, loadsAt, rest)
-	}
-	for pass := 1; err == nil && len(s.Enclosures) == 0; pass++ {
-		before := start.Position
-		if _, err = rest(loadsAt(before, nil)); err != nil {
-			break
-		}
-		if steadyLoads(s) || largestMove(start.Position, before) <= 1e-13*s.Size() || pass == maxPasses {
-			break
-		}
+	if steadyLoads(s) {
+		_, err = rest(loadsAt(ref, nil))
+	} else {
+		pressure, err = followLoads(ctx, s, ref, pressure, loadsAt, rest)
 	}
 	if err != nil {
 		if errors.Is(err, stuck) {

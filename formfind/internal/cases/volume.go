@@ -41,11 +41,10 @@ func VolumeCap(a, volume, stress float64, rows int) Case {
 	c.S.Enclosures = []canopy.Enclosure{e}
 	mid := r3.Vec{Z: h - radius}
 	c.Distance = func(q r3.Vec) float64 {
-		d := r3.Norm(r3.Sub(q, mid)) - radius
-		if h < 0 {
-			d = r3.Norm(r3.Sub(q, mid)) + radius
+		if h == 0 {
+			return q.Z
 		}
-		return d
+		return r3.Norm(r3.Sub(q, mid)) - math.Abs(radius)
 	}
 	// Bipolar coordinates about the ring: on a circle through it every point is
 	// given by the logarithm τ of the ratio of its distances from the ring's two

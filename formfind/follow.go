@@ -8,9 +8,7 @@ import (
 	"gonum.org/v1/gonum/mat"
 	"gonum.org/v1/gonum/spatial/r3"
 
-	"anticlast/fdm"
 	"anticlast/formfind/canopy"
-	"anticlast/formfind/load"
 )
 
 // enclosed is the volume that the fabrics of e enclose at x, m³.
@@ -32,9 +30,12 @@ func enclosed(s *canopy.Structure, e *canopy.Enclosure, x []r3.Vec) float64 {
 	return sum / 6
 }
 
-// holdVolumes finds positions and pressures at which a structure whose forces
-// follow from its loads is at rest under the pressures on its fabrics as they
-// then stand, with the volumes that are wanted.
+// maxPasses bounds the passes of followLoads.
+const maxPasses = 200
+
+// followLoads finds where a structure is at rest under loads that depend on the
+// shape, weights and pressures, and the pressures of its air at which it encloses
+// the volumes that are wanted.
 //
 // solve returns where the structure rests under given loads, loadsAt the loads
 // of a shape with given pressures. Both together make a fixed-point iteration,
@@ -45,7 +46,7 @@ func enclosed(s *canopy.Structure, e *canopy.Enclosure, x []r3.Vec) float64 {
 // directions matter.
 //
 // It returns the pressures that belong to the last call of solve.
-func holdVolumes(ctx context.Context, s *canopy.Structure, x []r3.Vec, p []float64,
+func followLoads(ctx context.Context, s *canopy.Structure, x []r3.Vec, p []float64,
 	loadsAt func(x []r3.Vec, p []float64) []r3.Vec,
 	solve func(loads []r3.Vec) ([]r3.Vec, error),
 ) ([]float64, error) {
@@ -59,28 +60,29 @@ func holdVolumes(ctx context.Context, s *canopy.Structure, x []r3.Vec, p []float
 	}
 	size := s.Size()
 	unit := pressureUnit(s, size)
-	// How volumes answer to pressures.
-	at, err := solve(loadsAt(x, p))
-	if err != nil {
-		return nil, err
-	}
-	v0 := volumes(at)
-	response := mat.NewDense(m, m, nil)
-	for j := range p {
-		d := 1e-3 * max(math.Abs(p[j]), unit)
-		q := append([]float64(nil), p...)
-		q[j] += d
-		y, err := solve(loadsAt(x, q))
+	var inverse mat.Dense
+	if m > 0 { // how pressures answer to volumes
+		at, err := solve(loadsAt(x, p))
 		if err != nil {
 			return nil, err
 		}
-		for i, v := range volumes(y) {
-			response.Set(i, j, (v-v0[i])/d)
+		v0 := volumes(at)
+		response := mat.NewDense(m, m, nil)
+		for j := range p {
+			d := 1e-3 * max(math.Abs(p[j]), unit)
+			q := append([]float64(nil), p...)
+			q[j] += d
+			y, err := solve(loadsAt(x, q))
+			if err != nil {
+				return nil, err
+			}
+			for i, v := range volumes(y) {
+				response.Set(i, j, (v-v0[i])/d)
+			}
 		}
-	}
-	var inverse mat.Dense
-	if err := inverse.Inverse(response); err != nil {
-		return nil, fmt.Errorf("the pressure of a volume cannot be found: nothing in the shape answers to it")
+		if err := inverse.Inverse(response); err != nil {
+			return nil, fmt.Errorf("the pressure of a volume cannot be found: nothing in the shape answers to it")
+		}
 	}
 	n := len(x)
 	toMetres := size / unit // pressures as lengths, for mixing
@@ -111,7 +113,8 @@ func holdVolumes(ctx context.Context, s *canopy.Structure, x []r3.Vec, p []float
 		if err := ctx.Err(); err != nil {
 			return nil, err
 		}
-		if at, err = solve(loadsAt(x, p)); err != nil {
+		at, err := solve(loadsAt(x, p))
+		if err != nil {
 			return nil, err
 		}
 		off := 0.0
@@ -150,46 +153,4 @@ func pressureUnit(s *canopy.Structure, size float64) float64 {
 		return 1
 	}
 	return max(sum/float64(2*len(s.Stress))/size, math.SmallestNonzeroFloat64)
-}
-
-// finishVolumes is finish for structures with air of given volume: the pressure
-// is found anew for the shape that balances in all directions, so that it
-// encloses what is wanted to the last digits.
-func (c *chain) finishVolumes(ctx context.Context) error {
-	s, found := c.s, c.f
-	c.o.begin("balance")
-	c.stage("natural force density", "final pass")
-	net, panels := network(s, nil)
-	for t := range panels {
-		panels[t].WarpStress, panels[t].WeftStress = found.Stress[t].Warp, found.Stress[t].Weft
-	}
-	solver, err := fdm.New(ctx, net, panels)
-	if err != nil {
-		return c.unsupported(err)
-	}
-	members := given(s, found.Force)
-	var r fdm.NaturalResult
-	p, err := holdVolumes(ctx, s, found.Position, found.Pressure,
-		func(x []r3.Vec, p []float64) []r3.Vec {
-			return load.Nodal(s.Carrying(&canopy.Form{Pressure: p}), x)
-		},
-		func(loads []r3.Vec) ([]r3.Vec, error) {
-			if err := solver.SetLoad(loads); err != nil {
-				return nil, fmt.Errorf("loads: %w", err)
-			}
-			var err error
-			if r, err = solver.Natural(ctx, found.Position, members, 1); err != nil {
-				return nil, c.unsupported(err)
-			}
-			return r.Position, nil
-		})
-	if err != nil {
-		return err
-	}
-	c.f = naturalForm(s, r)
-	c.f.Pressure = p
-	c.f.Converged = true
-	c.used("natural force density")
-	c.say("fixed-reference pass: exact balance in all directions with the volume asked for, residual %.1e", r.Residual)
-	return nil
 }
