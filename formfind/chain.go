@@ -88,7 +88,7 @@ func (c *chain) net(ctx context.Context) error {
 	} else if err := c.aim(ctx, q); err != nil {
 		return err
 	}
-	return c.iterate(ctx, true, func(context.Context) error { return nil })
+	return c.iterate(ctx, true, []start{func(context.Context) error { return nil }}, nil)
 }
 
 // aim improves the start of a net by a few linear steps whose force densities
@@ -245,13 +245,22 @@ func (c *chain) newton(ctx context.Context, all bool) (why string, err error) {
 	return "", nil
 }
 
-// iterate runs Newton from one start after the other, and relaxation where
-// Newton does not get there.
-func (c *chain) iterate(ctx context.Context, all bool, starts ...func(context.Context) error) error {
+// start puts a shape to begin with into the chain.
+type start = func(context.Context) error
+
+// iterate runs Newton from one start after the other, then from those that more
+// returns, and relaxation where Newton does not get there.
+func (c *chain) iterate(ctx context.Context, all bool, starts []start, more func() []start) error {
 	first := ""
 	var best candidate
-	for _, start := range starts {
-		err := start(ctx)
+	for k := 0; ; k++ {
+		if k == len(starts) && more != nil {
+			starts, more = append(starts, more()...), nil
+		}
+		if k == len(starts) {
+			break
+		}
+		err := starts[k](ctx)
 		var collapsed *fdm.ReferenceError
 		if errors.As(err, &collapsed) {
 			c.say("that start collapsed: %v", collapsed)
@@ -367,15 +376,21 @@ func (c *chain) fabric(ctx context.Context) error {
 		elastic = elastic || s.Fabrics[i].Elastic
 	}
 	force := guessForces(s, s.Position)
-	var starts []func(context.Context) error
+	var starts []start
 	if c.o.Warm != nil && len(c.o.Warm.Position) == len(s.Position) {
 		starts = append(starts, func(context.Context) error { c.f = c.warmStart(); return nil })
 	}
-	for _, n := range c.naturalStarts() {
-		starts = append(starts, func(ctx context.Context) error { return c.natural(ctx, force, n) })
+	more := func() (out []start) {
+		for _, n := range c.naturalStarts() {
+			out = append(out, func(ctx context.Context) error { return c.natural(ctx, force, n) })
+		}
+		return out
 	}
 	if elastic {
 		// Newton's tangent is that of prescribed stress.
+		if len(starts) == 0 {
+			starts = more()
+		}
 		if err := starts[0](ctx); err != nil {
 			return err
 		}
@@ -387,7 +402,7 @@ func (c *chain) fabric(ctx context.Context) error {
 		}
 	}
 	equal := equalStress(s)
-	err := c.iterate(ctx, false, starts...)
+	err := c.iterate(ctx, false, starts, more)
 	var none *NoEquilibriumError
 	switch {
 	case err == nil:

@@ -28,7 +28,7 @@ func soundMesh(s *canopy.Structure) bool {
 		for k := range c {
 			p := s.Position[c[k]]
 			u, v := r3.Sub(s.Position[c[(k+1)%3]], p), r3.Sub(s.Position[c[(k+2)%3]], p)
-			if d := r3.Dot(u, v); d > 0 && r3.Norm(r3.Cross(u, v)) < thin*d {
+			if d := r3.Dot(u, v); d > 0 && r3.Norm2(r3.Cross(u, v)) < thin*thin*d*d {
 				return false
 			}
 		}
@@ -45,7 +45,7 @@ func smallestAngle(x []r3.Vec, corners [][3]int32) float64 {
 			p := x[c[k]]
 			u, v := r3.Sub(x[c[(k+1)%3]], p), r3.Sub(x[c[(k+2)%3]], p)
 			if k == 0 {
-				area = r3.Norm(r3.Cross(u, v))
+				area = length(r3.Cross(u, v))
 			}
 			if area == 0 {
 				return 0
@@ -100,16 +100,16 @@ func startNetwork(s *canopy.Structure, loads []r3.Vec) (fdm.Network, []fdm.Panel
 // given, or what would hold a cable's sag against what pulls at it.
 func guessForces(s *canopy.Structure, x []r3.Vec) []float64 {
 	force := make([]float64, len(s.Ends))
-	length := func(k int32) float64 { return r3.Norm(r3.Sub(x[s.Ends[k][1]], x[s.Ends[k][0]])) }
+	span := func(k int32) float64 { return length(r3.Sub(x[s.Ends[k][1]], x[s.Ends[k][0]])) }
 	for k := range force {
 		switch s.Law[k] {
 		case canopy.LawForceDensity:
-			force[k] = s.Given[k] * length(int32(k))
+			force[k] = s.Given[k] * span(int32(k))
 		case canopy.LawForce, canopy.LawCable:
 			force[k] = s.Given[k]
 		case canopy.LawElastic:
 			ea, l0 := s.Stiffness[k], s.Unstressed[k]
-			force[k] = ea * (length(int32(k)) - l0) / l0
+			force[k] = ea * (span(int32(k)) - l0) / l0
 			if !s.Kind[k].Pushes() {
 				// A cable that starts slack still has to hold its place in
 				// the first, linear step.

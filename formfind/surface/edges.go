@@ -13,46 +13,55 @@ type Edge struct {
 }
 
 // Edges returns the sides of the triangles, each once, ordered by their nodes.
-// Cost O(T log T).
+// Cost O(T) where few triangles meet at a node.
 func Edges(corners [][3]int32) []Edge {
-	type half struct {
-		key uint64
-		tri int32
+	n := int32(0)
+	for _, c := range corners {
+		n = max(n, c[0]+1, c[1]+1, c[2]+1)
 	}
-	halves := make([]half, 0, 3*len(corners))
+	// Sides by their lower node.
+	ptr := make([]int32, n+1)
+	for _, c := range corners {
+		for k := range 3 {
+			ptr[min(c[k], c[(k+1)%3])+1]++
+		}
+	}
+	for i := range n {
+		ptr[i+1] += ptr[i]
+	}
+	end := make([]int32, n)
+	copy(end, ptr)
+	type half struct{ far, tri int32 }
+	halves := make([]half, ptr[n])
 	for t, c := range corners {
 		for k := range 3 {
-			a, b := c[k], c[(k+1)%3]
-			if a > b {
-				a, b = b, a
-			}
-			halves = append(halves, half{uint64(uint32(a))<<32 | uint64(uint32(b)), int32(t)})
+			i, j := c[k], c[(k+1)%3]
+			i, j = min(i, j), max(i, j)
+			halves[end[i]] = half{j, int32(t)}
+			end[i]++
 		}
 	}
-	slices.SortFunc(halves, func(x, y half) int {
-		switch {
-		case x.key < y.key:
-			return -1
-		case x.key > y.key:
-			return 1
-		}
-		return int(x.tri) - int(y.tri)
-	})
 	out := make([]Edge, 0, len(halves)/2+8)
-	for i := 0; i < len(halves); {
-		j := i + 1
-		for j < len(halves) && halves[j].key == halves[i].key {
-			j++
+	for i := range n {
+		list := halves[ptr[i]:ptr[i+1]]
+		slices.SortFunc(list, func(x, y half) int {
+			if x.far != y.far {
+				return int(x.far) - int(y.far)
+			}
+			return int(x.tri) - int(y.tri)
+		})
+		for len(list) > 0 {
+			k := 1
+			for k < len(list) && list[k].far == list[0].far {
+				k++
+			}
+			e := Edge{Nodes: [2]int32{i, list[0].far}, Triangles: k, First: list[0].tri, Second: -1}
+			if k > 1 {
+				e.Second = list[1].tri
+			}
+			out = append(out, e)
+			list = list[k:]
 		}
-		e := Edge{
-			Nodes:     [2]int32{int32(halves[i].key >> 32), int32(halves[i].key & 0xffffffff)},
-			Triangles: j - i, First: halves[i].tri, Second: -1,
-		}
-		if j-i > 1 {
-			e.Second = halves[i+1].tri
-		}
-		out = append(out, e)
-		i = j
 	}
 	return out
 }
