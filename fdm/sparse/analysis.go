@@ -162,7 +162,7 @@ func renumber(parent, post []int32, mem *pool) {
 // arithmetic. Fitted roughly to one machine; only the balance matters.
 func frontCost(cols, below int32) float64 {
 	c, b := float64(cols), float64(below)
-	return 200 + 6*(c+b) + 1.0*c*(c+b) + 0.4*b*b + 0.08*frontFlops(c, b)
+	return 200 + 6*(c+b) + 2.0*c*(c+b) + 0.4*b*b + 0.08*frontFlops(c, b)
 }
 
 // joinColumns finds the supernodes: runs of columns with one structure, and
@@ -537,9 +537,9 @@ func (a *Analysis) measure() {
 		c.Flops += frontFlops(nc, nu)
 		c.LargestFront = max(c.LargestFront, rows)
 	}
-	c.Bytes = 8*a.panel[c.Fronts] + 8*a.plan.bytesFloats(a.workers()) +
+	c.Bytes = 8*a.panel[c.Fronts] + 8*a.plan.floats(a.workers(), a.n) +
 		4*(3*int64(a.n)+int64(len(a.rows))+4*int64(c.Fronts)+2*int64(a.entries)) + 8*int64(len(a.runs)) + 40*int64(c.Fronts) +
-		8*3*int64(a.n)
+		32*int64(a.n) // L·D·Lᵀ only
 }
 
 // frontFlops counts the multiplications and additions of eliminating nc columns

@@ -95,9 +95,14 @@ func (c *crew) init(f *Factor, n int) {
 		if w.shares {
 			size = p.taskStack
 		}
+		if i == 0 {
+			// Updates and right-hand sides are never needed at the same time.
+			size = max(size, int64(solveWidth*f.a.n))
+		}
 		w.stack = large[float64](int(size) + slack)
 		w.scratch = make([]float64, p.scratch+slack)
 	}
+	f.x = c.workers[0].stack
 	if n > 1 {
 		f.store = large[float64](int(p.topStore) + slack)
 		c.finishedAll.L = &c.mu

@@ -13,10 +13,10 @@ type Factor struct {
 	a    *Analysis
 	kind Kind
 
-	panels []float64
+	panels panelStore
 	store  []float64 // updates between subtrees, several workers only
 	crew   crew
-	x      []float64 // right-hand sides in the order of elimination, four floats an unknown
+	x      []float64 // right-hand sides in the order of elimination, four floats an unknown: the memory of a stack
 	below  []int32   // LDL only: the pivots of the rows of a front
 	ok     bool
 
@@ -38,7 +38,7 @@ func (a *Analysis) NewFactor(k Kind) (*Factor, error) {
 		return nil, fmt.Errorf("sparse: unknown kind of factorisation %d", int(k))
 	}
 	f := &Factor{a: a, kind: k}
-	f.panels = large[float64](int(a.panel[a.fronts()]) + slack)
+	f.panels = newPanelStore(a.panel)
 	f.crew.init(f, a.workers())
 	if k == LDL {
 		f.diag = make([]float64, a.n)
@@ -123,7 +123,7 @@ func (f *Factor) front(s int32, values []float64, w *worker) bool {
 	a := f.a
 	cols, rows := a.shape(s)
 	nu := rows - cols
-	p := f.panels[a.panel[s]:a.panel[s+1]]
+	p := f.panels.panel(a.panel[s], a.panel[s+1])
 	f.assemble(p, s, values, cols, rows)
 	kids := a.children[a.childPtr[s]:a.childPtr[s+1]]
 	for _, c := range kids {

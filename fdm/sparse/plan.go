@@ -193,10 +193,12 @@ func (a *Analysis) workers() int {
 	return max(1, min(n, len(a.plan.taskRoot)+1))
 }
 
-// bytesFloats is the number of floats in stacks and scratch of so many workers.
-func (p *plan) bytesFloats(workers int) int64 {
+// floats is the number of floats in stacks and scratch of so many workers for n
+// unknowns. A solve takes the stack of the first.
+func (p *plan) floats(workers, n int) int64 {
+	x := int64(solveWidth * n)
 	if workers <= 1 {
-		return p.stack + int64(p.scratch)
+		return max(p.stack, x) + int64(p.scratch)
 	}
-	return p.topStore + int64(workers)*(p.taskStack+int64(p.scratch))
+	return p.topStore + max(p.taskStack, x) + int64(workers-1)*p.taskStack + int64(workers)*int64(p.scratch)
 }

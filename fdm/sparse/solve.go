@@ -8,7 +8,7 @@ const solveWidth = 4
 
 // Solve replaces b by the solution X of A·X = B. Both are n×nrhs, row by row:
 // b[i*nrhs+r] belongs to unknown i of right-hand side r. Up to four right-hand
-// sides together cost no more than one. The first solve allocates 4·n floats.
+// sides together cost no more than one. It allocates nothing.
 //
 // Errors: [ErrNotFactored], [SizeError], [ValueError].
 func (f *Factor) Solve(b []float64, nrhs int) error {
@@ -26,9 +26,6 @@ func (f *Factor) Solve(b []float64, nrhs int) error {
 }
 
 func (f *Factor) solve(b []float64, nrhs int) {
-	if f.x == nil {
-		f.x = large[float64](solveWidth * f.a.n)
-	}
 	for r := 0; r < nrhs; r += solveWidth {
 		f.solveSome(b, nrhs, r, min(solveWidth, nrhs-r))
 	}
@@ -104,7 +101,7 @@ func (f *Factor) view(s int32, v *frontView) {
 	v.first, v.cols = int(first), int(a.first[s+1]-first)
 	v.rows = a.rows[a.rowPtr[s]:a.rowPtr[s+1]]
 	v.ld = v.cols + len(v.rows)
-	v.p = f.panels[a.panel[s]:a.panel[s+1]]
+	v.p = f.panels.panel(a.panel[s], a.panel[s+1])
 	if f.kind == LDL {
 		v.rows, v.unit = f.pivotsOf(v.rows), true
 	}
