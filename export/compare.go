@@ -59,6 +59,7 @@ func Differences(a, b *canopy.Result) []Difference {
 		}
 		return m
 	}, func(name string, va, vb float64) { add("fabric area", name, "m²", va, vb) })
+	airDifferences(a, b, add)
 	for _, of := range []struct {
 		group string
 		list  func(r *canopy.Result) []canopy.Spread

@@ -170,6 +170,7 @@ func (p *report) found() {
 		p.str("<p>Prestress of the fabric. Achieved over specified: mean, and in brackets the values below which 5 % and 95 % of the area lie.</p>\n")
 		p.table([]string{"fabric", "area m²", "warp asked kN/m", "weft asked kN/m", "warp achieved", "weft achieved", "(warp:weft)/nominal", "utilisation, prestress only"}, rows)
 	}
+	p.air()
 	var lengths []string
 	for k, l := range q.KindLength {
 		if l > 0 {
@@ -579,6 +580,9 @@ func (p *report) audit() {
 	item("Whole structure: reactions and loads add up to zero to %s of the reactions, their moments to %s.", tiny(a.ForceBalance), tiny(a.MomentBalance))
 	item("Stresses and reactions belong together: the virial identity holds to %s.", tiny(a.Virial))
 	item("Reported against recomputed: reactions differ by %s, forces and stresses from their laws by %s.", tiny(a.ReactionMismatch), tiny(a.ForceMismatch))
+	if len(s.Enclosures) > 0 {
+		item("Volumes of air, measured anew on the mesh: they differ from what was asked by %s; the shape may change under a disturbance, the volumes not.", tiny(a.VolumeMismatch))
+	}
 	switch {
 	case !a.StabilityKnown:
 		item("Stability: not known. %s", a.StabilityNote)

@@ -44,6 +44,7 @@ func Summary(w io.Writer, r *canopy.Result, o Options) error {
 	p.width = max(p.width, 48)
 	p.head(r)
 	p.fabrics(r)
+	p.air(r)
 	p.cables(r)
 	p.stays(r)
 	p.lines(r)

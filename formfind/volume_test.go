@@ -317,3 +317,56 @@ fabrics:
 		assert.NotEmpty(t, wrong[0].WayOut)
 	}
 }
+
+// How firmly a film sits whose volume is held, in closed form: the smallest λ of
+// −Δu − (κ₁² + κ₂²)u = λu + constant, u = 0 on the rim and ∫u = 0. On a flat disc
+// the constant-free modes J₁(j₁,₁r/a)·cos φ come first, λa² = 3.83170597² (Bessel
+// zeros, Abramowitz & Stegun 1964, table 9.5); on a hemisphere, where the
+// uniform mode is neutral at constant pressure, the harmonic of degree 2 and
+// order 1, λR² = 2·3 − 2. The diameter is twice the largest distance from the
+// centroid: 2a, and √5·R.
+func TestFirmnessAtGivenVolumeIsThatOfTheKnownModes(t *testing.T) {
+	for _, c := range []struct {
+		name         string
+		volume, want float64
+	}{
+		{"flat", 0, 4 * 3.83170597 * 3.83170597},
+		{"hemisphere", 2 * math.Pi / 3 * 125, 4 * 5},
+	} {
+		r := solve(t, cases.VolumeCap(5, c.volume, 5000, 28).S, formfind.Options{})
+		trusted(t, r)
+		assert.InEpsilon(t, c.want, r.Audit.Softest, 4e-3, c.name)
+	}
+}
+
+// What a result claims of its air is measured anew.
+func TestTheAuditMeasuresVolumesItself(t *testing.T) {
+	c, _, _ := cases.Lens(5, 60, 5000, 3000, 10)
+	r := solve(t, c.S, formfind.Options{})
+	trusted(t, r)
+	assert.Less(t, r.Audit.VolumeMismatch, 1e-10)
+	for _, k := range []struct {
+		name  string
+		spoil func(s *canopy.Structure, f *canopy.Form)
+		want  string
+	}{
+		{"more asked", func(s *canopy.Structure, f *canopy.Form) { s.Enclosures[0].Volume *= 1 + 1e-7 }, "encloses"},
+		{"a film moved", func(s *canopy.Structure, f *canopy.Form) { f.Position[0].Z += 1e-4 }, "encloses"},
+		{"other pressure reported", func(s *canopy.Structure, f *canopy.Form) { f.Pressure[0] *= 1 + 1e-6 }, "carries a pressure of"},
+		{"other pressure acting", func(s *canopy.Structure, f *canopy.Form) { s.Fabrics[1].Pressure *= 1 + 1e-6 }, "carries a pressure of"},
+		{"a side turned", func(s *canopy.Structure, f *canopy.Form) { s.Enclosures[0].Side[1] *= -1 }, "encloses"},
+		{"none reported", func(s *canopy.Structure, f *canopy.Form) { f.Pressure = nil }, "reports 0 pressures for 1"},
+	} {
+		s, f := *r.Structure, *r.Form
+		s.Enclosures = []canopy.Enclosure{s.Enclosures[0]}
+		s.Enclosures[0].Side = append([]int8(nil), s.Enclosures[0].Side...)
+		s.Fabrics = append([]canopy.Fabric(nil), s.Fabrics...)
+		f.Position = append([]r3.Vec(nil), f.Position...)
+		f.Pressure = append([]float64(nil), f.Pressure...)
+		k.spoil(&s, &f)
+		a, err := audit.Run(t.Context(), &s, &f, audit.Options{})
+		require.NoError(t, err)
+		assert.False(t, a.Trusted, k.name)
+		assert.Contains(t, strings.Join(a.Reasons, "\n"), k.want, k.name)
+	}
+}

@@ -35,6 +35,9 @@ func writeAudit(w io.Writer, r *canopy.Result) error {
 	row("reactions against loads, moments", u.MomentBalance, tol.Balance)
 	row("virial identity from reported stresses", u.Virial, tol.Balance)
 	row("reported against recomputed reactions", u.ReactionMismatch, tol.Reaction)
+	if len(s.Enclosures) > 0 {
+		row("volumes of air against those asked for", u.VolumeMismatch, tol.Volume)
+	}
 
 	fmt.Fprintln(b, "\nStability for the prescribed stress")
 	switch {

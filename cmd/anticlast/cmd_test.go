@@ -382,3 +382,49 @@ func TestExitCodesOfTheBuiltProgram(t *testing.T) {
 	require.Equal(t, exitBadInput, code("anticlast: 1\n", "form", "-"))
 	require.Equal(t, exitBadInput, code("", "form", "missing.yaml"))
 }
+
+// The volume of air is a value like any other: it can be set, what is found is
+// printed, and a file that claims another volume is not trusted.
+func TestAVolumeIsSetPrintedAndChecked(t *testing.T) {
+	m := write(t, t.TempDir(), "dome.yaml", `anticlast: 1
+mesh: 1 m
+points: {A: [0, 0, 0], B: [6, 0, 0], C: [6, 6, 0], D: [0, 6, 0]}
+edges:
+  AB: {from: A, to: B, fixed: straight}
+  BC: {from: B, to: C, fixed: straight}
+  CD: {from: C, to: D, fixed: straight}
+  DA: {from: D, to: A, fixed: straight}
+fabrics:
+  dome: {boundary: [AB, BC, CD, DA], prestress: 2 kN/m, volume: 30 m3}
+`)
+	pressure := func(args ...string) float64 {
+		r := run(t, "", append([]string{"form", m, "-o", "-"}, args...)...)
+		require.Equal(t, exitFine, r.code, r.err)
+		var form struct {
+			Air []struct {
+				Name, Fabrics              any
+				Volume, Enclosed, Pressure float64
+			} `json:"air"`
+		}
+		require.NoError(t, json.Unmarshal([]byte(r.out), &form))
+		require.Len(t, form.Air, 1)
+		require.InEpsilon(t, form.Air[0].Volume, form.Air[0].Enclosed, 1e-9)
+		return form.Air[0].Pressure
+	}
+	p30 := pressure()
+	require.Greater(t, pressure("--set", "fabrics.dome.volume=40 m3"), p30)
+	require.InEpsilon(t, -p30, pressure("--set", "fabrics.dome.volume=-30000 l"), 1e-6)
+	require.InDelta(t, 0, pressure("--set", "fabrics.dome.volume=1e-9"), 1e-6)
+	r := run(t, "", "form", m)
+	require.Equal(t, exitFine, r.code, r.err)
+	require.Regexp(t, `air below +closed by +asked m³ +encloses m³ +pressure Pa\n +dome +its boundary's plane +30\.00 +30\.00 +[0-9.]+\n`, r.out)
+	r = run(t, "", "form", m, "--set", "fabrics.dome.pressure=200 Pa")
+	require.Equal(t, exitBadInput, r.code)
+	require.Contains(t, r.err, "has a volume and a pressure")
+
+	r = run(t, "", "form", m, "-o", "-")
+	require.Equal(t, exitFine, run(t, r.out, "check", "-").code)
+	c := run(t, strings.Replace(r.out, `"volume":30,`, `"volume":30.001,`, 1), "check", "-")
+	require.Equal(t, exitNotTrusted, c.code)
+	require.Contains(t, c.out, "encloses 30 m³ where 30.001 m³ are given")
+}

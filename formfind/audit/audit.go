@@ -60,6 +60,9 @@ type Options struct {
 	// discretisation takes its share; what lies below is reported as
 	// prestress achieved. Zero: 0.25.
 	LawInFabric float64
+	// Volume bounds the difference between enclosed and wanted volumes of air,
+	// relative (to 1e-5 of area^1.5 at least). Zero: 1e-8.
+	Volume float64
 	// AngleMin is the smallest triangle angle that is not called collapsed,
 	// rad. Zero: 1°.
 	AngleMin float64
@@ -85,6 +88,7 @@ func (o Options) withDefaults() Options {
 	set(&o.Reaction, 1e-8)
 	set(&o.Law, 1e-6)
 	set(&o.LawInFabric, 0.25)
+	set(&o.Volume, 1e-8)
 	set(&o.AngleMin, math.Pi/180)
 	if o.MemoryBudget == 0 {
 		o.MemoryBudget = 2 << 30
@@ -107,7 +111,7 @@ func Run(ctx context.Context, s *canopy.Structure, f *canopy.Form, o Options) (c
 		a.Reasons = []string{fmt.Sprintf("the form holds a value that is not a finite number, or absurdly large (%s)", where)}
 		nan := math.NaN()
 		a.ResidualRMS, a.ResidualWorst, a.ResidualLargest = nan, nan, nan
-		a.ForceBalance, a.MomentBalance, a.Virial, a.ReactionMismatch, a.ForceMismatch = nan, nan, nan, nan, nan
+		a.ForceBalance, a.MomentBalance, a.Virial, a.ReactionMismatch, a.ForceMismatch, a.VolumeMismatch = nan, nan, nan, nan, nan, nan
 		a.StabilityNote = "not judged: the form is not finite"
 		return a, nil
 	}
@@ -123,7 +127,7 @@ func Run(ctx context.Context, s *canopy.Structure, f *canopy.Form, o Options) (c
 	c.balance(&a, o, &why)
 	c.virial(&a, o, &why)
 	c.laws(&a, o, &why)
-	c.volumes(o, &why)
+	c.volumes(&a, o, &why)
 	c.tension(&a, &why)
 	c.quality(&a, o, &why)
 	if err := ctx.Err(); err != nil {

@@ -13,7 +13,8 @@ import (
 // reported mesh.
 type air struct {
 	volume float64 // m³
-	size   float64 // sum of the sizes of what adds up to it, m³
+	area   float64 // of the fabrics, m²
+	rise   float64 // largest height over the plane, m
 	// rim is how far the boundary lies off its plane, m.
 	rim float64
 	// grows is the derivative of the volume by each node, m².
@@ -92,7 +93,8 @@ func (c *audited) measureAir(e *canopy.Enclosure) air {
 		n := r3.Scale(w/2, r3.Cross(r3.Sub(c.x[c3[1]], c.x[c3[0]]), r3.Sub(c.x[c3[2]], c.x[c3[0]])))
 		h := (height(c3[0]) + height(c3[1]) + height(c3[2])) / 3
 		out.volume += h * r3.Dot(n, up)
-		out.size += math.Abs(h) * norm(n)
+		out.area += norm(n)
+		out.rise = max(out.rise, math.Abs(h))
 		for _, i := range c3 {
 			g, seen := out.grows[i]
 			if !seen {
@@ -106,7 +108,7 @@ func (c *audited) measureAir(e *canopy.Enclosure) air {
 
 // volumes checks that the fabrics of every enclosure shut in the volume that
 // was asked for, and that the pressures on them are the one reported.
-func (c *audited) volumes(o Options, why *reasons) {
+func (c *audited) volumes(a *canopy.Audit, o Options, why *reasons) {
 	s := c.s
 	if len(s.Enclosures) == 0 {
 		return
@@ -117,13 +119,17 @@ func (c *audited) volumes(o Options, why *reasons) {
 	}
 	for i := range s.Enclosures {
 		e := &s.Enclosures[i]
-		a := c.measureAir(e)
-		rounding := 64 * ulp * (a.size + c.size*c.size*(c.reach+c.size))
-		if d := math.Abs(a.volume - e.Volume); !(d <= max(o.Law*1e-2*math.Abs(e.Volume), rounding)) {
-			why.add("fabric %s encloses %.9g m³ where %.9g m³ are given", e.Name, a.volume, e.Volume)
+		m := c.measureAir(e)
+		rounding := 64 * ulp * m.area * (m.rise + c.reach)
+		d := math.Abs(m.volume - e.Volume)
+		if scale := max(math.Abs(e.Volume), 1e-5*m.area*math.Sqrt(m.area)); scale > 0 {
+			a.VolumeMismatch = max(a.VolumeMismatch, max(d-rounding, 0)/scale)
+			if !(d <= o.Volume*scale+rounding) {
+				why.add("fabric %s encloses %.9g m³ where %.9g m³ are given", e.Name, m.volume, e.Volume)
+			}
 		}
-		if !(a.rim <= 1e-6*c.size) {
-			why.add("the boundary of the volume below fabric %s has left its plane by %.3g m", e.Name, a.rim)
+		if !(m.rim <= 1e-6*c.size) {
+			why.add("the boundary of the volume below fabric %s has left its plane by %.3g m", e.Name, m.rim)
 		}
 		for k, f := range e.Fabrics {
 			want := float64(e.Side[k]) * c.f.Pressure[i]

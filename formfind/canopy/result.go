@@ -89,6 +89,9 @@ type Audit struct {
 	// Largest difference between reported and recomputed reactions, member
 	// forces against their laws, and stresses against theirs, relative.
 	ReactionMismatch, ForceMismatch float64
+	// Largest difference of an enclosed volume from the one asked for, relative;
+	// 0 without air of given volume.
+	VolumeMismatch float64
 
 	// Stability of the prescribed-stress problem in the shape-changing directions.
 	StabilityKnown bool

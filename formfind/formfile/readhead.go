@@ -292,6 +292,8 @@ func (d *reader) audit() error {
 			return d.setKnown(&a.ReactionMismatch)
 		case "force_mismatch":
 			return d.setKnown(&a.ForceMismatch)
+		case "volume_mismatch":
+			return d.setKnown(&a.VolumeMismatch)
 		case "stability_known":
 			return d.setBool(&a.StabilityKnown)
 		case "unstable":

@@ -394,6 +394,7 @@ func writeAudit(t *text, r *canopy.Result) {
 	t.k("virial").known(a.Virial)
 	t.k("reaction_mismatch").known(a.ReactionMismatch)
 	t.k("force_mismatch").known(a.ForceMismatch)
+	t.k("volume_mismatch").known(a.VolumeMismatch)
 	t.k("stability_known").boolean(a.StabilityKnown)
 	t.k("unstable").integer(a.Unstable)
 	t.k("softest").known(a.Softest)
