@@ -316,7 +316,8 @@ func (a *Analysis) orderFronts(tree, into, cols, below []int32) []int32 {
 	peak := make([]int64, ns) // largest stack of the subtree
 	held := make([]int64, ns) // sum of the updates of the children handled so far
 	ptr, list := childLists(tree)
-	gain := func(s int32) int64 { return peak[s] - int64(below[s])*int64(below[s]) }
+	size := func(s int) int64 { return int64(updateFloats(int(below[s]))) }
+	gain := func(s int32) int64 { return peak[s] - size(int(s)) }
 	for s := range ns {
 		if into[s] != int32(s) {
 			continue
@@ -336,9 +337,9 @@ func (a *Analysis) orderFronts(tree, into, cols, below []int32) []int32 {
 		}
 		for _, c := range kids {
 			peak[s] = max(peak[s], held[s]+peak[c])
-			held[s] += int64(below[c]) * int64(below[c])
+			held[s] += size(int(c))
 		}
-		peak[s] = max(peak[s], held[s]+int64(below[s])*int64(below[s]))
+		peak[s] = max(peak[s], held[s]+size(s))
 	}
 	out := make([]int32, 0, ns)
 	var stack []int32

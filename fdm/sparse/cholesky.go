@@ -21,7 +21,8 @@ type blockJob struct {
 	ld   int
 	m    int
 	k, w int
-	// The product C −= A·Bᵀ, B the first n rows of A: its lower trapezoid.
+	// The product C −= A·Bᵀ, B the first n rows of A: its lower trapezoid, in
+	// chunks if ldc is 0.
 	c, a    []float64
 	ldc     int
 	rows, n int
@@ -60,11 +61,12 @@ func choleskyUpdate(u, f []float64, ld, n, nu int, w *worker) {
 		mulSub(u, nu, f[n:], ld, f[n:], ld, nu, nu, n, true, true)
 		return
 	}
-	w.lowerProduct(u, nu, f[n:], ld, nu, nu, n, true)
+	w.lowerProduct(u, 0, f[n:], ld, nu, nu, n, true)
 }
 
 // lowerProduct does C −= A·Bᵀ (C = −A·Bᵀ if fresh) for the lower trapezoid of
-// m×n C, A m×k, B the first n rows of A.
+// m×n C, A m×k, B the first n rows of A. If ldc is 0, C is an update matrix in
+// chunks.
 func (w *worker) lowerProduct(c []float64, ldc int, a []float64, lda, m, n, k int, fresh bool) {
 	b := w.job()
 	b.c, b.ldc, b.ld, b.rows, b.n = c, ldc, lda, m, n
@@ -97,13 +99,17 @@ func (b *blockJob) rowsPiece(i int) {
 
 // productPiece does piece i of the columns of the product.
 func (b *blockJob) productPiece(i int) {
+	j := i * packColumns
+	at, ldc := j*(b.ldc+1), b.ldc
+	if ldc == 0 {
+		at, ldc = updateAt(b.rows, packColumns, j)
+	}
 	if b.packed != nil {
-		mulSubPacked(b.c, b.ldc, b.packed, b.rows, b.n, b.depth, i, b.fresh)
+		mulSubPacked(b.c[at:], ldc, b.packed, b.rows, b.n, b.depth, j, b.fresh)
 		return
 	}
-	j := i * packColumns
 	v := min(packColumns, b.n-j)
-	mulSub(b.c[j*b.ldc+j:], b.ldc, b.a[j:], b.ld, b.a[j:], b.ld, b.rows-j, v, b.depth, b.fresh, true)
+	mulSub(b.c[at:], ldc, b.a[j:], b.ld, b.a[j:], b.ld, b.rows-j, v, b.depth, b.fresh, true)
 }
 
 // choleskyBlock factors n columns of m rows, four columns at a time.

@@ -13,7 +13,7 @@ type delayedFront struct {
 	rows  []int32   // places of all rows
 	cols  int       // eliminated
 	first int       // number of the first pivot
-	u     []float64 // update matrix, of all rows but the eliminated
+	u     []float64 // update matrix, of all rows but the eliminated, a square
 }
 
 // factorDelayed factors once more, now with candidates passed on to the parent
@@ -65,7 +65,7 @@ func (f *Factor) factorDelayed(ctx context.Context, values []float64) error {
 				rel = append(rel, local[i])
 			}
 			runs[x] = appendRuns(nil, rel, int32(cand))
-			extendAdd(p, ld, 0, k.u, len(rel), runs[x], 0, cand)
+			extendAdd(p, ld, 0, k.u, len(rel), len(rel)+1, runs[x], 0, cand)
 		}
 		d, e := make([]float64, cand), make([]float64, cand)
 		scratch := make([]float64, ld*max(ldlBlock, 1)+slack)
@@ -97,7 +97,8 @@ func (f *Factor) factorDelayed(ctx context.Context, values []float64) error {
 			front.u = u
 			for x, c := range kids {
 				k := &f.delayed[c]
-				extendAdd(u[at:], left, cand, k.u, len(k.rows)-k.cols, runs[x], cand, ld)
+				n := len(k.rows) - k.cols
+				extendAdd(u[at:], left, cand, k.u, n, n+1, runs[x], cand, ld)
 			}
 		}
 		for _, c := range kids {

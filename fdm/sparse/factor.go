@@ -128,7 +128,7 @@ func (f *Factor) front(s int32, values []float64, w *worker) bool {
 	kids := a.children[a.childPtr[s]:a.childPtr[s+1]]
 	for _, c := range kids {
 		n := int(a.rowPtr[c+1] - a.rowPtr[c])
-		extendAdd(p, rows, 0, f.updateOf(c, w), n, a.runsOf(c), 0, cols)
+		extendAdd(p, rows, 0, f.updateOf(c, w), n, updateChunk(n), a.runsOf(c), 0, cols)
 	}
 	u := f.updateOf(s, w)
 	if f.kind == LDL {
@@ -157,7 +157,7 @@ func (f *Factor) front(s int32, values []float64, w *worker) bool {
 	if nu > 0 {
 		for _, c := range kids {
 			n := int(a.rowPtr[c+1] - a.rowPtr[c])
-			extendAdd(u, nu, cols, f.updateOf(c, w), n, a.runsOf(c), cols, rows)
+			extendUpdate(u, nu, f.updateOf(c, w), n, a.runsOf(c), cols)
 		}
 	}
 	return true
@@ -180,15 +180,14 @@ func (f *Factor) assemble(p []float64, s int32, values []float64, cols, ld int) 
 	}
 }
 
-// updateOf is the update matrix that front c leaves for its parent.
+// updateOf is where the update matrix that front c leaves for its parent starts.
 func (f *Factor) updateOf(c int32, w *worker) []float64 {
-	a := f.a
-	n := a.updateSize(c)
-	switch {
-	case !w.shares:
-		return w.stack[a.plan.update[c]:][:n]
-	case a.plan.shared[c]:
-		return f.store[a.plan.local[c]:][:n]
+	p := &f.a.plan
+	if !w.shares {
+		return w.stack[p.update[c]:]
 	}
-	return w.stack[a.plan.local[c]:][:n]
+	if p.shared[c] {
+		return f.store[p.local[c]:]
+	}
+	return w.stack[p.local[c]:]
 }

@@ -198,8 +198,8 @@ func TestExtendAddOnRandomRows(t *testing.T) {
 		rng := rand.New(rand.NewPCG(3, 3))
 		for round := range 403 {
 			rows := 1 + rng.IntN(40)
-			if round >= 400 {
-				rows += 500 // more than one call of the kernel
+			if round >= 397 {
+				rows += 500 // chunks, and more than one call of the kernel
 			}
 			cols := rng.IntN(rows + 1)
 			var rel []int32
@@ -213,19 +213,31 @@ func TestExtendAddOnRandomRows(t *testing.T) {
 				continue
 			}
 			u := randomVector(rng, n*n+slack)
+			chunk := updateChunk(n)
+			if rng.IntN(2) == 0 {
+				chunk = n + 1 // a square
+			}
 			panel, update := make([]float64, rows*rows+slack), make([]float64, rows*rows+slack)
 			runs := appendRuns(nil, rel, int32(cols))
-			extendAdd(panel, rows, 0, u, n, runs, 0, cols)
+			extendAdd(panel, rows, 0, u, n, chunk, runs, 0, cols)
 			nu := rows - cols
-			extendAdd(update[:nu*nu], nu, cols, u, n, runs, cols, rows)
+			chunks := updateChunk(nu)
+			if chunk > n && updateChunk(n) <= n {
+				extendAdd(update[:nu*nu], nu, cols, u, n, chunk, runs, cols, rows)
+				chunks = nu + 1
+			} else {
+				extendUpdate(update[:updateFloats(nu)], nu, u, n, runs, cols)
+			}
 			for j, c := range rel {
 				for i := j; i < n; i++ {
 					r := int(rel[i])
 					at := &panel[int(c)*rows+r]
 					if int(c) >= cols {
-						at = &update[(int(c)-cols)*nu+r-cols]
+						diagonal, _ := updateAt(nu, chunks, int(c)-cols)
+						at = &update[diagonal+r-int(c)]
 					}
-					if *at != u[j*n+i] {
+					diagonal, _ := updateAt(n, chunk, j)
+					if *at != u[diagonal+i-j] {
 						t.Fatalf("rows %v, cols %d: entry (%d, %d) went astray", rel, cols, r, c)
 					}
 					*at = 0
@@ -250,6 +262,23 @@ func TestPackedProducts(t *testing.T) {
 				was := append([]float64(nil), c...)
 				w := &worker{alone: true, scratch: make([]float64, (m+packRows)*packDepth)}
 				w.lowerProduct(c, m, a, m, m, n, k, fresh)
+				if m == n {
+					// The same in chunks.
+					u := make([]float64, updateFloats(m)+slack)
+					for j := range m {
+						at, _ := updateAt(m, packColumns, j)
+						copy(u[at:at+m-j], was[j*(m+1):])
+					}
+					w.lowerProduct(u, 0, a, m, m, m, k, fresh)
+					for j := range m {
+						at, _ := updateAt(m, packColumns, j)
+						for i := j; i < m; i++ {
+							if u[at+i-j] != c[j*m+i] {
+								t.Fatalf("%v: (%d, %d) is %g in chunks, %g in one", s, i, j, u[at+i-j], c[j*m+i])
+							}
+						}
+					}
+				}
 				for j := range n {
 					for i := j; i < m; i++ {
 						if want := naive(was, m, a, m, a, m, i, j, k, fresh); math.Abs(c[j*m+i]-want) > 1e-11 {

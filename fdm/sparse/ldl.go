@@ -105,15 +105,19 @@ func ldlUpdate(u, f []float64, ld, below, nu, n int, d, e, scratch []float64) {
 		return
 	}
 	fresh := true
+	chunk := updateChunk(nu)
 	for k := 0; k < n; {
 		w := ldlWidth(e, k, n)
 		ldlScale(scratch, f[k*ld+below:], ld, nu, w, d[k:], e[k:])
-		mulSub(u, nu, f[k*ld+below:], ld, scratch, nu, nu, nu, w, fresh, true)
+		for j := 0; j < nu; j += chunk {
+			at, ldu := updateAt(nu, chunk, j)
+			mulSub(u[at:], ldu, f[k*ld+below+j:], ld, scratch[j:], nu, nu-j, min(chunk, nu-j), w, fresh, true)
+		}
 		fresh = false
 		k += w
 	}
 	if fresh {
-		clear(u)
+		clear(u[:updateFloats(nu)])
 	}
 }
 

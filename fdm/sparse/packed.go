@@ -30,15 +30,14 @@ func pack(dst, a []float64, lda, m, k int) {
 	}
 }
 
-// mulSubPacked does piece i, packColumns wide, of the lower trapezoid of
+// mulSubPacked does packColumns columns from j0 on of the lower trapezoid of
 // C −= A·Bᵀ (C = −A·Bᵀ if fresh), where B is the first n of the m rows of A,
-// packed at p.
-func mulSubPacked(c []float64, ldc int, p []float64, m, n, k, i int, fresh bool) {
+// packed at p. c starts at the diagonal entry of column j0.
+func mulSubPacked(c []float64, ldc int, p []float64, m, n, k, j0 int, fresh bool) {
 	flag := 0
 	if fresh {
 		flag = 1
 	}
-	j0 := i * packColumns
 	j1 := min(j0+packColumns, n)
 	rows := packRows
 	if haveWide {
@@ -49,7 +48,7 @@ func mulSubPacked(c []float64, ldc int, p []float64, m, n, k, i int, fresh bool)
 		for j := j0; j < j1 && j < end; j += 4 {
 			// Blocks above the diagonal are left out.
 			top := i + max(0, j-i)&^(packRows-1)
-			mulSubStrip(&c[j*ldc+top], &p[top*k], &p[(j&^7)*k+j&7], ldc, packRows, packRows, end-top, min(4, j1-j), k, packRows*k, flag)
+			mulSubStrip(&c[(j-j0)*ldc+top-j0], &p[top*k], &p[(j&^7)*k+j&7], ldc, packRows, packRows, end-top, min(4, j1-j), k, packRows*k, flag)
 		}
 	}
 }

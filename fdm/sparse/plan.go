@@ -11,8 +11,7 @@ import (
 // depends on the pattern only, so that the result does not depend on how many
 // processors there are.
 type plan struct {
-	// update[s] is the place of front s's update matrix (square, full storage,
-	// lower triangle used) when one worker runs through the whole tree with a
+	// update[s] is the place of front s's update matrix when one worker runs through the whole tree with a
 	// stack of the given number of floats.
 	update []int64
 	stack  int64
@@ -76,7 +75,10 @@ func (a *Analysis) depthParity() []bool {
 
 func (a *Analysis) updateSize(s int32) int64 {
 	n := a.rowPtr[s+1] - a.rowPtr[s]
-	return n * n
+	if n < packFrom {
+		return n * n
+	}
+	return int64(updateFloats(int(n)))
 }
 
 // layStack gives the updates of fronts (in order of elimination) their places
