@@ -201,6 +201,7 @@ func onlyDensities(s *canopy.Structure) bool {
 func (c *chain) warmStart() *canopy.Form {
 	f := canopy.NewForm(c.s)
 	copy(f.Force, c.o.Warm.Force)
+	copy(f.Stress, c.o.Warm.Stress)
 	copy(f.Pressure, c.o.Warm.Pressure)
 	for i := range f.Position {
 		fixed := c.s.FixedAt(i)

@@ -2,6 +2,7 @@ package formfind
 
 import (
 	"context"
+	"errors"
 	"fmt"
 	"math"
 
@@ -105,12 +106,13 @@ func solveLevels(ctx context.Context, coarse *canopy.Structure, steps []*mesh.Re
 
 // climb solves level after level below the last one and returns options with a
 // start for that; false when a level has no shape, which is for the last one to
-// say.
+// say. Where a walk meets a limit on one level, the limit is met on the finer ones in
+// turn, and that of the last one is the error.
 func climb(ctx context.Context, coarse *canopy.Structure, steps []*mesh.Refinement, o Options) (Options, bool, error) {
 	last := o
 	o.surface, o.CrossCheck = true, false
 	s := coarse
-	for i, r := range steps {
+	for i := 0; i < len(steps); i++ {
 		o.level = fmt.Sprintf("level %d of %d", i+1, len(steps)+1)
 		local, origin := nearOrigin(s)
 		if o.Warm != nil {
@@ -119,13 +121,32 @@ func climb(ctx context.Context, coarse *canopy.Structure, steps []*mesh.Refineme
 			o.Warm = &w
 		}
 		got, err := findForm(ctx, local, o)
-		if err != nil {
+		if err == nil {
+			backFrom(s, got.form, origin)
+		} else {
+			var none *NoEquilibriumError
 			if ctx.Err() != nil {
 				return last, false, err
 			}
-			return last, false, nil
+			if !errors.As(err, &none) || none.met == nil {
+				return last, false, nil
+			}
+			up, shape, limit, err := narrow(ctx, steps[i:], s, none.met, o)
+			switch {
+			case err != nil:
+				return last, false, err
+			case limit != nil:
+				return last, false, limit
+			case up == 0:
+				return last, false, nil
+			}
+			if i += up; i == len(steps) {
+				last.Warm = shape
+				return last, true, nil
+			}
+			got = found{form: shape}
 		}
-		backFrom(s, got.form, origin)
+		r := steps[i]
 		o.Warm, o.below = r.Prolong(got.form), got.form
 		o.solver, o.parents = got.solver, r.Parents
 		s = r.Fine

@@ -82,6 +82,8 @@ type NoEquilibriumError struct {
 	Given, Limit float64
 	// Tried says what was done, in order.
 	Tried []string
+
+	met *stand // where a walk met the limit
 }
 
 func (e *NoEquilibriumError) Error() string { return e.Text }

@@ -47,9 +47,8 @@ func (c *chain) walk(ctx context.Context) (bool, *NoEquilibriumError, error) {
 func (c *chain) along(ctx context.Context, w way) (bool, *NoEquilibriumError, error) {
 	s := copyForWalk(c.s)
 	var (
-		at     float64
-		form   *canopy.Form
-		solver *newton.Solver
+		at   float64
+		form *canopy.Form
 	)
 	c.stage("newton", "walking the boundary: "+w.name)
 	for _, t := range w.easy {
@@ -67,40 +66,71 @@ func (c *chain) along(ctx context.Context, w way) (bool, *NoEquilibriumError, er
 	if form == nil {
 		return false, nil, nil
 	}
+	return c.reach(ctx, w, s, stand{w.name, at, form}, 1-at)
+}
+
+// stand is how far a walk got: a shape of the model at a number of a way.
+type stand struct {
+	way  string
+	at   float64
+	form *canopy.Form
+}
+
+// reach walks on from a stand, in s, a copy of the model for walking: in steps that
+// double until one fails and are halved from there. It returns true when it arrives
+// at the model, else the limit met.
+func (c *chain) reach(ctx context.Context, w way, s *canopy.Structure, from stand, step float64) (bool, *NoEquilibriumError, error) {
 	solver, err := newton.New(ctx, s)
 	if err != nil {
 		return false, nil, fmt.Errorf("newton: %w", err)
 	}
 	// A walk past the last shape draws out triangles.
-	set := c.settings(false)
-	set.MaxIterations = 30 // from a shape nearby it takes a few; a failure need not take long
-	least := min(nearCollapse/4, smallestAngle(form.Position, s.Corners)/3)
-	step := 1 - at
+	least := min(nearCollapse/4, smallestAngle(from.form.Position, s.Corners)/3)
+	start, failed := from.at, false
 	for step >= walkPrecision {
-		t := math.Min(1, at+step)
+		t := math.Min(1, from.at+step)
 		w.set(s, c.s, t)
-		f, out, err := solver.Find(ctx, form, set)
-		if err != nil && ctx.Err() != nil {
+		f, err := c.foothold(ctx, solver, s, from.form, least)
+		if err != nil {
 			return false, nil, err
 		}
-		if err == nil && out.Status == engine.Converged && out.NegativePivots == 0 && !unreal(s, f) && smallestAngle(f.Position, s.Corners) > least {
-			at, form = t, f
-			if t == 1 {
-				c.f = form
-				c.f.Converged = true
-				c.used("newton")
-				c.say("Newton in the shape-changing directions, walking the boundary (%s) from %.0f %% to the model", w.name, 100*w.easy[0])
-				return true, nil, nil
-			}
+		if f == nil {
+			step, failed = step/2, true
 			continue
 		}
-		step /= 2
+		from.at, from.form = t, f
+		if t == 1 {
+			c.f = f
+			c.f.Converged = true
+			c.used("newton")
+			c.say("Newton in the shape-changing directions, walking the boundary (%s) from %.0f %% to the model", w.name, 100*start)
+			return true, nil, nil
+		}
+		if !failed {
+			step *= 2
+		}
 	}
-	limit := w.say(c.s, at)
+	limit := w.say(c.s, from.at)
 	if limit != nil {
-		c.say("walked the boundary (%s): a stable shape up to %.1f %%, none beyond", w.name, 100*at)
+		c.say("walked the boundary (%s): a stable shape up to %.1f %%, none beyond", w.name, 100*from.at)
+		limit.met = &from
 	}
 	return false, limit, nil
+}
+
+// foothold is a stable shape of s near the given one, nil when there is none.
+func (c *chain) foothold(ctx context.Context, solver *newton.Solver, s *canopy.Structure, near *canopy.Form, least float64) (*canopy.Form, error) {
+	set := c.settings(false)
+	set.MaxIterations = 30 // from a shape nearby it takes a few; a failure need not take long
+	f, out, err := solver.Find(ctx, near, set)
+	switch {
+	case err != nil && ctx.Err() != nil:
+		return nil, err
+	case err != nil || out.Status != engine.Converged || out.NegativePivots != 0,
+		unreal(s, f), smallestAngle(f.Position, s.Corners) <= least:
+		return nil, nil
+	}
+	return f, nil
 }
 
 // atOnce tries the ordinary starts, without relaxation and without walking.
