@@ -104,9 +104,8 @@ func newQuotient(g graph, weight []int32) *quotient {
 		q.head[d] = none
 	}
 	// A node tied to very many others would be touched at every step and is
-	// last in any good order: take it out (threshold as in the paper's codes,
-	// common practice).
-	dense := int32(max(16, 10*math.Sqrt(float64(n))))
+	// last in any good order: take it out.
+	dense := denseDegree(n)
 	for i := int32(n) - 1; i >= 0; i-- {
 		if q.size[i] > dense {
 			q.delayed = append(q.delayed, i)
@@ -118,6 +117,10 @@ func newQuotient(g graph, weight []int32) *quotient {
 	}
 	return q
 }
+
+// denseDegree is the degree above which a node of a graph of n nodes counts as
+// tied to very many (common practice).
+func denseDegree(n int) int32 { return int32(max(16, 10*math.Sqrt(float64(n)))) }
 
 func (q *quotient) insert(i, d int32) {
 	h := q.head[d]

@@ -75,7 +75,14 @@ func Analyze(ctx context.Context, n int, pairs [][2]int32, o Options) (*Analysis
 	}
 	g := newGraph(n, pairs)
 	mem := &pool{}
-	order, chosen, err := orderGraph(ctx, g, o.Ordering, mem)
+	var s sweep
+	swept := n >= sweepFrom && o.Ordering != OrderNatural || o.Ordering == OrderDissection
+	if swept {
+		s, g = newSweep(g, mem)
+	} else {
+		s = plainSweep(n)
+	}
+	order, chosen, err := orderGraph(ctx, g, s, o.Ordering, mem)
 	if err != nil {
 		return nil, err
 	}
@@ -83,6 +90,13 @@ func Analyze(ctx context.Context, n int, pairs [][2]int32, o Options) (*Analysis
 	a.cost.Ordering = chosen
 	if err := a.symbolic(ctx, g, mem); err != nil {
 		return nil, err
+	}
+	mem.put(g.ptr, g.adj)
+	if swept {
+		for k, i := range a.order {
+			a.order[k] = s.order[i]
+		}
+		invert(a.place, a.order)
 	}
 	a.plan = a.newPlan()
 	a.measure()

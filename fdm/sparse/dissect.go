@@ -16,9 +16,6 @@ import (
 // Numer. Anal. 10 (1973), 345-363.
 
 const (
-	// dissectFrom is the number of nodes below which approximate minimum
-	// degree is as good and quicker.
-	dissectFrom = 2000
 	// judgeFrom is the number of nodes from which a separator tells whether a
 	// graph is like a surface.
 	judgeFrom = 400
@@ -110,39 +107,35 @@ func (d *dissector) bfs(root int32, dist []int32) []int32 {
 // With p and q far apart, dist(p) − dist(q) runs from one to the other nearly
 // evenly over a net or mesh; where it is zero lies an equator, whose ends r and
 // s give the second coordinate likewise. On a square grid this gives multiples
-// of its diagonals, on a triangulated one its skew axes. The nodes from
-// lastLevel on are the farthest from some node.
-func (d *dissector) layout(lastLevel int) {
+// of its diagonals, on a triangulated one its skew axes. p is the first of the
+// nodes, which are numbered by their distance from it: levels are the first
+// nodes at each.
+func (d *dissector) layout(levels []int32) {
 	dp, dq, dr := d.lend[0], d.lend[1], d.lend[2]
-	// A node of least degree among the farthest is likely a corner (George &
-	// Liu 1979, "An implementation of a pseudoperipheral node finder").
-	slender := func(level []int32) int32 {
-		far := level[len(level)-1]
-		for k := len(level) - 2; k >= 0; k-- {
-			if i := level[k]; d.g.ptr[i+1]-d.g.ptr[i] < d.g.ptr[far+1]-d.g.ptr[far] {
-				far = i
-			}
+	first, last := d.nodes[0], d.nodes[len(d.nodes)-1]
+	for k, from := range levels {
+		to := last + 1
+		if k+1 < len(levels) {
+			to = levels[k+1]
 		}
-		return far
-	}
-	farthest := func(root int32, dist []int32) (int32, int32) {
-		q := d.bfs(root, dist)
-		k := len(q) - 1
-		away := dist[q[k]]
-		for k > 0 && dist[q[k-1]] == away {
-			k--
+		for i := from; i < to; i++ {
+			dp[i] = int32(k)
 		}
-		return slender(q[k:]), away
 	}
-	p := slender(d.nodes[lastLevel:])
-	q, away := farthest(p, dp)
+	p, away := first, int32(len(levels)-1)
+	q := slender(d.g, d.nodes[levels[away]-first:])
 	for round := 0; ; round++ {
-		next, further := farthest(q, dq)
+		met := d.bfs(q, dq)
+		k := len(met) - 1
+		further := dq[met[k]]
 		if further <= away || round == 4 {
 			break
 		}
+		for k > 0 && dq[met[k-1]] == further {
+			k--
+		}
 		away = further
-		p, q = q, next
+		p, q = q, slender(d.g, met[k:])
 		dp, dq = dq, dp
 	}
 	var lo, hi int32
@@ -534,48 +527,35 @@ func (d *dissector) orderRest(nodes []int32) {
 	}
 }
 
-// dissect orders all nodes of g. If picky, it gives up on graphs whose
-// separators are not as small as those of a surface.
-func dissect(ctx context.Context, g graph, weight []int32, picky bool, mem *pool) ([]int32, bool) {
+// dissect orders all nodes of g, which are numbered by the sweep s. If picky, it
+// gives up on graphs whose separators are not as small as those of a surface.
+func dissect(ctx context.Context, g graph, s sweep, weight []int32, picky bool, mem *pool) ([]int32, bool) {
 	d := newDissector(g, weight, mem)
 	defer mem.put(d.region, d.queue, d.lend[0], d.lend[1], d.lend[2])
-	const unmet = -4
-	for i := range d.region {
-		d.region[i] = unmet
-	}
 	all, pts := make([]int32, g.n), make([]point, g.n)
-	done := 0
-	for root := range int32(g.n) {
-		if d.region[root] != unmet {
-			continue
+	for i := range all {
+		all[i] = int32(i)
+	}
+	for i := s.end; i < int32(g.n); i++ {
+		d.region[i] = none // hubs: last, and in nobody's way
+	}
+	for k := range s.parts {
+		from, to, levels := s.part(k)
+		for i := from; i < to; i++ {
+			d.region[i] = from
 		}
-		part := append(all[done:done], root)
-		d.region[root] = int32(done)
-		level, levelEnd := 0, 1 // the nodes as far from root as the one at hand
-		for k := 0; k < len(part); k++ {
-			if k == levelEnd {
-				level, levelEnd = k, len(part)
-			}
-			for _, j := range g.row(part[k]) {
-				if d.region[j] == unmet {
-					d.region[j] = int32(done)
-					part = append(part, j)
-				}
-			}
-		}
-		if len(part) > leafSize {
-			d.nodes, d.pts = part, pts[done:]
-			d.layout(level)
+		if to-from > leafSize {
+			d.nodes, d.pts = all[from:to], pts[from:to]
+			d.layout(levels)
 		}
 		d.nodes, d.pts = all, pts
 		if picky {
-			d.judged = max(judgeFrom, len(part)/8)
+			d.judged = max(judgeFrom, int(to-from)/8)
 		}
-		d.split(ctx, done, done+len(part))
+		d.split(ctx, int(from), int(to))
 		if d.rough {
 			return nil, false
 		}
-		done += len(part)
 	}
 	return all, true
 }
