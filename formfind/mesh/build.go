@@ -93,6 +93,7 @@ type builder struct {
 	laid      []*laidNet  // per loop: the lines of a net laid in its plane
 	arrival   []arrival   // where such lines end on edges
 	found     *foundShape // an earlier shape in which nets are laid anew
+	crossed   float64     // crossings of nets so far
 	soft      bool        // end links of given force start with the force density that gives it
 	wish      wish        // what stands in the way of fabrics
 	ringWish  []bool      // per ring: whether it does

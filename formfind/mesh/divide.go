@@ -221,20 +221,34 @@ func (b *builder) divide() {
 	if len(b.errs) > 0 {
 		return
 	}
-	total := 0.0
+	total, crossings := 0.0, 0.0
 	for _, l := range b.loop {
 		if !l.net {
 			total += l.patch.triangles(b, l)
-		} else if l.patch.triangles(b, l) > 2*maxLattice {
+		} else if crossings += l.patch.triangles(b, l) / 2; crossings > maxLattice {
 			b.tooFineNet(l)
 			return
 		}
 	}
-	if total > MaxTriangles {
-		fine := 1.1 * math.Sqrt(2*b.area()/MaxTriangles)
-		b.fail("", "", 0, TooFine, formatWay("give a mesh size of %s or more, or fewer segments", fine),
-			"the model would have more triangles than the %d million that are possible", MaxTriangles/1_000_000)
+	if !(total <= MaxTriangles) {
+		b.tooManyTriangles()
+		return
 	}
+	nodes := 0.0
+	for _, n := range b.count {
+		nodes += float64(n)
+	}
+	if nodes > maxEdgeNodes {
+		b.fail("", "", 0, TooFine, "give a larger mesh size or spacing, or fewer segments",
+			"its edges would be divided into %.3g segments, more than the %d that are possible", nodes, maxEdgeNodes)
+		return
+	}
+}
+
+func (b *builder) tooManyTriangles() {
+	fine := 1.1 * math.Sqrt(2*b.area()/MaxTriangles)
+	b.fail("", "", 0, TooFine, formatWay("give a mesh size of %s or more, or fewer segments", fine),
+		"the model would have more triangles than the %d million that are possible", MaxTriangles/1_000_000)
 }
 
 // classCount decides the number of segments of a class of edges.

@@ -56,7 +56,7 @@ func (freePatch) fill(p *plot) {
 		return
 	}
 	r := refinement{d: d, size: f.size, most: max(f.mean, p.b.meshSize(l)), in: in, rim: len(d.p)}
-	r.run(MaxTriangles)
+	r.run(max(0, MaxTriangles-len(p.b.s.Corners)))
 	height := f.heights(&r)
 	node := make([]int32, len(d.p))
 	for i := range node {

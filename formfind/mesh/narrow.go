@@ -155,7 +155,7 @@ func (p *plot) wishFor(list []obstacle, node []int32) {
 		length := dist(p.at(i), p.at(j))
 		at, ok := where[[2]int32{min(i, j), max(i, j)}]
 		if !ok { // of the ring
-			if l.ring >= 0 && length/2 >= least && b.ringTimes[l.ring] < 64 {
+			if l.ring >= 0 && length/2 >= least && len(b.ringNode[l.ring]) <= maxEdgeNodes/2 {
 				b.ringWish[l.ring] = true
 			}
 			continue

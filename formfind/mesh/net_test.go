@@ -37,7 +37,7 @@ func starNet(t *rapid.T, n int) *canopy.Model {
 		if rapid.Bool().Draw(t, "turned") {
 			from, to = to, from
 		}
-		cableEdge(m, e, from, to, canopy.ModelCable{MeanForce: 1e9 * scale})
+		cableEdge(m, e, from, to, canopy.ModelCable{MeanForce: 1e14 * scale})
 		boundary = append(boundary, e)
 	}
 	h := scale * rapid.Float64Range(0.4, 2).Draw(t, "spacing")

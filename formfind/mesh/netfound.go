@@ -114,7 +114,7 @@ const beyond = 6
 
 // lattice continues the net found for l beyond its boundary, one mesh after the
 // other; nil where it is not an equal-mesh net.
-func (f *foundShape) lattice(l *loop, r *rim) *lattice {
+func (f *foundShape) lattice(b *builder, l *loop, r *rim) *lattice {
 	n := &f.old.m.Nets[l.index]
 	k := slices.IndexFunc(f.old.loop, func(o *loop) bool { return o.net && o.index == l.index })
 	if n.MeshLength == 0 || k < 0 || f.old.laid[k] == nil {
@@ -124,6 +124,9 @@ func (f *foundShape) lattice(l *loop, r *rim) *lattice {
 	from := old.lat
 	lat := &lattice{ni: from.ni + 2*beyond, nj: from.nj + 2*beyond, i0: from.i0 - beyond, j0: from.j0 - beyond, steps: from.steps, h: from.h}
 	size := lat.ni * lat.nj
+	if !b.crossings(lat.ni, lat.nj) {
+		return nil
+	}
 	lat.at, lat.space, lat.known = make([]xy, size), make([]r3.Vec, size), make([]bool, size)
 	layer := make([]int8, size) // 0 = not known
 	for j := range from.nj {

@@ -21,8 +21,19 @@ type lattice struct {
 	link   float64  // greatest distance between neighbours along a line
 }
 
-// maxLattice bounds the crossings of one net.
-const maxLattice = 4_000_000
+const (
+	// maxLattice bounds the crossings of all nets of a model.
+	maxLattice = 4_000_000
+	// maxLines bounds the lines of a family.
+	maxLines = 20_000
+)
+
+// crossings adds those of a net to the ones there are, before room is made for
+// them, and reports whether that is not too many.
+func (b *builder) crossings(ni, nj int) bool {
+	b.crossed += float64(ni) * float64(nj)
+	return b.crossed <= maxLattice
+}
 
 // netSpacings returns the spacing of the first two families.
 func netSpacings(n *canopy.Net) (h [2]float64) {
@@ -37,7 +48,7 @@ func netSpacings(n *canopy.Net) (h [2]float64) {
 // newLattice lays straight lines over the rim so that the outermost of each
 // family are about a spacing away from where the rim reaches farthest, and the
 // whole is symmetric about the middle of that. nil when there would be too many.
-func newLattice(n *canopy.Net, r *rim) *lattice {
+func (b *builder) newLattice(n *canopy.Net, r *rim) *lattice {
 	h := netSpacings(n)
 	angle := [2]float64{0, math.Pi / 2}
 	if len(n.Families) == 3 {
@@ -80,7 +91,7 @@ func newLattice(n *canopy.Net, r *rim) *lattice {
 	}
 	u0, ni := spread(lo.x, hi.x)
 	v0, nj := spread(lo.y, hi.y)
-	if !(float64(ni)*float64(nj) <= maxLattice) {
+	if max(ni, nj) > maxLines || !b.crossings(ni, nj) {
 		return nil
 	}
 	l.ni, l.nj = ni, nj

@@ -142,14 +142,14 @@ func (b *builder) walkArea(l *loop, r *rim) float64 {
 func (b *builder) layStraight(l *loop, net *laidNet) {
 	n := &b.m.Nets[l.index]
 	if b.found != nil {
-		net.lat = b.found.lattice(l, net.rim)
+		net.lat = b.found.lattice(b, l, net.rim)
 	}
 	if net.lat == nil {
-		net.lat = newLattice(n, net.rim)
+		net.lat = b.newLattice(n, net.rim)
 	}
 	if net.lat == nil {
 		if f := n.Families; len(f) == 2 && f[0].HasAngle != f[1].HasAngle || f[0].HasAngle {
-			b.fail("net", l.name, l.line, Mismatch, "let them cross at 10° or more, and give a spacing that suits the size", "its families run nearly the same way, or it would have more than %d million crossings", maxLattice/1_000_000)
+			b.fail("net", l.name, l.line, Mismatch, "let them cross at 10° or more, and give a spacing that suits the size", "its families run nearly the same way, or it would have more than the %d million crossings or %d lines of a family that are possible", maxLattice/1_000_000, maxLines)
 			return
 		}
 		b.tooFineNet(l)
@@ -160,7 +160,7 @@ func (b *builder) layStraight(l *loop, net *laidNet) {
 }
 
 func (b *builder) tooFineNet(l *loop) {
-	b.fail("net", l.name, l.line, TooFine, "give a larger spacing", "it would have more crossings than the %d million that are possible", maxLattice/1_000_000)
+	b.fail("net", l.name, l.line, TooFine, "give a larger spacing", "it would have more crossings than the %d million, or more lines of a family than the %d, that are possible", maxLattice/1_000_000, maxLines)
 }
 
 // states of a crossing.
@@ -322,38 +322,11 @@ func (b *builder) divideAt(e int, list []int) {
 		gap = max(gap, b.arrival[i].least)
 	}
 	gap /= length
-	type cluster struct {
-		t           float64
-		first, last int // in list
-	}
-	c := []cluster{{0, 0, 0}}
+	t := make([]float64, len(list))
 	for k, i := range list {
-		c = append(c, cluster{b.arrival[i].t, k, k + 1})
+		t[k] = b.arrival[i].t
 	}
-	c = append(c, cluster{1, len(list), len(list)})
-	// The closest two first, until all are a gap apart; ends stay.
-	for {
-		at, d := -1, gap*(1-1e-9)
-		for k := 1; k < len(c); k++ {
-			if x := c[k].t - c[k-1].t; x < d && len(c) > 2 {
-				at, d = k, x
-			}
-		}
-		if at < 0 {
-			break
-		}
-		p, q := c[at-1], c[at]
-		np, nq := float64(p.last-p.first), float64(q.last-q.first)
-		t := (p.t*np + q.t*nq) / max(1, np+nq)
-		if at == 1 {
-			t = 0
-		}
-		if at == len(c)-1 {
-			t = 1
-		}
-		c[at-1] = cluster{t, p.first, q.last}
-		c = slices.Delete(c, at, at+1)
-	}
+	c := clusters(t, gap*(1-1e-9))
 	par := make([]float64, 0, len(c))
 	for k, x := range c {
 		if k > 0 && b.curve[e].Arc {
@@ -390,124 +363,6 @@ func (b *builder) rimKey(a arrival, base []int) int {
 	return len(b.m.Points) + base[a.edge] + a.node
 }
 
-// tidy removes from the lines of a net what merging has made useless: links that
-// have shrunk, that double another, run along the boundary or leave the net; and
-// crossings with fewer than three links.
-func (b *builder) tidy(net *laidNet) {
-	lat, r := net.lat, net.rim
-	base := make([]int, len(b.m.Edges))
-	total := 0
-	for e := range base {
-		base[e] = total
-		total += b.count[e]
-	}
-	keys := len(b.m.Points) + total
-	key := func(s int32) int {
-		if s >= 0 {
-			return keys + int(s)
-		}
-		return b.rimKey(b.arrival[-1-s], base)
-	}
-	place := func(s int32) xy {
-		if s >= 0 {
-			return lat.at[s]
-		}
-		a := b.arrival[-1-s]
-		return r.drop(b.onEdge(a.edge, b.nodeAt(a.edge, a.node), net))
-	}
-	var cross []onRim
-	good := func(s, t int32) bool {
-		if s >= 0 && t >= 0 {
-			return true
-		}
-		p, q := place(s), place(t)
-		length := math.Hypot(q.x-p.x, q.y-p.y)
-		if s < 0 && t < 0 {
-			// From one place of the boundary to another: not beside it.
-			m := xy{(p.x + q.x) / 2, (p.y + q.y) / 2}
-			if length < net.least || !r.inside(m) {
-				return false
-			}
-			if on, _, near := r.nearest(m); near && on.d < 0.2*length {
-				return false
-			}
-		}
-		const touch = 0.02
-		cross = r.crossings(p, q, cross)
-		for _, c := range cross {
-			if (s >= 0 || c.d > touch) && (t >= 0 || c.d < 1-touch) {
-				return false
-			}
-		}
-		return true
-	}
-	for {
-		// Links that are of no use part their lines.
-		seen := map[[2]int]bool{}
-		links := make([]int8, len(lat.at))
-		var chains []chainOfStops
-		for _, c := range net.chains {
-			cur := chainOfStops{family: c.family, stops: []int32{c.stops[0]}}
-			for k := 1; k < len(c.stops); k++ {
-				s, t := c.stops[k-1], c.stops[k]
-				a, z := key(s), key(t)
-				pair := [2]int{min(a, z), max(a, z)}
-				if a == z || seen[pair] || !good(s, t) {
-					chains = appendChain(chains, cur)
-					cur = chainOfStops{family: c.family, stops: []int32{t}}
-					continue
-				}
-				seen[pair] = true
-				cur.stops = append(cur.stops, t)
-				cur.long = append(cur.long, c.long != nil && c.long[k-1])
-				for _, x := range [2]int32{s, t} {
-					if x >= 0 {
-						links[x]++
-					}
-				}
-			}
-			chains = appendChain(chains, cur)
-		}
-		// Crossings with fewer than three links are none: a line goes straight
-		// on there, or ends before.
-		changed := false
-		net.chains = nil
-		for _, c := range chains {
-			cur := chainOfStops{family: c.family}
-			for k, s := range c.stops {
-				weak := s >= 0 && links[s] < 3
-				if !weak {
-					if len(cur.stops) > 0 {
-						cur.long = append(cur.long, c.long[k-1] || c.stops[k-1] >= 0 && links[c.stops[k-1]] < 3)
-					}
-					cur.stops = append(cur.stops, s)
-					continue
-				}
-				changed = true
-				if k > 0 && k < len(c.stops)-1 && links[s] == 2 {
-					continue
-				}
-				net.chains = appendChain(net.chains, cur)
-				cur = chainOfStops{family: c.family}
-			}
-			net.chains = appendChain(net.chains, cur)
-		}
-		for p := range net.keep {
-			net.keep[p] = links[p] > 2
-		}
-		if !changed {
-			return
-		}
-	}
-}
-
-func appendChain(list []chainOfStops, c chainOfStops) []chainOfStops {
-	if len(c.stops) > 1 {
-		list = append(list, c)
-	}
-	return list
-}
-
 // onEdge returns the place at t of an edge at the rim of a net.
 func (b *builder) onEdge(e int, t float64, net *laidNet) r3.Vec {
 	if b.found != nil {
@@ -524,6 +379,7 @@ func (b *builder) fillLines(l *loop, net *laidNet) {
 		return
 	}
 	n := &b.m.Nets[l.index]
+	net.rim.coarsen(len(net.keep))
 	net.node = make([]int32, len(net.keep))
 	for i, k := range net.keep {
 		net.node[i] = -1
@@ -573,6 +429,22 @@ func (b *builder) fillLines(l *loop, net *laidNet) {
 			}
 			b.addCable(c)
 		}
+	}
+}
+
+// maxMeans bounds the terms of all mean values over one rim.
+const maxMeans = 100_000_000
+
+// coarsen leaves so many points of the rim that mean values over it at n places
+// are within bounds. They are only a start.
+func (r *rim) coarsen(n int) {
+	every := (n*len(r.sides) + maxMeans - 1) / maxMeans
+	for k, rim := range r.up.rims {
+		var few []int
+		for j := 0; j < len(rim); j += max(1, min(every, len(rim)/4)) {
+			few = append(few, rim[j])
+		}
+		r.up.rims[k] = few
 	}
 }
 

@@ -67,7 +67,8 @@ func (b *builder) layRadial(l *loop, net *laidNet) {
 	h := netSpacings(n)
 	out, in := b.walked(l), b.walked(l.holes[0])
 	var from []along
-	if !(out.length()/h[0]*max(2, out.length()/h[1]) < maxLattice) {
+	// Each line is tried in some hundred turns.
+	if !(out.length()/h[0] < maxLines) {
 		b.tooFineNet(l)
 		return
 	}
@@ -121,6 +122,10 @@ func (b *builder) layRadial(l *loop, net *laidNet) {
 		rad.inner = append(rad.inner, b.arrive(t.on, net))
 	}
 	rad.layers = int(math.Max(2, math.Round(math.Min(mean/h[1], maxLattice))))
+	if !b.crossings(rad.layers, len(from)) {
+		b.tooFineNet(l)
+		return
+	}
 	net.radial = rad
 }
 

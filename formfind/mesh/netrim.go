@@ -19,8 +19,9 @@ type rim struct {
 
 	cell   float64 // of the grid of cells
 	nx, ny int
-	first  []int32 // per cell: first entry in list
-	list   []int32 // sides that pass through or near each cell
+	first  []int32   // per cell: first entry in list
+	list   []int32   // sides that pass through or near each cell
+	bands  [][]int32 // sides in each of even bands across y
 }
 
 // rimSide is a straight piece of a rim with the net on its left.
@@ -221,8 +222,11 @@ func (b *builder) netSag(l *loop, e int) float64 {
 // sort puts the sides into the cells of a grid, each into all cells within
 // reach of it.
 func (r *rim) sort(cell float64) {
+	// Links of a shape that was found may have shrunk to nothing.
+	w, h := r.hi.x-r.lo.x, r.hi.y-r.lo.y
+	cell = max(cell, (w+h)/maxLines, math.Sqrt(w*h/maxLattice))
 	r.cell = cell
-	r.nx, r.ny = int((r.hi.x-r.lo.x)/cell)+1, int((r.hi.y-r.lo.y)/cell)+1
+	r.nx, r.ny = int(w/cell)+1, int(h/cell)+1
 	count := make([]int32, r.nx*r.ny+1)
 	visit := func(do func(c int, s int32)) {
 		for s := range r.sides {
@@ -246,6 +250,22 @@ func (r *rim) sort(cell float64) {
 	r.first = append([]int32(nil), count...)
 	r.list = make([]int32, count[r.nx*r.ny])
 	visit(func(c int, s int32) { r.list[count[c]] = s; count[c]++ })
+	r.bands = make([][]int32, max(1, min(r.ny, maxBands/len(r.sides))))
+	for s := range r.sides {
+		a, b := r.sides[s].a, r.sides[s].b
+		for k := r.band(min(a.y, b.y)); k <= r.band(max(a.y, b.y)); k++ {
+			r.bands[k] = append(r.bands[k], int32(s))
+		}
+	}
+}
+
+// maxBands bounds the entries of all bands.
+const maxBands = 2_000_000
+
+// band is the band at y, a function that never falls.
+func (r *rim) band(y float64) int {
+	n := len(r.bands)
+	return min(n-1, max(0, int((y-r.lo.y)/(r.hi.y-r.lo.y)*float64(n))))
 }
 
 func (r *rim) column(x float64) int { return min(r.nx-1, max(0, int((x-r.lo.x)/r.cell))) }
@@ -298,7 +318,7 @@ func (r *rim) nearest(p xy) (on, other onRim, ok bool) {
 // inside reports whether p is inside the outline and outside all holes.
 func (r *rim) inside(p xy) bool {
 	in := false
-	for i := range r.sides {
+	for _, i := range r.bands[r.band(p.y)] {
 		a, b := r.sides[i].a, r.sides[i].b
 		if (a.y > p.y) != (b.y > p.y) && (orient(a, b, p) > 0) == (b.y > a.y) {
 			in = !in

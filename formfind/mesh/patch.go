@@ -298,7 +298,12 @@ func (radialPatch) fill(p *plot) {
 	// A layer is as deep as a mesh side around is long: ds = 2πρ/n, along a
 	// line that rises by slant/(mean − r).
 	grow := math.Log(mean / r)
-	layers := max(2, int(math.Round(float64(n)/(2*math.Pi)*grow*slant/(mean-r))))
+	want := math.Round(float64(n) / (2 * math.Pi) * grow * slant / (mean - r))
+	if left := MaxTriangles - len(p.b.s.Corners); !(2*float64(n)*want <= float64(left)) {
+		p.b.tooManyTriangles()
+		return
+	}
+	layers := max(2, int(want))
 	line := make([][]int32, layers+1)
 	line[0], line[layers] = ring, outer
 	for k := 1; k < layers; k++ {

@@ -42,7 +42,12 @@ func (b *builder) ringNodes() {
 			continue
 		}
 		if _, free := l.patch.(freePatch); free {
-			n := b.ringTimes[ri] * max(16, 2*int(math.Round(min(math.Pi*r.Radius/b.meshSize(l), maxEdgeNodes))))
+			want := math.Round(math.Pi * r.Radius / b.meshSize(l))
+			if !(want <= maxEdgeNodes/2) {
+				b.tooManyTriangles()
+				return
+			}
+			n := b.ringTimes[ri] * max(16, 2*int(want))
 			phi = make([]float64, n)
 			for j := range phi {
 				phi[j] = 2 * math.Pi * float64(j) / float64(n)
