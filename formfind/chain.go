@@ -387,6 +387,9 @@ func (c *chain) fabric(ctx context.Context) error {
 		}
 		return out
 	}
+	if len(s.Enclosures) > 0 && restrained(s) {
+		starts = append(starts, func(ctx context.Context) error { return c.blown(ctx, force) })
+	}
 	if elastic {
 		// Newton's tangent is that of prescribed stress.
 		if len(starts) == 0 {

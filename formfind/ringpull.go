@@ -79,7 +79,8 @@ func ringHold(s *canopy.Structure, g *canopy.Ring) (hold, perimeter float64, kno
 			if !on[[2]int32{min(a, b), max(a, b)}] {
 				continue
 			}
-			if s.Stress[t][0] != s.Stress[t][1] || s.Fabrics[s.FabricOf[t]].Elastic || s.Fabrics[s.FabricOf[t]].Pressure != 0 {
+			f := int(s.FabricOf[t])
+			if s.Stress[t][0] != s.Stress[t][1] || s.Fabrics[f].Elastic || s.Fabrics[f].Pressure != 0 || s.EnclosureOf(f) >= 0 {
 				return 0, 0, false
 			}
 			l := r3.Norm(r3.Sub(s.Position[b], s.Position[a]))

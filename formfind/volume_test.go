@@ -201,6 +201,8 @@ func TestAChangedVolumeIsFoundFromAnEarlierShape(t *testing.T) {
 		if volume == -60 {
 			assert.InEpsilon(t, -before.Form.Pressure[0], cold.Form.Pressure[0], 1e-9)
 		}
+		again := solve(t, warm.Structure, formfind.Options{})
+		assert.InEpsilon(t, cold.Form.Pressure[0], again.Form.Pressure[0], 1e-12, "pressures found before count for nothing")
 		assert.Equal(t, 60.0, c.S.Enclosures[0].Volume, "the structure is not changed")
 		assert.Zero(t, c.S.Fabrics[0].Pressure)
 	}
@@ -288,6 +290,48 @@ fabrics:
 	trusted(t, one)
 	assert.InEpsilon(t, one.Form.Pressure[0], two.Form.Pressure[0], 5e-3)
 	assert.InEpsilon(t, 120, two.Summary.Enclosed[0], 1e-10)
+}
+
+// Cables over a hall hold it down: too long for the flat fabric it grows from,
+// taut on the hall. Given by force, by stiffness and length, by sag.
+func TestCablesRestrainAHall(t *testing.T) {
+	for _, cable := range []string{"force: 6 kN", "unstressed: 12 m, stiffness: 8 MN", "sag: 30 %"} {
+		text := strings.ReplaceAll(`anticlast: 1
+mesh: 450 mm
+points: {A: [0, 0, 0], B: [6, 0, 0], C: [12, 0, 0], D: [18, 0, 0], E: [18, 10, 0], F: [12, 10, 0], G: [6, 10, 0], H: [0, 10, 0]}
+edges:
+  AB: {from: A, to: B, fixed: straight}
+  BC: {from: B, to: C, fixed: straight}
+  CD: {from: C, to: D, fixed: straight}
+  DE: {from: D, to: E, fixed: straight}
+  EF: {from: E, to: F, fixed: straight}
+  FG: {from: F, to: G, fixed: straight}
+  GH: {from: G, to: H, fixed: straight}
+  HA: {from: H, to: A, fixed: straight}
+  BG: {from: B, to: G, cable: {CABLE}, role: valley}
+  CF: {from: C, to: F, cable: {CABLE}, role: valley}
+fabrics:
+  west: {boundary: [AB, BG, GH, HA], prestress: 2 kN/m, warp: [1, 0, 0], volume: 400 m3, volume with: [mid, east]}
+  mid: {boundary: [BC, CF, FG, BG], prestress: 2 kN/m, warp: [1, 0, 0]}
+  east: {boundary: [CD, DE, EF, CF], prestress: 2 kN/m, warp: [1, 0, 0]}
+`, "CABLE", cable)
+		m, err := spec.Read(t.Context(), spec.Input(strings.NewReader(text), "."), spec.Options{})
+		require.NoError(t, err)
+		r, err := formfind.Find(t.Context(), m, formfind.Options{CrossCheck: true})
+		require.NoError(t, err, cable)
+		trusted(t, r)
+		assert.InEpsilon(t, 400, r.Summary.Enclosed[0], 1e-9)
+		for i, c := range r.Structure.Cables {
+			q := r.Summary.Cables[i]
+			assert.Positive(t, q.ForceMin, cable)
+			switch c.Law {
+			case canopy.CableElastic:
+				assert.InEpsilon(t, q.Length, c.Unstressed*(1+q.ForceMean/c.Stiffness), 1e-6)
+			case canopy.CableSag:
+				assert.InEpsilon(t, 0.3, q.Sag/q.Chord, 1e-2)
+			}
+		}
+	}
 }
 
 // What does not enclose a volume is refused by the mesher, with the line of the

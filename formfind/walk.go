@@ -183,7 +183,9 @@ func ways(s *canopy.Structure) []way {
 	var out []way
 	pressure := 0.0
 	for i := range s.Fabrics {
-		pressure = math.Max(pressure, math.Abs(s.Fabrics[i].Pressure))
+		if s.EnclosureOf(i) < 0 { // there it is found
+			pressure = math.Max(pressure, math.Abs(s.Fabrics[i].Pressure))
+		}
 	}
 	if pressure > 0 {
 		out = append(out, way{

@@ -258,6 +258,16 @@ func flattest(x []r3.Vec, of []int32) (normal r3.Vec, off float64, far int32, si
 	return normal, off, far, size
 }
 
+// EnclosureOf returns the enclosure that a fabric bounds, −1 for none.
+func (s *Structure) EnclosureOf(fabric int) int {
+	for i := range s.Enclosures {
+		if slices.Contains(s.Enclosures[i].Fabrics, int32(fabric)) {
+			return i
+		}
+	}
+	return -1
+}
+
 // Carrying returns s with the pressures that f has found on the fabrics of its
 // enclosures; s itself where it has none. Nothing but the fabrics is copied.
 func (s *Structure) Carrying(f *Form) *Structure {
