@@ -164,6 +164,39 @@ func disc(radius, rise, pressure, stress float64, n int) *canopy.Structure {
 	return s
 }
 
+// refined refines a structure some times; onto puts new nodes of fixed edges and
+// the warp where they belong.
+func refined(t *testing.T, s *canopy.Structure, times int, onto func(s *canopy.Structure, from int)) []*mesh.Refinement {
+	var steps []*mesh.Refinement
+	for range times {
+		r, err := mesh.Refine(s)
+		require.NoError(t, err)
+		onto(r.Fine, len(s.Position))
+		steps, s = append(steps, r), r.Fine
+	}
+	return steps
+}
+
+// ontoCone is that for cones between rings of radius 5 and 0.5 at the height h.
+func ontoCone(h float64) func(s *canopy.Structure, from int) {
+	return func(s *canopy.Structure, from int) {
+		for i := from; i < len(s.Position); i++ {
+			if p := &s.Position[i]; s.Fixed[i] != 0 {
+				r := 5.0
+				if p.Z > h/2 {
+					r = 0.5
+				}
+				f := r / math.Hypot(p.X, p.Y)
+				p.X, p.Y = f*p.X, f*p.Y
+			}
+		}
+		for t, c := range s.Corners {
+			m := r3.Scale(1.0/3, r3.Add(s.Position[c[0]], r3.Add(s.Position[c[1]], s.Position[c[2]])))
+			s.Warp[t] = r3.Vec{X: m.X, Y: m.Y, Z: -math.Hypot(m.X, m.Y) * h / 4.5}
+		}
+	}
+}
+
 func areaOff(exact float64) func(*canopy.Result) float64 {
 	return func(r *canopy.Result) float64 {
 		return math.Abs(cases.Area(r.Structure, r.Form.Position)/exact - 1)
@@ -177,6 +210,19 @@ func placeOff(distance func(r3.Vec) float64) func(*canopy.Result) float64 {
 			worst = math.Max(worst, math.Abs(distance(p)))
 		}
 		return worst
+	}
+}
+
+// meanOff is the root of the mean square over the nodes. Only the largest error of
+// linear triangles carries a logarithm, from single places of the mesh.
+func meanOff(distance func(r3.Vec) float64) func(*canopy.Result) float64 {
+	return func(r *canopy.Result) float64 {
+		sum := 0.0
+		for _, p := range r.Form.Position {
+			d := distance(p)
+			sum += d * d
+		}
+		return math.Sqrt(sum / float64(len(r.Form.Position)))
 	}
 }
 
@@ -214,11 +260,14 @@ func TestPublishedSurfacesConverge(t *testing.T) {
 		order float64
 		build func(n int) (*canopy.Structure, []measure)
 	}
-	structured, free, unequal := 1.8, 1.5, 1.5
+	structured, free := 1.8, 1.5
 	if len(fineness()) < 3 {
-		free, unequal = 1.2, 1.2 // two sizes tell an order roughly
+		free = 1.2 // two sizes tell an order roughly
 	}
 	var all []published
+	// Cases whose smallest mesh is refined to the other sizes and solved coarse to
+	// fine, as the front door does with models: how new nodes get onto fixed edges.
+	onto := map[string]func(s *canopy.Structure, from int){}
 	for _, k := range []struct{ h, waist, area float64 }{
 		{0.1, 0.994970493751908, 1.254535275185},
 		{0.5, 0.848337938094979, 5.99179697580228},
@@ -236,7 +285,7 @@ func TestPublishedSurfacesConverge(t *testing.T) {
 			if k.h < 0.3 {
 				c = cases.Catenoid(k.h, 8*n, n/2, true, 1000)
 			}
-			return c.S, []measure{{"area", areaOff(k.area)}, {"waist", waist}, {"place", placeOff(c.Distance)}}
+			return c.S, []measure{{"area", areaOff(k.area)}, {"waist", waist}, {"place", placeOff(c.Distance)}, {"mean place", meanOff(c.Distance)}}
 		}})
 		if k.h == 0.5 {
 			all = append(all, published{"catenoid h=0.5 unstructured", free, func(n int) (*canopy.Structure, []measure) {
@@ -248,7 +297,7 @@ func TestPublishedSurfacesConverge(t *testing.T) {
 	all = append(all,
 		published{"Scherk", structured, func(n int) (*canopy.Structure, []measure) {
 			c := cases.Scherk(1, 2*n, 2500)
-			return c.S, []measure{{"area", areaOff(c.Area)}, {"place", placeOff(c.Distance)}}
+			return c.S, []measure{{"area", areaOff(c.Area)}, {"place", placeOff(c.Distance)}, {"mean place", meanOff(c.Distance)}}
 		}},
 		published{"Scherk unstructured", free, func(n int) (*canopy.Structure, []measure) {
 			s := bent(plate(t, 2, 2, 8*n*n), func(p r3.Vec, fixed bool) r3.Vec {
@@ -303,12 +352,14 @@ func TestPublishedSurfacesConverge(t *testing.T) {
 		height := func(r *canopy.Result) float64 { return math.Abs(top(r)/rise - 1) }
 		all = append(all, published{fmt.Sprintf("cap p=%g", p), structured, func(n int) (*canopy.Structure, []measure) {
 			c := cases.SphereCap(5, p, 5, 4*n, n)
-			return disc(5, 0.9*rise, p, 5, n), []measure{{"area", areaOff(area)}, {"rise", height}, {"place", placeOff(c.Distance)}}
+			return disc(5, 0.9*rise, p, 5, n), []measure{{"area", areaOff(area)}, {"rise", height}, {"place", placeOff(c.Distance)}, {"mean place", meanOff(c.Distance)}}
 		}}, published{fmt.Sprintf("cap p=%g unstructured", p), free, func(n int) (*canopy.Structure, []measure) {
 			return freeCap(t, 5, p, 5, n), []measure{{"area", areaOff(area)}}
 		}})
 	}
-	// Small deflections: p such that w₀ is a ten-thousandth of the span.
+	// Small deflections: p such that w₀ is a ten-thousandth of the span. Where mesh
+	// lines of several directions meet in the middle (six sectors of a disc, four
+	// quarters of a square), that very node has an error like h²·log(1/h).
 	const load = 1e-3
 	eq := []r3.Vec{{}, {X: 1}, {X: 0.5, Y: math.Sqrt(3) / 2}}
 	all = append(all,
@@ -317,6 +368,17 @@ func TestPublishedSurfacesConverge(t *testing.T) {
 		}},
 		published{"deflection of a square", structured, func(n int) (*canopy.Structure, []measure) {
 			return polygonPlate(t, []r3.Vec{{}, {X: 1}, {X: 1, Y: 1}, {Y: 1}}, load, 1, 2*n), []measure{{"centre", deflectionOff(0.07367135328, load)}}
+		}},
+		// With diagonals like a chessboard no place has more triangles than others;
+		// those of the mesher meet eight to a node in the middle, whose share of
+		// the load is a third too large: there the logarithm comes from.
+		published{"deflection of a square, diagonals like a chessboard", structured, func(n int) (*canopy.Structure, []measure) {
+			s := cases.Scherk(0.5, 2*n, 1).S
+			for i := range s.Position {
+				s.Position[i].Z = 0
+			}
+			s.Fabrics[0].Pressure = load
+			return s, []measure{{"even centre", deflectionOff(0.07367135328, load)}}
 		}},
 		published{"deflection of a rectangle", structured, func(n int) (*canopy.Structure, []measure) {
 			return polygonPlate(t, []r3.Vec{{}, {X: 2}, {X: 2, Y: 1}, {Y: 1}}, load, 1, 3*n, n*4/3), []measure{{"centre", deflectionOff(0.1138718321, load)}}
@@ -327,13 +389,11 @@ func TestPublishedSurfacesConverge(t *testing.T) {
 	)
 	for _, m := range []float64{1. / 3, 0.5, 1, 2, 3} {
 		h := 0.8 * cases.ConeHeight(5, 0.5, 0.5, m)
-		order := structured
-		if m != 1 {
-			order = unequal
-		}
-		all = append(all, published{fmt.Sprintf("cone weft:warp %.2f", m), order, func(n int) (*canopy.Structure, []measure) {
+		name := fmt.Sprintf("cone weft:warp %.2f", m)
+		onto[name] = ontoCone(h)
+		all = append(all, published{name, structured, func(n int) (*canopy.Structure, []measure) {
 			c := cases.Cone(5, 0.5, h, [2]float64{1000, 1000 * m}, 3*n, n*4/3)
-			return c.S, []measure{{"profile", placeOff(c.Distance)}}
+			return c.S, []measure{{"profile", placeOff(c.Distance)}, {"mean profile", meanOff(c.Distance)}}
 		}})
 	}
 	for _, k := range all {
@@ -342,11 +402,23 @@ func TestPublishedSurfacesConverge(t *testing.T) {
 			off := map[string][]float64{}
 			var names []string
 			last := 0
-			for _, n := range fineness() {
+			sizes := fineness()
+			for i, n := range sizes {
 				s, measures := k.build(n)
-				r := solve(t, s, formfind.Options{})
+				var r *canopy.Result
+				if onto := onto[k.name]; onto == nil {
+					r = solve(t, s, formfind.Options{})
+				} else {
+					if len(sizes) < 4 {
+						i++ // the coarsest cone is coarse for an order
+					}
+					coarse, _ := k.build(sizes[0])
+					var err error
+					r, err = formfind.SolveLevels(t.Context(), coarse, refined(t, coarse, i, onto), formfind.Options{})
+					require.NoError(t, err)
+				}
 				trusted(t, r)
-				last = len(s.Corners)
+				last = len(r.Structure.Corners)
 				line := ""
 				for _, m := range measures {
 					if len(off[m.name]) == 0 {
@@ -364,7 +436,7 @@ func TestPublishedSurfacesConverge(t *testing.T) {
 				t.Logf("order of %s: %.2f", m, order)
 				want := k.order
 				switch m {
-				case "place", "profile", "rise", "centre":
+				case "place", "rise", "centre":
 					// The largest error of linear triangles falls like
 					// h²·log(1/h) (Scott, Math. Comp. 30, 1976).
 					want = math.Min(want, 1.5)

@@ -67,6 +67,9 @@ func (v *Solver) measure(at []r3.Vec) error {
 // before the last, exact, run; each time the shape moves less.
 const fits = 3
 
+// refits is the same from the magnitudes of a shape nearby.
+const refits = 2
+
 // rounds iterates to balance, after an approach where members are elastic. For unequal stress it alternates with fits of the
 // magnitude; the shape returned is in balance, along the normals, with the
 // magnitude returned.
@@ -96,8 +99,16 @@ func (v *Solver) rounds(ctx context.Context, set engine.Settings, start *canopy.
 			}
 		}
 		rough := set
-		for k := range fits {
-			tol := []float64{1e-3, 1e-4, 1e-5}[k]
+		from := 0
+		if v.resumed {
+			from = fits - refits
+		}
+		for k := from; k < fits; k++ {
+			// The shape moves before every fit, also when it starts closer than
+			// that, on the surface of a coarser mesh: a fit to that surface
+			// would keep its error.
+			v.evaluate(&v.now)
+			tol := min([]float64{1e-3, 1e-4, 1e-5}[k], 0.1*v.now.eta)
 			rough.Residual, rough.Worst, rough.Move = max(set.Residual, tol), max(set.Worst, 10*tol), max(set.Move, tol)
 			out, err := v.iterate(ctx, rough, first)
 			if err != nil || out.Status != engine.Converged {

@@ -88,6 +88,7 @@ func (g *magnitudes) reset() {
 // their height limit, and no step leads on from a shape that is close to the next.
 func (v *Solver) resume(start *canopy.Form) {
 	s, g := v.s, v.magnitude
+	v.resumed = false
 	if g == nil || start == nil || len(start.Stress) != len(s.Stress) || len(start.Force) != len(s.Ends) {
 		return
 	}
@@ -103,6 +104,7 @@ func (v *Solver) resume(start *canopy.Form) {
 			continue
 		}
 		g.triangle[t] = start.Stress[t].Warp / s.Stress[t][0]
+		v.resumed = v.resumed || math.Abs(g.triangle[t]-1) > 1e-9
 		for _, u := range c {
 			nodal[u] += g.triangle[t]
 			count[u]++

@@ -61,6 +61,7 @@ type Solver struct {
 	shifted      []float64
 	now, trial   state
 	normalSum    []r3.Vec
+	resumed      bool // magnitudes are those of the start
 	uneven       bool // some warp and weft stresses differ
 	unevenFabric []bool
 	magnitude    *magnitudes // nil unless uneven
