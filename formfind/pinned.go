@@ -35,6 +35,7 @@ const (
 	pinnedUnequal = 0.009 // unequal stress with edge cables
 	pinnedNode    = 0.03  // at a single node, unequal stress held all round
 	pinnedHeld    = 0.1   // by h/L: the stress out of balance by a tenth of itself over the size
+	pinnedBlown   = 0.2   // the same under pressure: 0.13 in a hall of 2:1 until its walls are upright
 )
 
 // pinned reports whether a shape in balance along its normals is far from balance
@@ -64,9 +65,18 @@ func pinned(s *canopy.Structure, f *canopy.Form) bool {
 		if worst > pinnedNode {
 			return true
 		}
-		most = pinnedHeld * meshSide(s, f) / s.Size()
+		most = pinnedHeld
+		if blownUp(s) {
+			most = pinnedBlown
+		}
+		most *= meshSide(s, f) / s.Size()
 	}
 	return math.Sqrt(rr) > most*math.Sqrt(ss)
+}
+
+// blownUp reports whether pressure acts on the fabric, given or found.
+func blownUp(s *canopy.Structure) bool {
+	return len(s.Enclosures) > 0 || slices.ContainsFunc(s.Fabrics, func(f canopy.Fabric) bool { return f.Pressure != 0 })
 }
 
 // meshSide is the side of a typical triangle, m.

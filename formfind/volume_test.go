@@ -334,6 +334,32 @@ fabrics:
 	}
 }
 
+// Where a volume has no shape, the refusal says how much has one. A hall of
+// unequal stress whose warp is laid along y ends where a wall is upright and
+// square to it: there the warp is undefined.
+func TestTooMuchAirIsRefusedWithTheVolumeThatWorks(t *testing.T) {
+	hall := func(volume string) (*canopy.Result, error) {
+		m, err := spec.Read(t.Context(), spec.File("../examples/air-hall.yaml"), spec.Options{Set: []string{
+			"fabrics.hall.prestress={warp: 4 kN/m, weft: 2 kN/m}", "fabrics.hall.volume=" + volume, "mesh=1 m"}})
+		require.NoError(t, err)
+		return formfind.Find(t.Context(), m, formfind.Options{})
+	}
+	r, err := hall("800 m3")
+	require.NoError(t, err)
+	trusted(t, r)
+	_, err = hall("1300 m3")
+	var none *formfind.NoEquilibriumError
+	require.ErrorAs(t, err, &none)
+	assert.True(t, none.Shown)
+	assert.Equal(t, "enclosed volume", none.Quantity)
+	assert.Equal(t, 1300.0, none.Given)
+	assert.InDelta(t, 1145, none.Limit, 40)
+	assert.Contains(t, none.Text, "square to the surface")
+	r, err = hall("1080 m3")
+	require.NoError(t, err, "near the limit")
+	require.True(t, r.Form.Converged)
+}
+
 // What does not enclose a volume is refused by the mesher, with the line of the
 // fabric and the place.
 func TestWhatEnclosesNoVolumeIsRefused(t *testing.T) {
