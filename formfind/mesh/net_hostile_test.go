@@ -3,6 +3,7 @@ package mesh_test
 import (
 	"context"
 	"fmt"
+	"math/rand/v2"
 	"testing"
 
 	"anticlast/formfind/canopy"
@@ -16,7 +17,18 @@ import (
 // wrong; what it builds is sound.
 func TestNetsInHostileOutlines(t *testing.T) { rapid.Check(t, hostileNet) }
 
-func FuzzNets(f *testing.F) { f.Fuzz(rapid.MakeFuzz(hostileNet)) }
+func FuzzNets(f *testing.F) {
+	// Choices take eight bytes each.
+	for seed := range uint64(16) {
+		rnd := rand.New(rand.NewPCG(seed, 1))
+		b := make([]byte, 3000)
+		for i := range b {
+			b[i] = byte(rnd.Uint32())
+		}
+		f.Add(b)
+	}
+	f.Fuzz(rapid.MakeFuzz(hostileNet))
+}
 
 func hostileNet(t *rapid.T) {
 	m := &canopy.Model{}

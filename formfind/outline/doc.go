@@ -15,10 +15,12 @@
 //
 // The ASCII form of DXF as published from release 12 to 2018: pairs of lines, a
 // group code and a value. Read are LINE, POLYLINE (two and three dimensions,
-// bulges), LWPOLYLINE, ARC, CIRCLE and POINT in the section ENTITIES, in model
-// space, with extrusion directions (the arbitrary axis rule of the DXF
-// reference) and the header variable $INSUNITS. Everything else is counted in
-// [Drawing.Ignored].
+// bulges), LWPOLYLINE, ARC, CIRCLE, ELLIPSE, SPLINE and POINT in the section
+// ENTITIES, in model space, with extrusion directions (the arbitrary axis rule of
+// the DXF reference) and the header variable $INSUNITS. In the place of an ELLIPSE
+// or a SPLINE (by its control points) come circular arcs, and lines where it is
+// straight, that lie within a thousandth of its size from it; [Drawing.Replaced]
+// says how far. Everything else is counted in [Drawing.Ignored].
 //
 // # Units
 //

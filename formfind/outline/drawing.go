@@ -43,8 +43,9 @@ type Drawing struct {
 	Unit     Unit
 	Segments []Segment
 	Points   []Mark
-	Ignored  []Ignored // in the order of their kinds, then layers
-	Faults   []Fault   // what could not be read
+	Ignored  []Ignored  // in the order of their kinds, then layers
+	Replaced []Replaced // in the order of their layers
+	Faults   []Fault    // what could not be read
 }
 
 // Segment is a straight line or a circular arc.

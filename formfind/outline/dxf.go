@@ -7,6 +7,7 @@ import (
 	"fmt"
 	"io"
 	"math"
+	"slices"
 	"sort"
 	"strconv"
 	"strings"
@@ -19,8 +20,12 @@ import (
 // ReadDXF reads an ASCII DXF drawing. What is wrong in the drawing is in
 // Drawing.Faults; the error is one of reading r.
 func ReadDXF(r io.Reader) (*Drawing, error) {
-	x := &dxf{in: bufio.NewReaderSize(r, 1<<16), d: &Drawing{}, ignored: map[[2]string]*Ignored{}}
+	x := &dxf{in: bufio.NewReaderSize(r, 1<<16), d: &Drawing{}, ignored: map[[2]string]*Ignored{}, replaced: map[string]*Replaced{}}
 	err := x.read()
+	for _, g := range x.replaced {
+		x.d.Replaced = append(x.d.Replaced, *g)
+	}
+	slices.SortFunc(x.d.Replaced, func(a, b Replaced) int { return strings.Compare(a.Layer, b.Layer) })
 	for _, g := range x.ignored {
 		x.d.Ignored = append(x.d.Ignored, *g)
 	}
@@ -43,14 +48,16 @@ type group struct {
 
 // dxf goes through the groups of a file.
 type dxf struct {
-	in      *bufio.Reader
-	d       *Drawing
-	line    int
-	back    *group // read once more
-	ignored map[[2]string]*Ignored
-	count   int
-	path    int
-	stopped bool
+	in       *bufio.Reader
+	d        *Drawing
+	line     int
+	back     *group // read once more
+	ignored  map[[2]string]*Ignored
+	replaced map[string]*Replaced // by layer
+	count    int
+	pieces   int // in the place of curves
+	path     int
+	stopped  bool
 }
 
 const longest = 1 << 16 // of a line
@@ -72,7 +79,7 @@ func (x *dxf) text() ([]byte, error) {
 // used reports whether the value of a group matters to the reader.
 func used(code int) bool {
 	switch code {
-	case 0, 2, 8, 9, 10, 11, 20, 21, 30, 31, 38, 40, 42, 50, 51, 67, 70, 210, 220, 230:
+	case 0, 2, 8, 9, 10, 11, 20, 21, 30, 31, 38, 40, 41, 42, 50, 51, 67, 70, 71, 210, 220, 230:
 		return true
 	}
 	return false
@@ -265,12 +272,18 @@ type props struct {
 	layer      string
 	paper, bad bool
 	x, y, z    [2]float64 // groups 10, 20, 30 and 11, 21, 31
-	radius     float64
-	start, end float64 // degrees
+	radius     float64    // of an ellipse: minor over major axis
+	start, end float64    // degrees; of an ellipse radians
+	hasEnd     bool
 	flags      int
 	elevation  float64
 	normal     r3.Vec
 	vertex     []vertex
+	// Of a spline.
+	degree  int
+	knot    []float64
+	weight  []float64
+	control []r3.Vec
 }
 
 // vertex is one corner of a polyline; its bulge is the tangent of a quarter of
@@ -323,6 +336,10 @@ func (x *dxf) entity(kind string, line int) error {
 		x.circle(p)
 	case "ARC":
 		x.arc(p)
+	case "ELLIPSE":
+		x.ellipse(p)
+	case "SPLINE":
+		x.spline(p)
 	case "LWPOLYLINE":
 		for i := range p.vertex {
 			p.vertex[i].at.Z = p.elevation
@@ -356,7 +373,7 @@ func (x *dxf) ignore(kind, layer string, line int) {
 
 // props reads the groups of an entity up to the next one.
 func (x *dxf) props(kind string, p *props) error {
-	known := kind == "LINE" || kind == "POINT" || kind == "CIRCLE" || kind == "ARC" || kind == "LWPOLYLINE" || kind == "POLYLINE" || kind == "VERTEX"
+	known := kind == "ELLIPSE" || kind == "SPLINE" || kind == "LINE" || kind == "POINT" || kind == "CIRCLE" || kind == "ARC" || kind == "LWPOLYLINE" || kind == "POLYLINE" || kind == "VERTEX"
 	for {
 		g, ok, err := x.next()
 		if err != nil {
@@ -402,6 +419,16 @@ func (x *dxf) props(kind string, p *props) error {
 			}
 			return &p.vertex[len(p.vertex)-1]
 		}
+		if kind == "SPLINE" {
+			if full := p.splineGroup(g, number, whole); full {
+				x.d.fail(g.line, "", "a SPLINE has more than %d numbers", maxEntities)
+				x.stopped, p.bad = true, true
+				return nil
+			}
+			if g.code != 8 && g.code != 67 {
+				continue
+			}
+		}
 		switch g.code {
 		case 8:
 			p.layer = printable(strings.TrimSpace(g.value))
@@ -438,11 +465,18 @@ func (x *dxf) props(kind string, p *props) error {
 		case 38:
 			number(&p.elevation)
 		case 40:
-			if kind == "CIRCLE" || kind == "ARC" {
+			if kind == "CIRCLE" || kind == "ARC" || kind == "ELLIPSE" {
 				number(&p.radius)
 			}
+		case 41:
+			if kind == "ELLIPSE" {
+				number(&p.start)
+			}
 		case 42:
-			if light {
+			if kind == "ELLIPSE" {
+				number(&p.end)
+				p.hasEnd = true
+			} else if light {
 				number(&last().bulge)
 			} else {
 				number(&p.start)
@@ -461,6 +495,34 @@ func (x *dxf) props(kind string, p *props) error {
 			number(&p.normal.Z)
 		}
 	}
+}
+
+// splineGroup takes a group of a SPLINE; full says that there are too many.
+func (p *props) splineGroup(g group, number func(*float64), whole func(*int)) (full bool) {
+	var v float64
+	switch g.code {
+	case 71:
+		whole(&p.degree)
+	case 40:
+		number(&v)
+		p.knot = append(p.knot, v)
+	case 41:
+		number(&v)
+		p.weight = append(p.weight, v)
+	case 10:
+		number(&v)
+		p.control = append(p.control, r3.Vec{X: v})
+	case 20, 30:
+		if number(&v); len(p.control) == 0 {
+			break
+		}
+		if c := &p.control[len(p.control)-1]; g.code == 20 {
+			c.Y = v
+		} else {
+			c.Z = v
+		}
+	}
+	return len(p.knot)+len(p.weight)+len(p.control) > maxEntities
 }
 
 // vertices reads the VERTEX entities of a POLYLINE up to SEQEND.

@@ -105,7 +105,13 @@ func TestEveryEntityOfEveryRelease(t *testing.T) {
 			}
 			want := map[string]int{"INSERT": 1, "TEXT": 1}
 			if !old {
-				want = map[string]int{"INSERT": 1, "TEXT": 1, "ELLIPSE": 1, "SPLINE": 1, "entities in paper space": 1}
+				want = map[string]int{"INSERT": 1, "TEXT": 1, "SPLINE without control points": 1, "entities in paper space": 1}
+			}
+			if !old {
+				require.Equal(t, "REST", d.Replaced[0].Layer)
+				l = on(d, "REST")
+				require.Len(t, l, d.Replaced[0].Pieces)
+				near(t, r3.Vec{X: 3}, l[0].A, "an ellipse")
 			}
 			for k, n := range want {
 				require.Equal(t, n, kinds[k], k)

@@ -114,7 +114,7 @@ func checkTrace(t *testing.T, d *outline.Drawing) {
 }
 
 func FuzzReadDXF(f *testing.F) {
-	for _, n := range []string{"entities-r12.dxf", "entities-r2000.dxf", "entities-r2018.dxf", "yard.dxf"} {
+	for _, n := range []string{"entities-r12.dxf", "entities-r2000.dxf", "entities-r2018.dxf", "yard.dxf", "curves.dxf"} {
 		b, err := os.ReadFile("testdata/" + n)
 		if err != nil {
 			f.Fatal(err)
@@ -125,6 +125,7 @@ func FuzzReadDXF(f *testing.F) {
 		f.Add([]byte("  0\nSECTION\n  2" + string(b[i:i+j]) + "ENDSEC\n  0\nEOF\n"))
 	}
 	f.Add([]byte(dxf("LINE 8 RIM 10 0 20 0 11 9 21 0", "LWPOLYLINE 8 RIM 10 9 20 0 10 9 20 9 42 0.3 10 0 20 0", "CIRCLE 8 TREE 10 7 20 4 40 1", "POINT 8 MAST 10 6 20 3")))
+	f.Add([]byte(dxf("SPLINE 8 RIM 71 2 40 0 40 0 40 0 40 1 40 1 40 1 41 1 41 0.7 41 1 10 0 20 0 10 9 20 0 10 9 20 9", "LINE 8 RIM 10 9 20 9 11 0 21 0", "ELLIPSE 8 TREE 10 7 20 4 11 1 21 0 40 0.5 41 0 42 6.283185307179586")))
 	f.Add([]byte(dxf("POLYLINE 8 A 70 9", "VERTEX 10 0 20 0 30 1", "VERTEX 10 1000 20 0 42 1", "VERTEX 10 1000 20 1000", "SEQEND")))
 	f.Fuzz(func(t *testing.T, b []byte) {
 		d, err := outline.ReadDXF(bytes.NewReader(b))

@@ -155,7 +155,7 @@ func (d *drawn) outline(g *fields) {
 		return
 	}
 	names := dr.Layers()
-	b.say(g.p, t.unlisted(dr, names))
+	b.say(g.p, t.unlisted(dr, names, u))
 	missing := false
 	for _, l := range t.layer {
 		missing = d.missing(l, names) || missing
@@ -187,7 +187,7 @@ func (d *drawn) outline(g *fields) {
 }
 
 // unlisted warns of layers and entities that are left out.
-func (t *traced) unlisted(dr *outline.Drawing, names []string) (out []outline.Fault) {
+func (t *traced) unlisted(dr *outline.Drawing, names []string, unit outline.Unit) (out []outline.Fault) {
 	type use struct{ n, line int }
 	uses := map[string]*use{}
 	count := func(layer string, line int) {
@@ -212,10 +212,17 @@ func (t *traced) unlisted(dr *outline.Drawing, names []string) (out []outline.Fa
 			out = append(out, outline.Fault{Line: u.line, Warning: true, Message: fmt.Sprintf("layer %q (%d line%s and points) is not in the model: left out", clip(name), u.n, plural(u.n)), Hint: "say what it is under layers, or ignore"})
 		}
 	}
+	for _, c := range dr.Replaced {
+		for _, l := range t.layer {
+			if l.Class != outline.Unused && strings.EqualFold(l.Name, c.Layer) {
+				out = append(out, outline.Fault{Line: c.Line, Warning: true, Message: fmt.Sprintf("%d ellipse%s or spline%s on layer %q drawn with %d arcs and lines, at most %.2g %s beside", c.Count, plural(c.Count), plural(c.Count), l.Name, c.Pieces, c.Off, unit.Name), Hint: "draw arcs where that is too far"})
+			}
+		}
+	}
 	for _, i := range dr.Ignored {
 		for _, l := range t.layer {
 			if l.Class != outline.Unused && strings.EqualFold(l.Name, i.Layer) {
-				out = append(out, outline.Fault{Line: i.Line, Warning: true, Message: fmt.Sprintf("%d %s on layer %q left out, the first here", i.Count, clip(i.Kind), l.Name), Hint: "outlines are read from LINE, POLYLINE, LWPOLYLINE, ARC, CIRCLE and POINT: break up blocks, draw curves as polylines"})
+				out = append(out, outline.Fault{Line: i.Line, Warning: true, Message: fmt.Sprintf("%d %s on layer %q left out, the first here", i.Count, clip(i.Kind), l.Name), Hint: "outlines are read from LINE, POLYLINE, LWPOLYLINE, ARC, CIRCLE, ELLIPSE, SPLINE (with control points) and POINT: break up blocks, draw other curves as polylines"})
 			}
 		}
 	}

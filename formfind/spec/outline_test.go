@@ -223,7 +223,7 @@ func TestEntitiesThatAreNotReadAreTold(t *testing.T) {
 	_, warned, err := readBeside("anticlast: 1\noutline: {file: a.dxf, units: m, layers: {RIM: fixed}, fabric: {prestress: 2}}\n", map[string]string{"a.dxf": text})
 	require.NoError(t, err)
 	require.Len(t, warned, 1, "what is on layers that are not used does not matter")
-	require.Contains(t, warned[0], `a.dxf:24: 1 SPLINE on layer "RIM" left out`)
+	require.Contains(t, warned[0], `a.dxf:24: 1 SPLINE without control points on layer "RIM" left out`)
 }
 
 func TestDrawingsStayInTheModelsFolder(t *testing.T) {

@@ -91,6 +91,49 @@ def yard():
     save(doc, "yard.dxf")
 
 
+def curves():
+    """Ellipses and splines, and places on them by the library's own evaluation."""
+    doc = ezdxf.new("R2010")
+    doc.header["$INSUNITS"] = 4
+    m = doc.modelspace()
+    places = []
+    for layer in ("WHOLE", "PART", "TILTED", "FREE", "ROUND", "CORNER", "CLOSED", "SPACE"):
+        doc.layers.new(layer)
+
+    def ellipse(layer, *args, **attribs):
+        e = m.add_ellipse(*args, dxfattribs={"layer": layer, **attribs})
+        a, b = e.dxf.start_param, e.dxf.end_param
+        for v in e.vertices([a + (b - a) * k / 200 for k in range(201)]):
+            places.append((layer, *v))
+
+    ellipse("WHOLE", (1000, 2000, 50), (3000, 1000, 0), 0.4)
+    ellipse("PART", (0, 0, 0), (0, 5000, 0), 0.7, 0.5, 4.0)
+    ellipse("TILTED", (0, 0, 0), (4000, 0, 0), 0.5, 0, math.pi, extrusion=(0, -1, 0))
+
+    def spline(layer, s):
+        s.dxf.layer = layer
+        t = s.construction_tool()
+        for v in t.approximate(400):
+            places.append((layer, *v))
+
+    spline("FREE", m.add_open_spline([(0, 0), (2000, 3000), (4000, -2000), (9000, 1000), (7000, 6000)]))
+    # A quarter of a circle of 1000 as a rational curve: exact.
+    spline("ROUND", m.add_rational_spline([(1000, 0), (1000, 1000), (0, 1000)], [1, math.sqrt(0.5), 1], degree=2))
+    corner = m.add_spline(dxfattribs={"degree": 3})
+    corner.control_points = [(0, 0), (0, 2000), (1000, 3000), (3000, 3000), (5000, 3000), (6000, 1000), (3000, 0)]
+    corner.knots = [0, 0, 0, 0, 1, 1, 1, 2, 2, 2, 2]
+    spline("CORNER", corner)
+    closed = m.add_spline(dxfattribs={"degree": 3})
+    closed.set_closed([(0, 0, 0), (4000, 500, 0), (5000, 4000, 0), (1000, 5000, 0), (-2000, 2000, 0)])
+    spline("CLOSED", closed)
+    spline("SPACE", m.add_open_spline([(0, 0, 0), (1000, 3000, 2000), (4000, 3000, -1000), (6000, 0, 3000)]))
+    save(doc, "curves.dxf")
+    with open("curves.csv", "w", encoding="utf-8", newline="\n") as f:
+        f.write("layer,x,y,z\n")
+        for layer, x, y, z in places:
+            f.write(f"{layer},{x:.6f},{y:.6f},{z:.6f}\n")
+
+
 def ropewalk():
     """The drawing of the example ropewalk-yard: a plan in mm, drawn for a yard."""
     doc = ezdxf.new("R2010")
@@ -117,4 +160,5 @@ entities("R12", "entities-r12.dxf")
 entities("R2000", "entities-r2000.dxf")
 entities("R2018", "entities-r2018.dxf")
 yard()
+curves()
 ropewalk()
