@@ -14,12 +14,13 @@ import "math"
 //
 // P. R. Amestoy, T. A. Davis & I. S. Duff: An approximate minimum degree
 // ordering algorithm. SIAM J. Matrix Anal. Appl. 17 (1996), 886-905.
-func minimumDegree(g graph, weight, order []int32) []int32 {
+func minimumDegree(g graph, weight, order []int32, mem *pool) []int32 {
 	n := g.n
 	if n == 0 {
 		return order
 	}
-	q := newQuotient(g, weight)
+	q := newQuotient(g, weight, mem)
+	defer mem.put(q.slab, q.list, q.head)
 	for q.left > 0 {
 		me := q.popLeast()
 		q.eliminate(me)
@@ -36,6 +37,7 @@ type quotient struct {
 	n       int
 	left    int   // weight not yet eliminated
 	total   int32 // weight altogether
+	slab    []int32
 	list    []int32
 	free    int32
 	start   []int32
@@ -58,26 +60,26 @@ type quotient struct {
 
 const none = int32(-1)
 
-func newQuotient(g graph, weight []int32) *quotient {
+func newQuotient(g graph, weight []int32, mem *pool) *quotient {
 	n := g.n
-	slab := make([]int32, 10*n)
+	whole := mem.get(12 * n)
+	slab := whole
 	cut := func() []int32 {
 		s := slab[:n:n]
 		slab = slab[n:]
 		return s
 	}
 	q := &quotient{
-		n: n, list: make([]int32, len(g.adj)+len(g.adj)/5+n),
+		n: n, slab: whole, list: mem.get(len(g.adj) + len(g.adj)/5 + n),
 		start: cut(), size: cut(), elems: cut(), weight: cut(), degree: cut(), mark: cut(),
 		next: cut(), prev: cut(), member: cut(), last: cut(),
-		bucket: make([]int32, n),
-		epoch:  2,
+		bucket: cut(), pivots: cut()[:0],
+		epoch: 2,
 	}
 	copy(q.list, g.adj)
 	q.free = int32(len(g.adj))
-	q.pivots = make([]int32, 0, n)
 	for i := range n {
-		q.bucket[i], q.member[i] = none, none
+		q.bucket[i], q.member[i], q.elems[i] = none, none, 0
 		q.last[i] = int32(i)
 		q.start[i] = g.ptr[i]
 		q.size[i] = g.ptr[i+1] - g.ptr[i]
@@ -99,7 +101,7 @@ func newQuotient(g graph, weight []int32) *quotient {
 			}
 		}
 	}
-	q.head = make([]int32, q.total+1)
+	q.head = mem.get(int(q.total) + 1)
 	for d := range q.head {
 		q.head[d] = none
 	}

@@ -73,8 +73,8 @@ func Analyze(ctx context.Context, n int, pairs [][2]int32, o Options) (*Analysis
 	if err := ctx.Err(); err != nil {
 		return nil, err
 	}
-	g := newGraph(n, pairs)
-	mem := &pool{}
+	mem := newPool(n, len(pairs))
+	g := newGraph(n, pairs, mem)
 	var s sweep
 	swept := n >= sweepFrom && o.Ordering != OrderNatural || o.Ordering == OrderDissection
 	if swept {
@@ -86,18 +86,22 @@ func Analyze(ctx context.Context, n int, pairs [][2]int32, o Options) (*Analysis
 	if err != nil {
 		return nil, err
 	}
-	a := &Analysis{n: n, entries: len(pairs), opts: o, order: order, place: make([]int32, n)}
+	a := &Analysis{n: n, entries: len(pairs), opts: o, order: order, place: large[int32](n)}
 	a.cost.Ordering = chosen
 	if err := a.symbolic(ctx, g, mem); err != nil {
 		return nil, err
 	}
 	mem.put(g.ptr, g.adj)
+	order, a.order = a.order, large[int32](n)
 	if swept {
-		for k, i := range a.order {
+		for k, i := range order {
 			a.order[k] = s.order[i]
 		}
 		invert(a.place, a.order)
+	} else {
+		copy(a.order, order)
 	}
+	mem.put(order)
 	a.plan = a.newPlan()
 	a.measure()
 	if o.MemoryBudget > 0 && a.cost.Bytes > o.MemoryBudget {
@@ -261,15 +265,15 @@ func (a *Analysis) joinColumns(parent, count []int32, mem *pool) {
 			into[s] = into[into[s]]
 		}
 	}
-	tree := make([]int32, ns)
+	tree := mem.get(size)
 	for s := range ns {
 		tree[s] = none
 		if into[s] == s && up[s] != none {
 			tree[s] = into[up[s]]
 		}
 	}
-	number := a.orderFronts(tree, into, cols, below) // kept supernodes in a new postorder
-	newNum := make([]int32, ns)
+	number := a.orderFronts(tree, into, cols, below, mem) // kept supernodes in a new postorder
+	newNum := mem.get(size)
 	for k, s := range number {
 		newNum[s] = int32(k)
 	}
@@ -285,7 +289,7 @@ func (a *Analysis) joinColumns(parent, count []int32, mem *pool) {
 			a.parent[k] = newNum[p]
 		}
 	}
-	at := slices.Clone(a.first[:m])
+	at := append(mem.get(m)[:0], a.first[:m]...)
 	order := mem.get(a.n)
 	for s := range ns {
 		k := newNum[into[s]]
@@ -297,39 +301,47 @@ func (a *Analysis) joinColumns(parent, count []int32, mem *pool) {
 	mem.put(a.order)
 	a.order = order
 	invert(a.place, a.order)
-	a.childPtr, a.children = childLists(a.parent)
+	mem.put(tree, newNum, number, at)
+	a.childPtr = make([]int32, m+1)
+	a.children = childLists(a.parent, a.childPtr, make([]int32, m))
 }
 
-func childLists(parent []int32) (ptr, list []int32) {
-	ptr = make([]int32, len(parent)+1)
+// childLists fills ptr and list, those of front s being
+// list[ptr[s]:ptr[s+1]], and returns the used part of list.
+func childLists(parent, ptr, list []int32) []int32 {
+	m := len(parent)
+	clear(ptr)
 	for _, p := range parent {
 		if p != none {
-			ptr[p+1]++
+			ptr[p]++
 		}
 	}
-	for i := range parent {
-		ptr[i+1] += ptr[i]
+	var sum int32
+	for s := range m {
+		sum += ptr[s]
+		ptr[s] = sum
 	}
-	list = make([]int32, ptr[len(parent)])
-	at := slices.Clone(ptr)
-	for s, p := range parent {
-		if p != none {
-			list[at[p]] = int32(s)
-			at[p]++
+	ptr[m] = sum
+	for s := m - 1; s >= 0; s-- {
+		if p := parent[s]; p != none {
+			ptr[p]--
+			list[ptr[p]] = int32(s)
 		}
 	}
-	return ptr, list
+	return list[:sum]
 }
 
 // orderFronts returns the kept supernodes (into[s] == s) in a postorder of
 // tree in which the subtree that needs most stack comes first among siblings
 // (Liu 1986, "On the storage requirement in the out-of-core multifrontal
 // method").
-func (a *Analysis) orderFronts(tree, into, cols, below []int32) []int32 {
+func (a *Analysis) orderFronts(tree, into, cols, below []int32, mem *pool) []int32 {
 	ns := len(tree)
 	peak := make([]int64, ns) // largest stack of the subtree
 	held := make([]int64, ns) // sum of the updates of the children handled so far
-	ptr, list := childLists(tree)
+	ptr, list := mem.get(ns+1), mem.get(ns)
+	defer mem.put(ptr, list)
+	list = childLists(tree, ptr, list)
 	size := func(s int) int64 { return int64(updateFloats(int(below[s]))) }
 	gain := func(s int32) int64 { return peak[s] - size(int(s)) }
 	for s := range ns {
@@ -355,7 +367,7 @@ func (a *Analysis) orderFronts(tree, into, cols, below []int32) []int32 {
 		}
 		peak[s] = max(peak[s], held[s]+size(s))
 	}
-	out := make([]int32, 0, ns)
+	out := mem.get(ns)[:0]
 	var stack []int32
 	for r := range ns {
 		if into[r] != int32(r) || tree[r] != none {
@@ -382,7 +394,7 @@ func (a *Analysis) orderFronts(tree, into, cols, below []int32) []int32 {
 // frontRows fills rows, runs and panel.
 func (a *Analysis) frontRows(g graph, mem *pool) {
 	m := int32(a.fronts())
-	a.rows = make([]int32, a.rowPtr[m])
+	a.rows = large[int32](int(a.rowPtr[m]))
 	a.panel = make([]int64, m+1)
 	a.runPtr = make([]int64, m)
 	a.runEnd = make([]int64, m)
@@ -514,8 +526,8 @@ func (a *Analysis) assembly(pairs [][2]int32, mem *pool) error {
 	for s := range m {
 		a.sourcePtr[s+1] += a.sourcePtr[s]
 	}
-	a.source = make([]int32, len(pairs))
-	a.target = make([]int32, len(pairs))
+	a.source = large[int32](len(pairs))
+	a.target = large[int32](len(pairs))
 	at := slices.Clone(a.sourcePtr[:m])
 	for k, s := range front {
 		a.source[at[s]] = int32(k)

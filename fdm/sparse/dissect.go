@@ -39,6 +39,7 @@ var across = [4]int{1, 0, 3, 2}
 
 type dissector struct {
 	g      graph
+	mem    *pool
 	weight []int32 // unknowns a node stands for; nil if one each
 	at     []point
 	region []int32 // part a node is in, by the place where the part starts; negative once numbered
@@ -63,7 +64,7 @@ type dissector struct {
 
 func newDissector(g graph, weight []int32, mem *pool) *dissector {
 	n := g.n
-	d := &dissector{g: g, weight: weight, at: make([]point, n), region: mem.get(n), queue: mem.get(n)}
+	d := &dissector{g: g, mem: mem, weight: weight, at: mem.points(n), region: mem.get(n), queue: mem.get(n)}
 	for k := range d.lend {
 		d.lend[k] = mem.get(n)
 	}
@@ -517,7 +518,7 @@ func (d *dissector) orderRest(nodes []int32) {
 			weight[k] = d.weight[i]
 		}
 	}
-	order := minimumDegree(sub, weight, make([]int32, 0, sub.n))
+	order := minimumDegree(sub, weight, make([]int32, 0, sub.n), d.mem)
 	for k, i := range order {
 		order[k] = nodes[i]
 	}
@@ -532,7 +533,11 @@ func (d *dissector) orderRest(nodes []int32) {
 func dissect(ctx context.Context, g graph, s sweep, weight []int32, picky bool, mem *pool) ([]int32, bool) {
 	d := newDissector(g, weight, mem)
 	defer mem.put(d.region, d.queue, d.lend[0], d.lend[1], d.lend[2])
-	all, pts := make([]int32, g.n), make([]point, g.n)
+	all, pts := mem.get(g.n), mem.points(g.n)
+	defer func() {
+		mem.putPoints(d.at)
+		mem.putPoints(pts)
+	}()
 	for i := range all {
 		all[i] = int32(i)
 	}
@@ -554,6 +559,7 @@ func dissect(ctx context.Context, g graph, s sweep, weight []int32, picky bool, 
 		}
 		d.split(ctx, int(from), int(to))
 		if d.rough {
+			mem.put(all)
 			return nil, false
 		}
 	}

@@ -42,7 +42,7 @@ func postorder(parent []int32, mem *pool) []int32 {
 			roots = i
 		}
 	}
-	post := make([]int32, 0, n)
+	post := mem.get(n)[:0]
 	stack := make([]int32, 0, 64)
 	for r := roots; r != none; r = sibling[r] {
 		stack = append(stack, r)

@@ -10,8 +10,8 @@ type graph struct {
 
 // newGraph builds the adjacency of n nodes from pairs given in either
 // direction, dropping loops and duplicates. Cost O(n + len(pairs)).
-func newGraph(n int, pairs [][2]int32) graph {
-	ptr := make([]int32, n+1)
+func newGraph(n int, pairs [][2]int32, mem *pool) graph {
+	ptr := mem.filled(n+1, 0)
 	for _, p := range pairs {
 		if p[0] != p[1] {
 			ptr[p[0]]++
@@ -23,7 +23,7 @@ func newGraph(n int, pairs [][2]int32) graph {
 		ptr[i] = sum
 		sum += d
 	}
-	adj := make([]int32, sum)
+	adj := mem.get(int(sum))
 	for _, p := range pairs {
 		i, j := p[0], p[1]
 		if i != j {
@@ -35,7 +35,8 @@ func newGraph(n int, pairs [][2]int32) graph {
 	}
 	// ptr[i] is now the end of row i: compact while dropping duplicates.
 	// seen[j] = i+1 marks j as met in row i.
-	seen := make([]int32, n)
+	seen := mem.filled(n, 0)
+	defer mem.put(seen)
 	var out, from int32
 	for i := range n {
 		end := ptr[i]

@@ -20,7 +20,7 @@ const (
 // was taken. s is the sweep that gave g its numbering.
 func orderGraph(ctx context.Context, g graph, s sweep, o Ordering, mem *pool) ([]int32, Ordering, error) {
 	if o == OrderNatural {
-		order := make([]int32, g.n)
+		order := mem.get(g.n)
 		for i := range order {
 			order[i] = int32(i)
 		}
@@ -59,5 +59,5 @@ func orderNodes(ctx context.Context, g graph, s sweep, weight []int32, o Orderin
 			return order, OrderDissection
 		}
 	}
-	return minimumDegree(g, weight, make([]int32, 0, g.n)), OrderMinimumDegree
+	return minimumDegree(g, weight, mem.get(g.n)[:0], mem), OrderMinimumDegree
 }
