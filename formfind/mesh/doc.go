@@ -29,8 +29,12 @@
 // constrained Delaunay (Lawson 1977; Sloan 1993) with exact predicates (after
 // Shewchuk 1997), filled by an advancing front (Rebay 1993) and refined by
 // circumcentres (Chew 1993; Ruppert 1995), smoothed, and lifted into space by mean
-// value coordinates (Floater 2003). Its sides may be divided in any way.
-// [BuildMeasured] says how well that went, and what stood in the way where an
+// value coordinates (Floater 2003). Its sides may be divided in any way. Where it is
+// narrower than they are long they are divided further, at places of their curve
+// and for all fabrics along them, until no angle is below [AngleBound] but in sharp
+// corners. Left as they are: edges whose number of segments is given, edges of
+// structured patches and of nets, and cables with a force density, whose force
+// hangs on that number. [BuildMeasured] says how well that went, and what stood in the way where an
 // angle is below [AngleBound]. The model may ask for either kind, and give the
 // plane.
 //

@@ -7,11 +7,12 @@ import (
 	"gonum.org/v1/gonum/spatial/r3"
 )
 
-// freePatch fills any outline, with a ring, holes, lines and points in it, by constrained
-// Delaunay triangulation in the plane of the outline and refinement by
+// freePatch fills any outline, with a ring, holes, lines and points in it, by
+// constrained Delaunay triangulation in the plane of the outline and refinement by
 // circumcentres (Chew 1989, Ruppert 1995). The sides stay as they are divided,
-// since neighbours share their nodes; inside, the size of triangles follows that
-// of the sides nearby.
+// since neighbours share their nodes; which of them should be divided further is
+// noted (see narrow.go). Inside, the size of triangles follows that of the sides
+// nearby.
 type freePatch struct{}
 
 func (freePatch) relate(*division, *loop) {}

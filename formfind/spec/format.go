@@ -112,7 +112,7 @@ var edgeSection = &section{id: "edge", doc: "A line from one point to another: a
 		{name: "arch", shape: yesNo(), deflt: "false", example: "true",
 			doc: "A fixed edge that is an arch: the load along it is reported in kN/m."},
 		{name: "segments", shape: count(1, 10000), deflt: "from the mesh size", example: "16",
-			doc: "Number of mesh sides along it."},
+			doc: "Number of mesh sides along it, kept even where the outline is narrower than they are long."},
 	}}
 
 var cableSection = &section{id: "cable", doc: "A cable along several edges in a row. Exactly one of force, force density, mean force, sag, length and unstressed (with stiffness) is given.",
