@@ -1,6 +1,10 @@
 package canopy
 
-import "gonum.org/v1/gonum/spatial/r3"
+import (
+	"math"
+
+	"gonum.org/v1/gonum/spatial/r3"
+)
 
 // WarpAt returns the wanted warp direction of triangle t with its corners at a, b
 // and c: not zero, to be projected into the triangle.
@@ -32,20 +36,22 @@ func (s *Structure) WarpAt(t int, a, b, c r3.Vec) r3.Vec {
 // normal and in the axis plane, outwards where that can be told. Zero where it is
 // undefined.
 func WarpAbout(rule WarpRule, axis, offset, normal r3.Vec) r3.Vec {
+	// Triangles by the million ask: lengths without a guard against overflow.
 	around := r3.Cross(axis, offset)
-	if r3.Norm(around) == 0 {
+	l := math.Sqrt(r3.Norm2(around))
+	if l == 0 {
 		return r3.Vec{}
 	}
-	around = r3.Unit(around)
+	around = r3.Scale(1/l, around)
 	if rule == WarpAround {
 		return around
 	}
 	w := r3.Cross(around, normal)
-	if r3.Norm(w) == 0 {
+	if l = math.Sqrt(r3.Norm2(w)); l == 0 {
 		return r3.Vec{}
 	}
 	if r3.Dot(w, offset) < 0 {
-		w = r3.Scale(-1, w)
+		l = -l
 	}
-	return r3.Unit(w)
+	return r3.Scale(1/l, w)
 }

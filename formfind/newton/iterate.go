@@ -157,7 +157,7 @@ func (v *Solver) iterate(ctx context.Context, set engine.Settings, first int) (e
 	v.mixing.forget()
 	size := v.modelSize(v.now.at)
 	hasEnergy := v.potential()
-	mayReuse := !set.AllDirections && !v.uneven && len(v.commons) == 0 && !v.hasElastic()
+	mayReuse := !set.AllDirections && !v.uneven && !v.hasElastic() && !v.encloses()
 	v.evaluate(&v.now)
 	refused := 0
 	v.target, v.reuse = set.Residual, false
@@ -182,8 +182,8 @@ func (v *Solver) iterate(ctx context.Context, set engine.Settings, first int) (e
 		}
 		if !v.reuse {
 			v.assemble(&v.now)
-			v.columnsOf(&v.now)
 		}
+		v.columnsOf(&v.now)
 		err := v.newtonStep(ctx, &v.now, &st)
 		if err != nil {
 			return out, err
@@ -298,6 +298,16 @@ func (v *Solver) mixedStep(ctx context.Context, st *step, size float64) (bool, e
 	}
 	v.mixing.forget()
 	return false, nil
+}
+
+// encloses reports whether the pressure of some air is an unknown.
+func (v *Solver) encloses() bool {
+	for k := range v.commons {
+		if v.commons[k].pocket != nil {
+			return true
+		}
+	}
+	return false
 }
 
 func (v *Solver) gapsMet(tol float64) bool {
