@@ -1,6 +1,7 @@
 package mesh_test
 
 import (
+	"fmt"
 	"runtime"
 	"testing"
 
@@ -47,9 +48,17 @@ func TestLargeMeshes(t *testing.T) {
 	runtime.KeepAlive(s)
 }
 
+// Time and memory of 92,000, 250,000 and 1,000,000 triangles.
 func BenchmarkFreeSquare(b *testing.B) {
-	m := freeSquare(200)
-	for b.Loop() {
-		build(b, m)
+	for _, n := range []float64{200, 330, 660} {
+		m := freeSquare(n)
+		b.Run(fmt.Sprintf("%.0fk", n*n/433), func(b *testing.B) {
+			b.ReportAllocs()
+			triangles := 0
+			for b.Loop() {
+				triangles = len(build(b, m).Corners)
+			}
+			b.ReportMetric(float64(b.Elapsed().Nanoseconds())/float64(b.N)/float64(triangles), "ns/triangle")
+		})
 	}
 }
