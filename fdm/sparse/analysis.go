@@ -5,6 +5,7 @@ import (
 	"fmt"
 	"math"
 	"slices"
+	"sync/atomic"
 )
 
 // Analysis is everything about a system that follows from its pattern: the
@@ -44,6 +45,10 @@ type Analysis struct {
 	target    []int32
 
 	plan plan
+
+	// The working memory of the analysis. The first factor takes it for its
+	// panels.
+	spare atomic.Pointer[[]float64]
 }
 
 // Analyze orders and plans the elimination of a symmetric matrix with n
@@ -67,7 +72,7 @@ func Analyze(ctx context.Context, n int, pairs [][2]int32, o Options) (*Analysis
 		}
 	}
 	// The pattern itself takes about this much before anything else is known.
-	if need := int64(n)*60 + int64(len(pairs))*24; o.MemoryBudget > 0 && need > o.MemoryBudget {
+	if need := int64(n)*72 + int64(len(pairs))*24; o.MemoryBudget > 0 && need > o.MemoryBudget {
 		return nil, &BudgetError{Need: need, Budget: o.MemoryBudget}
 	}
 	if err := ctx.Err(); err != nil {
@@ -110,6 +115,7 @@ func Analyze(ctx context.Context, n int, pairs [][2]int32, o Options) (*Analysis
 	if err := a.assembly(pairs, mem); err != nil {
 		return nil, err
 	}
+	a.spare.Store(&mem.all)
 	return a, nil
 }
 

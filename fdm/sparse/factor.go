@@ -38,7 +38,7 @@ func (a *Analysis) NewFactor(k Kind) (*Factor, error) {
 		return nil, fmt.Errorf("sparse: unknown kind of factorisation %d", int(k))
 	}
 	f := &Factor{a: a, kind: k}
-	f.panels = newPanelStore(a.panel)
+	f.panels = newPanelStore(a.panel, a.spare.Swap(nil))
 	f.crew.init(f, a.workers())
 	if k == LDL {
 		f.diag = make([]float64, a.n)

@@ -6,7 +6,8 @@ import "unsafe"
 // and hands out again what an earlier step has done with: fresh memory costs as
 // much to touch as most of these steps take.
 type pool struct {
-	slab []int32
+	all  []float64
+	slab []int32 // what has not been lent yet
 	free [][]int32
 }
 
@@ -17,7 +18,9 @@ const minSplit = 64
 // newPool has room for what the analysis of n unknowns and so many pairs needs
 // at a time, about. There may be less or more.
 func newPool(n, pairs int) *pool {
-	return &pool{slab: large[int32](16*n + 4*pairs + 64), free: make([][]int32, 0, 32)}
+	all := large[float64](8*n + 2*pairs + 32)
+	slab := unsafe.Slice((*int32)(unsafe.Pointer(unsafe.SliceData(all))), 2*len(all))
+	return &pool{all: all, slab: slab, free: make([][]int32, 0, 32)}
 }
 
 // get returns an array of length n with any content.
