@@ -89,7 +89,8 @@ func freeCatenoid(t *testing.T, h float64, n int) *canopy.Structure {
 
 // freeCap is a film on a circle on a free mesh.
 func freeCap(t *testing.T, radius, pressure, stress float64, n int) *canopy.Structure {
-	side := math.Sqrt(math.Pi * radius * radius * 4 / math.Sqrt(3) / float64(8*n*n))
+	// Triangles come out half as large again as equilateral ones of this side.
+	side := math.Sqrt(math.Pi*radius*radius*4/math.Sqrt(3)/float64(8*n*n)) * 0.825
 	m := circleModel(radius, side)
 	for i := range m.Edges {
 		m.Edges[i].Segments = int(math.Round(math.Pi/2*radius/side)) + i%2

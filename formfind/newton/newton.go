@@ -19,7 +19,8 @@
 //
 //	(Bᵀ H B) u = −Bᵀ g
 //
-// by a sparse factorisation. Where the tangent is not positive definite a
+// by a sparse factorisation, or with the help of a coarser mesh (see
+// [Solver.Above]). Where the tangent is not positive definite a
 // growing multiple of the identity is added until it is; steps are shortened
 // until the residual or the energy falls and no triangle is turned over.
 //
