@@ -10,6 +10,7 @@ import (
 )
 
 func (d *drawn) nets(f *fields) {
+	d.outlineNets()
 	for _, e := range f.named("nets") {
 		p := f.p.down("nets").down(e.name)
 		if d.r.mapping(e.n, p, netSection) == nil {
@@ -22,21 +23,7 @@ func (d *drawn) nets(f *fields) {
 func (d *drawn) net(e entry, g *fields) {
 	p := g.p
 	net := canopy.Net{Name: e.name, Line: line(e.kn)}
-	switch g.word("pattern") {
-	case "along sides":
-		net.Pattern = canopy.NetSides
-	case "straight":
-		net.Pattern = canopy.NetStraight
-	case "radial":
-		net.Pattern = canopy.NetRadial
-	}
-	if n := g.get("direction"); n != nil {
-		net.Direction = d.netDirection(n, g, e.name)
-	}
-	d.equalMesh(g, &net)
-	if n := g.get("families"); n != nil {
-		d.families(n, g, &net)
-	}
+	d.netLines(g, &net)
 	refs, _ := g.refs("boundary")
 	for _, q := range refs {
 		net.Boundary = append(net.Boundary, q.name)
@@ -46,6 +33,25 @@ func (d *drawn) net(e entry, g *fields) {
 	d.netFits(g, &net)
 	d.m.Nets = append(d.m.Nets, net)
 	d.netAt = append(d.netAt, ref{e.name, e.kn, p})
+}
+
+// netLines reads how the lines of a net run.
+func (d *drawn) netLines(g *fields, net *canopy.Net) {
+	switch g.word("pattern") {
+	case "along sides":
+		net.Pattern = canopy.NetSides
+	case "straight":
+		net.Pattern = canopy.NetStraight
+	case "radial":
+		net.Pattern = canopy.NetRadial
+	}
+	if n := g.get("direction"); n != nil {
+		net.Direction = d.netDirection(n, g, net.Name)
+	}
+	d.equalMesh(g, net)
+	if n := g.get("families"); n != nil {
+		d.families(n, g, net)
+	}
 }
 
 // netDirection reads a direction or the points it runs between.

@@ -56,7 +56,7 @@ var meshEdgeSection = &section{id: "outline-mesh-edge", doc: "The cables along t
 		{name: "strength", shape: quantity(Force).above(0), example: "110 kN", doc: "Characteristic breaking force, for utilisation."},
 	}}
 
-var outlineSection = &section{id: "outline", doc: "An outline drawn elsewhere. Its points and edges are called by layer and number, RIM:1, RIM:2, …, in the order of the drawing, and may be used in the rest of the model; points of the role point or anchor come first. Seen from above, every face that its lines enclose becomes a fabric, except holes.", keys: []*key{
+var outlineSection = &section{id: "outline", doc: "An outline drawn elsewhere. Its points and edges are called by layer and number, RIM:1, RIM:2, …, in the order of the drawing, and may be used in the rest of the model; points of the role point or anchor come first. Seen from above, every face that its lines enclose becomes a fabric, or a net, except holes.", keys: []*key{
 	{name: "file", shape: text(), required: true, example: "yard.dxf", doc: "The drawing (.dxf: ASCII DXF, release 12 to 2018; .csv: columns layer, x, y and z, a blank row between polylines) or mesh (.obj, .stl), in the model's folder."},
 	{name: "units", shape: word(outline.UnitNames()...), deflt: "as the file states (DXF $INSUNITS, or x [mm] in a CSV header); needed where it states none", example: "mm", doc: "Unit of the coordinates in the file."},
 	{name: "snap", shape: quantity(Length).from(0).upTo(10), deflt: "1 mm", example: "5 mm", doc: "Ends that are closer than this are one point."},
@@ -65,5 +65,6 @@ var outlineSection = &section{id: "outline", doc: "An outline drawn elsewhere. I
 		doc: "What each layer is. Short forms: fixed, arch, seam, hole (fixed along its rim), point, anchor, mast, guy, ignore. Layers that are not listed are left out, with a warning."},
 	{name: "heights", shape: listOf(in(heightSection), 1), example: "[{point: RIM:1, z: 4.5 m}, {at: [9, 0], z: 3 m}]", doc: "Heights of points, for drawings in plan. They count more than heights of layers."},
 	{name: "fabric", shape: in(outlineFabricSection), deflt: "none; list fabrics in the model", example: "{prestress: 2.5 kN/m}", doc: "The fabric that fills the outline, or the fabric of a mesh."},
+	{name: "net", shape: in(outlineNetSection), deflt: "none; list nets in the model", example: "{families: [{spacing: 1 m, force: 5 kN}, {spacing: 1 m, force: 5 kN}]}", doc: "The cable net that fills the outline of a drawing, in place of a fabric."},
 	{name: "edge", shape: either(word("fixed"), in(meshEdgeSection)), deflt: "fixed", example: "{force: 25 kN}", doc: "What the edges of an OBJ or STL mesh are. With cables the corners are anchored."},
 }}

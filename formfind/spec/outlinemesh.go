@@ -26,6 +26,9 @@ func (r *reader) outlineMesh(f, g *fields, m *canopy.Model) {
 			r.fail(g.keyNode(k), g.p.down(k), k+" are for drawings; a mesh has none", "remove it")
 		}
 	}
+	if g.has("net") {
+		r.fail(g.keyNode("net"), g.p.down("net"), "a net goes into a drawing; a mesh is one of fabric", "remove it, or draw the outline as DXF")
+	}
 	fab, ok := r.meshFabric(g)
 	edge, cables := r.meshEdge(g)
 	n := g.get("file")
