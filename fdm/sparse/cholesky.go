@@ -6,6 +6,9 @@ const (
 	// blockColumns is the width of the column blocks of a front: 64 columns of
 	// 128 rows fit a second-level cache and leave room for the rest.
 	blockColumns = 64
+	// groupColumns is the number of columns, a multiple of blockColumns, after
+	// which those beyond are brought up to date: they come from memory each time.
+	groupColumns = 192
 	// blockRows is the height of the pieces in which a block is worked on.
 	blockRows = 128
 	// shareFlops is the work below which helpers are not woken.
@@ -48,8 +51,12 @@ func choleskyPanel(f []float64, ld, m, n int, w *worker) (int, float64) {
 		}
 		r := k + b.w
 		w.each(jobRows, (m-r+blockRows-1)/blockRows, float64(m-r)*float64(b.w*b.w))
-		if r < n {
-			w.lowerProduct(f[r*ld+r:], ld, f[k*ld+r:], ld, m-r, n-r, b.w, false)
+		// The columns of the same group now, the rest after the last of the group.
+		if end := min(k/groupColumns*groupColumns+groupColumns, n); r < end {
+			w.lowerProduct(f[r*ld+r:], ld, f[k*ld+r:], ld, m-r, end-r, b.w, false)
+		} else if r < n {
+			from := k / groupColumns * groupColumns
+			w.lowerProduct(f[r*ld+r:], ld, f[from*ld+r:], ld, m-r, n-r, r-from, false)
 		}
 	}
 	return -1, 0

@@ -291,6 +291,51 @@ func TestPackedProducts(t *testing.T) {
 	})
 }
 
+// L·Lᵀ of the columns of a front gives the front back, whether these are one
+// block, a group of blocks or several groups.
+func TestPanelsOfEveryWidth(t *testing.T) {
+	bothPaths(t, func(t *testing.T) {
+		rng := rand.New(rand.NewPCG(8, 8))
+		for _, s := range [][2]int{{9, 5}, {70, 64}, {257, 65}, {300, 193}, {300, 300}, {430, 400}} {
+			m, n := s[0], s[1]
+			a := make([]float64, m*n+slack)
+			for j := range n {
+				for i := j; i < m; i++ {
+					a[j*m+i] = rng.Float64() - 0.5
+				}
+				a[j*(m+1)] = float64(m) // diagonally dominant
+			}
+			f := append([]float64(nil), a...)
+			w := &worker{alone: true, scratch: make([]float64, (m+packRows)*packDepth)}
+			if bad, pivot := choleskyPanel(f, m, m, n, w); bad >= 0 {
+				t.Fatalf("%v: pivot %d is %g", s, bad, pivot)
+			}
+			for j := range n {
+				f[j*(m+1)] = 1 / f[j*(m+1)]
+			}
+			for j := range n {
+				for i := j; i < m; i++ {
+					sum := 0.0
+					for k := range j + 1 {
+						sum += f[k*m+i] * f[k*m+j]
+					}
+					if !(math.Abs(sum-a[j*m+i]) <= 1e-12*float64(m)) {
+						t.Fatalf("%v: (%d, %d) is %g, want %g", s, i, j, sum, a[j*m+i])
+					}
+				}
+			}
+			// The first bad pivot is named, in whatever block.
+			for _, bad := range []int{0, n / 2, n - 1} {
+				copy(f, a)
+				f[bad*(m+1)] = -1
+				if got, pivot := choleskyPanel(f, m, m, n, w); got != bad || !(pivot < 0) {
+					t.Fatalf("%v: bad pivot %d found as %d, %g", s, bad, got, pivot)
+				}
+			}
+		}
+	})
+}
+
 // The same systems solved by both paths agree to rounding.
 func TestPathsAgreeOnSystems(t *testing.T) {
 	if !haveStrips {

@@ -3,7 +3,7 @@ package sparse
 const (
 	wideBlocks  = 3   // packed blocks that a kernel for wide registers takes together
 	packRows    = 8   // rows of a packed block
-	packDepth   = 128 // columns packed at a time: a block of eight rows is a quarter of the first-level cache
+	packDepth   = 256 // columns packed at a time: a block of eight rows is half of the smallest first-level cache in use
 	packColumns = 64  // columns of C worked on at a time: their blocks are a part of the second-level cache
 	packFrom    = 96  // rows from which packing pays, in a product at least packThick deep
 	packThick   = 24
