@@ -120,17 +120,28 @@ func (s *Structure) sidesOf(name string, at []int32) ([]fabricSide, error) {
 		for j < len(halves) && halves[j].a == halves[i].a && halves[j].b == halves[i].b {
 			j++
 		}
-		h := halves[i]
-		side := fabricSide{a: h.a, b: h.b, fabric: [2]int32{h.fabric, -1}}
-		switch j - i {
-		case 1:
-		case 2:
-			side.fabric[1] = halves[i+1].fabric
-			side.same = h.back == halves[i+1].back
-		default:
-			return nil, &EnclosureError{name, fmt.Sprintf("%d films of it meet between nodes %s and %s, so that it is more than one volume", j-i, s.NodeName.At(int(h.a)), s.NodeName.At(int(h.b))), "name only the fabrics around one volume"}
+		// Two films on one boundary may cut the same corner: then the side is
+		// inside each of them.
+		var single []half
+		for k := i; k < j; k++ {
+			h := halves[k]
+			if k+1 < j && halves[k+1].fabric == h.fabric {
+				out = append(out, fabricSide{h.a, h.b, [2]int32{h.fabric, h.fabric}, h.back == halves[k+1].back})
+				k++
+				continue
+			}
+			single = append(single, h)
 		}
-		out = append(out, side)
+		h := halves[i]
+		switch n := j - i; {
+		case len(single) == 0:
+		case n == 1:
+			out = append(out, fabricSide{h.a, h.b, [2]int32{h.fabric, -1}, false})
+		case n == 2:
+			out = append(out, fabricSide{h.a, h.b, [2]int32{h.fabric, single[1].fabric}, h.back == single[1].back})
+		default:
+			return nil, &EnclosureError{name, fmt.Sprintf("%d films of it meet between nodes %s and %s, so that it is more than one volume", n, s.NodeName.At(int(h.a)), s.NodeName.At(int(h.b))), "name only the fabrics around one volume"}
+		}
 		i = j
 	}
 	return out, nil

@@ -68,7 +68,7 @@ func (b *builder) build() (*canopy.Structure, error) {
 	if err := b.fillFinely(run); err != nil {
 		return nil, err
 	}
-	if err := run(b.cables, b.stays, b.finish, b.verify, b.enclosures); err != nil {
+	if err := run(b.cables, b.stays, b.finish, b.openCorners, b.verify, b.enclosures); err != nil {
 		return nil, err
 	}
 	return b.s, nil
