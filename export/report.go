@@ -597,6 +597,9 @@ func (p *report) audit() {
 	if len(s.Corners) > 0 {
 		item("Mesh: the smallest angle is %.1f°.", degrees(a.MinAngle))
 	}
+	if len(s.Corners) > 0 && math.IsNaN(a.Discretisation) {
+		item("Fineness: how far a finer mesh would move the surface was not judged.")
+	}
 	if a.Discretisation > 0 {
 		item("Fineness: one refinement moved the surface by about %s of its size.", tiny(a.Discretisation))
 	}

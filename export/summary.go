@@ -557,7 +557,10 @@ func (p *page) audit(r *canopy.Result) {
 	}
 	if len(r.Structure.Corners) > 0 && a.MinAngle > 0 {
 		line := fmt.Sprintf("smallest mesh angle %.1f°", degrees(a.MinAngle))
-		if !math.IsNaN(a.Discretisation) && a.Discretisation > 0 {
+		switch {
+		case math.IsNaN(a.Discretisation):
+			line += "; how far a finer mesh would move the surface was not judged"
+		case a.Discretisation > 0:
 			line += fmt.Sprintf("; a finer mesh would move the surface by about %s of its size", tiny(a.Discretisation))
 		}
 		p.wrap("  ", line)

@@ -28,6 +28,10 @@ type chain struct {
 	solver *newton.Solver // that found it
 	did    []string
 	use    []string
+	// eased is the structure with another ratio of warp to weft, see ease.
+	eased *canopy.Structure
+	// hung says that only the mesh holds the shape, see unreal.
+	hung bool
 	// unstable is how many unstable directions Newton's last shape has.
 	unstable int
 }
@@ -58,15 +62,20 @@ func findForm(ctx context.Context, s *canopy.Structure, o Options) (found, error
 	if err != nil {
 		return found{}, err
 	}
+	if c.hung {
+		c.f.Converged = false
+		c.f.Why = "the surface hangs on a few drawn-out triangles and is far from balance in its plane: only the mesh holds this shape"
+	}
 	c.f.Steps, c.f.Engines = c.did, c.use
-	return found{c.f, c.smooth, c.solver}, nil
+	return found{c.f, c.smooth, c.solver, c.eased}, nil
 }
 
 // found is what a chain of engines ends with. surface is the fabric's before the
 // pass that balances in all directions.
 type found struct {
 	form, surface *canopy.Form
-	solver        *newton.Solver // of the surface
+	solver        *newton.Solver    // of the surface
+	eased         *canopy.Structure // with the stress ratio that was eased, nil
 }
 
 // net finds the shape of a structure without triangles.
@@ -297,6 +306,7 @@ func (c *chain) iterate(ctx context.Context, all bool, starts []start, more func
 	}
 	keep := func() error {
 		c.f = best.form
+		c.hung = best.unreal
 		if len(starts) > 1 {
 			c.say("kept the best of these")
 		}

@@ -41,7 +41,7 @@ func (c *chain) ease(ctx context.Context) error {
 			return err
 		}
 		if good {
-			c.f, c.smooth, c.use = sub.f, sub.smooth, sub.use
+			c.f, c.smooth, c.use, c.eased, c.hung = sub.f, sub.smooth, sub.use, &s, sub.hung
 			c.did = append(c.did, sub.did...)
 			c.say("the outline does not let the fabric hold the wanted ratio of warp to weft: eased to the power %.2g of it, with which the shape is stable", share)
 			return nil

@@ -62,6 +62,7 @@ type Options struct {
 	level   string         // which of several levels this is
 	eased   bool           // the ratio of warp to weft has been eased
 	stiff   bool           // links of a length make single nodes far worse than the mean
+	live    bool           // started from an earlier form: answer soon
 	surface bool           // leave out the pass that balances in all directions
 }
 

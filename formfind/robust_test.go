@@ -10,6 +10,7 @@ import (
 	"strings"
 	"testing"
 
+	"github.com/stretchr/testify/assert"
 	"github.com/stretchr/testify/require"
 	"gonum.org/v1/gonum/spatial/r3"
 
@@ -395,12 +396,20 @@ func TestAnswersDependNeitherOnMeshNorOnStart(t *testing.T) {
 		require.True(t, b.Audit.Trusted, "seed %d, unstructured: %v", 6*k, b.Audit.Reasons)
 		x := cases.Area(a.Structure, a.Form.Position)
 		off := math.Abs(cases.Area(b.Structure, b.Form.Position)/x - 1)
-		// Polygons of n sides cut the area under an arc short by about 1/n² of
-		// it, the smooth surface between nodes a like share.
-		n := float64(len(a.Structure.Corners))
-		t.Logf("seed %d (%s): %d and %d triangles, areas differ by %.2g", 6*k, what, len(a.Structure.Corners), len(b.Structure.Corners), off)
-		require.Less(t, off, 1/math.Min(n, float64(len(b.Structure.Corners))), "seed %d", 6*k)
-		worst = math.Max(worst, off)
+		size := a.Structure.Size()
+		require.False(t, math.IsNaN(a.Audit.Discretisation))
+		other := b.Audit.Discretisation
+		if math.IsNaN(other) { // too many triangles for one more refinement: as that of a, to second order
+			other = a.Audit.Discretisation * float64(len(a.Structure.Corners)) / float64(len(b.Structure.Corners))
+		}
+		allowed := a.Audit.Discretisation + other + 1e-12 // rounding: triangles of corners are flat
+		ab, chordsAB := apart(a, b)
+		ba, chordsBA := apart(b, a)
+		d := math.Max(ab, ba) / size
+		t.Logf("seed %d (%s): %d and %d triangles, areas differ by %.2g, surfaces by %.2g of the size (%.2g with the chords); estimated %.2g and %.2g",
+			6*k, what, len(a.Structure.Corners), len(b.Structure.Corners), off, d, math.Max(chordsAB, chordsBA)/size, a.Audit.Discretisation, other)
+		assert.Less(t, d, allowed, "seed %d", 6*k)
+		worst = math.Max(worst, d/allowed)
 	}
-	t.Logf("%d canopies on two meshes each: areas within %.2g", count, worst)
+	t.Logf("%d canopies on two meshes each: the surfaces differ by %.2g of what their estimates allow, at most", count, worst)
 }

@@ -18,6 +18,7 @@ import (
 // Find meshes the model, solves it and holds its limits against what was
 // found. See the package comment for errors.
 func Find(ctx context.Context, m *canopy.Model, o Options) (*canopy.Result, error) {
+	o.live = o.Warm != nil
 	r, err := find(ctx, m, o)
 	return r, clampHint(m, err)
 }
@@ -52,6 +53,7 @@ func find(ctx context.Context, m *canopy.Model, o Options) (*canopy.Result, erro
 // Solve finds the shape of a structure: engines, balance of held points,
 // audit. The structure is not changed.
 func Solve(ctx context.Context, s *canopy.Structure, o Options) (*canopy.Result, error) {
+	o.live = o.Warm != nil
 	return solve(ctx, s, &canopy.Model{}, o)
 }
 
@@ -71,6 +73,10 @@ func solve(ctx context.Context, s *canopy.Structure, m *canopy.Model, o Options)
 		return nil, err
 	}
 	f := got.form
+	finer, err := discretisation(ctx, local, got, origin, o)
+	if err != nil {
+		return nil, err
+	}
 	// From here on the pressures found act like given ones.
 	s, local = s.Carrying(f), local.Carrying(f)
 	setReactions(local, f)
@@ -89,11 +95,6 @@ func solve(ctx context.Context, s *canopy.Structure, m *canopy.Model, o Options)
 		}
 	}
 	backFrom(s, f, origin)
-	finer := math.NaN()
-	if o.below != nil && got.surface != nil {
-		backFrom(s, got.surface, origin)
-		finer = moveOnRefinement(o.below, got.surface, s) / 3 / s.Size()
-	}
 	r := &canopy.Result{
 		Title: m.Title, File: m.File, Digest: m.Digest,
 		Limits: m.Limits, Factors: m.Factors, North: m.North,

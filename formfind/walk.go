@@ -110,6 +110,9 @@ func (c *chain) reach(ctx context.Context, w way, s *canopy.Structure, from stan
 			step *= 2
 		}
 	}
+	if from.at == start {
+		return false, nil, nil // not one step: that is no limit but a bad place to start
+	}
 	limit := w.say(c.s, from.at)
 	if limit != nil {
 		c.say("walked the boundary (%s): a stable shape up to %.1f %%, none beyond", w.name, 100*from.at)

@@ -110,8 +110,8 @@ type Audit struct {
 	MeanAngleMin float64 // mean over triangles of their smallest angle, rad
 	ShortestOver float64 // shortest member over the mean member length
 
-	// Discretisation is how far the answer moved on one refinement over the
-	// model's size; NaN when not estimated.
+	// Discretisation estimates how far the surface is from the smooth one over the
+	// model's size, from how far one refinement of the mesh moves it; NaN when not judged.
 	Discretisation float64
 }
 

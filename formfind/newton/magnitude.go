@@ -81,6 +81,9 @@ func (g *magnitudes) reset() {
 	}
 }
 
+// sheared reports whether cables bonded to the fabric have a share of their own.
+func (g *magnitudes) sheared() bool { return len(g.groups) > g.fabrics }
+
 // resume takes the magnitudes of an earlier form of the same stresses; it leaves
 // them at one where the form has others. Only with a fitted magnitude is the
 // symmetric tangent that of the shape: with S in balance in the surface
