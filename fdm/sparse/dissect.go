@@ -53,9 +53,10 @@ type dissector struct {
 	reach [4]int32
 	step  [4]float64
 	// Histograms of the keys, and of the sizes of separators on either side.
-	mass [4][]int32
-	open [2][]int32
-	leaf leafOrder
+	mass  [4][]int32
+	open  [2][]int32
+	taste taste
+	leaf  leafOrder
 	// Parts of at least judged nodes are looked at for whether the graph is
 	// like a surface at all; rough says that it is not.
 	judged int
@@ -69,6 +70,10 @@ func newDissector(g graph, weight []int32, mem *pool) *dissector {
 		d.lend[k] = mem.get(n)
 	}
 	d.leaf.local = d.lend[2]
+	d.taste = tasteOfFewLinks
+	if len(g.adj) >= manyLinks*g.n {
+		d.taste = tasteOfManyLinks
+	}
 	return d
 }
 
@@ -147,25 +152,22 @@ func (d *dissector) layout(levels []int32) {
 	}
 	span := hi - lo
 	band := max(1, span/64)
-	// The end of the equator as seen from root: the farthest node near it.
-	end := func(root int32, dist []int32) int32 {
-		far := root
-		for _, i := range d.bfs(root, dist) {
-			if u := d.at[i].u; u >= -band && u <= band {
-				far = i
-			}
-		}
-		return far
-	}
-	start := p
-	best := int32(1) << 30
+	// One end of the equator is the farthest from p and q. Of nodes equally far
+	// it is the last: a search meets the nodes at one distance in the order in
+	// which they lie. The other end is the farthest from the first.
+	r := p
+	away = -1
 	for _, i := range d.nodes {
-		if u := max(d.at[i].u, -d.at[i].u); u < best {
-			start, best = i, u
+		if u := d.at[i].u; u >= -band && u <= band && dp[i]+dq[i] >= away {
+			r, away = i, dp[i]+dq[i]
 		}
 	}
-	r := end(start, dr)
-	s := end(r, dr)
+	s := r
+	for _, i := range d.bfs(r, dr) {
+		if u := d.at[i].u; u >= -band && u <= band {
+			s = i
+		}
+	}
 	d.bfs(s, dq)
 	lo, hi = 0, 0
 	for _, i := range d.nodes {
@@ -287,7 +289,10 @@ func (d *dissector) bestCut(nodes []int32, pts []point, label int32) (cut, bool)
 	var win [4]window
 	least := -1.0
 	for k := range 4 {
-		win[k] = estimate(d.mass[k], lo[k], d.reach[k], d.step[k], float64(total), share)
+		win[k] = d.taste.estimate(d.mass[k], lo[k], d.reach[k], d.step[k], float64(total), share)
+		if k >= 2 {
+			win[k].cost *= d.taste.diagonal
+		}
 		if c := win[k].cost; c >= 0 && (least < 0 || c < least) {
 			least = c
 		}
@@ -304,16 +309,30 @@ func (d *dissector) bestCut(nodes []int32, pts []point, label int32) (cut, bool)
 	return best, best.cost >= 0
 }
 
-// skewCost weighs the size of a separator by how uneven the sides are.
-func skewCost(size, below, total float64) float64 {
+// taste says what a good cut is, beyond few nodes in the separator.
+type taste struct {
+	skew     float64 // weight of uneven sides
+	diagonal float64 // weight of separators across u+v and u-v
+}
+
+// The separators across u and v of a quadrilateral net have no links in
+// themselves, and leave parts that are better cut again (measured on nets of
+// seven outlines: flops 0.84 to 1.03 times those without, 0.97 on average).
+var (
+	tasteOfFewLinks  = taste{skew: 1.5, diagonal: 1.15}
+	tasteOfManyLinks = taste{skew: 2, diagonal: 1}
+)
+
+// cost weighs the size of a separator by how uneven the sides are.
+func (t taste) cost(size, below, total float64) float64 {
 	skew := (2*below - total) / total
-	return (size + 0.25) * (1 + 2*skew*skew)
+	return (size + 0.25) * (1 + t.skew*skew*skew)
 }
 
 // estimate looks at the cuts of one direction whose smaller side has at least
 // the share of the total, and returns those nearly as cheap as the cheapest
 // among them.
-func estimate(mass []int32, lo, reach int32, step, total, share float64) window {
+func (t taste) estimate(mass []int32, lo, reach int32, step, total, share float64) window {
 	w := window{cost: -1}
 	scale := step / float64(reach)
 	var below, near int32
@@ -331,11 +350,11 @@ func estimate(mass []int32, lo, reach int32, step, total, share float64) window 
 		if b > (1-share)*total {
 			if w.cost < 0 && below < int32(total) && b <= 0.8*total {
 				// One place holds more than the window: cut there if at all.
-				w.cost, best = skewCost(float64(near)*scale, b, total), x
+				w.cost, best = t.cost(float64(near)*scale, b, total), x
 			}
 			break
 		}
-		if c := skewCost(float64(near)*scale, b, total); w.cost < 0 || c < w.cost {
+		if c := t.cost(float64(near)*scale, b, total); w.cost < 0 || c < w.cost {
 			w.cost, best = c, x
 		}
 	}
@@ -391,7 +410,7 @@ func (d *dissector) sweep(best *cut, k int, win window, nodes []int32, pts []poi
 			continue
 		}
 		for side, sep := range [2]int32{sepLow, sepHigh} {
-			if cost := skewCost(float64(sep), float64(below), float64(total)); best.cost < 0 || cost < best.cost {
+			if cost := d.taste.cost(float64(sep), float64(below), float64(total)); best.cost < 0 || cost < best.cost {
 				*best = cut{dir: k, side: side, at: win.lo + x, cost: cost, size: sep, count: float64(sep) * float64(len(nodes)) / float64(total)}
 			}
 		}
