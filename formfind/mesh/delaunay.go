@@ -19,6 +19,8 @@ type delaunay struct {
 	at   []int32    // per point: a triangle at it
 	last int32      // where the next search starts
 	todo []int32    // triangles whose side opposite corner 0 may need a flip
+
+	flips int // so far: what building it took
 }
 
 var (
@@ -102,6 +104,12 @@ func (d *delaunay) insert(q xy, t int32, side int) int32 {
 	i := int32(len(d.p))
 	d.p = append(d.p, q)
 	d.at = append(d.at, t)
+	d.place(i, t, side)
+	return i
+}
+
+// place makes point i a corner of triangles; locate has found it in t on side.
+func (d *delaunay) place(i, t int32, side int) {
 	if side < 0 {
 		d.splitInside(i, t)
 	} else {
@@ -109,19 +117,37 @@ func (d *delaunay) insert(q xy, t int32, side int) int32 {
 	}
 	d.legalise()
 	d.last = d.at[i]
-	return i
 }
 
-// add locates and inserts q.
-func (d *delaunay) add(q xy) (int32, error) {
-	t, side, _ := d.locate(q, d.last, false)
-	if side == 3 {
-		return -1, errTwice
+// addAll adds points along lines, before any segment is held: every 2ᵏth of them
+// first, then those half-way between, and so on. In the order of the lines a
+// long side would see all points of the one opposite again and again, which
+// takes quadratic time. Of two at one place it returns the later.
+func (d *delaunay) addAll(p []xy) (bad int, err error) {
+	n := len(p)
+	d.p = append(d.p, p...)
+	d.at = append(d.at, make([]int32, n)...)
+	top := 1
+	for 2*top < n {
+		top *= 2
 	}
-	if side >= 0 && d.held[t][side] {
-		return -1, errTouch
+	for step := top; step > 0; step /= 2 {
+		for i := 0; i < n; i += step {
+			if step < top && i%(2*step) == 0 {
+				continue
+			}
+			t, side, _ := d.locate(p[i], d.last, false)
+			if side == 3 {
+				for _, j := range d.v[t] {
+					if d.p[j] == p[i] {
+						return max(i, int(j)-3), errTwice
+					}
+				}
+			}
+			d.place(int32(i+3), t, side)
+		}
 	}
-	return d.insert(q, t, side), nil
+	return 0, nil
 }
 
 func (d *delaunay) newTriangle() int32 {
@@ -218,6 +244,7 @@ func (d *delaunay) legalise() {
 // flip replaces the diagonal opposite corner i of t. Afterwards t and the old
 // neighbour o both have that corner first: t = (q, a, e), o = (q, e, b).
 func (d *delaunay) flip(t int32, i int) {
+	d.flips++
 	o := d.n[t][i]
 	q, a, b := d.v[t][i], d.v[t][(i+1)%3], d.v[t][(i+2)%3]
 	k := d.sideTo(o, a, b)

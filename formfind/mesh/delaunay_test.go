@@ -129,6 +129,47 @@ func sound(t require.TestingT, d *delaunay) {
 	}
 }
 
+// add locates and inserts q.
+func (d *delaunay) add(q xy) (int32, error) {
+	t, side, _ := d.locate(q, d.last, false)
+	if side == 3 {
+		return -1, errTwice
+	}
+	if side >= 0 && d.held[t][side] {
+		return -1, errTouch
+	}
+	return d.insert(q, t, side), nil
+}
+
+// The sides of a strip, of a wedge and of a circle are triangulated with a few
+// flips a point, however many points there are.
+func TestLongSidesTakeFewFlips(t *testing.T) {
+	const n = 20_000
+	strip, wedge, circle := make([]xy, n), make([]xy, n), make([]xy, n)
+	for i := range n {
+		u := float64(i)
+		if i < n/2 {
+			strip[i], wedge[i] = xy{u, 0}, xy{u, 0}
+		} else {
+			strip[i], wedge[i] = xy{n - u, 2}, xy{n - u, 0.003 * (u - n/2)}
+		}
+		sin, cos := math.Sincos(2 * math.Pi * u / n)
+		circle[i] = xy{1000 * cos, 1000 * sin}
+	}
+	for _, p := range [][]xy{strip, wedge, circle} {
+		lo, hi := p[0], p[0]
+		for _, q := range p {
+			lo, hi = xy{min(lo.x, q.x), min(lo.y, q.y)}, xy{max(hi.x, q.x), max(hi.y, q.y)}
+		}
+		d := newDelaunay(lo, hi)
+		_, err := d.addAll(p)
+		require.NoError(t, err)
+		t.Logf("%.1f flips a point", float64(d.flips)/n)
+		require.Less(t, d.flips, 10*n)
+		require.Len(t, d.v, 1+2*n)
+	}
+}
+
 // Points on a small grid: collinear, cocircular and duplicate ones abound.
 func TestDelaunayOfNastyPoints(t *testing.T) {
 	rapid.Check(t, func(rt *rapid.T) {

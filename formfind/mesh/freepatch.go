@@ -234,10 +234,8 @@ func (f *flat) outline() (d *delaunay, in []bool, fault *flatError) {
 		hi = xy{max(hi.x, q.x), max(hi.y, q.y)}
 	}
 	d = newDelaunay(lo, hi)
-	for i, q := range f.p {
-		if _, err := d.add(q); err != nil {
-			return nil, nil, f.owner(i, err)
-		}
+	if i, err := d.addAll(f.p); err != nil {
+		return nil, nil, f.owner(i, err)
 	}
 	sum, num := make([]float64, len(f.p)), make([]float64, len(f.p))
 	total, sides := 0.0, 0.0
