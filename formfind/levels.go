@@ -38,29 +38,59 @@ func coarserModel(m *canopy.Model, levels int) (*canopy.Model, bool) {
 	return &out, true
 }
 
-// meshLevels returns refinements from a coarse mesh of the model to one about
-// as fine as s, its mesh at once; none when one level is better.
-func meshLevels(ctx context.Context, m *canopy.Model, s *canopy.Structure) (*canopy.Structure, []*mesh.Refinement, error) {
-	if m.Listed != nil || len(s.Corners) < coarsest {
+// most is how many times longer than wanted the sides of the coarsest mesh may be,
+// as a power of two.
+const most = 8
+
+// meshLevels returns a coarse mesh of the model and its refinements up to one
+// about as fine as the model asks for, which itself is not made: that would be
+// most of the work. None when one level is better.
+//
+// Coarser and coarser meshes have fewer triangles only until least numbers of
+// segments hold them up. The coarsest is the first of some hundred triangles, from
+// above, whose refinement has about as many as the mesh half as fine.
+func meshLevels(ctx context.Context, m *canopy.Model) (*canopy.Structure, []*mesh.Refinement, error) {
+	if m.Listed != nil || len(m.Fabrics) == 0 {
 		return nil, nil, nil
 	}
-	levels := max(1, int(math.Round(math.Log(float64(len(s.Corners))/coarsest)/math.Log(4))))
-	for ; levels > 0; levels-- {
-		cm, ok := coarserModel(m, levels)
-		if !ok {
-			continue
+	build := func(levels int) (*canopy.Structure, error) {
+		c := m
+		if levels > 0 {
+			var ok bool
+			if c, ok = coarserModel(m, levels); !ok {
+				return nil, nil
+			}
 		}
-		coarse, err := mesh.Build(ctx, cm)
-		if err != nil {
-			if ctx.Err() != nil {
+		s, err := mesh.Build(ctx, c)
+		if err != nil && ctx.Err() == nil {
+			return nil, nil // what cannot be meshed coarsely is meshed at once
+		}
+		return s, err
+	}
+	var coarse, half *canopy.Structure
+	for levels := most; levels > 0; levels-- {
+		var err error
+		if coarse = half; coarse == nil {
+			if coarse, err = build(levels); err != nil {
 				return nil, nil, err
 			}
-			continue // what cannot be meshed coarsely is meshed at once
 		}
-		// Least numbers of segments may keep the coarse mesh from being as
-		// coarse as was asked for.
-		if got := float64(len(coarse.Corners)) * math.Pow(4, float64(levels)); got > 1.5*float64(len(s.Corners)) {
+		half = nil
+		enough := coarsest / 2
+		if levels == 1 {
+			enough = coarsest / 4
+		}
+		if coarse == nil || len(coarse.Corners) < enough {
 			continue
+		}
+		if half, err = build(levels - 1); err != nil {
+			return nil, nil, err
+		}
+		if half == nil || float64(4*len(coarse.Corners)) > 1.25*float64(len(half.Corners)) {
+			continue
+		}
+		if float64(len(coarse.Corners))*math.Pow(4, float64(levels)) > mesh.MaxTriangles {
+			return nil, nil, nil // Build says it better
 		}
 		var steps []*mesh.Refinement
 		for at := coarse; len(steps) < levels; {
@@ -84,12 +114,13 @@ func SolveLevels(ctx context.Context, coarse *canopy.Structure, steps []*mesh.Re
 	if len(steps) == 0 {
 		return Solve(ctx, coarse, o)
 	}
-	return solveLevels(ctx, coarse, steps, steps[len(steps)-1].Fine, &canopy.Model{}, o)
+	whole := func() (*canopy.Structure, error) { return steps[len(steps)-1].Fine, nil }
+	return solveLevels(ctx, coarse, steps, whole, &canopy.Model{}, o)
 }
 
-// solveLevels is SolveLevels for the model m; whole is solved at once when a
-// coarser mesh has no shape.
-func solveLevels(ctx context.Context, coarse *canopy.Structure, steps []*mesh.Refinement, whole *canopy.Structure, m *canopy.Model, o Options) (*canopy.Result, error) {
+// solveLevels is SolveLevels for the model m; what whole returns is solved at once
+// when a coarser mesh has no shape.
+func solveLevels(ctx context.Context, coarse *canopy.Structure, steps []*mesh.Refinement, whole func() (*canopy.Structure, error), m *canopy.Model, o Options) (*canopy.Result, error) {
 	if err := check(coarse); err != nil {
 		return nil, err
 	}
@@ -101,7 +132,11 @@ func solveLevels(ctx context.Context, coarse *canopy.Structure, steps []*mesh.Re
 	if ok {
 		return solve(ctx, steps[len(steps)-1].Fine, m, up)
 	}
-	return solve(ctx, whole, m, o)
+	s, err := whole()
+	if err != nil {
+		return nil, err
+	}
+	return solve(ctx, s, m, o)
 }
 
 // climb solves level after level below the last one and returns options with a

@@ -33,19 +33,20 @@ func find(ctx context.Context, m *canopy.Model, o Options) (*canopy.Result, erro
 		return solve(ctx, s, m, o)
 	}
 	o.begin("mesh")
-	s, err := mesh.Build(ctx, m)
-	if err != nil {
-		return nil, err
-	}
 	o.Listed = o.Listed || m.Listed != nil
+	whole := func() (*canopy.Structure, error) { return mesh.Build(ctx, m) }
 	if o.Warm == nil {
-		coarse, steps, err := meshLevels(ctx, m, s)
+		coarse, steps, err := meshLevels(ctx, m)
 		if err != nil {
 			return nil, err
 		}
 		if len(steps) > 0 {
-			return solveLevels(ctx, coarse, steps, s, m, o)
+			return solveLevels(ctx, coarse, steps, whole, m, o)
 		}
+	}
+	s, err := whole()
+	if err != nil {
+		return nil, err
 	}
 	return solve(ctx, s, m, o)
 }
