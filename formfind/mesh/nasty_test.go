@@ -363,3 +363,36 @@ func FuzzOutline(f *testing.F) {
 	}
 	f.Fuzz(func(t *testing.T, b []byte) { checkNasty(t, nasty(&byteSource{b})) })
 }
+
+// The first crossing of a rim is the one that looking at all pairs finds.
+func TestFirstCrossing(t *testing.T) {
+	found := 0
+	rapid.Check(t, func(rt *rapid.T) {
+		n := rapid.IntRange(3, 30).Draw(rt, "n")
+		f := &flat{}
+		var rim []int
+		for i := range n {
+			f.p = append(f.p, xy{float64(rapid.IntRange(0, 12).Draw(rt, "x")), float64(rapid.IntRange(0, 12).Draw(rt, "y"))})
+			rim = append(rim, i)
+		}
+		f.rims = [][]int{rim}
+		wi, wj, want := n, n, false
+		for i := range n {
+			for j := i + 2; j < n && !want; j++ {
+				a, c, u, w := f.p[i], f.p[(i+1)%n], f.p[j], f.p[(j+1)%n]
+				apart := max(u.x, w.x) < min(a.x, c.x) || min(u.x, w.x) > max(a.x, c.x) || max(u.y, w.y) < min(a.y, c.y) || min(u.y, w.y) > max(a.y, c.y)
+				if i == 0 && j == n-1 || apart || exactOrient(a, c, u)*exactOrient(a, c, w) > 0 || exactOrient(u, w, a)*exactOrient(u, w, c) > 0 {
+					continue
+				}
+				wi, wj, want = i, j, true
+			}
+		}
+		i, j, ok := f.crossing()
+		require.Equal(rt, want, ok)
+		require.Equal(rt, [2]int{wi, wj}, [2]int{i, j})
+		if ok {
+			found++
+		}
+	})
+	require.Positive(t, found)
+}

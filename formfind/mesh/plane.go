@@ -112,31 +112,54 @@ func (f *flat) tilted(n r3.Vec) []r3.Vec {
 // corner between them that turns back: the cause of the overlap.
 func (b *builder) fold(l *loop, f *flat) (where, wayOut string) {
 	wayOut = "divide it with a seam or cable into parts that are seen whole from one side, or give the plane to lay it out in"
+	i, j, ok := f.crossing()
+	if !ok {
+		return "", wayOut
+	}
+	rim := f.rims[0]
+	place := mid(f.at[rim[i]], f.at[rim[(i+1)%len(rim)]])
+	where = fmt.Sprintf(": edges %s and %s do near [%.2f, %.2f, %.2f]", b.edgeAt(l, i), b.edgeAt(l, j), place.X, place.Y, place.Z)
+	if c := b.turningCorner(l, f, i, j); c != "" {
+		where += fmt.Sprintf("; it is folded at corner %s", c)
+		wayOut = "move that corner, " + wayOut
+	}
+	return where, wayOut
+}
+
+// crossing returns the first two sides of the outline that cross or touch, but
+// for neighbours. Sides are looked at from left to right.
+func (f *flat) crossing() (i, j int, ok bool) {
 	rim := f.rims[0]
 	n := len(rim)
 	node := func(k int) xy { return f.p[rim[k%n]] }
-	for i := range n {
-		for j := i + 2; j < n; j++ {
-			if i == 0 && j == n-1 {
+	left := func(k int) float64 { return min(node(k).x, node(k+1).x) }
+	right := func(k int) float64 { return max(node(k).x, node(k+1).x) }
+	order := make([]int, n)
+	for k := range order {
+		order[k] = k
+	}
+	slices.SortStableFunc(order, func(a, b int) int { return cmp.Compare(left(a), left(b)) })
+	i, j = n, n
+	for k, s := range order {
+		a, c := node(s), node(s+1)
+		for _, t := range order[k+1:] {
+			if left(t) > right(s) {
+				break
+			}
+			p, q := min(s, t), max(s, t)
+			if q == p+1 || p == 0 && q == n-1 || p > i || p == i && q >= j {
 				continue
 			}
-			a, c, u, w := node(i), node(i+1), node(j), node(j+1)
-			if max(u.x, w.x) < min(a.x, c.x) || min(u.x, w.x) > max(a.x, c.x) || max(u.y, w.y) < min(a.y, c.y) || min(u.y, w.y) > max(a.y, c.y) {
+			u, w := node(t), node(t+1)
+			if max(u.y, w.y) < min(a.y, c.y) || min(u.y, w.y) > max(a.y, c.y) {
 				continue
 			}
-			if sgn(orient(a, c, u))*sgn(orient(a, c, w)) > 0 || sgn(orient(u, w, a))*sgn(orient(u, w, c)) > 0 {
-				continue
+			if sgn(orient(a, c, u))*sgn(orient(a, c, w)) <= 0 && sgn(orient(u, w, a))*sgn(orient(u, w, c)) <= 0 {
+				i, j = p, q
 			}
-			place := mid(f.at[rim[i]], f.at[rim[(i+1)%n]])
-			where = fmt.Sprintf(": edges %s and %s do near [%.2f, %.2f, %.2f]", b.edgeAt(l, i), b.edgeAt(l, j), place.X, place.Y, place.Z)
-			if c := b.turningCorner(l, f, i, j); c != "" {
-				where += fmt.Sprintf("; it is folded at corner %s", c)
-				wayOut = "move that corner, " + wayOut
-			}
-			return where, wayOut
 		}
 	}
-	return "", wayOut
+	return i, j, i < n
 }
 
 func sgn(v float64) int {
