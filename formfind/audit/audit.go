@@ -192,6 +192,11 @@ func notFinite(s *canopy.Structure, f *canopy.Form) string {
 			return "triangle " + s.TrianglePlace(f.Position, int32(t)).Name
 		}
 	}
+	for _, p := range f.Pressure {
+		if !(math.Abs(p) < beyond) {
+			return "a pressure found"
+		}
+	}
 	for r, c := range f.Couple {
 		if bad(c) {
 			return "ring " + s.Rings[r].Name
