@@ -54,7 +54,7 @@ func orderNodes(ctx context.Context, g graph, s sweep, weight []int32, o Orderin
 	case o == OrderDissection:
 		order, _ := dissect(ctx, g, s, weight, false, mem)
 		return order, o
-	case o == OrderAuto && g.n >= from && int(s.end) == g.n && links >= fewLinks:
+	case o == OrderAuto && s.largest() >= from && int(s.end) == g.n && links >= fewLinks:
 		if order, ok := dissect(ctx, g, s, weight, true, mem); ok {
 			return order, OrderDissection
 		}

@@ -105,5 +105,15 @@ func (s *sweep) part(k int) (from, to int32, levels []int32) {
 	return levels[0], to, levels
 }
 
+// largest is the number of nodes in the largest part.
+func (s *sweep) largest() int {
+	size := int32(0)
+	for k := range s.parts {
+		from, to, _ := s.part(k)
+		size = max(size, to-from)
+	}
+	return int(size)
+}
+
 // plainSweep is for n nodes whose numbering is kept.
 func plainSweep(n int) sweep { return sweep{end: int32(n)} }
