@@ -25,8 +25,14 @@ GLOBL one<>(SB), RODATA|NOPTR, $8
 	LEAQ (AX)(CX*2), R15; \
 	ADDQ CX, R15
 
+// How many bytes ahead of the group at hand L is fetched: a group of columns is
+// one piece of memory, and fronts stand in the order in which they are needed.
+#define AHEAD 8192
+
 // One row of L against one unknown.
 #define SUBTRACT(x) \
+	PREFETCHT0   AHEAD(R15);       \
+	ADDQ         $32, R15;         \
 	VBROADCASTSD (SI), Y5;         \
 	VBROADCASTSD (SI)(R8*1), Y6;   \
 	VBROADCASTSD (SI)(R9*1), Y7;   \
@@ -119,6 +125,7 @@ solved3:
 	SUBQ $3, R12
 
 contiguous:
+	MOVQ  R14, R15
 	MOVQ  DI, DX
 	MOVQ  R12, CX
 	TESTQ CX, CX
@@ -156,6 +163,8 @@ nextgroup:
 
 // Two rows of L, each with its unknown, into two sets of four sums.
 #define COLLECT(x, s0, s1, s2, s3) \
+	PREFETCHT0   -AHEAD(R15);      \
+	ADDQ         $32, R15;         \
 	VMOVUPD      x, Y8;            \
 	VBROADCASTSD (SI), Y9;         \
 	VBROADCASTSD (SI)(R8*1), Y10;  \
@@ -211,6 +220,7 @@ group:
 	LEAQ (CX)(CX*2), R10
 
 sums:
+	MOVQ   R14, R15
 	VXORPD Y0, Y0, Y0
 	VXORPD Y1, Y1, Y1
 	VXORPD Y2, Y2, Y2
