@@ -79,6 +79,27 @@ func (r *reader) airs(all []air, fabrics []string, pressed func(fabric string) b
 	}
 }
 
+// outlineAir reads the volume below the last faces of the model, which share it.
+func (d *drawn) outlineAir(g *fields, faces int) {
+	if !g.has("volume") || faces == 0 {
+		return
+	}
+	all := d.m.Fabrics[len(d.m.Fabrics)-faces:]
+	a := air{fabric: all[0].Name, at: g.keyNode("volume"), p: g.p.down("volume")}
+	var ok bool
+	if a.volume, ok = g.quantity("volume"); !ok {
+		return
+	}
+	if g.has("pressure") {
+		d.r.fail(a.at, a.p, "the fabric has a volume and a pressure: the pressure is what follows from the volume", "keep one of them")
+		return
+	}
+	for _, f := range all[1:] {
+		a.with = append(a.with, ref{f.Name, a.at, a.p})
+	}
+	d.air = append(d.air, a)
+}
+
 // drawnAir checks the volumes of drawn fabrics and hands them to the model.
 func (d *drawn) drawnAir() {
 	if len(d.air) == 0 {

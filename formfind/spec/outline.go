@@ -567,6 +567,7 @@ func (d *drawn) outlineFabrics() {
 		d.m.Fabrics = append(d.m.Fabrics, fab)
 		d.fabricAt = append(d.fabricAt, at)
 	}
+	d.outlineAir(g, len(t.o.Faces))
 	if rule != canopy.WarpAlong && !radial {
 		d.r.fail(g.get("warp"), p.down("warp"), fmt.Sprintf("the warp of the outline's fabric is %s but there is no ring in it", g.get("warp").Value), "give a direction such as [1, 0, 0]")
 	}

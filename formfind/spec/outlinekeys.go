@@ -45,6 +45,8 @@ var outlineFabricSection = &section{id: "outline-fabric", doc: "The fabric in ev
 		doc: "How it is meshed. along sides: mesh lines follow the sides of the boundary, or run out from the ring. free: triangles of even size in any outline."},
 	{name: "mesh", shape: quantity(Length).above(0), deflt: "that of the model", example: "300 mm",
 		doc: "Wanted length of a mesh side."},
+	{name: "volume", shape: quantity(Volume), example: "1250 m3",
+		doc: "Volume of air shut in below all of it together, in place of pressure: its pressure is found. The plane of its boundary closes the volume, so that the boundary is level or tilted as a whole, and fixed."},
 }, fabricMaterialKeys()...)}
 
 var meshEdgeSection = &section{id: "outline-mesh-edge", doc: "The cables along the edges of a mesh, from corner to corner. Exactly one of force, force density and sag is given.",
