@@ -443,6 +443,8 @@ func (c *chain) fabric(ctx context.Context) error {
 	if c.o.surface {
 		return nil
 	}
+	// What Newton keeps is large, and the work that follows needs room.
+	c.solver, c.o.solver, c.o.parents = nil, nil, nil
 	if err := c.finish(ctx); err != nil || equal || c.o.eased {
 		return err
 	}

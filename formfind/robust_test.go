@@ -206,6 +206,26 @@ func TestRandomFeasibleCanopiesAreAllTrusted(t *testing.T) {
 	require.Empty(t, failed, strings.Join(failed, "\n"))
 }
 
+// The same canopies on meshes four times finer, where steps are solved with the
+// help of coarser meshes instead of by a factorisation.
+func TestRandomCanopiesOnFineMeshesAreAllTrusted(t *testing.T) {
+	count := sweep.N(4, 12, 40)
+	most := 0
+	for seed := range uint64(count) {
+		m := randomCanopy(seed)
+		m.MeshSize /= 4
+		for i := range m.Edges {
+			m.Edges[i].Segments *= 4
+		}
+		r, err := formfind.Find(t.Context(), m, formfind.Options{})
+		require.NoError(t, err, "seed %d (%s)", seed, describe(m))
+		sound(t, r)
+		require.True(t, r.Audit.Trusted, "seed %d (%s): %v", seed, describe(m), r.Audit.Reasons)
+		most = max(most, len(r.Structure.Corners))
+	}
+	t.Logf("%d canopies of up to %d triangles", count, most)
+}
+
 // circleModel is a fabric inside a circle of four fixed arcs, ring optional.
 func circleModel(radius, mesh float64) *canopy.Model {
 	m := &canopy.Model{MeshSize: mesh}

@@ -69,7 +69,9 @@ func solve(ctx context.Context, s *canopy.Structure, m *canopy.Model, o Options)
 		warm.Position = moved(warm.Position, r3.Scale(-1, origin))
 		o.Warm = &warm
 	}
-	got, err := findForm(ctx, local, o)
+	with := o
+	o.solver, o.parents = nil, nil // not to be kept for what comes after
+	got, err := findForm(ctx, local, with)
 	if err != nil {
 		return nil, err
 	}
