@@ -157,6 +157,13 @@ func climb(ctx context.Context, coarse *canopy.Structure, steps []*mesh.Refineme
 		}
 		got, err := findForm(ctx, local, o)
 		if err == nil {
+			if i == 0 && o.Method == MethodAuto && got.form.Converged {
+				c := &chain{s: local, o: o}
+				if got.form, err = even(ctx, local, got.form, c.settings(false)); err != nil {
+					return last, false, err
+				}
+				got.solver = nil
+			}
 			backFrom(s, got.form, origin)
 		} else {
 			var none *NoEquilibriumError

@@ -84,3 +84,17 @@ func TestHeldSailsOfUnequalStressAreTrusted(t *testing.T) {
 		}
 	}
 }
+
+// A tall cone rises from a flat mesh, whose nodes move along its normals only. On the
+// coarsest mesh they are slid in the surface, so that its triangles stay triangles and
+// refinement comes to rest soon.
+func TestTallConesKeepTheirTriangles(t *testing.T) {
+	m := coneModel(5, 1, 0.97*coneLimit(5, 1, 0.5), 0.5, 5.0/6)
+	r, err := formfind.Find(t.Context(), m, formfind.Options{})
+	require.NoError(t, err)
+	trusted(t, r)
+	angle := r.Audit.MinAngle * 180 / math.Pi
+	t.Logf("%d triangles: smallest angle %.1f°, estimated %.2g of the size off", len(r.Structure.Corners), angle, r.Audit.Discretisation)
+	require.Greater(t, angle, 20.0)
+	require.Less(t, r.Audit.Discretisation, 5e-4)
+}
