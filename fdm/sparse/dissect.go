@@ -21,8 +21,8 @@ const (
 	judgeFrom = 400
 	// surfaceSeparator times the square root of a part is what a separator may
 	// have for a graph to count as a surface: nets and meshes with some order
-	// need 0.5 to 1.2 (measured), a triangulation of random points 1.6.
-	surfaceSeparator = 1.3
+	// need 0.5 to 1.4 (measured; round ones most), a triangulation of random points 1.6.
+	surfaceSeparator = 1.45
 )
 
 // point is the place of a node in the layout.
