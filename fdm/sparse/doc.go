@@ -25,9 +25,10 @@
 // 1×1 and 2×2 pivots (Bunch & Kaufman 1977) with a threshold on the growth, and
 // passes columns without an acceptable pivot to the parent.
 //
-// On amd64 with AVX2 and fused multiply-add the dense work runs in four short
-// loops of assembly, chosen at run time; elsewhere in plain Go. Both are tested
-// against each other. Large systems use several goroutines, independent
+// On amd64 with AVX2 and fused multiply-add the dense work and the solves run in
+// a few short loops of assembly, chosen at run time, in wider registers (and to
+// the same bits) with AVX-512; elsewhere in plain Go. All are tested against each
+// other. Large systems use several goroutines, independent
 // subtrees first, then the fronts at the top together. How the work is split
 // depends on the pattern alone: the bits of a result do not depend on
 // GOMAXPROCS.
