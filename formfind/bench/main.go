@@ -14,7 +14,8 @@
 //     directions, audit;
 //   - one-level: natural force densities and Newton on the finest mesh alone;
 //   - relax: dynamic relaxation in the shape-changing directions to the same
-//     residual, from linear and from natural force densities, at one size (-relax);
+//     residual, from linear force densities (also on an even mesh) and from natural
+//     ones, at one size (-relax);
 //   - lbfgs: SciPy's L-BFGS-B on the area functional from the same start, at one
 //     size (-relax), stopped after -limit seconds;
 //   - warm: a canopy of 2,500 nodes found again after a mast head has moved,
@@ -161,11 +162,11 @@ func slope(x, y []float64) float64 {
 	return a / b
 }
 
-func (p *problem) areaError(f *canopy.Form) *float64 {
+func (p *problem) areaError(s *canopy.Structure, f *canopy.Form) *float64 {
 	if p.area == 0 {
 		return nil
 	}
-	e := math.Abs(cases.Area(p.fine, f.Position)/p.area - 1)
+	e := math.Abs(cases.Area(s, f.Position)/p.area - 1)
 	return &e
 }
 
@@ -239,7 +240,7 @@ func byNewton(ctx context.Context, p *problem) (row, error) {
 			return row{}, fmt.Errorf("%s: residual %g", p.name, last.Residual)
 		}
 		if seconds < best.Seconds {
-			best.Seconds, best.Iterations, best.Residual, best.Error = seconds, last.Iteration, last.Residual, p.areaError(r.Form)
+			best.Seconds, best.Iterations, best.Residual, best.Error = seconds, last.Iteration, last.Residual, p.areaError(p.fine, r.Form)
 		}
 	}
 	return best, nil
@@ -261,7 +262,7 @@ func byOneLevel(ctx context.Context, p *problem) (row, error) {
 	if out.Status != engine.Converged {
 		return row{}, fmt.Errorf("%s: %s", p.name, out.Why)
 	}
-	return row{Case: p.name, Method: "one-level", Triangles: len(p.fine.Corners), Seconds: processorSeconds() - t, Iterations: out.Iterations, Residual: out.Residual, Error: p.areaError(f)}, nil
+	return row{Case: p.name, Method: "one-level", Triangles: len(p.fine.Corners), Seconds: processorSeconds() - t, Iterations: out.Iterations, Residual: out.Residual, Error: p.areaError(p.fine, f)}, nil
 }
 
 func bySolve(ctx context.Context, p *problem) error {
@@ -274,12 +275,13 @@ func bySolve(ctx context.Context, p *problem) error {
 	if !r.Audit.Trusted {
 		return fmt.Errorf("%s: %v", p.name, r.Audit.Reasons)
 	}
-	row{Case: p.name, Method: "solve", Triangles: len(p.fine.Corners), Seconds: processorSeconds() - t, Residual: r.Audit.ResidualRMS, Error: p.areaError(r.Form)}.print()
+	row{Case: p.name, Method: "solve", Triangles: len(p.fine.Corners), Seconds: processorSeconds() - t, Residual: r.Audit.ResidualRMS, Error: p.areaError(p.fine, r.Form)}.print()
 	return nil
 }
 
-// byRelax relaxes from the linear force density step, and from the natural force
-// densities that the front door starts relaxation with.
+// byRelax relaxes from the linear force density step, on the refined mesh and on an
+// even one, which suits that start better, and from the natural force densities that
+// the front door starts relaxation with.
 func byRelax(ctx context.Context, p *problem) error {
 	own, err := byNewton(ctx, p)
 	if err != nil {
@@ -287,21 +289,22 @@ func byRelax(ctx context.Context, p *problem) error {
 	}
 	for _, k := range []struct {
 		method  string
+		s       *canopy.Structure
 		updates int
-	}{{"relax", 0}, {"relax from natural", 5}} {
+	}{{"relax", p.fine, 0}, {"relax on an even mesh", p.even(), 0}, {"relax from natural", p.fine, 5}} {
 		runtime.GC()
 		t := processorSeconds()
-		at, err := start(ctx, p.fine, k.updates)
+		at, err := start(ctx, k.s, k.updates)
 		if err != nil {
 			return err
 		}
-		f, out, err := (&relax.Engine{}).Find(ctx, p.fine, at, engine.Settings{})
+		f, out, err := (&relax.Engine{}).Find(ctx, k.s, at, engine.Settings{})
 		if err != nil {
 			return err
 		}
-		r := row{Case: p.name, Method: k.method, Triangles: len(p.fine.Corners), Seconds: processorSeconds() - t, Iterations: out.Iterations, Residual: out.Residual}
+		r := row{Case: p.name, Method: k.method, Triangles: len(k.s.Corners), Seconds: processorSeconds() - t, Iterations: out.Iterations, Residual: out.Residual}
 		if out.Status == engine.Converged {
-			r.Error, r.Ratio = p.areaError(f), r.Seconds/own.Seconds
+			r.Error, r.Ratio = p.areaError(k.s, f), r.Seconds/own.Seconds
 			r.Note = fmt.Sprintf("ratio to newton in the same run (%.3g s)", own.Seconds)
 		} else {
 			r.Note = "no result: " + out.Why
@@ -365,7 +368,7 @@ func byLBFGS(ctx context.Context, p *problem, python string, limit float64) erro
 	for i, x := range got.Position {
 		f.Position[i] = r3.Vec{X: x[0], Y: x[1], Z: x[2]}
 	}
-	r := row{Case: p.name, Method: "lbfgs", Triangles: len(p.fine.Corners), Seconds: got.Seconds, Iterations: got.Iterations, Residual: got.Residual, Error: p.areaError(f)}
+	r := row{Case: p.name, Method: "lbfgs", Triangles: len(p.fine.Corners), Seconds: got.Seconds, Iterations: got.Iterations, Residual: got.Residual, Error: p.areaError(p.fine, f)}
 	if got.MinAngle < math.Pi/180 {
 		r.Note = fmt.Sprintf("no result: its mesh collapsed (smallest angle %.2g°)", got.MinAngle*180/math.Pi)
 		r.print()

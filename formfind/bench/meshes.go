@@ -13,13 +13,14 @@ import (
 
 // A problem is a case on meshes from coarse to fine. Meshes are made before any
 // clock starts, for every method alike; relaxation and L-BFGS see the finest one
-// only.
+// only, or an even one of the same size.
 type problem struct {
 	name   string
 	coarse *canopy.Structure
 	steps  []*mesh.Refinement
 	fine   *canopy.Structure
-	area   float64 // exact, m²; 0 when not known
+	even   func() *canopy.Structure // as many triangles laid at once, node by node along rows
+	area   float64                  // exact, m²; 0 when not known
 }
 
 // cells is how many cells a side the coarsest mesh has: some 250 triangles, as
@@ -63,5 +64,6 @@ func newProblem(k int, triangles int) (*problem, error) {
 		}
 		p.steps, p.fine = append(p.steps, r), r.Fine
 	}
+	p.even = func() *canopy.Structure { return surfaces[k].make(cells << len(p.steps)).S }
 	return p, nil
 }
