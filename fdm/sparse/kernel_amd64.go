@@ -9,7 +9,7 @@ var haveStrips = cpu.X86.HasAVX2 && cpu.X86.HasFMA
 
 // haveWide says that mulSubStrip goes on to mulSubStrip512, and what else has
 // AVX-512 in it: the processor has that, too. A variable for the same reason.
-var haveWide = haveStrips && cpu.X86.HasAVX512F && cpu.X86.HasBMI2
+var haveWide = haveStrips && cpu.X86.HasAVX512F && cpu.X86.HasAVX512VL && cpu.X86.HasBMI2
 
 // mulSubStrip512 gives the same bits as mulSubStrip, which jumps to it.
 //
