@@ -13,7 +13,7 @@ import (
 const MaxTriangles = 2_000_000
 
 // maxEdgeNodes bounds the nodes on all edges of a model, and of a ring.
-const maxEdgeNodes = 1_000_000
+const maxEdgeNodes = 200_000
 
 // Build divides m into nodes, members and triangles. A listed model is checked
 // by [Validate] and returned as it is. The error is an [Errors] with everything

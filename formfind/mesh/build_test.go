@@ -21,7 +21,10 @@ func build(t testing.TB, m *canopy.Model) *canopy.Structure {
 
 // topology counts vertices, edges and triangles and checks that the surface is
 // sound: every side has one or two triangles that pass it in opposite directions.
-func topology(t testing.TB, s *canopy.Structure) (v, e, f int) {
+func topology(t interface {
+	require.TestingT
+	Helper()
+}, s *canopy.Structure) (v, e, f int) {
 	t.Helper()
 	type side struct{ a, b int32 }
 	seen := map[side]int{}

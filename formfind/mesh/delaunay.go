@@ -7,8 +7,8 @@ import (
 
 // delaunay is a triangulation of points in the plane that is Delaunay but for
 // the segments it must contain (a constrained Delaunay triangulation). Points
-// are added one by one, with edge flips (Lawson 1977); segments are recovered by
-// flips (Sloan 1993).
+// are added one by one, with edge flips (Lawson 1977); segments are put in as in
+// segment.go.
 //
 // The first three points are far corners around everything.
 type delaunay struct {
@@ -299,94 +299,6 @@ func (d *delaunay) corner(t, a int32) int {
 		}
 	}
 	return 0
-}
-
-// hold makes the segment a–b part of the triangulation.
-func (d *delaunay) hold(a, b int32) error {
-	for range len(d.v) + 1 {
-		if t, side, ok := d.edge(a, b); ok {
-			d.mark(t, side)
-			return nil
-		}
-		// Find the side that the segment leaves a through.
-		t, start := d.at[a], d.at[a]
-		var i int
-		for {
-			i = d.corner(t, a)
-			u, w := d.v[t][(i+1)%3], d.v[t][(i+2)%3]
-			ou, ow := orient(d.p[a], d.p[b], d.p[u]), orient(d.p[a], d.p[b], d.p[w])
-			ahead := func(k int32) bool {
-				return (d.p[k].x-d.p[a].x)*(d.p[b].x-d.p[a].x)+(d.p[k].y-d.p[a].y)*(d.p[b].y-d.p[a].y) > 0
-			}
-			if ou == 0 && ahead(u) || ow == 0 && ahead(w) {
-				return errTouch
-			}
-			if ou < 0 && ow > 0 {
-				break
-			}
-			if t = d.n[t][(i+1)%3]; t < 0 || t == start {
-				return errCross
-			}
-		}
-		if err := d.clear(a, b, t, i); err != nil {
-			return err
-		}
-	}
-	return errCross
-}
-
-// clear walks from a to b and flips what is in the way and can be flipped.
-func (d *delaunay) clear(a, b, t int32, i int) error {
-	// Sides crossed, each by its two ends.
-	var crossed [][2]int32
-	for {
-		if d.held[t][i] {
-			return errCross
-		}
-		u, w := d.v[t][(i+1)%3], d.v[t][(i+2)%3]
-		crossed = append(crossed, [2]int32{u, w})
-		o := d.n[t][i]
-		k := d.sideTo(o, u, w)
-		e := d.v[o][k]
-		if e == b {
-			break
-		}
-		side := orient(d.p[a], d.p[b], d.p[e])
-		if side == 0 {
-			return errTouch
-		}
-		// The segment leaves o through the side with ends on both sides of it:
-		// w is on the left, u on the right.
-		if side > 0 {
-			t, i = o, d.sideTo(o, u, e)
-		} else {
-			t, i = o, d.sideTo(o, e, w)
-		}
-	}
-	for tries := 0; len(crossed) > 0; tries++ {
-		if tries > 64*(len(crossed)+16)*(len(crossed)+16) {
-			return errCross
-		}
-		s := crossed[0]
-		crossed = crossed[1:]
-		t, i, ok := d.edge(s[0], s[1])
-		if !ok {
-			continue
-		}
-		o := d.n[t][i]
-		q, x, y := d.v[t][i], d.v[t][(i+1)%3], d.v[t][(i+2)%3]
-		e := d.v[o][d.sideTo(o, x, y)]
-		if !(orient(d.p[q], d.p[x], d.p[e]) > 0 && orient(d.p[q], d.p[e], d.p[y]) > 0) {
-			crossed = append(crossed, s) // not convex yet
-			continue
-		}
-		d.flip(t, i)
-		if q != a && q != b && e != a && e != b &&
-			(orient(d.p[a], d.p[b], d.p[q]) > 0) != (orient(d.p[a], d.p[b], d.p[e]) > 0) {
-			crossed = append(crossed, [2]int32{q, e})
-		}
-	}
-	return nil
 }
 
 func (d *delaunay) mark(t int32, side int) {

@@ -170,6 +170,34 @@ func TestLongSidesTakeFewFlips(t *testing.T) {
 	}
 }
 
+// A segment along a strip crosses all sides between its two rows of points, even
+// ones and ones in waves, and is recovered with a few flips each.
+func TestLongSegmentsTakeFewFlips(t *testing.T) {
+	const n = 3_000
+	rnd := rand.New(rand.NewPCG(5, 5))
+	for _, wave := range []float64{0, 0.3, 0.9} {
+		for _, random := range []bool{false, true} {
+			p := []xy{{-5, 0}, {n + 5, 0}}
+			for i := range n {
+				up, down := wave*math.Sin(0.01*float64(i)), wave*math.Cos(0.013*float64(i))
+				if random {
+					up, down = wave*rnd.Float64(), wave*rnd.Float64()
+				}
+				p = append(p, xy{float64(i), 1 + up}, xy{float64(i) + 0.5, -1 - down})
+			}
+			d := newDelaunay(xy{-5, -2}, xy{n + 5, 2})
+			_, err := d.addAll(p)
+			require.NoError(t, err)
+			before := d.flips
+			require.NoError(t, d.hold(3, 4))
+			d.settle()
+			t.Logf("%.2f flips a point", float64(d.flips-before)/(2*n))
+			require.Less(t, d.flips-before, 80*n)
+			sound(t, d)
+		}
+	}
+}
+
 // Points on a small grid: collinear, cocircular and duplicate ones abound.
 func TestDelaunayOfNastyPoints(t *testing.T) {
 	rapid.Check(t, func(rt *rapid.T) {

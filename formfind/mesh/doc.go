@@ -26,7 +26,7 @@
 // Any other outline, with holes, lines and points in it, and any boundary whose
 // edges must be divided otherwise than the patch asks for, is triangulated in a
 // plane in which it does not overlap itself, first of all that of its vector area:
-// constrained Delaunay (Lawson 1977; Sloan 1993) with exact predicates (after
+// constrained Delaunay (Lawson 1977; Toussaint and Avis 1982) with exact predicates (after
 // Shewchuk 1997), filled by an advancing front (Rebay 1993) and refined by
 // circumcentres (Chew 1993; Ruppert 1995), smoothed, and lifted into space by mean
 // value coordinates (Floater 2003). Its sides may be divided in any way. Where it is

@@ -83,7 +83,7 @@ func TestExplosionsAreRefused(t *testing.T) {
 			cableEdge(m, "line", "P0", "P2", canopy.ModelCable{Force: 1e3})
 			m.Edges[len(m.Edges)-1].Segments = 2_000_000_000
 			return m
-		}, "segments, more than the 1000000 that are possible"},
+		}, "segments, more than the 200000 that are possible"},
 		"segments of many edges": {func() *canopy.Model {
 			m := drawn(square...)
 			for k := range 20 {
@@ -92,7 +92,7 @@ func TestExplosionsAreRefused(t *testing.T) {
 				m.Edges[len(m.Edges)-1].Segments = 100_000
 			}
 			return m
-		}, "segments, more than the 1000000 that are possible"},
+		}, "segments, more than the 200000 that are possible"},
 		"a strip without width": {func() *canopy.Model {
 			m := drawn(r3.Vec{}, r3.Vec{X: 1e5}, r3.Vec{X: 1e5, Y: 1e-3}, r3.Vec{Y: 1e-3})
 			m.MeshSize = 0.01

@@ -37,7 +37,7 @@ func hostileNet(t *rapid.T) {
 		return v * rapid.SampledFrom([]float64{1, 1, 1, -1}).Draw(t, "sign")
 	}
 	far := rapid.SampledFrom([]float64{0, 0, 1e7}).Draw(t, "far")
-	tall := rapid.SampledFrom([]float64{1, 1, 1, 1e6}).Draw(t, "tall")
+	tall := rapid.SampledFrom([]float64{1, 1, 1, 1e9}).Draw(t, "tall")
 	loop := func(name string, n int) []string {
 		var edges []string
 		for k := range n {

@@ -91,7 +91,7 @@ func (b *builder) newLattice(n *canopy.Net, r *rim) *lattice {
 	}
 	u0, ni := spread(lo.x, hi.x)
 	v0, nj := spread(lo.y, hi.y)
-	if max(ni, nj) > maxLines || !b.crossings(ni, nj) {
+	if min(ni, nj) < 1 || max(ni, nj) > maxLines || !b.crossings(ni, nj) {
 		return nil
 	}
 	l.ni, l.nj = ni, nj

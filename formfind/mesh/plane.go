@@ -40,6 +40,10 @@ func (f *flat) drop(v r3.Vec) (xy, float64) {
 // direction that it is laid out along: 75°.
 const leastSeen = 0.26
 
+// maxTilted is the largest number of nodes of an outline for which planes are
+// tried out.
+const maxTilted = 50_000
+
 // choosePlane triangulates the outline in the plane that the model gives, or in
 // the first of these in which it does not overlap itself: that of its vector
 // area, where it looks largest, then ones tilted against that. Where all overlap
@@ -62,8 +66,11 @@ func (p *plot) choosePlane(f *flat) (d *delaunay, in []bool, ok bool) {
 	if fault == nil {
 		return d, in, true
 	}
-	if !given && l.ring < 0 && fault.rim == 0 {
+	if !given && l.ring < 0 && fault.rim == 0 && len(f.p) <= maxTilted {
 		for _, v := range f.tilted(n) {
+			if p.b.ctx.Err() != nil {
+				return nil, nil, false
+			}
 			f.lay(v)
 			if d, in, fault := f.outline(); fault == nil {
 				return d, in, true
