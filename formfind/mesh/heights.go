@@ -32,11 +32,12 @@ func (f *flat) heights(r *refinement) []float64 {
 }
 
 // relaxHeights makes each height from r.rim on the mean of its neighbours', by
-// conjugate gradients with a multilevel preconditioner.
-func (r *refinement) relaxHeights(h []float64) {
+// conjugate gradients with a multilevel preconditioner, and returns how many steps
+// that took.
+func (r *refinement) relaxHeights(h []float64) (steps int) {
 	n := len(h) - r.rim
 	if n == 0 {
-		return
+		return 0
 	}
 	start, near := r.neighbours()
 	apply := func(out, x []float64) (dot float64) {
@@ -66,7 +67,7 @@ func (r *refinement) relaxHeights(h []float64) {
 	m := newMultilevel(r, start)
 	rz := m.apply(tmp, res)
 	copy(dir, tmp)
-	for first, step := rr, 0; step < 20*int(math.Sqrt(float64(n)))+50 && rr > 1e-12*first; step++ {
+	for first := rr; steps < 20*int(math.Sqrt(float64(n)))+50 && rr > 1e-12*first; steps++ {
 		alpha := rz / apply(tmp, dir)
 		rr = 0
 		for i := range n {
@@ -80,6 +81,7 @@ func (r *refinement) relaxHeights(h []float64) {
 		}
 		rz = next
 	}
+	return steps
 }
 
 // neighbours lists the neighbours of the points from r.rim on: those of point
