@@ -66,3 +66,35 @@ func sign(v float64) int8 {
 	}
 	return 1
 }
+
+// The frame stays a frame on a finer mesh, also where no line says so, as in a
+// listed structure.
+func TestTheFrameOfTwoFilmsStaysSupported(t *testing.T) {
+	m := &canopy.Model{MeshSize: 0.5}
+	var names []string
+	for i, p := range []r3.Vec{{}, {X: 3}, {X: 3, Y: 2, Z: 0.5}, {Y: 2}} {
+		m.Points = append(m.Points, canopy.Point{Name: fmt.Sprint("P", i), At: p})
+		m.Edges = append(m.Edges, canopy.Edge{Name: fmt.Sprint("e", i), From: fmt.Sprint("P", i), To: fmt.Sprint("P", (i+1)%4), Kind: canopy.EdgeFixed})
+		names = append(names, fmt.Sprint("e", i))
+	}
+	for _, name := range []string{"upper", "lower"} {
+		m.Fabrics = append(m.Fabrics, canopy.ModelFabric{Name: name, Boundary: names, Warp: 1, Weft: 1})
+	}
+	s, err := mesh.Build(t.Context(), m)
+	require.NoError(t, err)
+	for _, lines := range [][]canopy.Line{s.Lines, nil} {
+		bare := *s
+		bare.Lines = lines
+		r, err := mesh.Refine(&bare)
+		require.NoError(t, err)
+		films := make([]uint8, len(r.Fine.Position))
+		for i, c := range r.Fine.Corners {
+			for _, k := range c {
+				films[k] |= 1 << r.Fine.FabricOf[i]
+			}
+		}
+		for i, f := range films {
+			require.Equal(t, f == 3, r.Fine.Fixed[i] == canopy.DirAll, "node %d", i)
+		}
+	}
+}

@@ -65,8 +65,9 @@ type refiner struct {
 	s, f       *canopy.Structure
 	mid        map[[2]int32]int32 // side → new node
 	parents    [][2]int32
-	uses       []uint8 // per new node: triangles at its side, up to 3
-	fabric     []int32 // per new node: fabric that made it
+	uses       []uint8        // per new node: triangles at its side, up to 3
+	joined     map[int32]bool // new nodes on sides of several fabrics
+	fabric     []int32        // per new node: fabric that made it
 	memberOf   []int32
 	triangleOf []int32
 	halves     [][2]int32 // per coarse member: its fine members, the second −1 when undivided
@@ -104,8 +105,40 @@ func (r *refiner) sides() {
 			if u := &r.uses[m-n]; *u < 3 {
 				*u++
 			}
+			if r.fabric[m-n] != s.FabricOf[t] {
+				if r.joined == nil {
+					r.joined = map[int32]bool{}
+				}
+				r.joined[m] = true
+			}
 		}
 	}
+}
+
+// rims finds new nodes on what films have for a common boundary: sides between
+// supports at which two films end, other than seams.
+func (r *refiner) rims() map[int32]bool {
+	s, n := r.s, int32(len(r.s.Position))
+	var rim map[int32]bool
+	for m := range r.joined {
+		if p := r.parents[m]; r.uses[m-n] == 2 && s.Fixed[p[0]]&s.Fixed[p[1]] != 0 {
+			if rim == nil {
+				rim = map[int32]bool{}
+			}
+			rim[m] = true
+		}
+	}
+	if rim == nil {
+		return nil
+	}
+	for _, l := range s.Lines {
+		for j := 1; j < len(l.Nodes) && l.Role == "seam"; j++ {
+			if m, ok := r.at(l.Nodes[j-1], l.Nodes[j]); ok {
+				delete(rim, m)
+			}
+		}
+	}
+	return rim
 }
 
 // folds lists the sides with one triangle, or with more than two.
@@ -144,13 +177,15 @@ func (r *refiner) nodes() {
 			f.Reference = append(f.Reference, mid(s.Reference[p[0]], s.Reference[p[1]]))
 		}
 	}
-	// A side of one triangle without a member between supports is supported.
+	// A side of one triangle, or of one in each of two films, without a member
+	// between supports is supported.
+	rim := r.rims()
 	cable := map[[2]int32]bool{}
 	for _, e := range s.Ends {
 		cable[sideKey(e[0], e[1])] = true
 	}
 	for m := n; m < total; m++ {
-		if p := r.parents[m]; r.uses[m-n] == 1 && !cable[p] {
+		if p := r.parents[m]; (r.uses[m-n] == 1 || rim[int32(m)]) && !cable[p] {
 			f.Fixed[m] = s.Fixed[p[0]] & s.Fixed[p[1]]
 		}
 	}
