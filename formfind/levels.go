@@ -170,7 +170,7 @@ func climb(ctx context.Context, coarse *canopy.Structure, steps []*mesh.Refineme
 			if ctx.Err() != nil {
 				return last, false, err
 			}
-			if !errors.As(err, &none) || none.met == nil {
+			if !errors.As(err, &none) || none.met == nil || sheared(s) {
 				return last, false, nil
 			}
 			up, shape, limit, err := narrow(ctx, steps[i:], s, none.met, o)

@@ -59,7 +59,7 @@ func pinned(s *canopy.Structure, f *canopy.Form) bool {
 	most := pinnedEqual
 	switch {
 	case equalStress(s):
-	case slices.Contains(s.Kind, canopy.KindEdgeCable):
+	case sheared(s):
 		most = pinnedUnequal
 	default:
 		// A short neck hardly counts in the mean.
@@ -73,6 +73,14 @@ func pinned(s *canopy.Structure, f *canopy.Form) bool {
 		most *= meshSide(s, f) / s.Size()
 	}
 	return math.Sqrt(rr) > most*math.Sqrt(ss)
+}
+
+// sheared reports whether edge cables shear fabric of unequal stress. In its plane
+// such fabric is out of balance whatever the magnitude, most at the corners and where
+// the outline does not let it hold the ratio, so that no threshold tells for certain a
+// shape that the mesh holds: a walk or a finer mesh may stop at one as if at a limit.
+func sheared(s *canopy.Structure) bool {
+	return !equalStress(s) && slices.Contains(s.Kind, canopy.KindEdgeCable)
 }
 
 // blownUp reports whether pressure acts on the fabric, given or found.

@@ -60,6 +60,9 @@ func refined(ctx context.Context, s *canopy.Structure, f *canopy.Form, estimate 
 		return estimate, false, err
 	}
 	if err != nil || out.Status != engine.Converged || out.NegativePivots != 0 || unreal(r.Fine, fine) {
+		if sheared(s) {
+			return estimate, false, nil
+		}
 		return estimate, false, c.ask(ctx, r, f)
 	}
 	move := moveOnRefinement(f, fine, r.Fine) / s.Size()
@@ -130,6 +133,9 @@ func discretisation(ctx context.Context, s *canopy.Structure, got found, origin 
 		if estimate, sure, err = refined(ctx, s, got.surface, estimate, o); err != nil {
 			return estimate, err
 		}
+	}
+	if !sure && math.IsNaN(estimate) {
+		got.form.Steps = append(got.form.Steps, "how far a finer mesh would move the surface was not judged: it has too many triangles to be refined for that, or no balance was found there")
 	}
 	if !sure && estimate > unsure {
 		got.form.Converged = false
