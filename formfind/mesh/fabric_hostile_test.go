@@ -53,7 +53,16 @@ func hostileFabric(t *rapid.T) {
 			fixedEdge(m, e, from, to)
 			if few("arc") {
 				last := &m.Edges[len(m.Edges)-1]
-				last.Arc, last.Through = true, r3.Vec{X: far + coordinate("x"), Y: coordinate("y"), Z: tall}
+				rise := rapid.SampledFrom([]float64{0.3, -0.5, 1e-9, 2}).Draw(t, "rise")
+				at := func(name string) r3.Vec {
+					for _, p := range m.Points {
+						if p.Name == name {
+							return p.At
+						}
+					}
+					return r3.Vec{}
+				}
+				last.Arc, last.Through = true, r3.Add(r3.Scale(0.5, r3.Add(at(from), at(to))), r3.Vec{X: rise, Y: 0.7 * rise})
 			}
 		}
 		if few("given") {

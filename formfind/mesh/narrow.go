@@ -250,7 +250,8 @@ func (b *builder) clearFill() {
 }
 
 // fillFinely makes the nodes of edges and all in between, and divides what is
-// narrow until every fabric meets its bound or no longer comes nearer to it.
+// narrow until every fabric meets its bound, three rounds in a row bring it no
+// nearer, or there are several times as many triangles.
 func (b *builder) fillFinely(run func(...func()) error) error {
 	b.ringTimes = make([]int, len(b.m.Rings))
 	for i := range b.ringTimes {
@@ -265,7 +266,9 @@ func (b *builder) fillFinely(run func(...func()) error) error {
 		return err
 	}
 	best, least := b.division(), b.thin()
-	for round := 1; round <= narrowRounds && least > 0 && b.divideNarrow(); round++ {
+	most := 4*len(b.s.Corners) + 10_000
+	stalled := 0
+	for round := 1; round <= narrowRounds && least > 0 && stalled < 3 && len(b.s.Corners) < most && b.divideNarrow(); round++ {
 		if err := fill(); err != nil {
 			if b.ctx.Err() != nil {
 				return err
@@ -273,8 +276,9 @@ func (b *builder) fillFinely(run func(...func()) error) error {
 			b.errs = nil // what was found wrong is of our own making
 			break
 		}
+		stalled++
 		if n := b.thin(); n < least {
-			best, least = b.division(), n
+			best, least, stalled = b.division(), n, 0
 		}
 	}
 	if slices.Equal(b.count, best.count) && slices.Equal(b.ringTimes, best.times) {
