@@ -63,7 +63,7 @@ const drawingStyle = `
 .ink{fill:var(--ink,#1d252c)}.faint{fill:var(--faint,#5a646d)}
 .l{fill:none;stroke-linecap:round;stroke-linejoin:round}
 .cable{stroke:var(--ink,#1d252c)}.mast{stroke:var(--mast,#4c555d)}.ring{stroke:var(--ink,#1d252c)}.fixed{stroke:#8a6a24}
-.contour{stroke:#6d6256;stroke-width:.7}.seam{stroke:#6d6256;stroke-width:.8;stroke-dasharray:5 4}
+.contour{stroke:#6d6256;stroke-width:.7}.turn{stroke:#6d6256;stroke-width:1.2}.seam{stroke:#6d6256;stroke-width:.8;stroke-dasharray:5 4}
 .hidden{stroke-dasharray:3 4;opacity:.55}
 .dim{stroke:var(--faint,#5a646d);stroke-width:.8;fill:none}
 .foot{fill:#8a6a24}.held{fill:#6b4a86}
@@ -112,6 +112,9 @@ func drawAt(r *canopy.Result, v view, scale float64, o Options) *drawing {
 	}
 	d.underlay()
 	d.contours()
+	for _, line := range silhouettes(r, v) {
+		d.path(line, "turn", 0, true)
+	}
 	d.lines()
 	if v.name == "plan" {
 		d.drainage()

@@ -109,6 +109,9 @@ func (p *picture) draw() {
 			}
 		}
 	}
+	for _, line := range silhouettes(r, p.f.view) {
+		p.line(line, 1.6, color.RGBA{130, 118, 104, 255})
+	}
 	dark, grey, brass := color.RGBA{40, 48, 56, 255}, color.RGBA{88, 96, 104, 255}, color.RGBA{138, 106, 36, 255}
 	for i := range s.Lines {
 		l := &s.Lines[i]
