@@ -42,13 +42,19 @@ func newDelaunay(lo, hi xy) *delaunay {
 	}
 }
 
+const farthest = 1000
+
 // locate walks to the triangle that holds q. side is −1 when q is inside it, or
 // the side it lies on, or 3 when q is one of its corners. With stop set the walk
-// ends at a held side in its way, and blocked is true.
+// ends at a held side in its way, and blocked is true; as it is after farthest
+// steps, which lead along a needle to what lies outside of it.
 func (d *delaunay) locate(q xy, from int32, stop bool) (t int32, side int, blocked bool) {
 	t = from
 	prev := int32(-1)
 	for step := 0; step < 2*len(d.v)+8; step++ {
+		if stop && step == farthest {
+			return t, -1, true
+		}
 		side = -1
 		next := int32(-1)
 		// Start at a side that changes with the step, so that the walk cannot

@@ -82,9 +82,9 @@ func (r *refinement) obstacles() []obstacle {
 		if !finite(o) {
 			continue
 		}
-		if s, side, blocked := d.locate(o, t, true); blocked {
+		if s, side, blocked := d.locate(o, t, true); blocked && side >= 0 {
 			add(s, side, 2)
-		} else {
+		} else if !blocked {
 			r.seen(o, s, func(t int32, side int) { add(t, side, 2) })
 		}
 	}
