@@ -13,7 +13,7 @@ import (
 func volumeKeys() []*key {
 	return []*key{
 		{name: "volume", shape: quantity(Volume), example: "60 m3",
-			doc: "Volume of air shut in below the fabric, in place of pressure: its pressure is found. The fabric closes it with the plane of its boundary, which is fixed in that plane, or with the fabrics named in volume with. A negative one bulges the other way."},
+			doc: "Volume of air shut in below the fabric, or behind the positive side of listed triangles, in place of pressure: its pressure is found. The fabric closes it with the plane of its boundary, which is fixed in that plane, or with the fabrics named in volume with. A negative one bulges the other way."},
 		{name: "volume with", shape: names("fabric", 1), deflt: "none: the plane of its boundary closes the volume", example: "[lower]",
 			doc: "The other fabrics around the same air: the lower film of a cushion, or the neighbours that complete a roof. Only the fabric that has the volume names them."},
 	}
@@ -79,6 +79,16 @@ func (r *reader) airs(all []air, fabrics []string, pressed func(fabric string) b
 	}
 }
 
+// outlineVolume reads the volume of the fabric of an outline.
+func (r *reader) outlineVolume(g *fields) (float64, bool) {
+	v, ok := g.quantity("volume")
+	if ok && g.has("pressure") {
+		r.fail(g.keyNode("volume"), g.p.down("volume"), "the fabric has a volume and a pressure: the pressure is what follows from the volume", "keep one of them")
+		return 0, false
+	}
+	return v, ok
+}
+
 // outlineAir reads the volume below the last faces of the model, which share it.
 func (d *drawn) outlineAir(g *fields, faces int) {
 	if !g.has("volume") || faces == 0 {
@@ -87,11 +97,7 @@ func (d *drawn) outlineAir(g *fields, faces int) {
 	all := d.m.Fabrics[len(d.m.Fabrics)-faces:]
 	a := air{fabric: all[0].Name, at: g.keyNode("volume"), p: g.p.down("volume")}
 	var ok bool
-	if a.volume, ok = g.quantity("volume"); !ok {
-		return
-	}
-	if g.has("pressure") {
-		d.r.fail(a.at, a.p, "the fabric has a volume and a pressure: the pressure is what follows from the volume", "keep one of them")
+	if a.volume, ok = d.r.outlineVolume(g); !ok {
 		return
 	}
 	for _, f := range all[1:] {

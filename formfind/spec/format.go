@@ -156,7 +156,7 @@ func fabricMaterialKeys() []*key {
 		{name: "stiffness", shape: in(fabricStiffnessSection), example: "{warp: 600 kN/m, weft: 500 kN/m, shear: 30 kN/m, poisson: 0.3}",
 			doc: "Elastic moduli, handed on to analysis and used for the cutting sizes."},
 		{name: "pressure", shape: quantity(Pressure), deflt: "0", example: "300 Pa",
-			doc: "Internal pressure on the fabric, normal to it wherever it moves; positive pushes up, or an upright fabric towards x."},
+			doc: "Internal pressure on the fabric, normal to it wherever it moves; positive pushes up, or an upright fabric towards x, and listed triangles towards their positive side."},
 	}
 }
 

@@ -1,6 +1,7 @@
 package spec
 
 import (
+	"errors"
 	"fmt"
 	"io"
 	"math"
@@ -29,7 +30,7 @@ func (r *reader) outlineMesh(f, g *fields, m *canopy.Model) {
 	if g.has("net") {
 		r.fail(g.keyNode("net"), g.p.down("net"), "a net goes into a drawing; a mesh is one of fabric", "remove it, or draw the outline as DXF")
 	}
-	fab, ok := r.meshFabric(g)
+	fab, volume, ok := r.meshFabric(g)
 	edge, cables := r.meshEdge(g)
 	n := g.get("file")
 	b := r.beside(n, g.p.down("file"))
@@ -90,6 +91,15 @@ func (r *reader) outlineMesh(f, g *fields, m *canopy.Model) {
 			return
 		}
 	}
+	if fab.HasVolume {
+		e, err := st.Enclose(fab.Name, []int32{0}, 1, fab.Volume)
+		var wrong *canopy.EnclosureError
+		if errors.As(err, &wrong) {
+			r.fail(volume, g.p.down("fabric").down("volume"), fmt.Sprintf("fabric %q cannot have a volume: %s", fab.Name, wrong.Problem), wrong.WayOut)
+			return
+		}
+		st.Enclosures = append(st.Enclosures, e)
+	}
 	m.Listed = st
 }
 
@@ -97,16 +107,15 @@ func meshPlace(v r3.Vec, u outline.Unit) string {
 	return fmt.Sprintf("(%.6g, %.6g, %.6g) %s", v.X/u.Metres, v.Y/u.Metres, v.Z/u.Metres, u.Name)
 }
 
-// meshFabric reads the fabric of a mesh.
-func (r *reader) meshFabric(g *fields) (canopy.ModelFabric, bool) {
-	var fab canopy.ModelFabric
+// meshFabric reads the fabric of a mesh; volume is the key of its volume, if any.
+func (r *reader) meshFabric(g *fields) (fab canopy.ModelFabric, volume *yaml.Node, ok bool) {
 	n, p := g.get("fabric"), g.p.down("fabric")
 	if n == nil {
 		r.fail(g.node, g.p, "the mesh has no fabric", "add fabric: {prestress: 2.5 kN/m}")
-		return fab, false
+		return fab, nil, false
 	}
 	if r.mapping(n, p, outlineFabricSection) == nil {
-		return fab, false
+		return fab, nil, false
 	}
 	h := r.section(n, outlineFabricSection, p)
 	fab.Name = h.text("name")
@@ -117,6 +126,10 @@ func (r *reader) meshFabric(g *fields) (canopy.ModelFabric, bool) {
 	fab.Warp, fab.Weft = r.warpWeft(h, "prestress")
 	r.plausiblePrestress(h, fab.Warp, fab.Weft)
 	r.material(h, &fab.Properties)
+	if h.has("volume") {
+		volume = h.keyNode("volume")
+		fab.Volume, fab.HasVolume = r.outlineVolume(h)
+	}
 	for _, k := range []string{"mesh", "pattern"} {
 		if h.has(k) {
 			r.fail(h.keyNode(k), p.down(k), "the mesh is that of the file", "remove "+k)
@@ -126,11 +139,11 @@ func (r *reader) meshFabric(g *fields) (canopy.ModelFabric, bool) {
 	if w := h.get("warp"); w != nil {
 		if w.Kind != yaml.SequenceNode {
 			r.fail(w, p.down("warp"), "the warp of a mesh is a direction", "for example warp: [1, 0, 0]")
-			return fab, false
+			return fab, nil, false
 		}
 		fab.WarpDir, _ = r.direction(w, p.down("warp"))
 	}
-	return fab, fab.Warp > 0 && fab.Weft > 0
+	return fab, volume, fab.Warp > 0 && fab.Weft > 0
 }
 
 // meshEdge reads what the edges of a mesh are.
