@@ -35,6 +35,15 @@ func airRows(r *canopy.Result) [][]string {
 	return rows
 }
 
+// heldAir says what stability assumes where volumes of air were given: a bubble
+// past the hemisphere would run away if a fan held its pressure instead.
+func heldAir(r *canopy.Result) string {
+	if len(r.Structure.Enclosures) == 0 {
+		return ""
+	}
+	return " while the volume of air is held, not its pressure"
+}
+
 func (p *page) air(r *canopy.Result) {
 	rows := airRows(r)
 	if len(rows) == 0 {

@@ -28,12 +28,14 @@ func TestPressuresFoundAreReported(t *testing.T) {
 	var b bytes.Buffer
 	require.NoError(t, Summary(&b, r, Options{}))
 	require.Regexp(t, `upper +lower +14\.00 +14\.00 +5[0-9]{2}\.[0-9]\n`, b.String())
+	require.Contains(t, strings.Join(strings.Fields(b.String()), " "), "stable while the volume of air is held, not its pressure, firmness")
 	for _, f := range Formats() {
 		if f.Name == "report" {
 			b.Reset()
 			require.NoError(t, f.Write(background, &b, r, Options{}))
 			require.Contains(t, b.String(), "Air of given volume.")
 			require.Contains(t, b.String(), "Volumes of air, measured anew")
+			require.Contains(t, b.String(), "prestress while the volume of air is held, not its pressure")
 			require.Regexp(t, `<td[^>]*>14\.00</td><td[^>]*>5[0-9]{2}\.[0-9]</td>`, b.String())
 		}
 	}
@@ -54,4 +56,7 @@ func TestPressuresFoundAreReported(t *testing.T) {
 	require.Equal(t, r.Form.Pressure[0], r.Structure.Fabrics[0].Pressure*float64(r.Structure.Enclosures[0].Side[0]))
 	require.Contains(t, string(csv), "internal pressure [N/m2]")
 	require.Len(t, strings.Split(strings.TrimSpace(string(csv)), "\n"), 4)
+	text, err := os.ReadFile(filepath.Join(dir, "read-me.txt"))
+	require.NoError(t, err)
+	require.Contains(t, string(text), "stable while that volume is held")
 }

@@ -346,8 +346,13 @@ func handoverText(r *canopy.Result) string {
 	p("               carries the ring holds it.")
 	p("supports.csv   All other nodes are free. Points whose place was given by the designer and")
 	p("               that masts and guys balance are not supports: they stand by equilibrium.")
+	p("fabrics.csv    Internal pressure pushes along the normals of the triangles.")
 	p("loads.csv      Forces that act in the found state beside prestress. Do not add the weights")
-	p("               of members and fabrics again when they stand here.")
+	p("               of members and fabrics again when they stand here, nor pressure.")
+	if len(r.Structure.Enclosures) > 0 {
+		p("               The pressure was found from the volume of air it encloses; the shape is")
+		p("               stable while that volume is held, which a constant pressure need not do.")
+	}
 	if r.Structure.SelfWeight {
 		p("               The weights act here.")
 	} else {

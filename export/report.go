@@ -589,9 +589,9 @@ func (p *report) audit() {
 	case a.Unstable > 0:
 		item("Stability: UNSTABLE in %s: a small push grows.", plural(a.Unstable, "direction"))
 	case math.IsNaN(a.Softest):
-		item("Stability: stable for the prescribed prestress.")
+		item("Stability: stable for the prescribed prestress%s.", heldAir(p.r))
 	default:
-		item("Stability: stable for the prescribed prestress, firmness %s (0 would be on the brink).", figure(a.Softest))
+		item("Stability: stable for the prescribed prestress%s, firmness %s (0 would be on the brink).", heldAir(p.r), figure(a.Softest))
 	}
 	item("Tension: %s slack, %s pushed; %s in compression.", plural(a.SlackCables, "cable"), plural(a.PushedCables, "cable"), plural(a.CompressedTriangles, "triangle"))
 	if len(s.Corners) > 0 {

@@ -551,9 +551,9 @@ func (p *page) audit(r *canopy.Result) {
 	case a.Unstable > 0:
 		p.wrap("  ", fmt.Sprintf("UNSTABLE in %s", plural(a.Unstable, "direction")))
 	case math.IsNaN(a.Softest):
-		p.wrap("  ", "stable")
+		p.wrap("  ", "stable"+heldAir(r))
 	default:
-		p.wrap("  ", fmt.Sprintf("stable, firmness %s (0 would be on the brink)", figure(a.Softest)))
+		p.wrap("  ", fmt.Sprintf("stable%s, firmness %s (0 would be on the brink)", heldAir(r), figure(a.Softest)))
 	}
 	if len(r.Structure.Corners) > 0 && a.MinAngle > 0 {
 		line := fmt.Sprintf("smallest mesh angle %.1f°", degrees(a.MinAngle))

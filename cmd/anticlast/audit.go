@@ -39,7 +39,11 @@ func writeAudit(w io.Writer, r *canopy.Result) error {
 		row("volumes of air against those asked for", u.VolumeMismatch, tol.Volume)
 	}
 
-	fmt.Fprintln(b, "\nStability for the prescribed stress")
+	held := ""
+	if len(s.Enclosures) > 0 {
+		held = ", volumes of air held"
+	}
+	fmt.Fprintf(b, "\nStability for the prescribed stress%s\n", held)
 	switch {
 	case !u.StabilityKnown:
 		fmt.Fprintf(b, "  not known: %s\n", u.StabilityNote)
