@@ -45,7 +45,7 @@ func (x *dxf) replace(p *props, at func(t float64) r3.Vec, breaks []float64, sam
 		rise := fromChord(pa, pb, pm)
 		line := rise <= tol/100
 		n := samples(a, b)
-		for i := 1; i < n && off <= tol; i++ {
+		for i := 1; i < n && (off <= tol || halvings == maxHalvings); i++ {
 			q := at(a + (b-a)*float64(i)/float64(n))
 			if line {
 				off = max(off, fromChord(pa, pb, q))
