@@ -92,7 +92,8 @@ type Outcome struct {
 	Residual   float64 // η at the end
 	Worst      float64
 	Move       float64
-	// NegativePivots of the last tangent factorised at the returned shape;
-	// −1 when the engine factorises none.
+	// NegativePivots of the last tangent factorised, at the returned shape or a
+	// last small step before it; −1 when the engine factorises none, or solved
+	// its steps without. Not known is not stable.
 	NegativePivots int
 }
