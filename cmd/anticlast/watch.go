@@ -6,6 +6,8 @@ import (
 	"fmt"
 	"os"
 	"time"
+
+	"anticlast/formfind"
 )
 
 // watchInterval is how often the model file is looked at. Asking for its time
@@ -36,7 +38,8 @@ func (a *app) watch(ctx context.Context, path string, f formFlags) error {
 			code := a.exit(ctx, err)
 			if !a.quiet && !a.json {
 				said := fmt.Sprintf("formed in %d ms", time.Since(start).Milliseconds())
-				if code != exitFine && code != exitNotTrusted {
+				var none *formfind.NoEquilibriumError
+				if code != exitFine && code != exitNotTrusted || errors.As(err, &none) {
 					said = "not formed"
 				}
 				fmt.Fprintf(a.Err, "%s; watching %s, Ctrl-C ends\n", said, path)
