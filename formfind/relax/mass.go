@@ -16,7 +16,7 @@ import (
 // Space Structures 14, 1999). That is so for members and triangles without
 // obtuse angle; for others S grows by half the eigenvalue.
 func (st *state) refresh() {
-	st.crew.run(st.n, func(b int) {
+	st.crew.Run(blocks(st.n), func(b int) {
 		lo, hi := span(b, st.n)
 		for i := lo; i < hi; i++ {
 			if st.mode[i] == still && st.tied[i] < 0 {

@@ -6,6 +6,7 @@ import (
 	"gonum.org/v1/gonum/spatial/r3"
 
 	"anticlast/formfind/canopy"
+	"anticlast/formfind/internal/crew"
 )
 
 // state is a problem on its way to rest.
@@ -18,7 +19,7 @@ import (
 // 60 a member and 170 a node.
 type state struct {
 	*problem
-	crew *crew
+	crew *crew.Crew
 
 	x, next, before []r3.Vec // positions now, at the next step and at the one before
 	v               []r3.Vec // m per step; force and mass are in units with Δt = 1
@@ -56,7 +57,7 @@ func (a *sums) add(b *sums) {
 func newState(p *problem, x []r3.Vec, viscous bool) *state {
 	n := p.n
 	st := &state{
-		problem: p, crew: newCrew(n + len(p.corners) + len(p.ends)),
+		problem: p, crew: crew.New((n + len(p.corners) + len(p.ends)) / (8 * block)),
 		x: x, next: append([]r3.Vec(nil), x...), before: append([]r3.Vec(nil), x...),
 		v: make([]r3.Vec, n), mass: make([]float64, n), meet: make([]float64, n), stride2: make([]float64, n),
 		force0: make([]r3.Vec, n),
@@ -97,11 +98,11 @@ func newState(p *problem, x []r3.Vec, viscous bool) *state {
 
 // elements brings force densities and facets up to date with x.
 func (st *state) elements() {
-	st.crew.run(len(st.ends), st.memberBlock)
+	st.crew.Run(blocks(len(st.ends)), st.memberBlock)
 	if len(st.cable) > 0 {
 		st.pullCables()
 	}
-	st.crew.run(len(st.corners), st.triangleBlock)
+	st.crew.Run(blocks(len(st.corners)), st.triangleBlock)
 	if len(st.pocket) > 0 {
 		st.pressPockets()
 	}
@@ -295,7 +296,7 @@ func (st *state) project(i int, v, area r3.Vec) r3.Vec {
 
 // move gathers the forces at x and steps to next: v becomes keep·v + push·r/m.
 func (st *state) move(keep, push float64) sums {
-	st.crew.run(st.n, func(b int) {
+	st.crew.Run(blocks(st.n), func(b int) {
 		lo, hi := span(b, st.n)
 		var s sums
 		for i := lo; i < hi; i++ {

@@ -73,7 +73,7 @@ func (e *Engine) Find(ctx context.Context, s *canopy.Structure, start *canopy.Fo
 		p.startForces(start)
 	}
 	st := newState(p, x, e.Viscous)
-	defer st.crew.dismiss()
+	defer st.crew.Dismiss()
 	r := run{state: st, set: set, name: e.Name()}
 	if e.Viscous {
 		err = r.viscous(ctx)
