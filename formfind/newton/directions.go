@@ -173,13 +173,13 @@ func (v *Solver) countDirections(i int32, at []r3.Vec) int {
 	return 0
 }
 
-// refreshBasis computes the directions of all unknowns at the positions at,
+// refreshBasis computes the directions of the nodes lo to hi at the positions at,
 // from the vector areas at the nodes in v.normalSum.
 // A direction that does not exist there (say, the normal of a node that may
 // only move along its fabric) is zero; assembly then keeps the node in place.
-func (v *Solver) refreshBasis(at []r3.Vec, basis []r3.Vec) {
+func (v *Solver) refreshBasis(at []r3.Vec, basis []r3.Vec, lo, hi int) {
 	s := v.s
-	for i := range v.cls {
+	for i := lo; i < hi; i++ {
 		b := basis[v.start[i]:v.start[i+1]]
 		switch v.cls[i] {
 		case normal:

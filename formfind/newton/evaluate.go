@@ -58,15 +58,20 @@ func (v *Solver) evaluate(st *state) {
 	s := v.s
 	at := st.at
 	st.collapse = none
-	for i := range at {
-		v.normalSum[i] = r3.Vec{}
-		l := s.LoadAt(i)
-		st.pull[i] = l
-		st.size[i] = norm(l)
-	}
 	energy, noise, noise2 := 0.0, 0.0, 0.0
-	for i := range at {
-		if s.Load != nil {
+	v.overNodes(func(_, lo, hi int) {
+		clear(v.normalSum[lo:hi])
+		if s.Load == nil {
+			clear(st.pull[lo:hi])
+			clear(st.size[lo:hi])
+			return
+		}
+		for i := lo; i < hi; i++ {
+			st.pull[i], st.size[i] = s.Load[i], norm(s.Load[i])
+		}
+	})
+	if s.Load != nil {
+		for i := range at {
 			energy -= r3.Dot(s.Load[i], r3.Sub(at[i], s.Position[i]))
 		}
 	}
@@ -107,50 +112,18 @@ func (v *Solver) evaluate(st *state) {
 			}
 		}
 	}
-	var tri element.Triangle
-	for k, c := range s.Corners {
-		ok := tri.Span(&at[c[0]], &at[c[1]], &at[c[2]])
-		if !ok || tri.Area < collapsed*v.areaStart[k] {
-			st.collapse = int32(k)
-			if !ok {
-				continue
-			}
+	v.overFabric(func(piece int, list []corners) {
+		part := &v.pieces[piece]
+		part.energy, part.collapse = 0, none
+		var tri element.Triangle
+		for _, c := range list {
+			v.pullOf(st, c, &tri, part)
 		}
-		fabric := &s.Fabrics[s.FabricOf[k]]
-		stress, weftStress := v.stressOf(k)
-		var f [3]r3.Vec
-		if stress == weftStress {
-			f = tri.FilmPull(stress)
-		} else {
-			warp, weft, err := v.axes(st, k, &tri)
-			if err != nil {
-				st.collapse = int32(k)
-				continue
-			}
-			f = tri.StressPull(warp, weft, stress, weftStress, 0)
-			stress = 0.5 * (stress + weftStress)
-		}
-		energy += stress * tri.Area
-		a, half := r3.Scale(tri.Area, tri.Normal), 0.5*stress
-		for j, i := range c {
-			add(&v.normalSum[i], &a)
-			add(&st.pull[i], &f[j])
-			st.size[i] += half * norm(tri.Edge[j])
-		}
-		if pressure := v.pressureOn(st, s.FabricOf[k]); pressure != 0 {
-			p := tri.PressurePush(pressure)
-			size := math.Abs(pressure) * tri.Area / 3
-			for _, i := range c {
-				st.pull[i] = r3.Add(st.pull[i], p)
-				st.size[i] += size
-			}
-		}
-		if s.SelfWeight && fabric.Weight != 0 {
-			w := fabric.Weight * tri.Area / 3
-			for _, i := range c {
-				st.pull[i].Z -= w
-				st.size[i] += w
-			}
+	})
+	for k := range v.fabricPieces() {
+		energy += v.pieces[k].energy
+		if t := v.pieces[k].collapse; t != none {
+			st.collapse = max(t, st.collapse)
 		}
 	}
 	if s.SelfWeight {
@@ -181,37 +154,29 @@ func (v *Solver) evaluate(st *state) {
 		}
 	}
 	st.energy = energy
-	v.refreshBasis(at, st.basis)
-	for i := range st.reduced {
-		st.reduced[i] = 0
-	}
-	for i := range at {
-		if v.first[i] < 0 {
-			continue
-		}
-		for a, b := range st.basis[v.start[i]:v.start[i+1]] {
-			st.reduced[int(v.first[i])+a] += r3.Dot(b, st.pull[i])
-		}
+	v.overNodes(func(_, lo, hi int) {
+		v.refreshBasis(at, st.basis, lo, hi)
+	})
+	clear(st.reduced)
+	if s.Master == nil {
+		v.overNodes(func(_, lo, hi int) { v.reduce(st, lo, hi) })
+	} else {
+		v.reduce(st, 0, len(at)) // nodes of a ring add to its centre's
 	}
 	v.conditions(st)
-	var r2, s2, most float64
-	st.worst, st.worstAt = 0, 0
-	for i := range at {
-		if v.first[i] < 0 || v.cls[i] == tied {
-			continue
-		}
-		n2 := 0.0
-		for a := range v.directions(int32(i)) {
-			r := st.reduced[int(v.first[i])+a]
-			n2 += r * r
-		}
-		r2 += n2
-		s2 += st.size[i] * st.size[i]
-		most = max(most, st.size[i])
-		if n2 > st.worst {
-			st.worst, st.worstAt = n2, int32(i)
+	v.overNodes(func(block, lo, hi int) { v.offBalance(st, &v.pieces[block], lo, hi) })
+	var all partial
+	for k := range (len(at) + nodeBlock - 1) / nodeBlock {
+		p := &v.pieces[k]
+		all.r2 += p.r2
+		all.s2 += p.s2
+		all.most = max(all.most, p.most)
+		if p.worst > all.worst {
+			all.worst, all.worstAt = p.worst, p.worstAt
 		}
 	}
+	r2, s2, most := all.r2, all.s2, all.most
+	st.worst, st.worstAt = all.worst, all.worstAt
 	st.eta = ratio(math.Sqrt(r2), math.Sqrt(s2))
 	st.worst = ratio(math.Sqrt(st.worst), most)
 	st.noise, st.noiseWorst = 2*ratio(math.Sqrt(noise2), math.Sqrt(s2)), 4*ratio(noise, most)
@@ -223,6 +188,99 @@ func (v *Solver) evaluate(st *state) {
 	st.merit = math.Sqrt(m2)
 	if !(st.merit < math.Inf(1)) {
 		st.merit = math.Inf(1)
+	}
+}
+
+// pullOf adds the pulls of a triangle and what acts on it at those of its corners
+// that are asked for.
+func (v *Solver) pullOf(st *state, which corners, tri *element.Triangle, part *partial) {
+	s := v.s
+	k := which.triangle()
+	c := &s.Corners[k]
+	ok := tri.Span(&st.at[c[0]], &st.at[c[1]], &st.at[c[2]])
+	if !ok || tri.Area < collapsed*v.areaStart[k] {
+		part.collapse = int32(k)
+		if !ok {
+			return
+		}
+	}
+	fabric := &s.Fabrics[s.FabricOf[k]]
+	stress, weftStress := v.stressOf(k)
+	var f [3]r3.Vec
+	if stress == weftStress {
+		f = tri.FilmPull(stress)
+	} else {
+		warp, weft, err := v.axes(st, k, tri)
+		if err != nil {
+			part.collapse = int32(k)
+			return
+		}
+		f = tri.StressPull(warp, weft, stress, weftStress, 0)
+		stress = 0.5 * (stress + weftStress)
+	}
+	if which&1 != 0 {
+		part.energy += stress * tri.Area
+	}
+	a, half := r3.Scale(tri.Area, tri.Normal), 0.5*stress
+	for j, i := range c {
+		if which>>j&1 == 0 {
+			continue
+		}
+		add(&v.normalSum[i], &a)
+		add(&st.pull[i], &f[j])
+		st.size[i] += half * norm(tri.Edge[j])
+	}
+	if pressure := v.pressureOn(st, s.FabricOf[k]); pressure != 0 {
+		p := tri.PressurePush(pressure)
+		size := math.Abs(pressure) * tri.Area / 3
+		for j, i := range c {
+			if which>>j&1 != 0 {
+				st.pull[i] = r3.Add(st.pull[i], p)
+				st.size[i] += size
+			}
+		}
+	}
+	if s.SelfWeight && fabric.Weight != 0 {
+		w := fabric.Weight * tri.Area / 3
+		for j, i := range c {
+			if which>>j&1 != 0 {
+				st.pull[i].Z -= w
+				st.size[i] += w
+			}
+		}
+	}
+}
+
+// reduce adds the pulls at nodes lo to hi to their unknowns.
+func (v *Solver) reduce(st *state, lo, hi int) {
+	for i := lo; i < hi; i++ {
+		if v.first[i] < 0 {
+			continue
+		}
+		for a, b := range st.basis[v.start[i]:v.start[i+1]] {
+			st.reduced[int(v.first[i])+a] += r3.Dot(b, st.pull[i])
+		}
+	}
+}
+
+// offBalance sums up what is out of balance at nodes lo to hi.
+func (v *Solver) offBalance(st *state, p *partial, lo, hi int) {
+	*p = partial{}
+	for i := lo; i < hi; i++ {
+		if v.first[i] < 0 || v.cls[i] == tied {
+			continue
+		}
+		n2 := 0.0
+		for a := range v.directions(int32(i)) {
+			r := st.reduced[int(v.first[i])+a]
+			n2 += r * r
+		}
+		p.r2 += n2
+		p.s2 += st.size[i] * st.size[i]
+		p.most = max(p.most, st.size[i])
+		if n2 > p.worst {
+			p.worst, p.worstAt = n2, int32(i)
+		}
 	}
 }
 
@@ -265,16 +323,19 @@ func (v *Solver) assemble(st *state) {
 		k.Scale(-1)
 		v.addPair(st, i, j, &k, p.member[m])
 	}
-	var tri element.Triangle
-	for t, c := range s.Corners {
-		if v.first[c[0]] < 0 && v.first[c[1]] < 0 && v.first[c[2]] < 0 {
-			continue
+	v.overFabric(func(_ int, list []corners) {
+		var tri element.Triangle
+		for _, which := range list {
+			t := which.triangle()
+			c := &s.Corners[t]
+			if v.first[c[0]] < 0 && v.first[c[1]] < 0 && v.first[c[2]] < 0 {
+				continue
+			}
+			if tri.Span(&at[c[0]], &at[c[1]], &at[c[2]]) {
+				v.addFilm(st, which, &tri, p.triangle[t])
+			}
 		}
-		if !tri.Span(&at[c[0]], &at[c[1]], &at[c[2]]) {
-			continue
-		}
-		v.addFilm(st, t, &tri, p.triangle[t])
-	}
+	})
 	// Directions that do not exist at this shape, and those that nothing
 	// resists or drives, stay where they are.
 	mean := v.meanDiagonal()
@@ -351,8 +412,18 @@ func (v *Solver) put(i, j int32, a, b, ni, nj int, slot int32, x float64) {
 // second term (on a surface in balance both then resist a move along the normal
 // by S:∇∇u − (tr S)·K·u, K the Gaussian curvature). Left out is the turning of
 // the warp. The symmetric part of the pressure's block is (p/12)[eᵢ − eⱼ]ₓ.
-func (v *Solver) addFilm(st *state, t int, tri *element.Triangle, slots [3]int32) {
+// Of a triangle on the border of a patch, those values are added that belong to it.
+func (v *Solver) addFilm(st *state, which corners, tri *element.Triangle, slots [3]int32) {
+	t := which.triangle()
 	c := v.s.Corners[t]
+	if which&allCorners != allCorners {
+		for k := range 3 {
+			l := (k + 1) % 3
+			if v.first[c[l]] < v.first[c[k]] && which>>l&1 == 0 || v.first[c[k]] <= v.first[c[l]] && which>>k&1 == 0 {
+				slots[k] = -1
+			}
+		}
+	}
 	pressure := v.pressureOn(st, v.s.FabricOf[t])
 	n := tri.Normal
 	stress, weftStress := v.stressOf(t)
@@ -381,7 +452,7 @@ func (v *Solver) addFilm(st *state, t int, tri *element.Triangle, slots [3]int32
 		stress = 0.5 * (stress + weftStress)
 	}
 	if pressure == 0 && v.cls[c[0]] == normal && v.cls[c[1]] == normal && v.cls[c[2]] == normal {
-		v.addInner(st, c, n, -0.5*stress, &same, &next, slots)
+		v.addInner(st, which, &c, n, -0.5*stress, &same, &next, &slots)
 		return
 	}
 	for k, i := range c {
@@ -393,6 +464,9 @@ func (v *Solver) addFilm(st *state, t int, tri *element.Triangle, slots [3]int32
 		w := same[k]
 		own := int(v.pattern.own[i])
 		for a := range bi {
+			if which>>k&1 == 0 {
+				break
+			}
 			pa := w * r3.Dot(n, bi[a])
 			v.values[int(fi)+a] += pa * r3.Dot(n, bi[a])
 			for b := a + 1; b < len(bi); b++ {
@@ -422,15 +496,20 @@ func (v *Solver) addFilm(st *state, t int, tri *element.Triangle, slots [3]int32
 }
 
 // addInner is addFilm for three nodes that have their normals only: most of them.
-func (v *Solver) addInner(st *state, c [3]int32, n r3.Vec, turn float64, same, next *[3]float64, slots [3]int32) {
+func (v *Solver) addInner(st *state, which corners, c *[3]int32, n r3.Vec, turn float64, same, next *[3]float64, slots *[3]int32) {
 	var b [3]*r3.Vec
 	var along [3]float64
 	for k, i := range c {
 		b[k] = &st.basis[v.start[i]]
 		along[k] = r3.Dot(n, *b[k])
-		v.values[v.first[i]] += same[k] * along[k] * along[k]
+		if which>>k&1 != 0 {
+			v.values[v.first[i]] += same[k] * along[k] * along[k]
+		}
 	}
 	for k := range 3 {
+		if slots[k] < 0 {
+			continue
+		}
 		l := (k + 1) % 3
 		v.values[slots[k]] += next[k]*along[k]*along[l] + turn*r3.Dot(*b[k], r3.Cross(n, *b[l]))
 	}

@@ -22,18 +22,29 @@ func (v *Solver) form(st *state) (*canopy.Form, error) {
 		}
 	}
 	v.pressures(st, f)
-	for t, c := range s.Corners {
-		f.Stress[t].Warp, f.Stress[t].Weft = v.stressOf(t)
-		tri, ok := element.NewTriangle(st.at[c[0]], st.at[c[1]], st.at[c[2]])
-		if !ok {
-			f.Warp[t] = s.Warp[t]
-			continue
+	v.overTriangles(func(block, lo, hi int) {
+		part := &v.pieces[block]
+		part.err = nil
+		var tri element.Triangle
+		for t := lo; t < hi; t++ {
+			c := &s.Corners[t]
+			f.Stress[t].Warp, f.Stress[t].Weft = v.stressOf(t)
+			if !tri.Span(&st.at[c[0]], &st.at[c[1]], &st.at[c[2]]) {
+				f.Warp[t] = s.Warp[t]
+				continue
+			}
+			w, _, err := v.axes(st, t, &tri)
+			if err != nil {
+				part.err = v.warpError(t, err)
+				return
+			}
+			f.Warp[t] = w
 		}
-		w, _, err := v.axes(st, t, &tri)
-		if err != nil {
-			return nil, v.warpError(t, err)
+	})
+	for k := range (len(s.Corners) + patchSize - 1) / patchSize {
+		if err := v.pieces[k].err; err != nil {
+			return nil, err
 		}
-		f.Warp[t] = w
 	}
 	// What a support must add to the pulls in the directions it holds. A
 	// tied node hands the rest to its centre.

@@ -40,14 +40,26 @@ type step struct {
 
 // measure keeps the sizes of the elements at the start.
 func (v *Solver) measure(at []r3.Vec) error {
-	area := 0.0
-	for t, c := range v.s.Corners {
-		tri, ok := element.NewTriangle(at[c[0]], at[c[1]], at[c[2]])
-		if !ok {
-			return &DegenerateError{Element: "triangle", Index: int32(t), Name: fmt.Sprint(t)}
+	v.overTriangles(func(block, lo, hi int) {
+		p := &v.pieces[block]
+		p.energy, p.collapse = 0, none
+		var tri element.Triangle
+		for t := lo; t < hi; t++ {
+			c := &v.s.Corners[t]
+			if !tri.Span(&at[c[0]], &at[c[1]], &at[c[2]]) {
+				p.collapse = int32(t)
+				return
+			}
+			v.areaStart[t] = tri.Area
+			p.energy += tri.Area
 		}
-		v.areaStart[t] = tri.Area
-		area += tri.Area
+	})
+	area := 0.0
+	for k := range (len(v.s.Corners) + patchSize - 1) / patchSize {
+		if t := v.pieces[k].collapse; t != none {
+			return &DegenerateError{Element: "triangle", Index: t, Name: fmt.Sprint(t)}
+		}
+		area += v.pieces[k].energy
 	}
 	v.meshSize = math.Sqrt(2 * area / float64(max(len(v.s.Corners), 1)))
 	for m, e := range v.s.Ends {
@@ -341,18 +353,20 @@ func (v *Solver) collapseText(k int32) string {
 // moveTrial puts the trial's nodes alpha·u away from those of now.
 func (v *Solver) moveTrial(alpha float64, u []float64) {
 	now, to := &v.now, &v.trial
-	for i := range now.at {
-		p := now.at[i]
-		if v.first[i] >= 0 && v.cls[i] != tied {
-			for a, b := range now.basis[v.start[i]:v.start[i+1]] {
-				p = r3.Add(p, r3.Scale(alpha*u[int(v.first[i])+a], b))
+	v.overNodes(func(_, lo, hi int) {
+		for i := lo; i < hi; i++ {
+			p := now.at[i]
+			if v.first[i] >= 0 && v.cls[i] != tied {
+				for a, b := range now.basis[v.start[i]:v.start[i+1]] {
+					p = r3.Add(p, r3.Scale(alpha*u[int(v.first[i])+a], b))
+				}
+				if v.along != nil {
+					p = r3.Add(p, r3.Scale(alpha, v.along[i]))
+				}
 			}
-			if v.along != nil {
-				p = r3.Add(p, r3.Scale(alpha, v.along[i]))
-			}
+			to.at[i] = p
 		}
-		to.at[i] = p
-	}
+	})
 	v.follow(to.at)
 }
 
@@ -361,10 +375,20 @@ func (v *Solver) moveTrial(alpha float64, u []float64) {
 func (v *Solver) keepsShape(alpha float64, u []float64) bool {
 	v.moveTrial(alpha, u)
 	at, to := v.now.at, v.trial.at
-	for _, c := range v.s.Corners {
-		a := r3.Cross(r3.Sub(at[c[1]], at[c[0]]), r3.Sub(at[c[2]], at[c[0]]))
-		b := r3.Cross(r3.Sub(to[c[1]], to[c[0]]), r3.Sub(to[c[2]], to[c[0]]))
-		if !(r3.Dot(a, b) >= keep*r3.Norm2(a)) {
+	v.overTriangles(func(block, lo, hi int) {
+		v.pieces[block].collapse = none
+		for t := lo; t < hi; t++ {
+			c := &v.s.Corners[t]
+			a := r3.Cross(r3.Sub(at[c[1]], at[c[0]]), r3.Sub(at[c[2]], at[c[0]]))
+			b := r3.Cross(r3.Sub(to[c[1]], to[c[0]]), r3.Sub(to[c[2]], to[c[0]]))
+			if !(r3.Dot(a, b) >= keep*r3.Norm2(a)) {
+				v.pieces[block].collapse = int32(t)
+				return
+			}
+		}
+	})
+	for k := range (len(v.s.Corners) + patchSize - 1) / patchSize {
+		if v.pieces[k].collapse != none {
 			return false
 		}
 	}

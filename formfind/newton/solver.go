@@ -11,6 +11,7 @@ import (
 	"anticlast/fdm/sparse"
 	"anticlast/formfind/canopy"
 	"anticlast/formfind/engine"
+	"anticlast/formfind/internal/crew"
 )
 
 // Solver finds shapes of one structure again and again. What depends on the
@@ -48,13 +49,22 @@ type Solver struct {
 	unknown int
 	pattern *pattern
 
-	analysis *sparse.Analysis // made when first needed
-	chol     *sparse.Factor
-	ldl      *sparse.Factor
-	grids    *grids  // nil: every step by a factor
-	byGrids  bool    // the last step was solved by grids
-	reuse    bool    // keep the tangent of the step before
-	target   float64 // wanted residual
+	analysis  *sparse.Analysis // made when first needed
+	chol      *sparse.Factor
+	ldl       *sparse.Factor
+	gridOrder []int32    // unknowns in the order in which triangles meet them
+	gridPlace []int32    // of each unknown in order
+	expected  *grids     // that Above may be asked for
+	grids     *grids     // nil: every step by a factor
+	crew      *crew.Crew // during a call; nil works alone
+	byGrids   bool       // the last step was solved by grids
+	reuse     bool       // keep the tangent of the step before
+	target    float64    // wanted residual
+
+	// Pieces of large meshes for several processors.
+	patches       *patches // nil: everyTriangle is one piece
+	everyTriangle []corners
+	pieces        []partial
 
 	// Work.
 	values       []float64
@@ -102,6 +112,9 @@ type state struct {
 }
 
 const none = math.MinInt32
+
+// nodesAHand is the number of nodes for which another processor pays.
+const nodesAHand = 5000
 
 // New prepares a solver for s: checks what it can treat and builds the pattern
 // from the positions of s.
@@ -274,6 +287,8 @@ func (v *Solver) prepare(ctx context.Context, at []r3.Vec, all bool) error {
 	v.pattern = v.newPattern()
 	v.analysis, v.chol, v.ldl, v.inside = nil, nil, nil, nil
 	v.slideWork = make([]r3.Vec, n)
+	v.arrange()
+	v.preparePieces()
 	nv := v.unknown + len(v.pattern.pairs)
 	v.values = make([]float64, nv)
 	v.shifted = make([]float64, nv)
@@ -368,6 +383,11 @@ func (v *Solver) follow(at []r3.Vec) {
 func (v *Solver) Find(ctx context.Context, start *canopy.Form, set engine.Settings) (*canopy.Form, engine.Outcome, error) {
 	set = set.WithDefaults(DefaultIterations)
 	out := engine.Outcome{NegativePivots: -1}
+	v.crew = crew.New(len(v.s.Position) / nodesAHand)
+	defer func() {
+		v.crew.Dismiss()
+		v.crew = nil
+	}()
 	if err := ctx.Err(); err != nil {
 		return nil, out, err
 	}
