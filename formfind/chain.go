@@ -227,7 +227,7 @@ func (c *chain) warmStart() *canopy.Form {
 // newton runs Newton from the shape so far and keeps its shape if it converged;
 // otherwise it returns why not.
 func (c *chain) newton(ctx context.Context, all bool) (why string, err error) {
-	v, err := newton.New(ctx, c.s)
+	v, err := c.o.ahead.solver(ctx, c.s)
 	if err != nil {
 		return "", err
 	}
@@ -445,6 +445,7 @@ func (c *chain) fabric(ctx context.Context) error {
 	}
 	// What Newton keeps is large, and the work that follows needs room.
 	c.solver, c.o.solver, c.o.parents = nil, nil, nil
+	c.o.ahead.end()
 	if err := c.finish(ctx); err != nil || equal || c.o.eased {
 		return err
 	}

@@ -125,6 +125,8 @@ func solveLevels(ctx context.Context, coarse *canopy.Structure, steps []*mesh.Re
 		return nil, err
 	}
 	o.begin("solve")
+	o.ahead = lookAhead(ctx, steps, o)
+	defer o.ahead.end()
 	up, ok, err := climb(ctx, coarse, steps, o)
 	if err != nil {
 		return nil, err
@@ -132,6 +134,8 @@ func solveLevels(ctx context.Context, coarse *canopy.Structure, steps []*mesh.Re
 	if ok {
 		return solve(ctx, steps[len(steps)-1].Fine, m, up)
 	}
+	o.ahead.end()
+	o.ahead = nil
 	s, err := whole()
 	if err != nil {
 		return nil, err

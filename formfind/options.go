@@ -59,6 +59,7 @@ type Options struct {
 	below   *canopy.Form   // the surface found on the mesh half as fine
 	solver  *newton.Solver // that found it
 	parents [][2]int32     // how the mesh refines that one, see mesh.Refinement
+	ahead   *ahead         // prepares finer levels, nil
 	level   string         // which of several levels this is
 	eased   bool           // the ratio of warp to weft has been eased
 	stiff   bool           // links of a length make single nodes far worse than the mean

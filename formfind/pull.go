@@ -56,10 +56,17 @@ func trianglePulls(a, b, c, warp r3.Vec, st canopy.Stress) [3]r3.Vec {
 	if l == 0 {
 		return [3]r3.Vec{}
 	}
-	n = r3.Scale(1/l, n)
-	weft := r3.Cross(n, warp)
 	edges := [3]r3.Vec{r3.Sub(c, b), r3.Sub(a, c), r3.Sub(b, a)}
 	var out [3]r3.Vec
+	if st.Shear == 0 && st.Warp == st.Weft { // the same in all directions
+		n = r3.Scale(-0.5*st.Warp/l, n)
+		for i, e := range edges {
+			out[i] = r3.Cross(n, e)
+		}
+		return out
+	}
+	n = r3.Scale(1/l, n)
+	weft := r3.Cross(n, warp)
 	for i, e := range edges {
 		in := r3.Cross(n, e) // points from the edge to the corner, |in| = |e|
 		w, v := r3.Dot(in, warp), r3.Dot(in, weft)

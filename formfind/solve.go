@@ -70,7 +70,7 @@ func solve(ctx context.Context, s *canopy.Structure, m *canopy.Model, o Options)
 		o.Warm = &warm
 	}
 	with := o
-	o.solver, o.parents = nil, nil // not to be kept for what comes after
+	o.solver, o.parents, o.ahead = nil, nil, nil // not to be kept for what comes after
 	got, err := findForm(ctx, local, with)
 	if err != nil {
 		return nil, err
