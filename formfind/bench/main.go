@@ -4,9 +4,11 @@
 //	go run ./formfind/bench -triangles 15000,60000,250000 -methods newton,solve,relax,warm,lbfgs
 //
 // It prints one JSON object a line: case, method, triangles, seconds of
-// processor time, iterations, residual along the normals, relative error of the
-// area where the exact one is known. At the end of a case its growth exponent
-// (time ∝ triangles^exponent) and ratios against other methods.
+// processor time (of all processors together), wall (seconds by the clock),
+// iterations, residual along the normals, relative error of the area where the exact
+// one is known. At the end of a case its growth exponent (processor time ∝
+// triangles^exponent) and ratios against other methods, by processor time and by
+// the clock. The latter mean something on an idle machine only.
 //
 //   - newton: the front door from the coarsest mesh to a surface in balance along
 //     its normals, residual 1e-9;
@@ -59,10 +61,12 @@ type row struct {
 	Method     string   `json:"method"`
 	Triangles  int      `json:"triangles,omitempty"`
 	Seconds    float64  `json:"seconds,omitempty"`
+	Wall       float64  `json:"wall,omitempty"`
 	Iterations int      `json:"iterations,omitempty"`
 	Residual   float64  `json:"residual,omitempty"`
 	Error      *float64 `json:"error,omitempty"`
 	Ratio      float64  `json:"ratio,omitempty"`
+	WallRatio  float64  `json:"wall_ratio,omitempty"`
 	Exponent   float64  `json:"exponent,omitempty"`
 	Note       string   `json:"note,omitempty"`
 }
@@ -212,7 +216,7 @@ func start(ctx context.Context, s *canopy.Structure, updates int) (*canopy.Form,
 	return f, nil
 }
 
-// times is how often a quick method is run; the median counts. Memory that others
+// times is how often a quick method is run; the median of either time counts. Memory that others
 // have left behind is cleared away before.
 const times = 3
 
@@ -224,10 +228,10 @@ func byNewton(ctx context.Context, p *problem) (row, error) {
 	for range times {
 		runtime.GC()
 		rec := &engine.Recorder{}
-		t, seconds := processorSeconds(), 0.0
+		t, seconds, wall := startClock(), 0.0, 0.0
 		r, err := formfind.SolveLevels(ctx, p.coarse, p.steps, formfind.Options{Recorder: rec, Stage: func(name string) {
 			if name == "balance" {
-				seconds = processorSeconds() - t
+				seconds, wall = t.read()
 			}
 		}})
 		if err != nil {
@@ -240,10 +244,13 @@ func byNewton(ctx context.Context, p *problem) (row, error) {
 		if !(last.Residual <= 1e-9) {
 			return row{}, fmt.Errorf("%s: residual %g", p.name, last.Residual)
 		}
-		rows = append(rows, row{Case: p.name, Method: "newton", Triangles: len(p.fine.Corners), Seconds: seconds,
+		rows = append(rows, row{Case: p.name, Method: "newton", Triangles: len(p.fine.Corners), Seconds: seconds, Wall: wall,
 			Iterations: last.Iteration, Residual: last.Residual, Error: p.areaError(p.fine, r.Form)})
 	}
+	slices.SortFunc(rows, func(a, b row) int { return cmp.Compare(a.Wall, b.Wall) })
+	wall := rows[times/2].Wall
 	slices.SortFunc(rows, func(a, b row) int { return cmp.Compare(a.Seconds, b.Seconds) })
+	rows[times/2].Wall = wall
 	return rows[times/2], nil
 }
 
@@ -251,7 +258,7 @@ func byNewton(ctx context.Context, p *problem) (row, error) {
 // and Newton, every step by a factorisation.
 func byOneLevel(ctx context.Context, p *problem) (row, error) {
 	runtime.GC()
-	t := processorSeconds()
+	t := startClock()
 	at, err := start(ctx, p.fine, 5)
 	if err != nil {
 		return row{}, err
@@ -263,12 +270,13 @@ func byOneLevel(ctx context.Context, p *problem) (row, error) {
 	if out.Status != engine.Converged {
 		return row{}, fmt.Errorf("%s: %s", p.name, out.Why)
 	}
-	return row{Case: p.name, Method: "one-level", Triangles: len(p.fine.Corners), Seconds: processorSeconds() - t, Iterations: out.Iterations, Residual: out.Residual, Error: p.areaError(p.fine, f)}, nil
+	seconds, wall := t.read()
+	return row{Case: p.name, Method: "one-level", Triangles: len(p.fine.Corners), Seconds: seconds, Wall: wall, Iterations: out.Iterations, Residual: out.Residual, Error: p.areaError(p.fine, f)}, nil
 }
 
 func bySolve(ctx context.Context, p *problem) error {
 	runtime.GC()
-	t := processorSeconds()
+	t := startClock()
 	r, err := formfind.SolveLevels(ctx, p.coarse, p.steps, formfind.Options{})
 	if err != nil {
 		return err
@@ -276,7 +284,8 @@ func bySolve(ctx context.Context, p *problem) error {
 	if !r.Audit.Trusted {
 		return fmt.Errorf("%s: %v", p.name, r.Audit.Reasons)
 	}
-	row{Case: p.name, Method: "solve", Triangles: len(p.fine.Corners), Seconds: processorSeconds() - t, Residual: r.Audit.ResidualRMS, Error: p.areaError(p.fine, r.Form)}.print()
+	seconds, wall := t.read()
+	row{Case: p.name, Method: "solve", Triangles: len(p.fine.Corners), Seconds: seconds, Wall: wall, Residual: r.Audit.ResidualRMS, Error: p.areaError(p.fine, r.Form)}.print()
 	return nil
 }
 
@@ -294,7 +303,7 @@ func byRelax(ctx context.Context, p *problem) error {
 		updates int
 	}{{"relax", p.fine, 0}, {"relax on an even mesh", p.even(), 0}, {"relax from natural", p.fine, 5}} {
 		runtime.GC()
-		t := processorSeconds()
+		t := startClock()
 		at, err := start(ctx, k.s, k.updates)
 		if err != nil {
 			return err
@@ -303,10 +312,12 @@ func byRelax(ctx context.Context, p *problem) error {
 		if err != nil {
 			return err
 		}
-		r := row{Case: p.name, Method: k.method, Triangles: len(k.s.Corners), Seconds: processorSeconds() - t, Iterations: out.Iterations, Residual: out.Residual}
+		seconds, wall := t.read()
+		r := row{Case: p.name, Method: k.method, Triangles: len(k.s.Corners), Seconds: seconds, Wall: wall, Iterations: out.Iterations, Residual: out.Residual}
 		if out.Status == engine.Converged {
 			r.Error, r.Ratio = p.areaError(k.s, f), r.Seconds/own.Seconds
-			r.Note = fmt.Sprintf("ratio to newton in the same run (%.3g s)", own.Seconds)
+			r.WallRatio = r.Wall / own.Wall
+			r.Note = fmt.Sprintf("ratios to newton in the same run (%.3g s, by the clock %.3g s)", own.Seconds, own.Wall)
 		} else {
 			r.Note = "no result: " + out.Why
 		}
