@@ -68,6 +68,8 @@ func (r *reader) airs(all []air, fabrics []string, pressed func(fabric string) b
 				r.fail(q.n, q.p, fmt.Sprintf("fabric %q is not defined", clip(q.name)), hint)
 			case q.name == a.fabric:
 				r.fail(q.n, q.p, fmt.Sprintf("fabric %q cannot enclose a volume with itself", q.name), "name the other fabrics around the air, or remove volume with")
+			case by == q.name:
+				r.fail(q.n, q.p, fmt.Sprintf("fabric %q has a volume of its own, and bounds that of fabric %q", q.name, a.fabric), "a fabric bounds one volume; give the volume at one of its fabrics only")
 			case twice:
 				r.fail(q.n, q.p, fmt.Sprintf("fabric %q already bounds the volume of fabric %q", q.name, by), "a fabric bounds one volume; give the volume at one of its fabrics only")
 			case pressed(q.name):
