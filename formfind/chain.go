@@ -208,6 +208,12 @@ func onlyDensities(s *canopy.Structure) bool {
 // warmStart takes the positions of the given form, with fixed nodes where the
 // structure now has them.
 func (c *chain) warmStart() *canopy.Form {
+	if c.o.below != nil {
+		// Made for this, with fixed nodes in their places.
+		f := *c.o.Warm
+		c.say("coarse to fine: started from the surface found with mesh sides twice as long")
+		return &f
+	}
 	f := canopy.NewForm(c.s)
 	copy(f.Force, c.o.Warm.Force)
 	copy(f.Stress, c.o.Warm.Stress)
@@ -216,11 +222,7 @@ func (c *chain) warmStart() *canopy.Form {
 		fixed := c.s.FixedAt(i)
 		f.Position[i] = r3.Add(only(c.s.Position[i], fixed), only(c.o.Warm.Position[i], canopy.DirAll&^fixed))
 	}
-	if c.o.below != nil {
-		c.say("coarse to fine: started from the surface found with mesh sides twice as long")
-	} else {
-		c.say("started from an earlier shape")
-	}
+	c.say("started from an earlier shape")
 	return f
 }
 
