@@ -68,7 +68,7 @@ func (b *builder) build() (*canopy.Structure, error) {
 	if err := b.fillFinely(run); err != nil {
 		return nil, err
 	}
-	if err := run(b.cables, b.stays, b.finish, b.openCorners, b.verify, b.enclosures); err != nil {
+	if err := run(b.cables, b.stays, b.finish, b.openCorners, b.verify, b.pressUp, b.enclosures); err != nil {
 		return nil, err
 	}
 	return b.s, nil
@@ -87,6 +87,7 @@ type builder struct {
 	curve     []curve     // per edge
 	loop      []*loop     // fabrics first, then nets
 	users     [][]int32   // per edge: loops that it bounds
+	closed    []int       // fabrics that close by themselves, so that no side of them all is up
 	count     []int       // per edge: number of segments
 	asked     []int       // the same before narrow places were divided further
 	param     [][]float64 // per edge: where its nodes are, by length; nil = evenly

@@ -47,6 +47,16 @@ func (b *builder) enclosures() {
 	}
 }
 
+// pressUp lets positive pressures push up on each of several films that close by
+// themselves: their positive sides look all out or all in.
+func (b *builder) pressUp() {
+	for _, i := range b.closed {
+		if f := &b.s.Fabrics[i]; f.Pressure != 0 {
+			f.Pressure *= float64(b.upper(int32(i)))
+		}
+	}
+}
+
 // upper is +1 where the positive side of a fabric looks up, or towards +x, else
 // +y, when it is upright, −1 where it looks the other way.
 func (b *builder) upper(fabric int32) int8 {

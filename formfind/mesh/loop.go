@@ -383,12 +383,15 @@ func (b *builder) orient() {
 			size += r3.Norm(area[i])
 		}
 		// Looks up; a closed or upright part looks towards +x, else +y, else as drawn.
-		up := 1.0
+		up := 0.0
 		for _, c := range [3]float64{sum.Z, sum.X, sum.Y} {
 			if math.Abs(c) > 1e-6*size {
 				up = c
 				break
 			}
+		}
+		if up == 0 { // films that close by themselves
+			b.closed = append(b.closed, queue...)
 		}
 		for _, i := range queue {
 			if (flip[i] < 0) != (up < 0) {
