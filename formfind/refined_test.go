@@ -3,6 +3,7 @@ package formfind_test
 import (
 	"fmt"
 	"math"
+	"slices"
 	"testing"
 
 	"github.com/stretchr/testify/assert"
@@ -20,6 +21,7 @@ import (
 // (catenoid; cones sin α = (c/r)^m, axisymmetric membrane equilibrium), and falling with
 // the square of the mesh size.
 func TestSmallMeshesAreJudgedByOneRefinement(t *testing.T) {
+	warned := false
 	for _, at := range []func(n int) cases.Case{
 		func(n int) cases.Case { return cases.Catenoid(0.5, 2*n, n, true, 1000) },
 		func(n int) cases.Case { return cases.Cone(5, 0.5, 2, [2]float64{1000, 500}, 3*n, n) },
@@ -38,10 +40,14 @@ func TestSmallMeshesAreJudgedByOneRefinement(t *testing.T) {
 			t.Logf("%s, %d triangles: %.2g m off, estimated %.2g m", c.Name, len(c.S.Corners), worst, estimate)
 			assert.Greater(t, estimate, worst)
 			assert.Less(t, estimate, 3*worst)
+			coarse := slices.ContainsFunc(r.Findings, func(f canopy.Finding) bool { return f.ID == "mesh-coarse" })
+			assert.Equal(t, r.Audit.Discretisation > 0.0025, coarse, "warned of")
+			warned = warned || coarse
 			estimates = append(estimates, estimate)
 		}
 		assert.Greater(t, estimates[0]/estimates[1], 2.7, "order")
 	}
+	assert.True(t, warned, "some of these meshes are coarse")
 }
 
 // Just above their height limit cones have a shape in balance on a coarse mesh, and

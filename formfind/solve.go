@@ -173,7 +173,7 @@ func judge(ctx context.Context, r *canopy.Result, o Options) error {
 	}
 	o.begin("limits")
 	r.Summary = audit.Quantities(r.Structure, r.Form, r.Factors)
-	r.Findings = limit.Check(r.Structure, r.Form, &r.Summary, r.Limits, r.Factors)
+	r.Findings = limit.WithFineness(limit.Check(r.Structure, r.Form, &r.Summary, r.Limits, r.Factors), finer)
 	return nil
 }
 

@@ -62,13 +62,18 @@ func Check(s *canopy.Structure, f *canopy.Form, q *canopy.Quantities, limits can
 	c.reactions()
 	c.utilisation()
 	c.mesh()
-	slices.SortStableFunc(c.out, func(a, b canopy.Finding) int {
+	return ordered(c.out)
+}
+
+// ordered sorts findings, the gravest first.
+func ordered(findings []canopy.Finding) []canopy.Finding {
+	slices.SortStableFunc(findings, func(a, b canopy.Finding) int {
 		if a.Severity != b.Severity {
 			return cmp.Compare(b.Severity, a.Severity)
 		}
 		return cmp.Compare(a.ID, b.ID)
 	})
-	return c.out
+	return findings
 }
 
 type check struct {

@@ -38,12 +38,18 @@ func (b *builder) openCorners() {
 			film[i] = s.FabricOf[t]
 		}
 	}
-	for {
+	// Corners are a few sides deep; that no side is turned to and fro without end is
+	// not proven, so the passes are counted.
+	const maxPasses = 1000
+	for pass := 1; ; pass++ {
+		if err := b.ctx.Err(); err != nil {
+			return
+		}
 		turned, left := b.openOnce(shared, along)
 		if left == nil {
 			return
 		}
-		if turned == 0 {
+		if turned == 0 || pass == maxPasses {
 			f := b.m.Fabrics[left.fabric]
 			p := s.Position[left.side[0]]
 			b.fail("fabric", f.Name, f.Line, Mismatch, "give one of them another mesh size or pattern", "it cuts a corner of its boundary at [%.3f, %.3f, %.3f] with the same side as another fabric there, and cannot be told from it", p.X, p.Y, p.Z)
