@@ -13,6 +13,7 @@ var haveWide = haveStrips && cpu.X86.HasAVX512F && cpu.X86.HasAVX512VL && cpu.X8
 
 // mulSubStrip512 gives the same bits as mulSubStrip, which jumps to it.
 //
+//lint:ignore U1000 the other assembly jumps to it
 //go:noescape
 func mulSubStrip512(c, a, b *float64, ldc, lda, ldb, m, n, k, step, fresh int)
 
@@ -32,6 +33,7 @@ func scaleStrip(c, t *float64, ldc, ldt, m, n int)
 
 // scaleStrip512 gives the same bits as scaleStrip, which jumps to it.
 //
+//lint:ignore U1000 the other assembly jumps to it
 //go:noescape
 func scaleStrip512(c, t *float64, ldc, ldt, m, n int)
 
