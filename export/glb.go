@@ -75,7 +75,7 @@ func (g *scene) write(ctx context.Context, w io.Writer) error {
 		g.doc.Buffers = []*gltf.Buffer{{ByteLength: g.length}}
 	}
 	g.dropUnusedMaterials()
-	if g.length > math.MaxUint32-1<<24 {
+	if int64(g.length) > math.MaxUint32-1<<24 {
 		return fmt.Errorf("form.glb: %d bytes are more than a GLB can hold", g.length)
 	}
 	var description bytes.Buffer
