@@ -1,6 +1,6 @@
 package newton
 
-import "math"
+import "anticlast/formfind/internal/mixing"
 
 // anderson mixes the steps of an iteration whose tangent is not exact with
 // those before (Anderson, J. ACM 12, 1965; in the form of Walker & Ni, SIAM J.
@@ -33,42 +33,7 @@ func (a *anderson) mix(u []float64) {
 		}
 	}
 	a.last = f
-	// Least squares by modified Gram-Schmidt, newest difference first; what
-	// depends on newer ones is left out.
-	m := len(a.df)
-	var q [][]float64
-	var r [][]float64
-	var kept []int
-	for k := m - 1; k >= 0; k-- {
-		c := append([]float64(nil), a.df[k]...)
-		size := math.Sqrt(dot(c, c))
-		row := make([]float64, 0, m)
-		for j := range q {
-			h := dot(q[j], c)
-			row = append(row, h)
-			for i := range c {
-				c[i] -= h * q[j][i]
-			}
-		}
-		left := math.Sqrt(dot(c, c))
-		if !(left > 1e-8*size) {
-			continue
-		}
-		for i := range c {
-			c[i] /= left
-		}
-		q, r, kept = append(q, c), append(r, append(row, left)), append(kept, k)
-	}
-	gamma := make([]float64, len(q))
-	for j := range q {
-		gamma[j] = dot(q[j], f)
-	}
-	for j := len(q) - 1; j >= 0; j-- {
-		for l := j + 1; l < len(q); l++ {
-			gamma[j] -= r[l][j] * gamma[l]
-		}
-		gamma[j] /= r[j][j]
-	}
+	gamma, kept := mixing.Weights(a.df, f, 1e-8)
 	for j, k := range kept {
 		for i := range u {
 			u[i] -= gamma[j] * (a.dx[k][i] + a.df[k][i])
